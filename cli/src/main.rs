@@ -1,0 +1,2 @@
+//! The program `plumbtone`.
+fn main() {}

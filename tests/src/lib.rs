@@ -1,0 +1,1 @@
+//! Fixtures for the checks against the world outside.
