@@ -12,7 +12,7 @@ const PARTIALS_MAX: usize = 128;
 const INTEGRATION_S: (f64, f64) = (0.02, 10.0);
 
 /// Settings of an [`Analyzer`](crate::Analyzer). Concert pitch and temperament name notes and change no measurement, so
-/// they are not here: see [`Tuning`](crate::tuning::Tuning).
+/// they are not here: see the module `tuning`.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Settings {
     /// Sample rate in Hz, 8 000 to 384 000.
