@@ -14,9 +14,18 @@
 #![forbid(unsafe_code)]
 
 mod analyzer;
+mod convert;
+mod fundamental;
+mod history;
+mod instant;
 mod note;
+mod peaks;
 mod reading;
+mod refine;
 mod settings;
+mod spectrum;
+mod stiff;
+mod track;
 
 pub use analyzer::{Analyzer, Sink};
 pub use note::{Descriptors, Note, NotePartial};
