@@ -17,6 +17,8 @@ mod analyzer;
 mod note;
 mod reading;
 mod settings;
+#[cfg(feature = "signals")]
+pub mod signals;
 
 pub use analyzer::{Analyzer, Sink};
 pub use note::{Descriptors, Note, NotePartial};
