@@ -23,6 +23,8 @@ mod peaks;
 mod reading;
 mod refine;
 mod settings;
+#[cfg(feature = "signals")]
+pub mod signals;
 mod spectrum;
 mod stiff;
 mod track;
