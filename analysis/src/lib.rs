@@ -17,6 +17,7 @@ mod analyzer;
 mod note;
 mod reading;
 mod settings;
+pub mod tuning;
 
 pub use analyzer::{Analyzer, Sink};
 pub use note::{Descriptors, Note, NotePartial};
