@@ -19,6 +19,7 @@ mod note;
 mod reading;
 mod settings;
 pub mod tuning;
+pub mod window;
 
 pub use analyzer::{Analyzer, Sink};
 pub use descriptors::Descriptors;
