@@ -15,6 +15,7 @@
 
 mod analyzer;
 mod convert;
+mod descriptors;
 mod fundamental;
 mod history;
 mod instant;
@@ -28,8 +29,11 @@ pub mod signals;
 mod spectrum;
 mod stiff;
 mod track;
+pub mod tuning;
+pub mod window;
 
 pub use analyzer::{Analyzer, Sink};
-pub use note::{Descriptors, Note, NotePartial};
+pub use descriptors::Descriptors;
+pub use note::{Note, NotePartial};
 pub use reading::{Gap, GapReason, Partial, Pitch, Reading, State, Stray, StrayKind, Stretch};
 pub use settings::{Settings, SettingsError};

@@ -1,1 +1,2 @@
 //! Fixtures for the checks against the world outside.
+pub mod bounds;
