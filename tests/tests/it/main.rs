@@ -1,2 +1,6 @@
 //! Checks against the world outside, in one binary.
 mod published_bounds;
+mod published_descriptors;
+mod published_tones;
+mod published_tuning;
+mod published_windows;
