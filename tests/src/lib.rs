@@ -1,1 +1,7 @@
 //! Fixtures for the checks against the world outside.
+
+pub mod cast;
+pub mod periodicity;
+pub mod recorded;
+pub mod soundfont;
+pub mod take;
