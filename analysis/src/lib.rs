@@ -14,13 +14,26 @@
 #![forbid(unsafe_code)]
 
 mod analyzer;
+mod convert;
+mod descriptors;
+mod fundamental;
+mod history;
+mod instant;
 mod note;
+mod peaks;
 mod reading;
+mod refine;
 mod settings;
 #[cfg(feature = "signals")]
 pub mod signals;
+mod spectrum;
+mod stiff;
+mod track;
+pub mod tuning;
+pub mod window;
 
 pub use analyzer::{Analyzer, Sink};
-pub use note::{Descriptors, Note, NotePartial};
+pub use descriptors::Descriptors;
+pub use note::{Note, NotePartial};
 pub use reading::{Gap, GapReason, Partial, Pitch, Reading, State, Stray, StrayKind, Stretch};
 pub use settings::{Settings, SettingsError};

@@ -1,5 +1,6 @@
 //! Fixtures for the checks against the world outside.
 
+pub mod bounds;
 pub mod cast;
 pub mod periodicity;
 pub mod recorded;

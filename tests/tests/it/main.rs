@@ -1,0 +1,2 @@
+//! Checks against the world outside, in one binary.
+mod published_bounds;
