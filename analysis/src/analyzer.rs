@@ -236,7 +236,8 @@ impl Analyzer {
         instant.model = (0.0, 0.0);
         if let (Some(best), _) = self.tracker.decide(0) {
             instant.model = (best.hz, best.b);
-            instant.frame_s = self.evidence.refine(instant.model, self.settings.partials, &mut self.refiner);
+            instant.frame_s =
+                self.evidence.refine(instant.model, self.settings.partials, &mut self.refiner);
             instant.tones.extend_from_slice(&self.refiner.tones);
         }
         self.analysed += 1;
@@ -257,7 +258,11 @@ impl Analyzer {
                 instant.tones.extend_from_slice(&self.refiner.tones);
             }
             self.points.clear();
-            self.points.extend(instant.tones.iter().map(|t| Point { n: t.n as f64, hz: t.hz, sd_hz: t.sd_hz }));
+            self.points.extend(instant.tones.iter().map(|t| Point {
+                n: t.n as f64,
+                hz: t.hz,
+                sd_hz: t.sd_hz,
+            }));
             match stiff::fit(&self.points, None) {
                 Some(fit) => {
                     instant.f0 = fit.f0;
@@ -280,7 +285,8 @@ impl Analyzer {
         reading.strays.clear();
         reading.pitch = None;
         reading.stretch = None;
-        reading.state = if instant.level_dbfs > SILENCE_DBFS { State::Unpitched } else { State::Silent };
+        reading.state =
+            if instant.level_dbfs > SILENCE_DBFS { State::Unpitched } else { State::Silent };
         if let Some(chosen) = instant.decided {
             reading.state = State::Steady;
             reading.pitch = Some(Pitch {

@@ -1,19 +1,30 @@
 //! The only place where numbers are narrowed; each helper says what happens outside its range.
 
 /// Nearest index to a non-negative number; 0 below zero or for NaN.
-#[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "saturates by definition of `as`")]
+#[expect(
+    clippy::cast_possible_truncation,
+    clippy::cast_sign_loss,
+    reason = "saturates by definition of `as`"
+)]
 pub(crate) fn nearest_index(x: f64) -> usize {
     x.round() as usize
 }
 
 /// Largest index not above a number; 0 below zero or for NaN.
-#[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "saturates by definition of `as`")]
+#[expect(
+    clippy::cast_possible_truncation,
+    clippy::cast_sign_loss,
+    reason = "saturates by definition of `as`"
+)]
 pub(crate) fn floor_index(x: f64) -> usize {
     x as usize
 }
 
 /// Single precision, rounded.
-#[expect(clippy::cast_possible_truncation, reason = "rounding to the shorter mantissa is the purpose")]
+#[expect(
+    clippy::cast_possible_truncation,
+    reason = "rounding to the shorter mantissa is the purpose"
+)]
 pub(crate) fn single(x: f64) -> f32 {
     x as f32
 }

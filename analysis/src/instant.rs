@@ -72,7 +72,8 @@ impl Evidence {
     pub(crate) fn run(&mut self, history: &History, centre: u64, out: &mut Vec<Candidate>) {
         let renew = !self.parity;
         self.parity = renew;
-        for (i, (transform, frame)) in self.transforms.iter_mut().zip(&mut self.frames).enumerate() {
+        for (i, (transform, frame)) in self.transforms.iter_mut().zip(&mut self.frames).enumerate()
+        {
             if i < LENGTHS - 1 || renew {
                 transform.run(history, centre, frame);
             }
@@ -89,7 +90,13 @@ impl Evidence {
             }
             let top = if i == 0 { f64::MAX } else { SEARCH_PEAKS_HZ };
             let top = top.min(self.sample_rate_hz / 2.0);
-            peaks::pick(&self.frames[i], self.bin_hz(i), &self.noise, (15.0, top), &mut self.peaks[i]);
+            peaks::pick(
+                &self.frames[i],
+                self.bin_hz(i),
+                &self.noise,
+                (15.0, top),
+                &mut self.peaks[i],
+            );
         }
         let view = View {
             peaks: [&self.peaks[0], &self.peaks[1], &self.peaks[2], &self.peaks[3]],
@@ -121,7 +128,9 @@ impl Evidence {
 
     /// The frame in which partials of a fundamental are refined.
     fn frame_for(&self, f0: f64) -> usize {
-        (0..LENGTHS - 1).find(|&i| f0 * self.transforms[i].len() as f64 >= REFINE_PERIODS * self.sample_rate_hz).unwrap_or(LENGTHS - 1)
+        (0..LENGTHS - 1)
+            .find(|&i| f0 * self.transforms[i].len() as f64 >= REFINE_PERIODS * self.sample_rate_hz)
+            .unwrap_or(LENGTHS - 1)
     }
 
     fn bin_hz(&self, i: usize) -> f64 {

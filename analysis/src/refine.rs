@@ -95,7 +95,8 @@ impl Refiner {
             if low > high || nu > last as f64 {
                 break;
             }
-            let Some(bin) = (low..=high).max_by(|&i, &j| frame.power[i].total_cmp(&frame.power[j])) else {
+            let Some(bin) = (low..=high).max_by(|&i, &j| frame.power[i].total_cmp(&frame.power[j]))
+            else {
                 break;
             };
             let nu = if (bin as f64 - nu).abs() < 0.5 { nu } else { bin as f64 };

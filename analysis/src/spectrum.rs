@@ -69,7 +69,8 @@ impl Transform {
         for (x, w) in self.input.iter_mut().zip(&self.window) {
             *x *= w;
         }
-        let done = self.plan.process_with_scratch(&mut self.input, &mut out.bins, &mut self.scratch);
+        let done =
+            self.plan.process_with_scratch(&mut self.input, &mut out.bins, &mut self.scratch);
         debug_assert!(done.is_ok(), "lengths are planned");
         for pair in out.bins.chunks_mut(2) {
             if let [_, odd] = pair {

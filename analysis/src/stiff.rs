@@ -57,9 +57,10 @@ pub(crate) fn partial_hz(f0: f64, b: f64, n: f64) -> f64 {
 /// Fits the model, with an optional earlier knowledge of `B` (value, deviation). `None` without a usable partial; with one
 /// partial and no earlier knowledge, `B` is 0 with an infinite deviation.
 pub(crate) fn fit(points: &[Point], prior_b: Option<(f64, f64)>) -> Option<StiffFit> {
-    let first = points.iter().filter(|p| p.sd_hz > 0.0).min_by(|a, b| {
-        (a.sd_hz / a.hz).total_cmp(&(b.sd_hz / b.hz))
-    })?;
+    let first = points
+        .iter()
+        .filter(|p| p.sd_hz > 0.0)
+        .min_by(|a, b| (a.sd_hz / a.hz).total_cmp(&(b.sd_hz / b.hz)))?;
     let lone = points.len() < 2 && prior_b.is_none();
     let mut b = prior_b.map_or(0.0, |p| p.0);
     let mut f0 = first.hz / partial_hz(1.0, b, first.n);

@@ -74,7 +74,10 @@ impl Tracker {
     pub(crate) fn push(&mut self) {
         let len = self.columns.len();
         let at = self.pushed % len;
-        let mut now = core::mem::replace(&mut self.columns[at], Column { candidates: Vec::new(), cost: [0.0; STATES], from: [0; STATES] });
+        let mut now = core::mem::replace(
+            &mut self.columns[at],
+            Column { candidates: Vec::new(), cost: [0.0; STATES], from: [0; STATES] },
+        );
         if self.pushed == 0 {
             for (s, cost) in now.cost.iter_mut().enumerate() {
                 *cost = emission(&now.candidates, s);
@@ -84,7 +87,9 @@ impl Tracker {
             for s in 0..STATES {
                 let here = emission(&now.candidates, s);
                 let (from, cost) = (0..STATES)
-                    .map(|r| (r, before.cost[r] + transition(&before.candidates, r, &now.candidates, s)))
+                    .map(|r| {
+                        (r, before.cost[r] + transition(&before.candidates, r, &now.candidates, s))
+                    })
                     .min_by(|a, b| a.1.total_cmp(&b.1))
                     .unwrap_or((CANDIDATES, 0.0));
                 now.cost[s] = here + cost;

@@ -2,6 +2,7 @@
 
 pub mod bounds;
 pub mod cast;
+pub mod figures;
 pub mod periodicity;
 pub mod recorded;
 pub mod soundfont;

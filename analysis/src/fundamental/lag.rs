@@ -33,7 +33,9 @@ pub(crate) struct Autocorrelation {
 
 impl core::fmt::Debug for Autocorrelation {
     fn fmt(&self, f: &mut core::fmt::Formatter<'_>) -> core::fmt::Result {
-        f.debug_struct("Autocorrelation").field("lags", &self.normalised.len()).finish_non_exhaustive()
+        f.debug_struct("Autocorrelation")
+            .field("lags", &self.normalised.len())
+            .finish_non_exhaustive()
     }
 }
 
@@ -46,7 +48,9 @@ impl Autocorrelation {
             spectrum: plan.make_input_vec(),
             scratch: plan.make_scratch_vec(),
             output: plan.make_output_vec(),
-            correction: (0..lags).map(|k| single(1.0 / hann_autocorrelation(k as f64 / len as f64))).collect(),
+            correction: (0..lags)
+                .map(|k| single(1.0 / hann_autocorrelation(k as f64 / len as f64)))
+                .collect(),
             normalised: vec![0.0; lags],
             plan,
             sample_rate_hz,
@@ -65,7 +69,8 @@ impl Autocorrelation {
         if let Some(last) = self.spectrum.last_mut() {
             last.im = 0.0;
         }
-        let done = self.plan.process_with_scratch(&mut self.spectrum, &mut self.output, &mut self.scratch);
+        let done =
+            self.plan.process_with_scratch(&mut self.spectrum, &mut self.output, &mut self.scratch);
         debug_assert!(done.is_ok(), "lengths are planned");
         let scale = 1.0 / self.output[0].max(f32::MIN_POSITIVE);
         for ((n, r), c) in self.normalised.iter_mut().zip(&self.output).zip(&self.correction) {
@@ -96,7 +101,10 @@ impl Autocorrelation {
                 out.truncate(MAXIMA - 1);
                 let curve = r[k - 1] - 2.0 * r[k] + r[k + 1];
                 let shift = if curve < 0.0 { 0.5 * (r[k - 1] - r[k + 1]) / curve } else { 0.0 };
-                out.insert(at.min(out.len()), (r[k], self.sample_rate_hz / (k as f64 + f64::from(shift))));
+                out.insert(
+                    at.min(out.len()),
+                    (r[k], self.sample_rate_hz / (k as f64 + f64::from(shift))),
+                );
             }
         }
     }

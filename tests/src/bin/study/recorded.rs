@@ -3,11 +3,12 @@
 use std::collections::BTreeSet;
 use std::error::Error;
 
+use crate::table::heading;
 use plumbtone_tests::recorded::{FamilyScore, Score, bank_path, recordings, score};
 
 /// Prints the figures per family and in total, and up to `worst` of the worst recordings.
 pub(crate) fn print(worst: usize) -> Result<(), Box<dyn Error>> {
-    println!("Recorded instruments");
+    heading("Recorded instruments");
     let Some(recordings) = recordings()? else {
         println!("  skipped: no sound bank at {}", bank_path().display());
         return Ok(());
