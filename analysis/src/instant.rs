@@ -50,7 +50,7 @@ impl Evidence {
             sample_rate_hz: rate,
             frames,
             transforms,
-            peaks: vec![Vec::with_capacity(PEAKS_MAX); LENGTHS],
+            peaks: (0..LENGTHS).map(|_| Vec::with_capacity(PEAKS_MAX)).collect(),
             noise: NoiseFloor::new(shortest << 3),
             periodicity: Periodicity::new(short, long, settings.highest_hz),
             search: Search::new((settings.lowest_hz, settings.highest_hz)),
