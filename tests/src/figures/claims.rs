@@ -47,12 +47,16 @@ pub struct ClaimFigures {
 /// # Errors
 /// Settings that the engine refuses.
 pub fn claims(draw: Draw) -> Result<Vec<ClaimFigures>, SettingsError> {
-    let kinds: [(&'static str, Make); 6] = [
+    let kinds: [(&'static str, Make); 10] = [
         ("chords", chords),
         ("noise", noise),
         ("coloured noise", coloured_noise),
         ("silence", silence),
-        ("drums", drums),
+        ("kicks", |random, rate| drums(random, rate, &[Drum::Kick])),
+        ("snares", |random, rate| drums(random, rate, &[Drum::Snare])),
+        ("hats", |random, rate| drums(random, rate, &[Drum::Hat])),
+        ("toms", |random, rate| drums(random, rate, &[Drum::Tom])),
+        ("drums together", |random, rate| drums(random, rate, &Drum::ALL)),
         ("clicks", sparse_clicks),
     ];
     kinds.into_iter().map(|(kind, make)| one_kind(draw, kind, make)).collect()
@@ -142,21 +146,17 @@ fn silence(random: &mut Random, rate: f64) -> Sound {
     (white_noise(random, sample_count(DURATION_S, rate), power), format!("{level} dB"))
 }
 
-fn drums(random: &mut Random, rate: f64) -> Sound {
+fn drums(random: &mut Random, rate: f64, kit: &[Drum]) -> Sound {
     let mut sound = white_noise(random, sample_count(DURATION_S, rate), 1e-9);
-    let one = random.pick(&[true, false]);
-    let drum = random.pick(&Drum::ALL);
     let beat = random.between(0.12, 0.35);
     let mut at = random.between(0.05, 0.2);
     while at < DURATION_S - 0.1 {
-        let drum = if one { drum } else { random.pick(&Drum::ALL) };
         let level = random.between(-24.0, -4.0);
-        let hit = drum.hit(random, rate, level);
+        let hit = random.pick(kit).hit(random, rate, level);
         add_at(&mut sound, sample_count(at, rate), &hit);
         at += beat * random.pick(&[1.0, 1.0, 2.0]);
     }
-    let what = if one { format!("{drum:?}") } else { "all drums".to_owned() };
-    (sound, format!("{what} every {beat:.2} s"))
+    (sound, format!("every {beat:.2} s"))
 }
 
 fn sparse_clicks(random: &mut Random, rate: f64) -> Sound {
