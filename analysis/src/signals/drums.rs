@@ -12,7 +12,7 @@ const MEMBRANE: [f64; 8] = [1.0, 1.593, 2.136, 2.296, 2.653, 2.918, 3.156, 3.501
 /// A drum. Every hit differs in its random part.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum Drum {
-    /// A sine that falls from some 150 Hz to some 50 Hz within 100 ms.
+    /// A sine that falls from some 200 Hz towards some 50 Hz, quickly, then slowly.
     Kick,
     /// Two short modes under a burst of noise.
     Snare,
@@ -66,7 +66,8 @@ fn kick(random: &mut Random, rate: f64) -> Vec<f64> {
     (0..sample_count(0.35, rate))
         .map(|n| {
             let t = n as f64 / rate;
-            turns += (low + above * (-t / 0.03).exp()) / rate;
+            let fall = above * ((-t / 0.03).exp() + 0.3 * (-t / 0.15).exp());
+            turns += (low + fall) / rate;
             (TAU * turns).sin() * (-t / 0.07).exp() + 0.3 * random.normal() * (-t / 0.004).exp()
         })
         .collect()
