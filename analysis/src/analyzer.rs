@@ -1,12 +1,16 @@
 //! The streaming engine: samples in, readings and notes out.
 
-use crate::convert::number;
+use crate::convert::{nearest_index, number};
 use crate::fundamental::Candidate;
 use crate::history::History;
 use crate::instant::Evidence;
+use crate::measure::assemble::Assembler;
+use crate::measure::note::STRETCH_S;
 use crate::note::Note;
+use crate::onset::{ChangePoint, Direction};
 use crate::reading::{Gap, GapReason, Partial, Pitch, Reading, State, Stretch};
 use crate::refine::{Refiner, Tone};
+use crate::segment::{Event, Segmenter, Step};
 use crate::settings::{Settings, SettingsError};
 use crate::stiff::{self, CENTS_PER_NEPER, Point};
 use crate::track::{LOOK_AHEAD, Tracker};
@@ -61,6 +65,11 @@ pub struct Analyzer {
     first_centre: u64,
     reading: Reading,
     missing: Option<Gap>,
+    segmenter: Segmenter,
+    change: ChangePoint,
+    assembler: Assembler,
+    /// Position of the note's onset, while one sounds.
+    note_start: Option<u64>,
 }
 
 impl Analyzer {
@@ -86,7 +95,15 @@ impl Analyzer {
         };
         Ok(Self {
             hop,
-            history: History::new(4 * evidence.reach() + (KEPT + 2) * hop),
+            history: History::new(
+                4 * evidence.reach()
+                    + (KEPT + 20) * hop
+                    + crate::convert::nearest_index(STRETCH_S * settings.sample_rate_hz),
+            ),
+            segmenter: Segmenter::default(),
+            change: ChangePoint::new(settings.sample_rate_hz),
+            assembler: Assembler::new(settings.sample_rate_hz, partials, hop),
+            note_start: None,
             refiner: Refiner::new(partials),
             tracker: Tracker::new(),
             instants: (0..KEPT).map(|_| instant()).collect(),
@@ -144,6 +161,8 @@ impl Analyzer {
         self.history.restart(position);
         self.evidence.restart();
         self.tracker.restart();
+        self.segmenter.restart();
+        self.note_start = None;
         self.analysed = 0;
         self.decided = 0;
         self.delivered = 0;
@@ -213,6 +232,9 @@ impl Analyzer {
         }
         while self.delivered < self.decided {
             self.deliver(sink);
+        }
+        if let Some(event) = self.segmenter.finish() {
+            self.note_event(event, sink);
         }
     }
 
@@ -311,6 +333,54 @@ impl Analyzer {
             }
         }
         sink.reading(reading);
+        self.follow_note(sink);
         self.delivered += 1;
+    }
+
+    /// Takes the instant being delivered into the notes.
+    fn follow_note(&mut self, sink: &mut impl Sink) {
+        let instant = &self.instants[self.delivered % KEPT];
+        let step = Step {
+            centre: instant.centre,
+            f0: self.reading.pitch.map(|p| p.f0_hz),
+            level_dbfs: instant.level_dbfs,
+        };
+        let (ended, begun) = self.segmenter.step(step);
+        for event in [ended, begun].into_iter().flatten() {
+            self.note_event(event, sink);
+        }
+        if self.note_start.is_some() && self.segmenter.holds(step.centre) {
+            let instant = &self.instants[self.delivered % KEPT];
+            let pitch = (instant.f0, instant.f0_sd_cents);
+            self.assembler.add(&self.history, instant.centre, pitch, &instant.tones);
+        }
+    }
+
+    fn note_event(&mut self, event: Event, sink: &mut impl Sink) {
+        let hop = self.hop as u64;
+        let f0 = self.instants[self.delivered % KEPT].f0.max(self.settings.lowest_hz);
+        let period = nearest_index(self.settings.sample_rate_hz / f0);
+        match event {
+            Event::Begin { first } => {
+                let span = (first.saturating_sub(5 * hop), first + 5 * hop);
+                let found = self.change.find(&self.history, span, period, Direction::Rise);
+                let stream = self.history.start();
+                let start = found.unwrap_or(first.saturating_sub(hop / 2).max(stream));
+                self.note_start = Some(start);
+                self.assembler.begin(start);
+            }
+            Event::End { last } => {
+                let Some(start) = self.note_start.take() else { return };
+                let span = (last.saturating_sub(5 * hop), last + 5 * hop);
+                let found = self.change.find(&self.history, span, period, Direction::Fall);
+                let end = found.unwrap_or(last + hop / 2).min(self.history.end());
+                let end = if last + hop >= self.history.end() { self.history.end() } else { end };
+                if end > start {
+                    if let Some(note) = self.assembler.end(&self.history, end) {
+                        sink.note(note);
+                    }
+                }
+            }
+        }
     }
 }

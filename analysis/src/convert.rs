@@ -20,6 +20,12 @@ pub(crate) fn floor_index(x: f64) -> usize {
     x as usize
 }
 
+/// Nearest whole number; saturates, 0 for NaN.
+#[expect(clippy::cast_possible_truncation, reason = "saturates by definition of `as`")]
+pub(crate) fn nearest_short(x: f64) -> i16 {
+    x.round() as i16
+}
+
 /// Single precision, rounded.
 #[expect(
     clippy::cast_possible_truncation,

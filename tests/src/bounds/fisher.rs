@@ -5,8 +5,9 @@
 use core::f64::consts::TAU;
 
 use nalgebra::DMatrix;
+use plumbtone_analysis::signals::Tone;
 
-use super::{Observation, StiffTone};
+use super::Observation;
 
 /// Below this many radians over the whole observation, the sums are replaced by their limits (relative error 1e-8, as
 /// large as the cancellation in the closed form there).
@@ -18,12 +19,12 @@ pub(super) fn centre(samples: usize) -> f64 {
 }
 
 /// Information on all frequencies (radians per sample), then all amplitudes, then all phases at the centre.
-pub(super) fn free(tone: &StiffTone<'_>, observation: &Observation) -> DMatrix<f64> {
+pub(super) fn free(tone: &Tone, observation: &Observation) -> DMatrix<f64> {
     let waves: Vec<Wave> = tone
         .partials
         .iter()
         .map(|partial| {
-            let w = tone.frequency_hz(partial.number) * observation.radians_per_hz();
+            let w = TAU * partial.frequency_hz / tone.sample_rate_hz;
             let phase = partial.phase_rad + w * centre(observation.samples);
             Wave { w, amplitude: partial.amplitude, phase }
         })
@@ -146,6 +147,32 @@ mod tests {
                     "{samples} samples, w {w}: {closed:?} for {direct:?}"
                 );
             }
+        }
+    }
+    #[test]
+    fn information_equals_the_products_of_the_derivatives() {
+        // So short that the partials and their images leak into one another.
+        let mut tone = Tone::new(1000.0, 31.0, 0.01, 5, |n| 1.0 / f64::from(n));
+        for (partial, phase) in tone.partials.iter_mut().zip([0.3, -2.0, 1.7, 2.9, -0.4]) {
+            partial.phase_rad = phase;
+        }
+        for samples in [40, 41] {
+            let count = tone.partials.len();
+            let derivatives = DMatrix::from_fn(samples, 3 * count, |n, column| {
+                let partial = tone.partials[column % count];
+                let w = TAU * partial.frequency_hz / 1000.0;
+                let t = n as f64 - centre(samples);
+                let angle = w * n as f64 + partial.phase_rad;
+                match column / count {
+                    0 => -partial.amplitude * t * angle.sin(),
+                    1 => angle.cos(),
+                    _ => -partial.amplitude * angle.sin(),
+                }
+            });
+            let expected = derivatives.transpose() * &derivatives / 0.25;
+            let found = free(&tone, &Observation { samples, noise_sd: 0.5 });
+            let error = (&found - &expected).amax();
+            assert!(error < 1e-8 * expected.amax(), "{samples} samples: off by {error}");
         }
     }
 }
