@@ -7,8 +7,10 @@ use std::collections::BTreeMap;
 use std::path::PathBuf;
 
 use crate::cast::index;
+use crate::lowest_peak::lowest_peak_hz;
 use crate::periodicity::Periodicity;
 use crate::soundfont::{self, Sample, Zone};
+use crate::take::cents;
 
 pub use score::{FamilyScore, Score, score};
 
@@ -85,7 +87,8 @@ pub struct Recording {
     /// Whether the sound itself contradicts the stated pitch: it does not repeat with the stated period, repeats as well
     /// with an integer fraction of it, or clearly better with another (a loop of few samples that cannot hold the pitch,
     /// an organ stop that sounds an octave lower, a preset that plays the sample as another note). Such recordings are
-    /// reported, but no figure counts them.
+    /// reported, but no figure counts them. Bars and bells make no period: for them it is enough that the lowest strong
+    /// line lies at the stated pitch.
     pub disputed: bool,
 }
 
@@ -158,11 +161,17 @@ fn by_frequency(zones: &[(Family, f64)]) -> Vec<f64> {
     pitches.into_iter().map(|(_, f0)| f0).collect()
 }
 
-/// Correlation at the stated period, or 0 when another period overturns it.
+/// 1 when the lowest strong line lies at the stated pitch; else the correlation at the stated period, or 0 when another
+/// period overturns it.
 fn standing(samples: &[f32], sample_rate_hz: f64, f0_hz: f64) -> f64 {
     let start = index(AFTER_ATTACK_S * sample_rate_hz).min(samples.len() / 4);
+    let sound = &samples[start..];
+    let lowest = lowest_peak_hz(sound, sample_rate_hz).ok().flatten();
+    if lowest.is_some_and(|lowest| cents(lowest, f0_hz).abs() < NEAR_CENTS) {
+        return 1.0;
+    }
     let period = sample_rate_hz / f0_hz;
-    let Ok(periodicity) = Periodicity::of(&samples[start..], period, RIVALS.1 * period) else {
+    let Ok(periodicity) = Periodicity::of(sound, period, RIVALS.1 * period) else {
         return 0.0;
     };
     let best = |from_cents: f64, to_cents: f64| {
