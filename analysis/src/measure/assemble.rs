@@ -1,6 +1,7 @@
 //! A note from its stretches: the figures of each put together, the strays named, the descriptors drawn up.
 
 use super::note::{Meter, STRETCH_S};
+use super::rows::Row;
 use crate::convert::{index, nearest_index, number};
 use crate::descriptors::Descriptors;
 use crate::history::History;
@@ -133,9 +134,9 @@ impl Assembler {
         self.log_f0.0 += w;
         self.log_f0.1 += w * fit.f0.ln();
         let since = (start - self.start) as f64 / self.sample_rate_hz;
-        for row in self.meter.rows.iter().filter(|r| r.present && r.n <= self.partials) {
+        for row in self.meter.rows.rows.iter().filter(|r| r.present && r.n <= self.partials) {
             let s = &mut self.sums[row.n];
-            let hz = row.expected_hz + row.fit.delta_hz;
+            let hz = row.hz();
             let w = (hz / row.fit.delta_sd_hz).powi(2);
             s.frequency.0 += w;
             s.frequency.1 += w * hz.ln();
@@ -197,10 +198,10 @@ impl Assembler {
         for line in &long.lines {
             let n = nearest_number(line.hz, fit);
             let near = |n: usize| {
-                let row = self.meter.rows.iter().find(|r| r.present && r.n == n);
+                let row = self.meter.rows.rows.iter().find(|r| r.present && r.n == n);
                 let hz = row.map_or_else(
                     || partial_hz(fit.f0, fit.b, n as f64),
-                    |r| r.expected_hz + r.fit.delta_hz,
+                    Row::hz,
                 );
                 (line.hz - hz).abs() < own + 1.5 * sweep * hz
             };

@@ -16,7 +16,6 @@ pub(crate) struct Baseband {
     rows_max: usize,
     blocks: usize,
     data: Vec<Complex<f32>>,
-    clean: Vec<Complex<f64>>,
 }
 
 impl Baseband {
@@ -28,7 +27,6 @@ impl Baseband {
             rows_max,
             blocks: 0,
             data: vec![Complex::default(); rows_max.next_multiple_of(LANES) * blocks_max],
-            clean: Vec::with_capacity(blocks_max),
         }
     }
 
@@ -64,14 +62,6 @@ impl Baseband {
                 }
             }
         }
-    }
-
-    /// A row in double precision, to take others' shares away from.
-    pub(crate) fn copy_row(&mut self, row: usize) -> &mut Vec<Complex<f64>> {
-        let from = &self.data[row * self.blocks_max..][..self.blocks];
-        self.clean.clear();
-        self.clean.extend(from.iter().map(|z| Complex::new(f64::from(z.re), f64::from(z.im))));
-        &mut self.clean
     }
 }
 
