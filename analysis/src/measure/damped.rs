@@ -13,6 +13,8 @@ use realfft::num_complex::Complex;
 const ROUNDS: usize = 16;
 /// A step of less than this many of its own deviations ends the rounds.
 const SETTLED: f64 = 0.01;
+/// Most nepers by which a partial may grow over the stretch.
+const GROWTH: f64 = 20.0;
 /// Oscillators side by side, so that no product waits for the last.
 const LANES: usize = 4;
 
@@ -55,6 +57,15 @@ impl Times {
     }
 }
 
+/// How far a fit may go.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct Limits {
+    /// Off the frequency brought down by, in Hz.
+    pub(crate) off_hz: f64,
+    /// Decay, in nepers per second.
+    pub(crate) sigma: f64,
+}
+
 /// Sums of one pass over the signal for a rate `g`, with `e = exp(g t)`.
 #[derive(Debug, Clone, Copy, Default)]
 struct Sums {
@@ -80,11 +91,15 @@ impl Sums {
 
 /// Fits from a first guess of decay and frequency. Deviations are those of white noise of the residual's own variance,
 /// widened where the residual is not white.
-pub(crate) fn fit(z: &[Complex<f64>], times: Times, guess: &Damped) -> Damped {
+pub(crate) fn fit(z: &[Complex<f64>], times: Times, guess: &Damped, limits: Limits) -> Damped {
     let duration = times.duration(z.len());
     let count = z.len() as f64;
     let total: f64 = z.iter().map(Complex::norm_sqr).sum();
-    let bounded = |g: Complex<f64>| Complex::new(g.re.clamp(-400.0, 20.0 / duration), g.im);
+    let widest = TAU * limits.off_hz;
+    let bounded = |g: Complex<f64>| {
+        let re = g.re.clamp(-limits.sigma, GROWTH / duration);
+        Complex::new(re, g.im.clamp(-widest, widest))
+    };
     let mut g = bounded(Complex::new(-guess.sigma, TAU * guess.delta_hz));
     let mut sums = pass(z, times, g);
     let mut shrink = 1.0;
