@@ -35,8 +35,10 @@ pub(crate) struct Damped {
     pub(crate) sigma_sd: f64,
     /// See above.
     pub(crate) log_sd: f64,
-    /// Noise variance of one block.
+    /// Noise variance of one block, without slow misfit.
     pub(crate) noise: f64,
+    /// The same with all that is left.
+    pub(crate) left: f64,
     /// Mean power over the note, as squared amplitude.
     pub(crate) mean_square: f64,
 }
@@ -171,6 +173,7 @@ fn describe(z: &[Complex<f64>], times: Times, g: Complex<f64>, sums: &Sums) -> D
         sigma_sd: rate_sd,
         log_sd: (half * sums.s2 / det).sqrt(),
         noise: fine,
+        left: noise,
         mean_square: explained / count + if coloured { noise - fine } else { 0.0 },
     }
 }

@@ -2,7 +2,7 @@
 
 use core::f64::consts::TAU;
 
-use super::baseband::Baseband;
+use super::baseband::{Baseband, LANES};
 use super::damped::Times;
 use super::lines::LongSpectrum;
 use super::path::{self, PathPoint};
@@ -17,7 +17,7 @@ const BLOCK_S: f64 = 0.005;
 /// Longest stretch measured at once, in seconds.
 pub(crate) const STRETCH_S: f64 = 6.0;
 /// Partials modelled beyond those asked for, so that the last one is not disturbed.
-const SPARE: usize = 3;
+pub(crate) const SPARE: usize = 3;
 /// Nearest to the Nyquist frequency at which a partial can be told from its own image, in resolutions.
 const CLEAR_OF_IMAGE: f64 = 4.0;
 
@@ -114,13 +114,31 @@ impl Meter {
         self.long.run(&self.samples);
         let (f0, b) = self.expect()?;
         let grid = (start, block, length / block);
-        let moves = path::follow(&self.path, grid, &mut self.bend);
-        self.sweep = moves.map_or(0.0, |m| m.sweep);
-        self.place(moves.map_or(f0, |m| m.mean_log.exp()), b);
-        self.baseband.run(&self.samples, &self.steps, &self.bend);
         let times = self.times();
+        let moves = path::follow(&self.path, grid, &mut self.bend);
+        let moves = moves.filter(|m| {
+            let straight = self.misfit(f0, b, times, false);
+            self.sweep = m.sweep;
+            self.misfit(m.mean_log.exp(), b, times, true) < straight
+        });
+        if moves.is_none() {
+            self.bend.clear();
+            self.sweep = 0.0;
+        }
+        self.place(moves.map_or(f0, |m| m.mean_log.exp()), b);
+        self.lay_out();
+        self.baseband.run(&self.samples, &self.steps, &self.bend);
         self.rows.fit(&self.baseband, times, f0, self.bend.is_empty());
         self.rows.judge(times, f0)
+    }
+
+    /// How badly the strongest partials are explained by a pitch that holds, or that follows `bend`.
+    fn misfit(&mut self, f0: f64, b: f64, times: Times, bent: bool) -> f64 {
+        self.place(f0, b);
+        self.rows.keep_strongest(LANES);
+        self.lay_out();
+        self.baseband.run(&self.samples, &self.steps, if bent { &self.bend } else { &[] });
+        self.rows.misfit(&self.baseband, times, f0)
     }
 
     fn times(&self) -> Times {
@@ -149,6 +167,13 @@ impl Meter {
         Some((fit.f0, fit.b))
     }
 
+    /// Says how fast each row turns.
+    fn lay_out(&mut self) {
+        let turn = TAU / self.sample_rate_hz;
+        self.steps.clear();
+        self.steps.extend(self.rows.rows.iter().map(|r| turn * r.expected_hz));
+    }
+
     /// Instants that must have seen a partial.
     fn often(&self) -> usize {
         (self.path.len() / 4).max(1)
@@ -157,7 +182,6 @@ impl Meter {
     /// Lays out the rows for a model.
     fn place(&mut self, f0: f64, b: f64) {
         self.rows.rows.clear();
-        self.steps.clear();
         let duration = self.samples.len() as f64 / self.sample_rate_hz;
         let nyquist = 0.5 * self.sample_rate_hz;
         let top = (nyquist - CLEAR_OF_IMAGE / duration) * (-self.sweep).exp();
@@ -182,7 +206,6 @@ impl Meter {
                 noise: self.long.noise_of_sum(expected_hz, self.baseband.block()),
                 ..Row::default()
             });
-            self.steps.push(TAU * expected_hz / self.sample_rate_hz);
         }
     }
 }

@@ -77,11 +77,28 @@ impl Rows {
         }
     }
 
+    /// Drops all but the strongest rows, as the instants of the note saw them.
+    pub(crate) fn keep_strongest(&mut self, count: usize) {
+        self.rows.sort_unstable_by(|a, b| b.power.total_cmp(&a.power));
+        self.rows.truncate(count);
+        self.rows.sort_unstable_by_key(|r| r.n);
+    }
+
+    /// Fits every row by itself; the sum of the logarithms of what is left, which is minus the logarithm of the
+    /// likelihood but for factors.
+    pub(crate) fn misfit(&mut self, baseband: &Baseband, times: Times, f0: f64) -> f64 {
+        self.begin(baseband, times, f0);
+        let mut sum = 0.0;
+        for i in 0..self.rows.len() {
+            self.find(baseband, times, i, 0.0);
+            sum += self.rows[i].fit.left.ln();
+        }
+        sum
+    }
+
     /// Fits every row. `relaxed` says that the pitch holds, so that shares of others are what [`Shares`] expects.
     pub(crate) fn fit(&mut self, baseband: &Baseband, times: Times, f0: f64, relaxed: bool) {
-        self.shares.clear(times, baseband.blocks());
-        let sigma = f0.clamp(SIGMA_MAX.0, SIGMA_MAX.1);
-        self.limits = Limits { off_hz: reach(f64::INFINITY, f0), sigma };
+        self.begin(baseband, times, f0);
         self.order.clear();
         self.order.extend(0..self.rows.len());
         self.order.sort_unstable_by(|&i, &j| self.rows[j].power.total_cmp(&self.rows[i].power));
@@ -103,6 +120,12 @@ impl Rows {
                 break;
             }
         }
+    }
+
+    fn begin(&mut self, baseband: &Baseband, times: Times, f0: f64) {
+        self.shares.clear(times, baseband.blocks());
+        let sigma = f0.clamp(SIGMA_MAX.0, SIGMA_MAX.1);
+        self.limits = Limits { off_hz: reach(f64::INFINITY, f0), sigma };
     }
 
     /// Says which partials are there and fits the stiff string through them.
