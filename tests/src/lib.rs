@@ -2,6 +2,7 @@
 
 pub mod bounds;
 pub mod cast;
+pub mod estimators;
 pub mod figures;
 pub mod lowest_peak;
 pub mod periodicity;
