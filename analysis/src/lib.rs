@@ -14,11 +14,15 @@
 #![forbid(unsafe_code)]
 
 mod analyzer;
+mod descriptors;
 mod note;
 mod reading;
 mod settings;
+pub mod tuning;
+pub mod window;
 
 pub use analyzer::{Analyzer, Sink};
-pub use note::{Descriptors, Note, NotePartial};
+pub use descriptors::Descriptors;
+pub use note::{Note, NotePartial};
 pub use reading::{Gap, GapReason, Partial, Pitch, Reading, State, Stray, StrayKind, Stretch};
 pub use settings::{Settings, SettingsError};

@@ -1,5 +1,6 @@
 //! A sounding note, measured whole: the averaged figures of everything between its onset and its end.
 
+use crate::descriptors::Descriptors;
 use crate::reading::{Stray, Stretch};
 
 /// One partial of a note.
@@ -31,25 +32,6 @@ pub struct NotePartial {
     pub decay_sd: f64,
     /// Mean power over the noise within a bandwidth of 1 Hz (an observation of one second), in dB.
     pub snr_db: f64,
-}
-
-/// What a note's partials say together. `None` where the partials needed were not found.
-#[derive(Debug, Clone, Copy, PartialEq, Default)]
-pub struct Descriptors {
-    /// Power of the odd partials (1 included) over that of the even ones, in dB.
-    pub odd_even_db: Option<f64>,
-    /// Slope of level over log2 of the partial number, in dB per octave.
-    pub tilt_db_per_octave: Option<f64>,
-    /// Total harmonic distortion against the fundamental, in percent.
-    pub thd_f_percent: Option<f64>,
-    /// Total harmonic distortion against the root of the total power, in percent.
-    pub thd_r_percent: Option<f64>,
-    /// Power of the partials over all other power, in dB.
-    pub hnr_db: Option<f64>,
-    /// Tristimulus over amplitudes: partial 1, 2 to 4, 5 and above, summing to 1.
-    pub tristimulus: Option<[f64; 3]>,
-    /// Amplitude-weighted mean partial number.
-    pub centroid_partial: Option<f64>,
 }
 
 /// One sounding note.
