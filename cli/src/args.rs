@@ -1,7 +1,9 @@
 //! What the user can say on the command line.
 
 use crate::input::Channel;
+use clap::builder::{PossibleValuesParser, TypedValueParser};
 use clap::{Args as ClapArgs, Parser, Subcommand};
+use plumbtone_analysis::tuning::Temperament;
 use std::path::PathBuf;
 
 const EXIT_STATUS: &str = "\
@@ -77,6 +79,9 @@ pub(crate) struct What {
     /// Concert pitch: the frequency of A4
     #[arg(long, value_name = "HZ", default_value = "440")]
     pub(crate) concert_pitch: f64,
+    /// Temperament that names the notes; A has the concert pitch in each
+    #[arg(long, value_name = "NAME", default_value = "equal", value_parser = temperament_names())]
+    pub(crate) temperament: Temperament,
 }
 
 /// Where the figures go.
@@ -96,6 +101,11 @@ pub(crate) struct Outputs {
     /// Which note of the file to draw, from 1 [default: the longest]
     #[arg(long, value_name = "NUMBER", requires = "picture", value_parser = clap::value_parser!(u32).range(1..))]
     pub(crate) note: Option<u32>,
+}
+
+fn temperament_names() -> impl TypedValueParser<Value = Temperament> {
+    PossibleValuesParser::new(Temperament::ALL.map(Temperament::name))
+        .try_map(|name| name.parse::<Temperament>())
 }
 
 fn seconds(text: &str) -> Result<f64, String> {

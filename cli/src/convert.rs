@@ -19,13 +19,20 @@ pub(crate) fn drawing_unit(value: f64) -> i32 {
 }
 
 /// A level or sample kept in single precision.
-#[expect(clippy::cast_possible_truncation, reason = "24 bits of mantissa are enough for what is drawn")]
+#[expect(
+    clippy::cast_possible_truncation,
+    reason = "24 bits of mantissa are enough for what is drawn"
+)]
 pub(crate) fn single(value: f64) -> f32 {
     value as f32
 }
 
 /// Decimals that show a deviation with two significant digits, within 0 to `most`.
-#[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "clamped to 0..=most before the cast")]
+#[expect(
+    clippy::cast_possible_truncation,
+    clippy::cast_sign_loss,
+    reason = "clamped to 0..=most before the cast"
+)]
 pub(crate) fn decimals_for(deviation: f64, most: usize) -> usize {
     if deviation > 0.0 && deviation.is_finite() {
         (1.0 - deviation.log10().floor()).clamp(0.0, most as f64) as usize

@@ -137,7 +137,11 @@ impl Input {
     pub(crate) fn remarks(&self, read_to_end: bool) -> Vec<String> {
         let seconds = |frames: u64| frames as f64 / f64::from(self.sample_rate_hz);
         let mut remarks = self.remarks.clone();
-        let unread = if read_to_end { self.frames.map_or(0, |all| all.saturating_sub(self.position)) } else { 0 };
+        let unread = if read_to_end {
+            self.frames.map_or(0, |all| all.saturating_sub(self.position))
+        } else {
+            0
+        };
         let missing = self.missing + unread;
         if missing > 0 {
             remarks.push(format!(
@@ -152,7 +156,9 @@ impl Input {
         let runs: u64 = self.clips.iter().map(|clip| clip.runs).sum();
         if runs > 0 {
             let times = if runs == 1 { "once".to_owned() } else { format!("{runs} times") };
-            remarks.push(format!("is clipped: it stays at full scale {times}; levels and partials suffer from that"));
+            remarks.push(format!(
+                "is clipped: it stays at full scale {times}; levels and partials suffer from that"
+            ));
         }
         remarks
     }
@@ -167,7 +173,9 @@ impl Input {
                 // The reader has passed the damaged place; the next time stamp tells how much was lost.
                 Ok(Some(_)) | Err(DecodeError::DecodeError(_)) => {}
                 Ok(None) => return Ok(None),
-                Err(DecodeError::IoError(error)) if error.kind() == ErrorKind::UnexpectedEof => return Ok(None),
+                Err(DecodeError::IoError(error)) if error.kind() == ErrorKind::UnexpectedEof => {
+                    return Ok(None);
+                }
                 Err(error) => bail!("cannot be read any further: {error}"),
             }
         }

@@ -8,7 +8,8 @@ use std::path::Path;
 pub(crate) fn distinct_names<P: AsRef<Path>>(inputs: &[P]) -> Vec<String> {
     let mut taken = HashSet::new();
     let stem = |path: &Path| {
-        path.file_stem().map_or_else(|| "sound".to_owned(), |stem| stem.to_string_lossy().into_owned())
+        path.file_stem()
+            .map_or_else(|| "sound".to_owned(), |stem| stem.to_string_lossy().into_owned())
     };
     // First come the plain stems, so that "a-2.wav" keeps its name when two "a.wav" are there.
     let mut names: Vec<Option<String>> = inputs
@@ -18,7 +19,9 @@ pub(crate) fn distinct_names<P: AsRef<Path>>(inputs: &[P]) -> Vec<String> {
     for (name, path) in names.iter_mut().zip(inputs) {
         if name.is_none() {
             let stem = stem(path.as_ref());
-            *name = (2_u32..).map(|n| format!("{stem}-{n}")).find(|name| taken.insert(name.to_lowercase()));
+            *name = (2_u32..)
+                .map(|n| format!("{stem}-{n}"))
+                .find(|name| taken.insert(name.to_lowercase()));
         }
     }
     names.into_iter().flatten().collect()

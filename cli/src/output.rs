@@ -8,10 +8,12 @@ pub(crate) mod table;
 pub(crate) mod words;
 
 use crate::measure::FileFacts;
-use anyhow::Result;
+use anyhow::{Context as _, Result};
 use plumbtone_analysis::{Gap, Reading};
 use records::NoteRecord;
 use spool::Spool;
+use std::path::Path;
+use tempfile::NamedTempFile;
 
 /// A form in which the figures of one file are written down.
 pub(crate) trait Report {
@@ -35,4 +37,32 @@ pub(crate) trait Report {
 
     /// Ends the report, and gives what is to be printed.
     fn finish(self: Box<Self>, facts: &FileFacts) -> Result<Option<Spool>>;
+}
+
+/// A file beside its final place, for [`publish`]; it vanishes if it never gets there.
+///
+/// # Errors
+/// The folder cannot be written to.
+pub(crate) fn new_file_for(place: &Path) -> Result<NamedTempFile> {
+    let folder =
+        place.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(Path::new("."));
+    let mut builder = tempfile::Builder::new();
+    #[cfg(unix)]
+    {
+        // The same rights as any new file, less the user's mask, instead of those of a secret.
+        use std::os::unix::fs::PermissionsExt as _;
+        builder.permissions(std::fs::Permissions::from_mode(0o666));
+    }
+    builder
+        .prefix(".plumbtone-")
+        .tempfile_in(folder)
+        .with_context(|| format!("cannot write {}", place.display()))
+}
+
+/// Moves a finished file to its place in one step, so that no reader ever sees half of it.
+///
+/// # Errors
+/// The place cannot be written to.
+pub(crate) fn publish(file: NamedTempFile, place: &Path) -> Result<()> {
+    file.persist(place).map(drop).with_context(|| format!("cannot write {}", place.display()))
 }

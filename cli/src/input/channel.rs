@@ -66,7 +66,11 @@ impl Mix {
             Channel::Number(number) => number,
         };
         if needed > channels {
-            let has = if channels == 1 { "one channel".to_owned() } else { format!("{channels} channels") };
+            let has = if channels == 1 {
+                "one channel".to_owned()
+            } else {
+                format!("{channels} channels")
+            };
             anyhow::bail!("has {has}: there is no {choice}");
         }
         Ok(match choice {
@@ -92,7 +96,9 @@ impl Mix {
         out.clear();
         match self {
             Self::One(channel) => out.extend_from_slice(&planes[channel]),
-            Self::HalfSum => out.extend(planes[0].iter().zip(&planes[1]).map(|(a, b)| 0.5 * (a + b))),
+            Self::HalfSum => {
+                out.extend(planes[0].iter().zip(&planes[1]).map(|(a, b)| 0.5 * (a + b)))
+            }
             Self::HalfDifference => {
                 out.extend(planes[0].iter().zip(&planes[1]).map(|(a, b)| 0.5 * (a - b)));
             }
@@ -124,7 +130,8 @@ mod tests {
     #[test]
     fn a_missing_channel_is_refused_and_mono_has_a_mid() {
         assert_eq!(Mix::new(Channel::Mid, 1).unwrap(), Mix::One(0));
-        for (choice, channels) in [(Channel::Right, 1), (Channel::Side, 1), (Channel::Number(3), 2)] {
+        for (choice, channels) in [(Channel::Right, 1), (Channel::Side, 1), (Channel::Number(3), 2)]
+        {
             assert!(Mix::new(choice, channels).is_err(), "{choice} of {channels} channels");
         }
         for text in ["0", "-1", "middle", ""] {

@@ -52,10 +52,14 @@ impl Container {
         let got = read_up_to(&mut file, &mut start)?;
         match (&start[..4], &start[8..]) {
             (b"RIFF" | b"RF64" | b"BW64", b"WAVE") => wav::find(file, length).map(Self::Section),
-            (b"FORM", b"AIFF" | b"AIFC") => aiff::find(file, length, &start[8..]).map(Self::Section),
+            (b"FORM", b"AIFF" | b"AIFC") => {
+                aiff::find(file, length, &start[8..]).map(Self::Section)
+            }
             (b"fLaC", _) => flac(file),
             ([b'I', b'D', b'3', _], _) => flac(file),
-            (b"RIFF" | b"RF64" | b"BW64" | b"FORM", _) if got < 12 => bail!("ends within its header"),
+            (b"RIFF" | b"RF64" | b"BW64" | b"FORM", _) if got < 12 => {
+                bail!("ends within its header")
+            }
             _ => bail!("is not a WAV, AIFF or FLAC file"),
         }
     }
@@ -139,7 +143,10 @@ impl Chunk {
         file.seek(SeekFrom::Start(self.start))?;
         file.take(u64::from(self.size).min(FORMAT_BYTES_MAX)).read_to_end(&mut body)?;
         if body.len() < needed {
-            bail!("has a header that cannot be right: its '{}' chunk is too short", name.trim_end());
+            bail!(
+                "has a header that cannot be right: its '{}' chunk is too short",
+                name.trim_end()
+            );
         }
         Ok(body)
     }

@@ -2,6 +2,7 @@
 //! promises, so that the engine's can change without breaking anybody's script.
 
 use crate::measure::Timebase;
+use plumbtone_analysis::tuning::Tuning;
 use plumbtone_analysis::{Gap, GapReason, Note, NotePartial, Reading, State, Stray, StrayKind};
 use serde::Serialize;
 
@@ -111,16 +112,17 @@ impl GapRecord {
 }
 
 impl NoteRecord {
-    pub(crate) fn new(note: &Note, timebase: Timebase) -> Self {
+    pub(crate) fn new(note: &Note, timebase: Timebase, tuning: &Tuning) -> Self {
         let about = &note.descriptors;
+        let nearest = tuning.nearest(note.f0_hz);
         let stretch = note.stretch;
         Self {
             start_s: timebase.seconds(note.start),
             end_s: timebase.seconds(note.end),
             f0_hz: measured(note.f0_hz),
             f0_sd_cents: measured(note.f0_sd_cents),
-            note: None,
-            cents: None,
+            note: nearest.map(|nearest| nearest.note.to_string()),
+            cents: nearest.map(|nearest| nearest.cents),
             inharmonicity_b: stretch.and_then(|stretch| measured(stretch.b)),
             inharmonicity_sd: stretch.and_then(|stretch| measured(stretch.b_sd)),
             partials: note.partials.iter().map(PartialRecord::new).collect(),

@@ -2,7 +2,7 @@
 //! results come out in the order of the files whatever the order in which they are ready.
 
 use anyhow::{Context as _, Result};
-use std::io::{self, BufReader, Read, Seek, Write};
+use std::io::{self, BufReader, Seek as _, Write};
 use tempfile::SpooledTempFile;
 
 /// Text kept in memory at most, per spool.
@@ -32,7 +32,7 @@ impl Spool {
     pub(crate) fn print(self, out: &mut impl Write) -> io::Result<()> {
         for mut part in self.parts {
             part.rewind()?;
-            io::copy(&mut BufReader::new(part.by_ref()), out)?;
+            io::copy(&mut BufReader::new(part), out)?;
         }
         out.flush()
     }

@@ -16,12 +16,16 @@ pub(super) fn find(mut file: File, file_length: u64, form: &[u8]) -> Result<Sect
     while common.is_none() || sound.is_none() {
         let Some(chunk) = Chunk::at(&mut file, position, u32::from_be_bytes)? else { break };
         match &chunk.name {
-            b"COMM" => common = Some(Common::parse(&chunk.body(&mut file, if compressed { 22 } else { 18 })?)?),
+            b"COMM" => {
+                common =
+                    Some(Common::parse(&chunk.body(&mut file, if compressed { 22 } else { 18 })?)?)
+            }
             b"SSND" => {
                 let head = chunk.body(&mut file, 8)?;
                 let offset = u64::from(u32::from_be_bytes([head[0], head[1], head[2], head[3]]));
                 let skipped = SOUND_HEAD_BYTES + offset;
-                sound = Some((chunk.start + skipped, u64::from(chunk.size).saturating_sub(skipped)));
+                sound =
+                    Some((chunk.start + skipped, u64::from(chunk.size).saturating_sub(skipped)));
             }
             _ => {}
         }

@@ -41,7 +41,9 @@ fn section(
     let rest_is_chunks = after < 8 || rest_is_chunks(&mut file, data.next(), file_length)?;
     let (stated, remark) = match (data.size, long_data_size) {
         (SIZE_ELSEWHERE, size) => (size, None),
-        (0, _) if !rest_is_chunks => (None, Some("its header was never completed: measured up to the file's end".to_owned())),
+        (0, _) if !rest_is_chunks => {
+            (None, Some("its header was never completed: measured up to the file's end".to_owned()))
+        }
         (size, _) if !rest_is_chunks => (
             Some(u64::from(size)),
             Some(format!("{after} bytes after the sound data its header announces were not read")),
@@ -85,7 +87,9 @@ impl Format {
             tag => tag,
         };
         if tag != FORMAT_PCM && tag != FORMAT_FLOAT {
-            bail!("is coded in a way that is not supported (WAV format {tag:#06x}); PCM and float are");
+            bail!(
+                "is coded in a way that is not supported (WAV format {tag:#06x}); PCM and float are"
+            );
         }
         let (channels, bits) = (required(2)?, required(14)?);
         let frame = frame_bytes(channels, bits)?;
