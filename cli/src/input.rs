@@ -133,7 +133,7 @@ impl Input {
         Ok(None)
     }
 
-    /// Everything odd found so far, in words that continue "FILE ".
+    /// Everything odd found so far, in words that follow "FILE: ".
     pub(crate) fn remarks(&self, read_to_end: bool) -> Vec<String> {
         let seconds = |frames: u64| frames as f64 / f64::from(self.sample_rate_hz);
         let mut remarks = self.remarks.clone();
@@ -145,19 +145,22 @@ impl Input {
         let missing = self.missing + unread;
         if missing > 0 {
             remarks.push(format!(
-                "is truncated: {:.3} s of {:.3} s are there, and those were measured",
+                "truncated: the first {:.3} s of {:.3} s are there, and were measured",
                 seconds(self.position),
                 seconds(self.position + missing)
             ));
         }
         if self.lost > 0 {
-            remarks.push(format!("is damaged: {:.3} s could not be decoded", seconds(self.lost)));
+            remarks.push(format!(
+                "damaged: {:.3} s could not be decoded and are left out as gaps",
+                seconds(self.lost)
+            ));
         }
         let runs: u64 = self.clips.iter().map(|clip| clip.runs).sum();
         if runs > 0 {
-            let times = if runs == 1 { "once".to_owned() } else { format!("{runs} times") };
+            let places = if runs == 1 { "place" } else { "places" };
             remarks.push(format!(
-                "is clipped: it stays at full scale {times}; levels and partials suffer from that"
+                "clipped: the samples stay at full scale in {runs} {places}, which falsifies levels and partials"
             ));
         }
         remarks
@@ -217,7 +220,7 @@ fn open_file(path: &Path) -> Result<File> {
     File::open(path).map_err(|error| reason(&error))
 }
 
-/// What the system says, in words that continue "FILE ".
+/// What the system says, in words that follow "FILE: ".
 fn reason(error: &std::io::Error) -> anyhow::Error {
     match error.kind() {
         ErrorKind::NotFound => anyhow!("does not exist"),

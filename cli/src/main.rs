@@ -4,14 +4,12 @@
 //! engine delivers while it does, and [`run`] spreads the files over the processor cores and prints in order. No step
 //! holds a whole file, so a ten-hour one takes no more memory than a short one.
 #![forbid(unsafe_code)]
-#![expect(
-    clippy::print_stdout,
-    clippy::print_stderr,
-    reason = "printing is what this program is for"
-)]
+#![expect(clippy::print_stderr, reason = "printing is what this program is for")]
 
 mod args;
 mod convert;
+#[cfg(test)]
+mod fixtures;
 mod input;
 mod measure;
 mod names;

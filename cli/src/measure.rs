@@ -47,8 +47,10 @@ pub(crate) struct FileFacts {
 pub(crate) struct Measured {
     /// To be printed.
     pub(crate) text: Option<Spool>,
-    /// Sentences that continue "FILE ", for the user's attention.
+    /// Sentences that follow "FILE: ", for the user's attention.
     pub(crate) remarks: Vec<String>,
+    /// What was asked for and could not be had.
+    pub(crate) unmet: Vec<String>,
     /// Whether a pitch was found anywhere.
     pub(crate) pitched: bool,
 }
@@ -56,7 +58,7 @@ pub(crate) struct Measured {
 /// Measures a file into the reports. `progress` hears from time to time which share of the file has been read.
 ///
 /// # Errors
-/// Whatever keeps the file from being measured, in words that continue "FILE ".
+/// Whatever keeps the file from being measured, in words that follow "FILE: ".
 pub(crate) fn measure(
     path: &Path,
     what: &What,
@@ -108,8 +110,9 @@ pub(crate) fn measure(
     };
     let mut remarks = input.remarks(read_to_end);
     remarks.extend(fan.remarks());
-    let (text, pitched) = fan.finish(&facts)?;
-    Ok(Measured { text, remarks, pitched })
+    let pitched = fan.pitched || fan.notes > 0;
+    let (text, unmet) = fan.finish(&facts)?;
+    Ok(Measured { text, remarks, unmet, pitched })
 }
 
 fn settings(what: &What, sample_rate_hz: f64) -> Settings {
@@ -196,23 +199,26 @@ impl Fan {
         if self.non_finite > 0 {
             let seconds = self.non_finite as f64 / self.timebase.sample_rate_hz;
             remarks
-                .push(format!("has samples that are not numbers: {seconds:.3} s left out as gaps"));
+                .push(format!("samples that are not numbers: {seconds:.3} s are left out as gaps"));
         }
         if self.strays_left_out > 0 {
             remarks.push(format!(
-                "has more strays than are listed: the {} weakest are left out",
+                "more strays than a note lists: the {} weakest are left out",
                 self.strays_left_out
             ));
         }
         remarks
     }
 
-    fn finish(self, facts: &FileFacts) -> Result<(Option<Spool>, bool)> {
+    fn finish(self, facts: &FileFacts) -> Result<(Option<Spool>, Vec<String>)> {
         let mut text = None;
+        let mut unmet = Vec::new();
         for report in self.reports {
-            text = report.finish(facts)?.or(text);
+            let ending = report.finish(facts)?;
+            text = ending.text.or(text);
+            unmet.extend(ending.unmet);
         }
-        Ok((text, self.pitched || self.notes > 0))
+        Ok((text, unmet))
     }
 }
 

@@ -35,8 +35,27 @@ pub(crate) trait Report {
         Ok(())
     }
 
-    /// Ends the report, and gives what is to be printed.
-    fn finish(self: Box<Self>, facts: &FileFacts) -> Result<Option<Spool>>;
+    /// Ends the report.
+    fn finish(self: Box<Self>, facts: &FileFacts) -> Result<Ending>;
+}
+
+/// How a report ended.
+#[derive(Debug, Default)]
+pub(crate) struct Ending {
+    /// What is to be printed.
+    pub(crate) text: Option<Spool>,
+    /// What was asked for and could not be had.
+    pub(crate) unmet: Option<String>,
+}
+
+impl Ending {
+    pub(crate) fn print(text: Spool) -> Self {
+        Self { text: Some(text), unmet: None }
+    }
+
+    pub(crate) fn unmet(what: String) -> Self {
+        Self { text: None, unmet: Some(what) }
+    }
 }
 
 /// A file beside its final place, for [`publish`]; it vanishes if it never gets there.

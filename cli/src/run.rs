@@ -135,28 +135,24 @@ fn print_in_order(
     Ok(all_good)
 }
 
+/// Prints one result. True when all that was asked for is there.
 fn print(path: &Path, result: Result<Measured>) -> std::io::Result<bool> {
-    let path = path.display();
-    match result {
-        Ok(measured) => {
-            if let Some(text) = measured.text {
-                text.print(&mut std::io::stdout().lock())?;
-            }
-            for remark in &measured.remarks {
-                eprintln!("plumbtone: {path} {remark}");
-            }
-            if !measured.pitched {
-                eprintln!(
-                    "plumbtone: {path} has nothing measurable in it: no single pitch was found"
-                );
-            }
-            Ok(measured.pitched)
-        }
+    let say = |what: &dyn std::fmt::Display| eprintln!("plumbtone: {}: {what}", path.display());
+    let measured = match result {
+        Ok(measured) => measured,
         Err(error) => {
-            eprintln!("plumbtone: {path} {error:#}");
-            Ok(false)
+            say(&format_args!("{error:#}"));
+            return Ok(false);
         }
+    };
+    if let Some(text) = measured.text {
+        text.print(&mut std::io::stdout().lock())?;
     }
+    measured.remarks.iter().chain(&measured.unmet).for_each(|remark| say(remark));
+    if !measured.pitched {
+        say(&"nothing measurable: no single pitch was found");
+    }
+    Ok(measured.pitched && measured.unmet.is_empty())
 }
 
 /// Where the figures of each file go.

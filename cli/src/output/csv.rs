@@ -1,7 +1,7 @@
 //! CSV: four files per input, written beside their final place and moved there when whole.
 
 use super::records::{FrameRecord, NoteRecord, PartialRecord, StrayRecord};
-use super::{Report, Spool, words};
+use super::{Ending, Report, words};
 use crate::measure::{FileFacts, Timebase};
 use anyhow::{Context as _, Result};
 use plumbtone_analysis::Reading;
@@ -109,11 +109,11 @@ impl Report for CsvReport {
         note.strays.iter().try_for_each(|stray| self.strays.row(STRAYS, number, stray))
     }
 
-    fn finish(self: Box<Self>, _: &FileFacts) -> Result<Option<Spool>> {
+    fn finish(self: Box<Self>, _: &FileFacts) -> Result<Ending> {
         for sheet in [self.frames, self.notes, self.partials, self.strays] {
             sheet.publish()?;
         }
-        Ok(None)
+        Ok(Ending::default())
     }
 }
 

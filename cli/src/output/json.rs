@@ -4,7 +4,7 @@
 //! end, when its duration and gaps, which stand before them, are known.
 
 use super::records::{FrameRecord, GapRecord, NoteRecord};
-use super::{Report, Spool};
+use super::{Ending, Report, Spool};
 use crate::measure::{FileFacts, Timebase};
 use anyhow::{Context as _, Result};
 use plumbtone_analysis::{Gap, Reading};
@@ -58,7 +58,7 @@ impl Report for JsonReport {
         self.gaps.push(&GapRecord::new(gap, self.timebase))
     }
 
-    fn finish(self: Box<Self>, facts: &FileFacts) -> Result<Option<Spool>> {
+    fn finish(self: Box<Self>, facts: &FileFacts) -> Result<Ending> {
         let head = serde_json::to_string(&Head {
             file: &facts.path.to_string_lossy(),
             sample_rate_hz: facts.sample_rate_hz,
@@ -75,7 +75,7 @@ impl Report for JsonReport {
             object.write_all(b"]")?;
         }
         object.write_all(b"}\n")?;
-        Ok(Some(object))
+        Ok(Ending::print(object))
     }
 }
 

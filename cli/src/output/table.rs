@@ -2,8 +2,10 @@
 
 use super::records::{NoteRecord, PartialRecord, StrayRecord};
 use super::spool::write;
-use super::words::{explanation, inharmonicity, plain, signed, stray_level, with_deviation};
-use super::{Report, Spool};
+use super::words::{
+    deviation_hz, explanation, inharmonicity, plain, signed, with_deviation, with_unit,
+};
+use super::{Ending, Report, Spool};
 use crate::measure::FileFacts;
 use anyhow::Result;
 use comfy_table::{CellAlignment, Table, presets};
@@ -29,7 +31,7 @@ impl Report for TableReport {
         write(&mut self.notes, format_args!("\n{}", note_text(self.count, note)))
     }
 
-    fn finish(self: Box<Self>, facts: &FileFacts) -> Result<Option<Spool>> {
+    fn finish(self: Box<Self>, facts: &FileFacts) -> Result<Ending> {
         let mut text = Spool::new();
         let channels = match (facts.channels, facts.channel.as_str()) {
             (1, _) => "1 channel".to_owned(),
@@ -51,7 +53,7 @@ impl Report for TableReport {
         )?;
         text.append(self.notes);
         write(&mut text, format_args!("\n"))?;
-        Ok(Some(text))
+        Ok(Ending::print(text))
     }
 }
 
@@ -73,27 +75,30 @@ fn note_text(number: u64, note: &NoteRecord) -> String {
     text
 }
 
-/// The deviation of f0 in Hz: cents are small, so the slope at f0 does.
-fn deviation_hz(note: &NoteRecord) -> Option<f64> {
-    Some(note.f0_hz? * note.f0_sd_cents? * std::f64::consts::LN_2 / 1200.0)
-}
-
 fn descriptors_text(note: &NoteRecord) -> String {
     let tristimulus = note.tristimulus.map_or_else(
         || super::words::UNMEASURED.to_owned(),
         |three| three.map(|part| format!("{part:.3}")).join(" "),
     );
-    format!(
-        "  stretch B {}    tilt {} dB/octave    odd − even {} dB    harmonic to noise {} dB\n  \
-         THD {} % of partial 1, {} % of the whole    tristimulus {tristimulus}    centroid at partial {}\n",
-        inharmonicity(note),
-        signed(note.tilt_db_per_octave, 2),
-        signed(note.odd_even_db, 2),
-        plain(note.hnr_db, 1),
-        plain(note.thd_f_percent, 2),
-        plain(note.thd_r_percent, 2),
-        plain(note.centroid_partial, 2),
-    )
+    let line = |facts: &[(&str, String)]| {
+        facts
+            .iter()
+            .map(|(label, figure)| format!("  {label} {figure}"))
+            .collect::<Vec<_>>()
+            .join("  ")
+            + "\n"
+    };
+    line(&[
+        ("stretch B", inharmonicity(note)),
+        ("tilt", with_unit(&signed(note.tilt_db_per_octave, 2), "dB/octave")),
+        ("odd − even", with_unit(&signed(note.odd_even_db, 2), "dB")),
+        ("harmonic to noise", with_unit(&plain(note.hnr_db, 1), "dB")),
+    ]) + &line(&[
+        ("THD to partial 1", with_unit(&plain(note.thd_f_percent, 2), "%")),
+        ("to the whole", with_unit(&plain(note.thd_r_percent, 2), "%")),
+        ("tristimulus", tristimulus),
+        ("centroid at partial", plain(note.centroid_partial, 2)),
+    ])
 }
 
 fn partials_table(partials: &[PartialRecord]) -> Table {
@@ -144,9 +149,6 @@ fn strays_text(note: &NoteRecord) -> String {
 
 fn stray_line(stray: &StrayRecord) -> String {
     let frequency = plain(stray.frequency_hz, 2);
-    format!(
-        "  {frequency:>11} Hz  {:>12}  {}\n",
-        stray_level(stray),
-        explanation(stray.explanation)
-    )
+    let level = with_unit(&plain(stray.level_dbfs, 1), "dBFS");
+    format!("  {frequency:>11} Hz  {level:>12}  {}\n", explanation(stray.explanation))
 }

@@ -1,6 +1,6 @@
 //! How figures are put in words for reading, in tables and pictures alike.
 
-use super::records::{NoteRecord, StrayRecord};
+use super::records::NoteRecord;
 use crate::convert::decimals_for;
 use plumbtone_analysis::StrayKind;
 
@@ -36,6 +36,11 @@ pub(crate) fn signed(value: Option<f64>, decimals: usize) -> String {
     value.map_or_else(|| UNMEASURED.to_owned(), |value| fixed(value, decimals, true))
 }
 
+/// A figure in words, followed by its unit if there is a figure.
+pub(crate) fn with_unit(figure: &str, unit: &str) -> String {
+    if figure == UNMEASURED { figure.to_owned() } else { format!("{figure} {unit}") }
+}
+
 /// Inharmonicity with its deviation under one power of ten.
 pub(crate) fn inharmonicity(note: &NoteRecord) -> String {
     let Some(b) = note.inharmonicity_b else { return UNMEASURED.to_owned() };
@@ -51,6 +56,11 @@ pub(crate) fn inharmonicity(note: &NoteRecord) -> String {
     format!("{value}e{exponent} ± {:.decimals$}e{exponent}", sd / scale)
 }
 
+/// The deviation of f0 in Hz: small, so the slope of the cents at f0 will do.
+pub(crate) fn deviation_hz(note: &NoteRecord) -> Option<f64> {
+    Some(note.f0_hz? * note.f0_sd_cents? * std::f64::consts::LN_2 / 1200.0)
+}
+
 /// Why a stray is there.
 pub(crate) fn explanation(kind: StrayKind) -> String {
     match kind {
@@ -59,11 +69,6 @@ pub(crate) fn explanation(kind: StrayKind) -> String {
         StrayKind::Mains { base_hz, multiple } => format!("mains {multiple} × {base_hz} Hz"),
         StrayKind::Unexplained => "unexplained".to_owned(),
     }
-}
-
-/// A stray's level in words.
-pub(crate) fn stray_level(stray: &StrayRecord) -> String {
-    format!("{} dBFS", plain(stray.level_dbfs, 1))
 }
 
 fn fixed(value: f64, decimals: usize, sign: bool) -> String {

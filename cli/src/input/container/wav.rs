@@ -1,5 +1,5 @@
 //! The chunk walk of WAV (Microsoft/IBM, "Multimedia Programming Interface and Data Specifications 1.0", 1991, with
-//! WAVE_FORMAT_EXTENSIBLE) and of its 64-bit forms (EBU Tech 3306, ITU-R BS.2088).
+//! `WAVE_FORMAT_EXTENSIBLE`) and of its 64-bit forms (EBU Tech 3306, ITU-R BS.2088).
 
 use super::{Chunk, Section, SoundData, frame_bytes};
 use anyhow::{Context as _, Result, bail};
@@ -42,11 +42,13 @@ fn section(
     let (stated, remark) = match (data.size, long_data_size) {
         (SIZE_ELSEWHERE, size) => (size, None),
         (0, _) if !rest_is_chunks => {
-            (None, Some("its header was never completed: measured up to the file's end".to_owned()))
+            (None, Some("the header was never completed: measured up to the file's end".to_owned()))
         }
         (size, _) if !rest_is_chunks => (
             Some(u64::from(size)),
-            Some(format!("{after} bytes after the sound data its header announces were not read")),
+            Some(format!(
+                "{after} bytes behind the sound data that the header announces were not read"
+            )),
         ),
         (size, _) => (Some(u64::from(size)), None),
     };
