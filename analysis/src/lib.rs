@@ -14,10 +14,25 @@
 #![forbid(unsafe_code)]
 
 mod analyzer;
+mod convert;
 mod descriptors;
+mod fundamental;
+mod history;
+mod instant;
+mod measure;
 mod note;
+mod onset;
+mod peaks;
 mod reading;
+mod refine;
+mod segment;
 mod settings;
+#[cfg(feature = "signals")]
+pub mod signals;
+mod spectrum;
+mod stiff;
+mod strays;
+mod track;
 pub mod tuning;
 pub mod window;
 

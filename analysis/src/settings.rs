@@ -54,7 +54,11 @@ impl Settings {
         };
         within("sample rate in Hz", self.sample_rate_hz, SAMPLE_RATE_HZ)?;
         within("highest fundamental in Hz", self.highest_hz, (SEARCH_HZ.0, SEARCH_HZ.1))?;
-        within("highest fundamental in Hz", self.highest_hz, (SEARCH_HZ.0, self.sample_rate_hz / 2.0))?;
+        within(
+            "highest fundamental in Hz",
+            self.highest_hz,
+            (SEARCH_HZ.0, self.sample_rate_hz / 2.0),
+        )?;
         within("lowest fundamental in Hz", self.lowest_hz, (SEARCH_HZ.0, self.highest_hz))?;
         within("number of partials", self.partials as f64, (1.0, PARTIALS_MAX as f64))?;
         within("integration time in seconds", self.integration_s, INTEGRATION_S)

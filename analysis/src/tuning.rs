@@ -11,6 +11,8 @@ mod temperament;
 
 use core::fmt;
 
+use crate::convert::nearest_short;
+
 pub use cents::{cents, ratio};
 pub use note_name::{NoteName, NoteNameError};
 pub use temperament::{Temperament, UnknownTemperament};
@@ -82,7 +84,7 @@ impl Tuning {
         if !(frequency_hz > 0.0 && frequency_hz.is_finite()) {
             return None;
         }
-        let equal = whole(A4 + cents(frequency_hz / self.concert_pitch_hz) / 100.0);
+        let equal = nearest_short(A4 + cents(frequency_hz / self.concert_pitch_hz) / 100.0);
         // No note of these temperaments lies a semitone off the equal one, so it is this note or one beside it.
         [equal - 1, equal, equal + 1]
             .map(|number| {
@@ -122,12 +124,6 @@ impl fmt::Display for TuningError {
 }
 
 impl core::error::Error for TuningError {}
-
-/// The nearest note number. Frequencies that are finite `f64` lie within 13 000 semitones of A4, well inside `i16`.
-#[expect(clippy::cast_possible_truncation, reason = "rounded, and within i16 for every frequency")]
-fn whole(note_number: f64) -> i16 {
-    note_number.round() as i16
-}
 
 #[cfg(test)]
 mod tests {

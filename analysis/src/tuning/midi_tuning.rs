@@ -5,20 +5,25 @@
 //! cents. `7F 7F 7F` is reserved for "no change". The formula counts, not the specification's own table of examples,
 //! which is wrong in places.
 
+use crate::convert::nearest_index;
+
 use super::{A4, STANDARD_PITCH_HZ, cents, ratio};
 
 /// Steps in a semitone.
 const STEPS: f64 = 16384.0;
 /// The reserved code, as a number.
-const RESERVED: u32 = 0x1F_FFFF;
+const RESERVED: usize = 0x1F_FFFF;
 
 /// The three bytes nearest to a frequency in Hz. `None` outside 8.1758 (`00 00 00`) to 13 289.66 Hz (`7F 7F 7E`), or for
 /// what is no frequency.
 #[must_use]
 pub fn encode(frequency_hz: f64) -> Option<[u8; 3]> {
     let steps = STEPS * (A4 + cents(frequency_hz / STANDARD_PITCH_HZ) / 100.0);
-    let code = whole(steps.round()).filter(|&code| code < RESERVED)?;
-    Some([14, 7, 0].map(|shift| seven_bits(code >> shift)))
+    if !(steps >= -0.5) {
+        return None;
+    }
+    let code = nearest_index(steps);
+    (code < RESERVED).then(|| [14, 7, 0].map(|shift| seven_bits(code >> shift)))
 }
 
 /// The frequency in Hz of three bytes. `None` for the reserved code and for bytes above `7F`.
@@ -27,20 +32,14 @@ pub fn decode(bytes: [u8; 3]) -> Option<f64> {
     if bytes.iter().any(|&byte| byte > 0x7F) {
         return None;
     }
-    let code = bytes.iter().fold(0, |code, &byte| code << 7 | u32::from(byte));
-    let semitones = f64::from(code) / STEPS - A4;
+    let code = bytes.iter().fold(0, |code, &byte| code << 7 | usize::from(byte));
+    let semitones = code as f64 / STEPS - A4;
     (code != RESERVED).then(|| STANDARD_PITCH_HZ * ratio(100.0 * semitones))
 }
 
-/// A whole number of steps. `None` when negative, beyond every code, or not a number.
-#[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "the range is checked")]
-fn whole(steps: f64) -> Option<u32> {
-    (steps >= 0.0 && steps <= f64::from(RESERVED)).then_some(steps as u32)
-}
-
 /// The lowest seven bits.
-fn seven_bits(code: u32) -> u8 {
-    (code & 0x7F) as u8
+fn seven_bits(code: usize) -> u8 {
+    (code & 0x7F).to_le_bytes()[0]
 }
 
 #[cfg(test)]

@@ -1,0 +1,71 @@
+//! The last samples of the stream, by absolute position: a ring that frames and notes are read back from.
+
+/// A ring of samples. Positions outside what it holds read as silence.
+#[derive(Debug)]
+pub(crate) struct History {
+    ring: Vec<f32>,
+    /// First position of the current stream: nothing before it belongs to the sound.
+    start: u64,
+    /// Position after the newest sample.
+    end: u64,
+}
+
+impl History {
+    /// A ring that holds at least `capacity` samples.
+    pub(crate) fn new(capacity: usize) -> Self {
+        Self { ring: vec![0.0; capacity.next_power_of_two()], start: 0, end: 0 }
+    }
+
+    /// Position after the newest sample.
+    pub(crate) fn end(&self) -> u64 {
+        self.end
+    }
+
+    /// First position of the current stream.
+    pub(crate) fn start(&self) -> u64 {
+        self.start
+    }
+
+    /// Oldest position still held.
+    pub(crate) fn oldest(&self) -> u64 {
+        self.start.max(self.end.saturating_sub(self.ring.len() as u64))
+    }
+
+    /// Begins a new stream at a position.
+    pub(crate) fn restart(&mut self, position: u64) {
+        self.start = position;
+        self.end = position;
+    }
+
+    /// Appends samples.
+    pub(crate) fn push(&mut self, samples: &[f32]) {
+        let mask = self.ring.len() - 1;
+        let at = crate::convert::index(self.end) & mask;
+        let first = samples.len().min(self.ring.len() - at);
+        self.ring[at..at + first].copy_from_slice(&samples[..first]);
+        self.ring[..samples.len() - first].copy_from_slice(&samples[first..]);
+        self.end += samples.len() as u64;
+    }
+
+    /// Copies `out.len()` samples from a position (which may lie before the stream's start) on.
+    pub(crate) fn read(&self, from: i64, out: &mut [f32]) {
+        let held = |p: u64| i64::try_from(p).unwrap_or(i64::MAX);
+        let (low, high) = (held(self.oldest()), held(self.end));
+        let until = from + i64::try_from(out.len()).unwrap_or(i64::MAX);
+        let (a, b) = (from.max(low), until.min(high));
+        if a >= b {
+            out.fill(0.0);
+            return;
+        }
+        let offset = |p: i64| usize::try_from(p - from).unwrap_or(0);
+        out[..offset(a)].fill(0.0);
+        out[offset(b)..].fill(0.0);
+        let target = &mut out[offset(a)..offset(b)];
+        let mask = self.ring.len() - 1;
+        let at = usize::try_from(a).unwrap_or(0) & mask;
+        let first = target.len().min(self.ring.len() - at);
+        let rest = target.len() - first;
+        target[..first].copy_from_slice(&self.ring[at..at + first]);
+        target[first..].copy_from_slice(&self.ring[..rest]);
+    }
+}

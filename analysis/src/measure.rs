@@ -1,0 +1,13 @@
+//! The measurement of a whole note: every partial as a damped sinusoid, by maximum likelihood.
+//!
+//! The samples are turned once into one slow complex signal per partial ([`baseband`]): brought down by the partial's
+//! expected phase and summed over blocks of 5 ms, which loses nothing and keeps white noise white. In each, a damped
+//! exponential is fitted ([`damped`]) after the other partials' share has been taken away, round after round. When the
+//! note's pitch moves, the expected phase moves along. [`spectrum`] looks at the note through one long transform for
+//! what belongs to no partial.
+
+pub(crate) mod assemble;
+pub(crate) mod baseband;
+pub(crate) mod damped;
+pub(crate) mod lines;
+pub(crate) mod note;

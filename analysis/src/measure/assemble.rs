@@ -1,0 +1,245 @@
+//! A note from its stretches: the figures of each put together, the strays named, the descriptors drawn up.
+
+use super::note::{Meter, STRETCH_S};
+use crate::convert::{index, nearest_index, number};
+use crate::descriptors::Descriptors;
+use crate::history::History;
+use crate::note::{Note, NotePartial};
+use crate::reading::{StrayKind, Stretch};
+use crate::refine::Tone;
+use crate::stiff::{self, CENTS_PER_NEPER, Point, StiffFit, partial_hz};
+use crate::strays::{self, Candidate, Source};
+
+/// Decibels in one neper.
+const DB_PER_NEPER: f64 = 8.685_889_638_065_037;
+/// Distance of a line from a partial within which it is that partial, in resolutions.
+const OWN: f64 = 4.0;
+/// The same for a line that nothing else explains, in cents: strings in pairs and choruses spread a partial.
+const SPREAD_CENTS: f64 = 15.0;
+
+/// Sums over the stretches of a note for one partial.
+#[derive(Debug, Clone, Copy, Default)]
+struct Sums {
+    found: usize,
+    /// Weight, and weighted logarithm, of the frequency.
+    frequency: (f64, f64),
+    /// Weight, and weighted decay, in nepers per second.
+    decay: (f64, f64),
+    /// Amplitude, phase and logarithmic deviation at the note's start, from the first stretch it is found in.
+    start: (f64, f64, f64),
+    /// Energy: mean square times seconds.
+    energy: f64,
+    /// Noise in 1 Hz, as squared amplitude times seconds.
+    noise: f64,
+}
+
+/// Builds notes. Owns all memory for it.
+#[derive(Debug)]
+pub(crate) struct Assembler {
+    sample_rate_hz: f64,
+    partials: usize,
+    meter: Meter,
+    sums: Vec<Sums>,
+    points: Vec<Point>,
+    candidates: Vec<Candidate>,
+    start: u64,
+    stretch_start: u64,
+    seconds: f64,
+    /// Energy of everything: mean square times seconds.
+    energy: f64,
+    log_f0: (f64, f64),
+    note: Note,
+}
+
+impl Assembler {
+    /// Room for every note.
+    pub(crate) fn new(sample_rate_hz: f64, partials: usize, hop: usize) -> Self {
+        Self {
+            sample_rate_hz,
+            partials,
+            meter: Meter::new(sample_rate_hz, partials, hop),
+            sums: vec![Sums::default(); partials + 1],
+            points: Vec::with_capacity(partials),
+            candidates: Vec::with_capacity(8_192),
+            start: 0,
+            stretch_start: 0,
+            seconds: 0.0,
+            energy: 0.0,
+            log_f0: (0.0, 0.0),
+            note: Note {
+                partials: Vec::with_capacity(partials),
+                strays: Vec::with_capacity(Note::STRAYS_MAX),
+                ..Note::default()
+            },
+        }
+    }
+
+    /// Begins a note.
+    pub(crate) fn begin(&mut self, start: u64) {
+        self.start = start;
+        self.stretch_start = start;
+        self.seconds = 0.0;
+        self.energy = 0.0;
+        self.log_f0 = (0.0, 0.0);
+        self.sums.fill(Sums::default());
+        self.candidates.clear();
+        self.meter.clear();
+    }
+
+    /// Takes in an instant of the note; a stretch that is full is measured.
+    pub(crate) fn add(
+        &mut self,
+        history: &History,
+        centre: u64,
+        pitch: (f64, f64),
+        tones: &[Tone],
+    ) {
+        if centre >= self.stretch_start + nearest_index(STRETCH_S * self.sample_rate_hz) as u64 {
+            self.stretch(history, centre);
+        }
+        self.meter.add(centre, pitch.0, pitch.1, tones);
+    }
+
+    /// Ends the note. `None` when nothing in it could be measured.
+    pub(crate) fn end(&mut self, history: &History, end: u64) -> Option<&Note> {
+        self.stretch(history, end);
+        self.note.start = self.start;
+        self.note.end = end;
+        let fit = self.partials_of_note()?;
+        self.strays_of_note(&fit);
+        let partials =
+            self.note.partials.iter().map(|p| (p.number, 10f64.powf(p.level_mean_dbfs / 20.0)));
+        let own: f64 = self.sums.iter().map(|s| 0.5 * s.energy).sum();
+        let rest = (self.energy - own) / self.seconds;
+        self.note.descriptors = Descriptors::of(partials, (rest > 0.0).then_some(rest));
+        Some(&self.note)
+    }
+
+    /// Measures the stretch that ends here and adds it up.
+    fn stretch(&mut self, history: &History, end: u64) {
+        let start = self.stretch_start;
+        self.stretch_start = end;
+        let Some(fit) = (end > start).then(|| self.meter.run(history, start, end)).flatten() else {
+            self.meter.clear();
+            return;
+        };
+        let seconds = index(end - start) as f64 / self.sample_rate_hz;
+        if self.seconds <= 0.0 {
+            self.collect_lines(&fit);
+        }
+        self.seconds += seconds;
+        self.energy += self.meter.mean_square * seconds;
+        let w = 1.0 / fit.f0_sd_cents.max(1e-9).powi(2);
+        self.log_f0.0 += w;
+        self.log_f0.1 += w * fit.f0.ln();
+        let since = (start - self.start) as f64 / self.sample_rate_hz;
+        for row in self.meter.rows.iter().filter(|r| r.present && r.n <= self.partials) {
+            let s = &mut self.sums[row.n];
+            let hz = row.expected_hz + row.fit.delta_hz;
+            let w = (hz / row.fit.delta_sd_hz).powi(2);
+            s.frequency.0 += w;
+            s.frequency.1 += w * hz.ln();
+            let w = row.fit.sigma_sd.powi(-2);
+            s.decay.0 += w;
+            s.decay.1 += w * row.fit.sigma;
+            if s.found == 0 {
+                let back = (row.fit.sigma * since).clamp(-3.0, 3.0).exp();
+                s.start = (row.fit.a.norm() * back, row.fit.a.arg(), row.fit.log_sd);
+            }
+            s.found += 1;
+            s.energy += row.fit.mean_square * seconds;
+            s.noise += row.fit.noise * 0.005 * seconds;
+        }
+        self.meter.clear();
+    }
+
+    fn partials_of_note(&mut self) -> Option<StiffFit> {
+        self.note.partials.clear();
+        self.points.clear();
+        for (n, s) in self.sums.iter().enumerate().filter(|(_, s)| s.found > 0) {
+            let hz = (s.frequency.1 / s.frequency.0).exp();
+            self.points.push(Point { n: n as f64, hz, sd_hz: hz / s.frequency.0.sqrt() });
+        }
+        let fit = stiff::fit(&self.points, None)?;
+        self.note.f0_hz = fit.f0;
+        self.note.f0_sd_cents = fit.f0_sd_cents;
+        self.note.stretch = fit.b_sd.is_finite().then_some(Stretch { b: fit.b, b_sd: fit.b_sd });
+        let strongest = self.sums.iter().map(|s| s.start.0).fold(0.0, f64::max);
+        for p in &self.points {
+            let n = nearest_index(p.n);
+            let s = &self.sums[n];
+            let own_cents = CENTS_PER_NEPER * p.sd_hz / p.hz;
+            let mean_square = s.energy / self.seconds;
+            self.note.partials.push(NotePartial {
+                number: number(n),
+                frequency_hz: p.hz,
+                frequency_sd_hz: p.sd_hz,
+                cents_from_harmonic: CENTS_PER_NEPER * (p.hz / (p.n * fit.f0)).ln(),
+                cents_sd: own_cents.hypot(fit.f0_sd_cents),
+                level_dbfs: 20.0 * s.start.0.log10(),
+                level_sd_db: DB_PER_NEPER * s.start.2,
+                level_relative_db: 20.0 * (s.start.0 / strongest).log10(),
+                level_mean_dbfs: 10.0 * mean_square.log10(),
+                phase_rad: s.start.1,
+                decay_db_per_s: DB_PER_NEPER * s.decay.1 / s.decay.0,
+                decay_sd: DB_PER_NEPER / s.decay.0.sqrt(),
+                snr_db: 10.0 * (s.energy / s.noise.max(f64::MIN_POSITIVE)).log10(),
+            });
+        }
+        Some(fit)
+    }
+
+    /// Keeps the lines of the stretch that are no partial's own.
+    fn collect_lines(&mut self, fit: &StiffFit) {
+        let long = &self.meter.long;
+        let own = OWN * long.resolution_hz;
+        let sweep = self.meter.sweep;
+        for line in &long.lines {
+            let n = nearest_number(line.hz, fit);
+            let near = |n: usize| {
+                let row = self.meter.rows.iter().find(|r| r.present && r.n == n);
+                let hz = row.map_or_else(
+                    || partial_hz(fit.f0, fit.b, n as f64),
+                    |r| r.expected_hz + r.fit.delta_hz,
+                );
+                (line.hz - hz).abs() < own + 1.5 * sweep * hz
+            };
+            let is_partial = (n.saturating_sub(1).max(1)..=n + 1).any(near);
+            if !is_partial && self.candidates.len() < self.candidates.capacity() {
+                self.candidates.push(Candidate { line: *line, kind: StrayKind::Unexplained });
+            }
+        }
+        let significant = fit.b.abs() > 4.0 * fit.b_sd;
+        let source = Source {
+            f0: fit.f0,
+            f0_sd: fit.f0 * fit.f0_sd_cents / CENTS_PER_NEPER,
+            b: if significant { fit.b } else { 0.0 },
+            sample_rate_hz: self.sample_rate_hz,
+            resolution_hz: long.resolution_hz,
+        };
+        strays::name_aliases(&mut self.candidates, source);
+        strays::name_mains(&mut self.candidates, long.resolution_hz);
+    }
+
+    fn strays_of_note(&mut self, fit: &StiffFit) {
+        let spread = SPREAD_CENTS / CENTS_PER_NEPER;
+        self.candidates.retain(|c| {
+            let n = nearest_number(c.line.hz, fit);
+            let hz = partial_hz(fit.f0, fit.b, n as f64);
+            c.kind != StrayKind::Unexplained || (c.line.hz / hz).ln().abs() > spread
+        });
+        self.candidates.sort_unstable_by(|a, b| b.line.amplitude.total_cmp(&a.line.amplitude));
+        let kept = self.candidates.len().min(Note::STRAYS_MAX);
+        self.note.strays.clear();
+        self.note.strays.extend(self.candidates[..kept].iter().map(strays::stray));
+        self.note.strays_left_out = self.candidates.len() - kept;
+    }
+}
+
+/// Number of the partial of the model nearest to a frequency.
+fn nearest_number(hz: f64, fit: &StiffFit) -> usize {
+    let x = hz / fit.f0;
+    // n^2 (1 + B n^2) = x^2, solved for n^2 without loss for a small B.
+    let q = 4.0 * fit.b.max(0.0) * x * x;
+    nearest_index((2.0 * x * x / (1.0 + (1.0 + q).sqrt())).sqrt()).max(1)
+}

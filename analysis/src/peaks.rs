@@ -1,0 +1,102 @@
+//! Spectral peaks of a Hann frame, interpolated, and the noise floor they stand on.
+//!
+//! Interpolation: three-bin ratio for the Hann window (T. Grandke, IEEE Trans. Instrum. Meas. 32(2):350-355, 1983), exact
+//! for a lone stationary tone.
+
+use crate::convert::nearest_index;
+use crate::spectrum::{Frame, kernel};
+
+/// Power of a peak over the noise below which it is taken for noise: 11.4 dB is passed by one noise bin in a million.
+const PEAK_OVER_NOISE: f32 = 13.8;
+/// Power below the strongest peak at which the window's own sidelobes and rounding end a search.
+const PEAK_RANGE: f32 = 1e-9;
+/// Bins in one block of the noise floor.
+const NOISE_BLOCK: usize = 48;
+/// Share of bins below the chosen one in a block: low, since partials fill most of a block of a low note.
+const NOISE_QUANTILE: f32 = 0.25;
+
+/// A peak.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(crate) struct Peak {
+    /// Frequency in Hz.
+    pub(crate) hz: f64,
+    /// Amplitude.
+    pub(crate) amplitude: f64,
+}
+
+/// Noise power in one bin of the longest frame, by block.
+#[derive(Debug, Clone)]
+pub(crate) struct NoiseFloor {
+    blocks: Vec<f32>,
+    order: Vec<f32>,
+    len: usize,
+}
+
+impl NoiseFloor {
+    /// A floor for frames of `len` samples.
+    pub(crate) fn new(len: usize) -> Self {
+        let blocks = (len / 2).div_ceil(NOISE_BLOCK);
+        Self { blocks: vec![0.0; blocks], order: Vec::with_capacity(NOISE_BLOCK), len }
+    }
+
+    /// Estimates the floor: in each block a low quantile, scaled to the mean of the exponential distribution that the
+    /// power of a noise bin follows.
+    pub(crate) fn estimate(&mut self, frame: &Frame) {
+        let scale = -1.0 / (1.0 - NOISE_QUANTILE).ln();
+        for (block, power) in self.blocks.iter_mut().zip(frame.power[1..].chunks(NOISE_BLOCK)) {
+            self.order.clear();
+            self.order.extend_from_slice(power);
+            let at = self.order.len() / 4;
+            let (_, quantile, _) = self.order.select_nth_unstable_by(at, f32::total_cmp);
+            *block = *quantile * scale;
+        }
+    }
+
+    /// Noise power in a bin of the longest frame at `bin` (fractional) of a frame of `len` samples, scaled to that frame.
+    pub(crate) fn at(&self, bin: usize, len: usize) -> f32 {
+        let ratio = self.len / len;
+        let block = (bin * ratio).saturating_sub(1) / NOISE_BLOCK;
+        let last = self.blocks.len() - 1;
+        self.blocks[block.min(last)] * ratio as f32
+    }
+}
+
+/// Collects the peaks of a frame from `low_hz` to `high_hz`, by rising frequency, at most the capacity of `out`.
+pub(crate) fn pick(
+    frame: &Frame,
+    bin_hz: f64,
+    noise: &NoiseFloor,
+    range_hz: (f64, f64),
+    out: &mut Vec<Peak>,
+) {
+    out.clear();
+    let p = &frame.power;
+    let len = (p.len() - 1) * 2;
+    let first = nearest_index(range_hz.0 / bin_hz).max(2);
+    let last = nearest_index(range_hz.1 / bin_hz).min(p.len() - 3);
+    if first >= last {
+        return;
+    }
+    let strongest = p[first..=last].iter().fold(0.0f32, |a, &b| a.max(b));
+    let floor = strongest * PEAK_RANGE;
+    for k in first..=last {
+        let here = p[k];
+        if here <= p[k - 1] || here < p[k + 1] || here < floor {
+            continue;
+        }
+        if here < noise.at(k, len) * PEAK_OVER_NOISE {
+            continue;
+        }
+        if out.len() == out.capacity() {
+            break;
+        }
+        out.push(interpolate(p, k, bin_hz));
+    }
+}
+
+/// The peak around the local maximum `k`.
+pub(crate) fn interpolate(power: &[f32], k: usize, bin_hz: f64) -> Peak {
+    let [a, b, c] = [power[k - 1], power[k], power[k + 1]].map(|x| f64::from(x).sqrt());
+    let delta = (2.0 * (c - a) / (a + 2.0 * b + c)).clamp(-0.5, 0.5);
+    Peak { hz: (k as f64 + delta) * bin_hz, amplitude: b / kernel(delta) }
+}

@@ -1,0 +1,97 @@
+//! One windowed transform: Hann frame in, spectrum referred to the frame's centre out.
+//!
+//! Scale: a stationary sine of amplitude `A` and centre phase `p` on bin `k` reads `A * exp(i p)` there; off the bin by
+//! `x` it reads `A * exp(i p) * kernel(x)`. With the phase referred to the centre the kernel is real, which is what makes
+//! the joint refinement cheap. Hann: F. J. Harris, Proc. IEEE 66(1):51-83, 1978.
+
+use std::sync::Arc;
+
+use realfft::num_complex::Complex;
+use realfft::{RealFftPlanner, RealToComplex};
+
+use crate::convert::single;
+use crate::history::History;
+
+/// A spectrum of one frame.
+#[derive(Debug, Clone)]
+pub(crate) struct Frame {
+    /// Bins 0 to `len / 2`, centre-referred, in amplitude.
+    pub(crate) bins: Vec<Complex<f32>>,
+    /// Squared magnitude of `bins`.
+    pub(crate) power: Vec<f32>,
+}
+
+/// A planned transform of one length.
+pub(crate) struct Transform {
+    len: usize,
+    window: Vec<f32>,
+    plan: Arc<dyn RealToComplex<f32>>,
+    input: Vec<f32>,
+    scratch: Vec<Complex<f32>>,
+}
+
+impl core::fmt::Debug for Transform {
+    fn fmt(&self, f: &mut core::fmt::Formatter<'_>) -> core::fmt::Result {
+        f.debug_struct("Transform").field("len", &self.len).finish_non_exhaustive()
+    }
+}
+
+impl Transform {
+    /// Plans a transform of `len` samples, a power of two.
+    pub(crate) fn new(len: usize, planner: &mut RealFftPlanner<f32>) -> Self {
+        let plan = planner.plan_fft_forward(len);
+        // The window carries the scale 2 / S1, with S1 = len / 2.
+        let window = (0..len)
+            .map(|n| {
+                let x = core::f64::consts::TAU * n as f64 / len as f64;
+                single((0.5 - 0.5 * x.cos()) * 4.0 / len as f64)
+            })
+            .collect();
+        Self { len, window, input: plan.make_input_vec(), scratch: plan.make_scratch_vec(), plan }
+    }
+
+    /// Frame length in samples.
+    pub(crate) fn len(&self) -> usize {
+        self.len
+    }
+
+    /// A frame to transform into.
+    pub(crate) fn make_frame(&self) -> Frame {
+        let bins = self.len / 2 + 1;
+        Frame { bins: vec![Complex::default(); bins], power: vec![0.0; bins] }
+    }
+
+    /// Transforms the frame centred on a position.
+    pub(crate) fn run(&mut self, history: &History, centre: u64, out: &mut Frame) {
+        let centre = i64::try_from(centre).unwrap_or(i64::MAX);
+        let half = i64::try_from(self.len / 2).unwrap_or(0);
+        history.read(centre - half, &mut self.input);
+        for (x, w) in self.input.iter_mut().zip(&self.window) {
+            *x *= w;
+        }
+        let done =
+            self.plan.process_with_scratch(&mut self.input, &mut out.bins, &mut self.scratch);
+        debug_assert!(done.is_ok(), "lengths are planned");
+        for pair in out.bins.chunks_mut(2) {
+            if let [_, odd] = pair {
+                *odd = -*odd;
+            }
+        }
+        for (p, x) in out.power.iter_mut().zip(&out.bins) {
+            *p = x.re * x.re + x.im * x.im;
+        }
+    }
+}
+
+/// The Hann kernel at `x` bins off the frequency: `sin(pi x) / (pi x (1 - x^2))`.
+pub(crate) fn kernel(x: f64) -> f64 {
+    let d = x.abs();
+    if d < 1e-6 {
+        return 1.0;
+    }
+    if (d - 1.0).abs() < 1e-6 {
+        return 0.5;
+    }
+    let p = core::f64::consts::PI * d;
+    p.sin() / (p * (1.0 - d * d))
+}

@@ -1,0 +1,175 @@
+//! Recorded instruments: the pitched samples of a General MIDI sound bank, unrolled to notes, with the pitch that the
+//! bank itself states as the truth.
+
+mod score;
+
+use std::collections::BTreeMap;
+use std::path::PathBuf;
+
+use crate::periodicity::periodicity;
+use crate::soundfont::{self, Sample, Zone};
+
+pub use score::{FamilyScore, Score, score};
+
+/// Length to which a looped sample is unrolled, in seconds.
+const UNROLLED_S: f64 = 1.8;
+/// Shortest sound that is used, in seconds.
+const SHORTEST_S: f64 = 0.3;
+/// Shortest loop, in samples.
+const SHORTEST_LOOP: usize = 4;
+/// Fundamentals used, in Hz: the engine's whole search range.
+const RANGE_HZ: (f64, f64) = (20.0, 5_000.0);
+/// Least periodicity at the stated period for the stated pitch to stand (see [`Recording::disputed`]).
+const STANDS: f64 = 0.5;
+/// How close the periodicity of an integer fraction of the period comes to overturn the stated pitch.
+const OVERTURNS: f64 = 0.005;
+/// Start of the stretch whose periodicity is measured, in seconds: after the attack.
+const AFTER_ATTACK_S: f64 = 0.1;
+
+/// A family of General MIDI instruments: eight programs.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
+pub struct Family(u16);
+
+impl Family {
+    /// Names in the order of the programs.
+    const NAMES: [&str; 11] = [
+        "piano",
+        "chromatic percussion",
+        "organ",
+        "guitar",
+        "bass",
+        "strings",
+        "ensemble",
+        "brass",
+        "reed",
+        "pipe",
+        "lead",
+    ];
+
+    /// The family of a program, if it is one of the pitched ones.
+    #[must_use]
+    pub fn of_program(program: u16) -> Option<Self> {
+        (usize::from(program / 8) < Self::NAMES.len()).then_some(Self(program / 8))
+    }
+
+    /// Name.
+    #[must_use]
+    pub fn name(self) -> &'static str {
+        Self::NAMES[usize::from(self.0)]
+    }
+}
+
+/// One recorded note.
+#[derive(Debug, Clone)]
+pub struct Recording {
+    /// Name in the bank.
+    pub name: String,
+    /// Family of the first program that plays it.
+    pub family: Family,
+    /// Sample rate in Hz: the recording's own.
+    pub sample_rate_hz: f64,
+    /// Stated fundamental when played at that rate, in Hz.
+    pub f0_hz: f64,
+    /// The note: the recording, then its loop over and over; without envelope, at the recorded level.
+    pub samples: Vec<f32>,
+    /// Samples before the loop first repeats.
+    pub raw_samples: usize,
+    /// Whether the sound itself contradicts the stated pitch: it does not repeat with the stated period at all (organ
+    /// stops with a sub-octave or a fifth in them), or as well with an integer fraction of it (a preset that plays the
+    /// sample in another octave). Such recordings are reported, but no figure counts them.
+    pub disputed: bool,
+}
+
+/// Where the bank lies once `cargo xtask test` has fetched it.
+#[must_use]
+pub fn bank_path() -> PathBuf {
+    let target = std::env::var_os("CARGO_TARGET_DIR").map_or_else(
+        || PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("..").join("target"),
+        PathBuf::from,
+    );
+    target.join("sound-bank").join("TimGM6mb.sf2")
+}
+
+/// Reads the recordings of the fetched bank; `None` when it is not there.
+///
+/// # Errors
+/// A file that is there but cannot be read as a sound bank.
+pub fn recordings() -> Result<Option<Vec<Recording>>, Box<dyn std::error::Error>> {
+    let path = bank_path();
+    if !path.exists() {
+        return Ok(None);
+    }
+    let samples = soundfont::read(&std::fs::read(path)?)?;
+    Ok(Some(samples.iter().filter_map(recording).collect()))
+}
+
+fn recording(sample: &Sample) -> Option<Recording> {
+    let zones: Vec<(Family, f64)> = sample.zones.iter().filter_map(|z| stated(sample, z)).collect();
+    let &(family, _) = zones.first()?;
+    let samples = unroll(sample);
+    let long_enough = samples.len() as f64 >= SHORTEST_S * sample.sample_rate_hz;
+    let pitches = by_frequency(&zones);
+    let verdicts: Vec<(f64, f64)> =
+        pitches.iter().map(|&f0| (f0, standing(&samples, sample.sample_rate_hz, f0))).collect();
+    let &(f0_hz, stands) = verdicts.iter().rev().max_by(|a, b| a.1.total_cmp(&b.1))?;
+    let in_range = f0_hz > RANGE_HZ.0 && f0_hz < RANGE_HZ.1.min(0.4 * sample.sample_rate_hz);
+    (long_enough && in_range).then(|| Recording {
+        name: sample.name.clone(),
+        family,
+        sample_rate_hz: sample.sample_rate_hz,
+        f0_hz,
+        raw_samples: sample.samples.len().min(samples.len()),
+        samples,
+        disputed: stands < STANDS,
+    })
+}
+
+/// What a zone of a melodic preset states: the frequency heard when the sample is played at its own rate. A player adds
+/// the correction and the tuning to the pitch, so the raw sample lies that much below its root key.
+fn stated(sample: &Sample, zone: &Zone) -> Option<(Family, f64)> {
+    let family = Family::of_program(zone.program).filter(|_| zone.bank == 0)?;
+    let root = zone.root_key.unwrap_or(sample.root_key);
+    let keyed = root < 128 && zone.scale_cents == 100;
+    let (semitones, cents) = zone.tune;
+    let above_a4 = f64::from(root) - 69.0 - f64::from(semitones);
+    let cents = 100.0 * above_a4 - f64::from(cents) - f64::from(sample.correction_cents);
+    keyed.then(|| (family, 440.0 * 2.0_f64.powf(cents / 1200.0)))
+}
+
+/// The distinct stated frequencies, the most often stated first. Zones within 10 cents are one statement: presets detune
+/// layers on purpose.
+fn by_frequency(zones: &[(Family, f64)]) -> Vec<f64> {
+    let mut counts: BTreeMap<u64, (usize, f64)> = BTreeMap::new();
+    for &(_, f0) in zones {
+        let key = (f0.log2() * 120.0).round().to_bits();
+        counts.entry(key).or_insert((0, f0)).0 += 1;
+    }
+    let mut pitches: Vec<(usize, f64)> = counts.into_values().collect();
+    pitches.sort_by(|a, b| b.0.cmp(&a.0).then(a.1.total_cmp(&b.1)));
+    pitches.into_iter().map(|(_, f0)| f0).collect()
+}
+
+/// Periodicity at the stated period, or 0 when an integer fraction of it does as well.
+fn standing(samples: &[f32], sample_rate_hz: f64, f0_hz: f64) -> f64 {
+    let start = crate::cast::index(AFTER_ATTACK_S * sample_rate_hz).min(samples.len() / 4);
+    let sound = &samples[start..];
+    let own = periodicity(sound, sample_rate_hz / f0_hz);
+    let higher = [2.0, 3.0, 5.0].map(|factor| factor * f0_hz);
+    let overturned = higher
+        .into_iter()
+        .filter(|&f| f < 0.4 * sample_rate_hz)
+        .any(|f| periodicity(sound, sample_rate_hz / f) > own - OVERTURNS);
+    if overturned { 0.0 } else { own }
+}
+
+fn unroll(sample: &Sample) -> Vec<f32> {
+    let raw: Vec<f32> = sample.samples.iter().map(|&x| f32::from(x) / 32_768.0).collect();
+    let length = crate::cast::index(UNROLLED_S * sample.sample_rate_hz);
+    let (start, end) = sample.loop_points;
+    let looped = end <= raw.len() && end >= start + SHORTEST_LOOP;
+    if !looped {
+        return raw.into_iter().take(length).collect();
+    }
+    let repeats = raw[start..end].iter().cycle();
+    raw[..end].iter().chain(repeats).copied().take(length).collect()
+}
