@@ -97,7 +97,7 @@ impl Mix {
         match self {
             Self::One(channel) => out.extend_from_slice(&planes[channel]),
             Self::HalfSum => {
-                out.extend(planes[0].iter().zip(&planes[1]).map(|(a, b)| 0.5 * (a + b)))
+                out.extend(planes[0].iter().zip(&planes[1]).map(|(a, b)| 0.5 * (a + b)));
             }
             Self::HalfDifference => {
                 out.extend(planes[0].iter().zip(&planes[1]).map(|(a, b)| 0.5 * (a - b)));

@@ -17,8 +17,8 @@ pub(super) fn find(mut file: File, file_length: u64, form: &[u8]) -> Result<Sect
         let Some(chunk) = Chunk::at(&mut file, position, u32::from_be_bytes)? else { break };
         match &chunk.name {
             b"COMM" => {
-                common =
-                    Some(Common::parse(&chunk.body(&mut file, if compressed { 22 } else { 18 })?)?)
+                let needed = if compressed { 22 } else { 18 };
+                common = Some(Common::parse(&chunk.body(&mut file, needed)?)?);
             }
             b"SSND" => {
                 let head = chunk.body(&mut file, 8)?;
