@@ -3,6 +3,7 @@
 pub mod bounds;
 pub mod cast;
 pub mod figures;
+pub mod lowest_peak;
 pub mod periodicity;
 pub mod recorded;
 pub mod soundfont;

@@ -6,8 +6,11 @@ mod score;
 use std::collections::BTreeMap;
 use std::path::PathBuf;
 
-use crate::periodicity::periodicity;
+use crate::cast::index;
+use crate::lowest_peak::lowest_peak_hz;
+use crate::periodicity::Periodicity;
 use crate::soundfont::{self, Sample, Zone};
+use crate::take::cents;
 
 pub use score::{FamilyScore, Score, score};
 
@@ -19,10 +22,17 @@ const SHORTEST_S: f64 = 0.3;
 const SHORTEST_LOOP: usize = 4;
 /// Fundamentals used, in Hz: the engine's whole search range.
 const RANGE_HZ: (f64, f64) = (20.0, 5_000.0);
-/// Least periodicity at the stated period for the stated pitch to stand (see [`Recording::disputed`]).
+/// Farthest that the period of the sound may lie from the stated one, in cents.
+const NEAR_CENTS: f64 = 30.0;
+/// Least correlation at the stated period for the stated pitch to stand (see [`Recording::disputed`]).
 const STANDS: f64 = 0.5;
-/// How close the periodicity of an integer fraction of the period comes to overturn the stated pitch.
-const OVERTURNS: f64 = 0.005;
+/// How close the correlation at an integer fraction of the period comes to overturn the stated pitch.
+const TIES: f64 = 0.005;
+/// Share of what the stated period leaves unexplained that any other period must leave at most to overturn it.
+const CLEARLY_BETTER: f64 = 0.25;
+/// Periods that are tried against the stated one, as multiples of it, and the step between them in cents.
+const RIVALS: (f64, f64) = (0.18, 3.2);
+const RIVAL_STEP_CENTS: f64 = 5.0;
 /// Start of the stretch whose periodicity is measured, in seconds: after the attack.
 const AFTER_ATTACK_S: f64 = 0.1;
 
@@ -74,9 +84,11 @@ pub struct Recording {
     pub samples: Vec<f32>,
     /// Samples before the loop first repeats.
     pub raw_samples: usize,
-    /// Whether the sound itself contradicts the stated pitch: it does not repeat with the stated period at all (organ
-    /// stops with a sub-octave or a fifth in them), or as well with an integer fraction of it (a preset that plays the
-    /// sample in another octave). Such recordings are reported, but no figure counts them.
+    /// Whether the sound itself contradicts the stated pitch: it does not repeat with the stated period, repeats as well
+    /// with an integer fraction of it, or clearly better with another (a loop of few samples that cannot hold the pitch,
+    /// an organ stop that sounds an octave lower, a preset that plays the sample as another note). Such recordings are
+    /// reported, but no figure counts them. Bars and bells make no period: for them it is enough that the lowest strong
+    /// line lies at the stated pitch.
     pub disputed: bool,
 }
 
@@ -149,22 +161,41 @@ fn by_frequency(zones: &[(Family, f64)]) -> Vec<f64> {
     pitches.into_iter().map(|(_, f0)| f0).collect()
 }
 
-/// Periodicity at the stated period, or 0 when an integer fraction of it does as well.
+/// 1 when the lowest strong line lies at the stated pitch; else the correlation at the stated period, or 0 when another
+/// period overturns it.
 fn standing(samples: &[f32], sample_rate_hz: f64, f0_hz: f64) -> f64 {
-    let start = crate::cast::index(AFTER_ATTACK_S * sample_rate_hz).min(samples.len() / 4);
+    let start = index(AFTER_ATTACK_S * sample_rate_hz).min(samples.len() / 4);
     let sound = &samples[start..];
-    let own = periodicity(sound, sample_rate_hz / f0_hz);
-    let higher = [2.0, 3.0, 5.0].map(|factor| factor * f0_hz);
-    let overturned = higher
-        .into_iter()
-        .filter(|&f| f < 0.4 * sample_rate_hz)
-        .any(|f| periodicity(sound, sample_rate_hz / f) > own - OVERTURNS);
+    let lowest = lowest_peak_hz(sound, sample_rate_hz).ok().flatten();
+    if lowest.is_some_and(|lowest| cents(lowest, f0_hz).abs() < NEAR_CENTS) {
+        return 1.0;
+    }
+    let period = sample_rate_hz / f0_hz;
+    let Ok(periodicity) = Periodicity::of(sound, period, RIVALS.1 * period) else {
+        return 0.0;
+    };
+    let best = |from_cents: f64, to_cents: f64| {
+        let steps = index((to_cents - from_cents) / RIVAL_STEP_CENTS);
+        (0..=steps)
+            .map(|step| from_cents + RIVAL_STEP_CENTS * step as f64)
+            .map(|cents| periodicity.at(period * 2.0_f64.powf(cents / 1200.0)))
+            .fold(0.0, f64::max)
+    };
+    let own = best(-NEAR_CENTS, NEAR_CENTS);
+    let (shortest, longest) = (1200.0 * RIVALS.0.log2(), 1200.0 * RIVALS.1.log2());
+    let step = NEAR_CENTS + RIVAL_STEP_CENTS;
+    let rival = best(shortest, -step).max(best(step, longest));
+    let tied = [2.0_f64, 3.0, 5.0].into_iter().any(|factor| {
+        let cents = -1200.0 * factor.log2();
+        best(cents - NEAR_CENTS, cents + NEAR_CENTS) > own - TIES
+    });
+    let overturned = tied || 1.0 - rival < CLEARLY_BETTER * (1.0 - own) - TIES;
     if overturned { 0.0 } else { own }
 }
 
 fn unroll(sample: &Sample) -> Vec<f32> {
     let raw: Vec<f32> = sample.samples.iter().map(|&x| f32::from(x) / 32_768.0).collect();
-    let length = crate::cast::index(UNROLLED_S * sample.sample_rate_hz);
+    let length = index(UNROLLED_S * sample.sample_rate_hz);
     let (start, end) = sample.loop_points;
     let looped = end <= raw.len() && end >= start + SHORTEST_LOOP;
     if !looped {

@@ -48,6 +48,13 @@ pub(crate) struct Times {
     pub(crate) step_s: f64,
 }
 
+impl Times {
+    /// Duration of so many blocks, in seconds.
+    pub(crate) fn duration(self, blocks: usize) -> f64 {
+        blocks as f64 * self.step_s
+    }
+}
+
 /// Sums of one pass over the signal for a rate `g`.
 #[derive(Default)]
 struct Sums {

@@ -44,6 +44,9 @@ pub(crate) struct LongSpectrum {
     scratch: Vec<Complex<f32>>,
     power: Vec<f32>,
     order: Vec<f32>,
+    /// Mean noise power of the blocks of bins.
+    floors: Vec<f32>,
+    bin_hz: f64,
     /// Lines found, by rising frequency.
     pub(crate) lines: Vec<Line>,
     /// Width of a bin of the last transform, in Hz, stretched by how much of it the note filled.
@@ -70,6 +73,8 @@ impl LongSpectrum {
             scratch: longest.make_scratch_vec(),
             power: vec![0.0; longest.len() / 2 + 1],
             order: Vec::with_capacity(NOISE_BLOCK),
+            floors: Vec::with_capacity(longest.len() / 2 / NOISE_BLOCK + 1),
+            bin_hz: 1.0,
             lines: Vec::with_capacity(LINES_MAX),
             resolution_hz: 0.0,
             sample_rate_hz,
@@ -101,8 +106,18 @@ impl LongSpectrum {
         self.find(self.sample_rate_hz / len as f64);
     }
 
+    /// Noise at a frequency, as the variance (squared amplitude) of a sum over `samples` samples brought down from there.
+    pub(crate) fn noise_of_sum(&self, hz: f64, samples: usize) -> f64 {
+        let block = nearest_index(hz / self.bin_hz) / NOISE_BLOCK;
+        let floor = f64::from(self.floors[block.min(self.floors.len() - 1)]);
+        let used = self.sample_rate_hz / self.resolution_hz;
+        floor * used / (CosineSum::BLACKMAN_HARRIS.enbw_bins() * samples as f64)
+    }
+
     fn find(&mut self, bin_hz: f64) {
         self.lines.clear();
+        self.floors.clear();
+        self.bin_hz = bin_hz;
         let wide = nearest_index(PROMINENCE_BINS as f64 * self.resolution_hz / bin_hz);
         let p = &self.power;
         let strongest = p.iter().fold(0.0f32, |a, &b| a.max(b));
@@ -115,6 +130,7 @@ impl LongSpectrum {
             let middle = self.order.len() / 2;
             let (_, median, _) = self.order.select_nth_unstable_by(middle, f32::total_cmp);
             let floor = (*median / core::f32::consts::LN_2).max(f32::MIN_POSITIVE);
+            self.floors.push(floor);
             let least = (floor * LINE_OVER_NOISE).max(least);
             let first = if block == 0 { wide + 2 } else { start };
             for k in first..end.min(p.len().saturating_sub(wide + 1)) {

@@ -22,8 +22,11 @@ const SPARE: usize = 3;
 const ROUNDS: usize = 2;
 /// Energy over the noise at which a partial is there: 10.5 dB.
 const PRESENT: f64 = 11.2;
-/// Share of another partial, against the noise, that is worth taking away.
-const WORTH: f64 = 0.05;
+/// Energy over the noise of a partial that the model may be built on: 16 dB.
+const CERTAIN: f64 = 40.0;
+/// Share of another partial that is worth taking away, against the noise of a block, and of the whole stretch.
+const WORTH: f64 = 0.1;
+const WORTH_SUMMED: f64 = 0.03;
 /// Scatter of the pitch over the note, against its own deviations and in cents, that makes it move.
 const MOVES_CHI: f64 = 4.0;
 const MOVES_CENTS: f64 = 0.3;
@@ -136,14 +139,16 @@ impl Meter {
         }
         self.mean_square =
             self.samples.iter().map(|&x| f64::from(x) * f64::from(x)).sum::<f64>() / length as f64;
+        self.long.run(&self.samples);
         let (f0, b) = self.expect()?;
         let mean_log = self.follow(start, f0);
         self.place(mean_log.exp(), b);
         self.baseband.run(&self.samples, &self.steps, &self.bend);
         let times = self.times();
         for i in 0..self.rows.len() {
-            self.first_fit(i, times);
+            self.first_fit(i, times, 0.0);
         }
+        self.look_again(times, f0);
         if self.bend.is_empty() {
             for _ in 0..ROUNDS {
                 for i in 0..self.rows.len() {
@@ -151,7 +156,6 @@ impl Meter {
                 }
             }
         }
-        self.long.run(&self.samples);
         self.judge(f0)
     }
 
@@ -243,25 +247,54 @@ impl Meter {
         }
     }
 
-    fn first_fit(&mut self, i: usize, times: Times) {
+    fn first_fit(&mut self, i: usize, times: Times, around_hz: f64) {
         let row = &mut self.rows[i];
         let z = self.baseband.copy_row(i);
-        let guess = damped::search(z, times, 0.0, row.reach_hz);
+        let guess = damped::search(z, times, around_hz, row.reach_hz);
         row.fit = damped::fit(z, times, &guess);
+    }
+
+    /// Searches the weak partials again, close to where the strong ones let expect them: a wide search finds something in
+    /// noise alone, and a false partial far up turns the whole model.
+    fn look_again(&mut self, times: Times, f0: f64) {
+        self.points.clear();
+        for row in self.rows.iter().filter(|r| r.fit.snr > CERTAIN) {
+            let hz = row.expected_hz + row.fit.delta_hz;
+            self.points.push(Point { n: row.n as f64, hz, sd_hz: row.fit.delta_sd_hz });
+        }
+        let Some(model) = stiff::fit(&self.points, None) else { return };
+        let sd = model.f0_sd_cents.hypot(model.scatter_cents) / CENTS_PER_NEPER;
+        for i in 0..self.rows.len() {
+            let row = &mut self.rows[i];
+            if row.fit.snr > CERTAIN {
+                continue;
+            }
+            let n = row.n as f64;
+            let hz = partial_hz(model.f0, model.b, n);
+            let bend = if model.b_sd.is_finite() { 0.5 * n * n * model.b_sd } else { 0.0 };
+            row.reach_hz = (4.0 * hz * sd.hypot(bend)
+                + 1.0 / times.duration(self.baseband.blocks()))
+            .min(0.3 * f0)
+            .min(40.0);
+            let around = hz - row.expected_hz;
+            self.first_fit(i, times, around);
+            self.rows[i].reach_hz += around.abs();
+        }
     }
 
     /// Fits row `i` again in what the others leave.
     fn relax(&mut self, i: usize, times: Times) {
         let row = self.rows[i];
+        let noise = self.long.noise_of_sum(row.expected_hz, self.baseband.block()).sqrt();
         let z = self.baseband.copy_row(i);
         let blocks = z.len() as f64;
-        let worth = WORTH * (row.fit.noise / blocks).sqrt();
+        let worth = (WORTH * noise, WORTH_SUMMED * noise / blocks.sqrt());
         let share = Share { times, rate: self.sample_rate_hz, duration: blocks * times.step_s };
         for (k, other) in self.rows.iter().enumerate() {
             if k != i && other.fit.snr > PRESENT {
                 share.take(z, row.expected_hz, other, false, worth);
             }
-            if row.expected_hz + other.expected_hz < 2_000.0 && other.fit.snr > PRESENT {
+            if other.fit.snr > PRESENT {
                 share.take(z, row.expected_hz, other, true, worth);
             }
         }
@@ -296,7 +329,14 @@ struct Share {
 
 impl Share {
     /// Takes the share of `other`, or of its image at negative frequencies, away from a row brought down by `own_hz`.
-    fn take(&self, z: &mut [Complex<f64>], own_hz: f64, other: &Row, image: bool, worth: f64) {
+    fn take(
+        &self,
+        z: &mut [Complex<f64>],
+        own_hz: f64,
+        other: &Row,
+        image: bool,
+        worth: (f64, f64),
+    ) {
         let sign = if image { -1.0 } else { 1.0 };
         let fit = &other.fit;
         let hz = sign * (other.expected_hz + fit.delta_hz);
@@ -307,9 +347,9 @@ impl Share {
         let rate_hz = 1.0 / self.times.step_s;
         let alias = off_hz - (off_hz / rate_hz).round() * rate_hz;
         let span = self.duration.min(1.0 / fit.sigma.max(1e-9));
-        let leak =
-            fit.a.norm() * response.abs() / (1.0 + core::f64::consts::PI * alias.abs() * span);
-        if !(leak > worth) {
+        let leak = fit.a.norm() * response.abs();
+        let summed = leak / (1.0 + core::f64::consts::PI * alias.abs() * span);
+        if !(leak > worth.0 || summed > worth.1) {
             return;
         }
         let g = Complex::new(-fit.sigma, TAU * off_hz);

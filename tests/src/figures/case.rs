@@ -78,11 +78,7 @@ impl Case {
     /// What a bound needs to know of the observation.
     #[must_use]
     pub fn observation(&self) -> bounds::Observation {
-        bounds::Observation {
-            sample_rate_hz: self.tone.sample_rate_hz,
-            samples: self.samples.len(),
-            noise_sd: self.noise_sd,
-        }
+        bounds::Observation { samples: self.samples.len(), noise_sd: self.noise_sd }
     }
 
     /// Mean power of a partial over the noise within 1 Hz, in dB.

@@ -11,7 +11,7 @@ use super::Draw;
 use super::calibration::Calibration;
 use super::case::Case;
 use super::errors::{Errors, Tally};
-use crate::bounds::{self, PartialBound, StiffTone};
+use crate::bounds::{self, PartialBound};
 use crate::take::{Take, cents};
 
 /// Error of a note's f0 that is gross, in cents.
@@ -104,14 +104,11 @@ impl ExactFigures {
     }
 
     fn judge_note(&mut self, case: &Case, note: &Note) {
-        let partials: Vec<bounds::TonePartial> =
-            case.tone.partials.iter().map(bound_partial).collect();
-        let tone = StiffTone { f0_hz: case.tone.f0_hz, b: case.tone.b, partials: &partials };
         let observation = case.observation();
         let error_hz = note.f0_hz - case.tone.f0_hz;
         let f0_cents = cents(note.f0_hz, case.tone.f0_hz);
         self.calibration.f0.push(f0_cents / note.f0_sd_cents, &case.name);
-        if let Some(bound) = tone.stiff_bound(&observation) {
+        if let Some(bound) = bounds::stiff(&case.tone, &observation) {
             self.f0.push(error_hz / bound.f0_sd_hz, &case.name);
             self.b_given.push(note.stretch.is_some(), &case.name);
             if let Some(stretch) = note.stretch {
@@ -120,7 +117,7 @@ impl ExactFigures {
                 self.calibration.b.push(error / stretch.b_sd, &case.name);
             }
         }
-        let bounds = tone.partial_bounds(&observation).unwrap_or_default();
+        let bounds = bounds::partials(&case.tone, &observation).unwrap_or_default();
         self.judge_partials(case, note, &bounds);
     }
 
@@ -172,12 +169,4 @@ fn is(partial: &NotePartial, truth: &TonePartial, bound: &PartialBound) -> bool 
 
 fn partial_name(case: &Case, number: u32) -> Arc<str> {
     format!("{}; partial {number}", case.name).into()
-}
-
-fn bound_partial(partial: &TonePartial) -> bounds::TonePartial {
-    bounds::TonePartial {
-        number: partial.number,
-        amplitude: partial.amplitude,
-        phase_rad: partial.phase_rad,
-    }
 }

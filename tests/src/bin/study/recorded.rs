@@ -30,6 +30,8 @@ pub(crate) fn print(worst: usize) -> Result<(), Box<dyn Error>> {
     );
     line("(disputed, not counted)", &disputed, |_| true);
     print_worst(&judged, worst);
+    println!("  disputed:");
+    print_each(&disputed);
     Ok(())
 }
 
@@ -54,7 +56,12 @@ fn print_worst(scores: &[&Score], count: usize) {
         .collect();
     bad.sort_by_key(|score| std::cmp::Reverse(score.wrong + score.unanswered));
     println!("  worst of {} recordings that are not perfect:", bad.len());
-    for score in bad.into_iter().take(count) {
+    bad.truncate(count);
+    print_each(&bad);
+}
+
+fn print_each(scores: &[&Score]) {
+    for score in scores {
         let cents = |value: Option<f64>| {
             value.map_or_else(|| "none".to_owned(), |cents| format!("{cents:+.0} ct"))
         };
