@@ -1,6 +1,6 @@
 //! Sound files, decoded block by block to `f32` with full scale 1.0.
 //!
-//! The decoder is symphonia's; [`container`] finds the sound in WAV and AIFF files first, so that a header that lies
+//! The decoder is symphonia's; [`container`] finds the sound first, so that a header that lies
 //! costs as little as can be.
 
 mod channel;
@@ -11,7 +11,7 @@ pub(crate) use channel::{Channel, Mix};
 
 use anyhow::{Context as _, Result, anyhow, bail};
 use clipping::ClipCounter;
-use container::Container;
+use container::Section;
 use std::fs::File;
 use std::io::ErrorKind;
 use std::path::Path;
@@ -19,7 +19,7 @@ use symphonia::core::codecs::audio::{AudioDecoder, AudioDecoderOptions};
 use symphonia::core::errors::Error as DecodeError;
 use symphonia::core::formats::probe::Hint;
 use symphonia::core::formats::{FormatOptions, FormatReader, TrackType};
-use symphonia::core::io::{MediaSource, MediaSourceStream};
+use symphonia::core::io::MediaSourceStream;
 use symphonia::core::packet::Packet;
 
 /// Longest hole bridged within a file of unknown length, in frames: beyond it, a time stamp is taken for damaged.
@@ -65,14 +65,10 @@ impl Input {
     /// # Errors
     /// Everything that stops the file from being read at all.
     pub(crate) fn open(path: &Path, channel: Channel) -> Result<Self> {
-        let (source, facts) = match Container::find(open_file(path)?)? {
-            Container::Flac(file) => (Box::new(file) as Box<dyn MediaSource>, None),
-            Container::Section(mut section) => {
-                let facts = (section.frames, section.frames_missing, section.remark.take());
-                (Box::new(section) as Box<dyn MediaSource>, Some(facts))
-            }
-        };
-        let stream = MediaSourceStream::new(source, Default::default());
+        let mut section = Section::find(open_file(path)?)?;
+        let (frames, missing) = (section.frames, section.frames_missing);
+        let remarks = section.remark.take().into_iter().collect();
+        let stream = MediaSourceStream::new(Box::new(section), Default::default());
         let format = symphonia::default::get_probe()
             .probe(&Hint::new(), stream, FormatOptions::default(), Default::default())
             .map_err(|error| anyhow!("cannot be decoded: {error}"))?;
@@ -86,10 +82,6 @@ impl Input {
         let channels = params.channels.as_ref().map_or(0, |channels| channels.count());
         let mix = Mix::new(channel, channels)?;
         let clip = ClipCounter::new(params.bits_per_sample);
-        let (frames, missing, remark) = match facts {
-            Some((frames, missing, remark)) => (Some(frames), missing, remark),
-            None => (track.num_frames, 0, None),
-        };
         Ok(Self {
             track: track.id,
             decoder,
@@ -98,12 +90,12 @@ impl Input {
             clips: vec![clip; mix.planes().len()],
             sample_rate_hz,
             channels,
-            frames,
+            frames: frames.or(track.num_frames),
             position: 0,
             pending: None,
             lost: 0,
             missing,
-            remarks: remark.into_iter().collect(),
+            remarks,
             format,
         })
     }

@@ -1,10 +1,11 @@
-//! Finds the sound in a WAV or AIFF file without believing its header.
+//! Finds the sound in a file without believing its header.
 //!
 //! Recorders that lose power leave sizes of zero, copies break off, and editors write odd extra chunks, so the chunk list
 //! is walked against what the file really holds. The decoder then gets a [`Section`]: a minimal header of our own,
 //! followed by the sound data and nothing else. Sizes of 64 bits (RF64, BW64) come for free that way.
 
 mod aiff;
+mod flac;
 mod wav;
 
 use anyhow::{Context as _, Result, bail};
@@ -17,57 +18,16 @@ const CHANNELS_MAX: u16 = 26;
 /// Largest chunk of format description read; honest ones have at most a few hundred bytes.
 const FORMAT_BYTES_MAX: u64 = 1024;
 
-/// What stands in a file.
-#[derive(Debug)]
-pub(crate) enum Container {
-    /// WAV or AIFF: the sound data behind a header of our own.
-    Section(Section),
-    /// FLAC, which carries its own framing.
-    Flac(File),
-}
-
 /// A header of our own and the sound data of a file, read as one stream.
 #[derive(Debug)]
 pub(crate) struct Section {
     stream: std::io::Chain<Cursor<Vec<u8>>, Take<File>>,
-    /// Whole frames (one sample of each channel) of sound data in the file.
-    pub(crate) frames: u64,
+    /// Whole frames (one sample of each channel) of sound data in the file; `None` where only the decoder can know.
+    pub(crate) frames: Option<u64>,
     /// Frames that the header states, when it states more than there are.
     pub(crate) frames_missing: u64,
     /// What else was odd.
     pub(crate) remark: Option<String>,
-}
-
-impl Container {
-    /// Recognises a file by its first bytes.
-    ///
-    /// # Errors
-    /// An unreadable, empty or unknown file, or a header without which nothing can be read.
-    pub(crate) fn find(mut file: File) -> Result<Self> {
-        let length = file.metadata()?.len();
-        if length == 0 {
-            bail!("is empty");
-        }
-        let mut start = [0; 12];
-        let got = read_up_to(&mut file, &mut start)?;
-        match (&start[..4], &start[8..]) {
-            (b"RIFF" | b"RF64" | b"BW64", b"WAVE") => wav::find(file, length).map(Self::Section),
-            (b"FORM", b"AIFF" | b"AIFC") => {
-                aiff::find(file, length, &start[8..]).map(Self::Section)
-            }
-            (b"fLaC", _) => flac(file),
-            ([b'I', b'D', b'3', _], _) => flac(file),
-            (b"RIFF" | b"RF64" | b"BW64" | b"FORM", _) if got < 12 => {
-                bail!("ends within its header")
-            }
-            _ => bail!("is not a WAV, AIFF or FLAC file"),
-        }
-    }
-}
-
-fn flac(mut file: File) -> Result<Container> {
-    file.rewind()?;
-    Ok(Container::Flac(file))
 }
 
 /// What a chunk walk found out about the sound data.
@@ -80,13 +40,43 @@ struct SoundData {
 }
 
 impl Section {
+    /// Recognises a file by its first bytes.
+    ///
+    /// # Errors
+    /// An unreadable, empty or unknown file, or a header without which nothing can be read.
+    pub(crate) fn find(mut file: File) -> Result<Self> {
+        let length = file.metadata()?.len();
+        if length == 0 {
+            bail!("is empty");
+        }
+        let mut start = [0; 12];
+        let got = read_up_to(&mut file, &mut start)?;
+        match (&start[..4], &start[8..]) {
+            (b"RIFF" | b"RF64" | b"BW64", b"WAVE") => wav::find(file, length),
+            (b"FORM", b"AIFF" | b"AIFC") => aiff::find(file, length, &start[8..]),
+            // Some taggers put their block before the marker.
+            (b"fLaC" | [b'I', b'D', b'3', _], _) => flac::find(file),
+            (b"RIFF" | b"RF64" | b"BW64" | b"FORM", _) if got < 12 => {
+                bail!("ends within its header")
+            }
+            _ => bail!("is not a WAV, AIFF or FLAC file"),
+        }
+    }
+
+    /// A header of our own, then the file from where it stands.
+    fn unknown_length(header: Vec<u8>, file: File) -> Self {
+        let stream = Cursor::new(header).chain(file.take(u64::MAX));
+        Self { stream, frames: None, frames_missing: 0, remark: None }
+    }
+
     fn new(header: Vec<u8>, mut file: File, file_length: u64, data: &SoundData) -> Result<Self> {
         let present = file_length.saturating_sub(data.start);
         let stated = data.stated.unwrap_or(present);
         let frames = present.min(stated) / data.frame;
         file.seek(SeekFrom::Start(data.start))?;
         let stream = Cursor::new(header).chain(file.take(frames * data.frame));
-        Ok(Self { stream, frames, frames_missing: stated / data.frame - frames, remark: None })
+        let frames_missing = stated / data.frame - frames;
+        Ok(Self { stream, frames: Some(frames), frames_missing, remark: None })
     }
 }
 

@@ -17,10 +17,23 @@ pub(crate) struct LevelHistory {
     open: Option<(Column, u32)>,
 }
 
+/// The level of one partial at one time.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct LevelAt {
+    /// Sample position.
+    pub(crate) position: u64,
+    /// Fundamental there, in Hz; 0 without one.
+    pub(crate) f0_hz: f64,
+    /// `None` where the partial is not there.
+    pub(crate) level_dbfs: Option<f64>,
+}
+
 /// Mean power of each partial over a stretch of time.
 #[derive(Debug, Clone, Default)]
 struct Column {
     position: u64,
+    /// Fundamental at its first reading, in Hz; 0 without one.
+    f0_hz: f64,
     /// By partial number less one: sum of powers, and readings that had the partial.
     powers: Vec<(f32, u32)>,
 }
@@ -29,10 +42,7 @@ impl LevelHistory {
     /// Takes in the next reading.
     pub(crate) fn push(&mut self, reading: &Reading) {
         self.span = self.span.max(1);
-        let (mut column, count) = self
-            .open
-            .take()
-            .unwrap_or_else(|| (Column { position: reading.centre, powers: Vec::new() }, 0));
+        let (mut column, count) = self.open.take().unwrap_or_else(|| (Column::at(reading), 0));
         for partial in &reading.partials {
             let slot = crate::convert::index(u64::from(partial.number.saturating_sub(1)));
             if column.powers.len() <= slot {
@@ -66,15 +76,17 @@ impl LevelHistory {
             .map_or(0, |most| u32::try_from(most).unwrap_or(0))
     }
 
-    /// The level of a partial in dBFS over sample positions; `None` where it is not there.
-    pub(crate) fn levels(&self, number: u32) -> impl Iterator<Item = (u64, Option<f64>)> {
+    /// The level of a partial over time.
+    pub(crate) fn levels(&self, number: u32) -> impl Iterator<Item = LevelAt> {
         let slot = crate::convert::index(u64::from(number.saturating_sub(1)));
         self.columns.iter().map(move |column| {
-            let level = column.powers.get(slot).filter(|(_, count)| *count > 0);
-            (
-                column.position,
-                level.map(|&(power, count)| 10.0 * (f64::from(power) / f64::from(count)).log10()),
-            )
+            let mean = column.powers.get(slot).filter(|(_, count)| *count > 0);
+            LevelAt {
+                position: column.position,
+                f0_hz: column.f0_hz,
+                level_dbfs: mean
+                    .map(|&(power, count)| 10.0 * (f64::from(power) / f64::from(count)).log10()),
+            }
         })
     }
 
@@ -85,6 +97,11 @@ impl LevelHistory {
 }
 
 impl Column {
+    fn at(reading: &Reading) -> Self {
+        let f0_hz = reading.pitch.map_or(0.0, |pitch| pitch.f0_hz);
+        Self { position: reading.centre, f0_hz, powers: Vec::new() }
+    }
+
     fn joined(columns: &[Self]) -> Self {
         let mut sum = columns[0].clone();
         for column in &columns[1..] {
@@ -113,19 +130,18 @@ mod tests {
         }
         assert!(history.columns.len() < COLUMNS_MAX, "{} columns", history.columns.len());
         assert_eq!(history.partials(), 2, "highest partial");
-        let levels: Vec<_> = history.levels(2).collect();
         let (sounding, silent): (Vec<_>, Vec<_>) =
-            levels.iter().partition(|(at, _)| *at < readings / 2 * 480);
+            history.levels(2).partition(|at| at.position < readings / 2 * 480);
         assert!(!sounding.is_empty() && !silent.is_empty(), "both halves are there");
-        for (at, level) in sounding {
-            assert!(level.is_some_and(|level| (level + 20.0).abs() < 1e-3), "{level:?} at {at}");
+        for at in sounding {
+            assert!(at.level_dbfs.is_some_and(|level| (level + 20.0).abs() < 1e-3), "{at:?}");
         }
         assert!(
-            silent.iter().all(|(_, level)| level.is_none()),
+            silent.iter().all(|at| at.level_dbfs.is_none()),
             "no level where the partial is gone"
         );
         assert!(
-            history.levels(1).all(|(_, level)| level.is_none()),
+            history.levels(1).all(|at| at.level_dbfs.is_none()),
             "no level of a partial never met"
         );
     }

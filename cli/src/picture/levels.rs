@@ -14,6 +14,8 @@ const PLOT_LEFT: f64 = 60.0;
 const PLOT_RIGHT: f64 = WIDTH - MARGIN - 40.0;
 /// Levels shown below the highest, in dB, at most.
 const SPAN_DB: f64 = 90.0;
+/// Largest relative step of the fundamental within a note, from one column to the next.
+const SAME_NOTE: f64 = 0.03;
 /// Type of the numbers at the curves.
 const NUMBER: Type = Type::mono(10.0, INK);
 
@@ -57,16 +59,19 @@ impl Levels<'_> {
     fn curves(&self, number: u32, lowest: f64) -> Vec<Curve> {
         let mut pieces = Vec::new();
         let mut piece = Curve::new();
-        for (position, level) in self.history.levels(number) {
-            match level.filter(|level| *level >= lowest) {
-                Some(level) => piece.push((self.timebase.seconds(position), level)),
-                None if piece.len() > 1 => pieces.push(std::mem::take(&mut piece)),
-                None => piece.clear(),
+        let mut f0_hz = 0.0;
+        for at in self.history.levels(number) {
+            let level = at.level_dbfs.filter(|level| *level >= lowest);
+            // Another note's partial of the same number is another partial.
+            let same_note = (at.f0_hz / f0_hz - 1.0).abs() < SAME_NOTE;
+            if (level.is_none() || !same_note) && !piece.is_empty() {
+                pieces.push(std::mem::take(&mut piece));
             }
+            f0_hz = at.f0_hz;
+            piece.extend(level.map(|level| (self.timebase.seconds(at.position), level)));
         }
-        if piece.len() > 1 {
-            pieces.push(piece);
-        }
+        pieces.push(piece);
+        pieces.retain(|piece| piece.len() > 1);
         pieces
     }
 
@@ -79,7 +84,7 @@ impl Levels<'_> {
         let all = || {
             (1..=self.history.partials())
                 .flat_map(|number| self.history.levels(number))
-                .filter_map(|(_, level)| level.filter(|level| level.is_finite()))
+                .filter_map(|at| at.level_dbfs.filter(|level| level.is_finite()))
         };
         let highest = (all().reduce(f64::max)? / 10.0).ceil() * 10.0;
         let lowest = ((all().reduce(f64::min)? / 10.0).floor() * 10.0).max(highest - SPAN_DB);
