@@ -20,7 +20,11 @@ pub(crate) fn with_deviation(
     match deviation {
         Some(deviation) => {
             let decimals = decimals_for(deviation, most);
-            format!("{} ± {deviation:.decimals$}", fixed(value, decimals, sign))
+            let shown = format!("{deviation:.decimals$}");
+            // Too small for these decimals is still not nothing.
+            let shown =
+                if is_zero(&shown) && deviation > 0.0 { format!("{deviation:.0e}") } else { shown };
+            format!("{} ± {shown}", fixed(value, decimals, sign))
         }
         None => fixed(value, most, sign),
     }
@@ -73,12 +77,15 @@ pub(crate) fn explanation(kind: StrayKind) -> String {
 
 fn fixed(value: f64, decimals: usize, sign: bool) -> String {
     let digits = format!("{:.decimals$}", value.abs());
-    let zero = digits.bytes().all(|digit| matches!(digit, b'0' | b'.'));
-    match (zero, value < 0.0, sign) {
+    match (is_zero(&digits), value < 0.0, sign) {
         (false, true, _) => format!("{MINUS}{digits}"),
         (false, false, true) => format!("+{digits}"),
         _ => digits,
     }
+}
+
+fn is_zero(digits: &str) -> bool {
+    digits.bytes().all(|digit| matches!(digit, b'0' | b'.'))
 }
 
 #[cfg(test)]
@@ -93,6 +100,7 @@ mod tests {
             (220.23456, 12.3, 6, false, "220 ± 12"),
             (-1.25, 0.01, 4, true, "−1.250 ± 0.010"),
             (0.000001, 0.001, 4, true, "0.0000 ± 0.0010"),
+            (220.23456, 0.00000371, 4, false, "220.2346 ± 4e-6"),
             (-0.000001, 0.0, 2, true, "0.00 ± 0.00"),
         ] {
             let shown = with_deviation(Some(value), Some(deviation), most, sign);

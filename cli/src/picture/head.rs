@@ -27,10 +27,10 @@ pub(super) fn draw(
     canvas.text(20.0, 37.0, name, NAME)?;
     // Capitals and figures of the bold type are wide.
     let cents_left = 32.0 + 0.72 * NAME.size * name.chars().count() as f64;
-    let cents = with_deviation(note.cents, note.f0_sd_cents, 2, true);
+    let cents = with_deviation(note.cents, note.f0_sd_cents, 3, true);
     pair(canvas, cents_left, &cents, "ct", Type::sans(20.0, PARTIAL).bold())?;
     let hz = with_deviation(note.f0_hz, deviation_hz(note), 4, false);
-    pair(canvas, cents_left + 130.0, &hz, "Hz", Type::sans(20.0, INK))?;
+    pair(canvas, cents_left + 150.0, &hz, "Hz", Type::sans(20.0, INK))?;
     let conditions = [
         ("concert pitch", format!("{} Hz", facts.concert_pitch_hz)),
         ("temperament", facts.temperament.to_string()),

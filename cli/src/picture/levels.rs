@@ -16,6 +16,8 @@ const PLOT_RIGHT: f64 = WIDTH - MARGIN - 40.0;
 const SPAN_DB: f64 = 90.0;
 /// Largest relative step of the fundamental within a note, from one column to the next.
 const SAME_NOTE: f64 = 0.03;
+/// Least share of the time that a curve covers to get its number.
+const NUMBERED: f64 = 0.05;
 /// Type of the numbers at the curves.
 const NUMBER: Type = Type::mono(10.0, INK);
 
@@ -153,7 +155,9 @@ fn numbers(
     let mut taken: Vec<(f64, f64)> = Vec::new();
     for (number, pieces) in curves {
         let longest = pieces.iter().max_by(|a, b| length(a).total_cmp(&length(b)));
-        let Some(&(time, level)) = longest.and_then(|piece| piece.last()) else { continue };
+        let long =
+            longest.filter(|piece| length(piece) > NUMBERED * (times.values.1 - times.values.0));
+        let Some(&(time, level)) = long.and_then(|piece| piece.last()) else { continue };
         let (x, y) = (times.at(time) + 6.0, levels.within(level));
         if taken
             .iter()

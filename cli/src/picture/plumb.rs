@@ -12,6 +12,7 @@ use crate::output::records::{NoteRecord, PartialRecord};
 use crate::output::words::plain;
 use anyhow::Result;
 use rows::Rows;
+use strays::Strays;
 
 /// Columns, by their edges or middles.
 const NUMBER_MIDDLE: f64 = 46.0;
@@ -43,11 +44,13 @@ pub(super) fn draw(canvas: &Canvas<'_>, note: &NoteRecord) -> Result<()> {
     let levels = level_axis(note);
     headings(canvas, top)?;
     grid(canvas, &rows, &cents)?;
+    let strays = Strays::new(note, &rows);
+    strays.draw_marked(canvas, &levels)?;
     stretch(canvas, note, &rows, &cents)?;
     for partial in &note.partials {
         row(canvas, partial, rows.y(f64::from(partial.number)), &rows, &cents, &levels)?;
     }
-    strays::draw(canvas, note, &rows, &levels)
+    strays.draw_explained(canvas, &rows, &levels)
 }
 
 fn headings(canvas: &Canvas<'_>, top: f64) -> Result<()> {

@@ -173,7 +173,7 @@ fn a_file_without_read_permission_is_refused() {
     use std::os::unix::fs::PermissionsExt as _;
     let folder = folder_with([("secret.wav", wav(&[tone(0.2)], Coding::S16))]);
     let path = folder.path().join("secret.wav");
-    std::fs::set_permissions(&path, std::fs::Permissions::from_mode(0)).unwrap();
+    std::fs::set_permissions(&path, std::fs::Permissions::from_mode(0o000)).unwrap();
     let run = measure(folder.path(), &["secret.wav"]);
     // The superuser reads it all the same.
     if std::fs::File::open(&path).is_err() {
@@ -188,11 +188,11 @@ fn a_file_without_read_permission_is_refused() {
 fn no_damage_makes_it_panic() {
     let sound = tone(0.05);
     let wholes = [
-        ("wav", wav(&[sound.clone()], Coding::S16)),
+        ("wav", wav(std::slice::from_ref(&sound), Coding::S16)),
         ("wav", crate::sounds::wav_extensible(&[sound.clone(), sound.clone()], Coding::F32)),
-        ("wav", crate::sounds::wav_64(&[sound.clone()], Coding::S24)),
+        ("wav", crate::sounds::wav_64(std::slice::from_ref(&sound), Coding::S24)),
         ("aiff", aiff(&[sound.clone(), sound.clone()], false)),
-        ("aifc", aiff(&[sound.clone()], true)),
+        ("aifc", aiff(std::slice::from_ref(&sound), true)),
         ("flac", flac(&[sound])),
     ];
     let folder = TempDir::new().unwrap();
@@ -241,7 +241,7 @@ fn damaged(mut file: Vec<u8>) -> Vec<u8> {
 }
 
 /// A small generator of numbers that look random (Steele, Lea and Flood, "Fast splittable pseudorandom number
-/// generators", 2014: SplitMix64).
+/// generators", 2014: `SplitMix64`).
 struct Random(u64);
 
 impl Random {

@@ -2,6 +2,7 @@
 
 use super::rows::Rows;
 use super::{LEVEL_LEFT, LEVEL_RIGHT};
+use crate::convert;
 use crate::output::records::{NoteRecord, StrayRecord};
 use crate::output::words::explanation;
 use crate::picture::axis::Axis;
@@ -17,45 +18,115 @@ const LABEL_STEP: f64 = 13.0;
 /// Explanations at most: beyond these, they are no longer read.
 const LABELS_MAX: usize = 24;
 
-/// Draws the strays that lie among the rows, strongest explained first.
-pub(super) fn draw(
-    canvas: &Canvas<'_>,
-    note: &NoteRecord,
-    rows: &Rows,
-    levels: &Axis,
-) -> Result<()> {
-    let mut shown: Vec<(f64, &StrayRecord)> = note
-        .strays
-        .iter()
-        .filter_map(|stray| Some((rows.y(partial_number(note, stray.frequency_hz?)?), stray)))
-        .filter(|(y, _)| rows.holds(*y))
-        .collect();
-    let fit = crate::convert::index(crate::convert::samples_in(
-        (rows.bottom - rows.top) / LABEL_STEP,
-        1.0,
-    ));
-    let explained = shown.len().min(LABELS_MAX).min(fit);
-    for (y, stray) in shown.drain(explained..) {
-        mark_weak(canvas, y, stray, levels)?;
+/// The strays that lie among the rows, sorted by what is drawn of them.
+pub(super) struct Strays<'a> {
+    /// Those explained, from the top down.
+    explained: Vec<Placed<'a>>,
+    /// Those only marked.
+    marked: Vec<Placed<'a>>,
+    /// How many lie outside.
+    outside: usize,
+}
+
+/// A stray and its height.
+type Placed<'a> = (f64, &'a StrayRecord);
+
+impl<'a> Strays<'a> {
+    pub(super) fn new(note: &'a NoteRecord, rows: &Rows) -> Self {
+        // The list comes strongest first.
+        let mut explained: Vec<Placed<'_>> = note
+            .strays
+            .iter()
+            .filter_map(|stray| Some((rows.y(partial_number(note, stray.frequency_hz?)?), stray)))
+            .filter(|(y, _)| rows.holds(*y))
+            .collect();
+        let outside = note.strays.len() - explained.len();
+        let fit = convert::index(convert::samples_in((rows.bottom - rows.top) / LABEL_STEP, 1.0));
+        let marked = explained.split_off(explained.len().min(LABELS_MAX).min(fit));
+        explained.sort_by(|(a, _), (b, _)| a.total_cmp(b));
+        Self { explained, marked, outside }
     }
-    for (y, stray) in &shown {
-        mark(canvas, *y, stray, levels)?;
+
+    /// Draws the weak ones, which lie under everything else.
+    pub(super) fn draw_marked(&self, canvas: &Canvas<'_>, levels: &Axis) -> Result<()> {
+        let pen = Pen::new(0.8, STRAY).strength(0.5);
+        for &(y, stray) in &self.marked {
+            canvas.line((DIAMOND_MIDDLE - 3.0, y), (DIAMOND_MIDDLE + 3.0, y), pen)?;
+            if let Some(level) = stray.level_dbfs {
+                canvas.line((LEVEL_LEFT, y), (levels.within(level), y), pen)?;
+            }
+        }
+        Ok(())
     }
-    shown.sort_by(|(a, _), (b, _)| a.total_cmp(b));
-    let wanted: Vec<f64> = shown.iter().map(|(y, _)| *y).collect();
-    let places = spread(&wanted, LABEL_STEP, (rows.top, rows.bottom));
-    for ((y, stray), place) in shown.iter().zip(places) {
-        let elbow =
-            [(DIAMOND_MIDDLE + 6.0, *y), (LABEL_LEFT - 10.0, place), (LABEL_LEFT - 4.0, place)];
-        canvas.path(&elbow, Pen::new(0.8, STRAY).strength(0.6))?;
-        canvas.text(LABEL_LEFT, place, &explanation(stray.explanation), Type::sans(10.0, STRAY))?;
+
+    /// Draws the strong ones with their explanations.
+    pub(super) fn draw_explained(
+        &self,
+        canvas: &Canvas<'_>,
+        rows: &Rows,
+        levels: &Axis,
+    ) -> Result<()> {
+        for (y, stray) in &self.explained {
+            mark(canvas, *y, stray, levels)?;
+        }
+        let labels = self.labels();
+        let wanted: Vec<f64> = labels.iter().map(|label| label.wanted()).collect();
+        let places = spread(&wanted, LABEL_STEP, (rows.top, rows.bottom));
+        for (label, place) in labels.iter().zip(places) {
+            for y in &label.heights {
+                let elbow = [
+                    (DIAMOND_MIDDLE + 6.0, *y),
+                    (LABEL_LEFT - 10.0, place),
+                    (LABEL_LEFT - 4.0, place),
+                ];
+                canvas.path(&elbow, Pen::new(0.8, STRAY).strength(0.6))?;
+            }
+            canvas.text(LABEL_LEFT, place, &label.words(), Type::sans(10.0, STRAY))?;
+        }
+        if self.outside > 0 {
+            let text = format!("{} above partial {}", self.outside, rows.count);
+            canvas.text(LABEL_LEFT, rows.bottom + 14.0, &text, Type::sans(10.0, DIM))?;
+        }
+        Ok(())
     }
-    let unseen = note.strays.iter().filter(|stray| !among(note, stray, rows)).count();
-    if unseen > 0 {
-        let text = format!("{unseen} above partial {}", rows.count);
-        canvas.text(LABEL_LEFT, rows.bottom + 14.0, &text, Type::sans(10.0, DIM))?;
+
+    /// One label for each stray, but for neighbours of the same explanation.
+    fn labels(&self) -> Vec<Label> {
+        let mut labels: Vec<Label> = Vec::new();
+        for (y, stray) in &self.explained {
+            let explanation = explanation(stray.explanation);
+            match labels.last_mut() {
+                Some(last) if last.takes(*y, &explanation) => last.heights.push(*y),
+                _ => labels.push(Label { explanation, heights: vec![*y] }),
+            }
+        }
+        labels
     }
-    Ok(())
+}
+
+/// An explanation, and the heights of the strays it explains.
+struct Label {
+    explanation: String,
+    heights: Vec<f64>,
+}
+
+impl Label {
+    fn takes(&self, y: f64, explanation: &str) -> bool {
+        self.explanation == explanation
+            && self.heights.last().is_some_and(|last| y - last < LABEL_STEP)
+    }
+
+    /// Where it would stand if it were alone.
+    fn wanted(&self) -> f64 {
+        self.heights.iter().sum::<f64>() / self.heights.len() as f64
+    }
+
+    fn words(&self) -> String {
+        match self.heights.len() {
+            1 => self.explanation.clone(),
+            count => format!("{count} {}", self.explanation),
+        }
+    }
 }
 
 fn mark(canvas: &Canvas<'_>, y: f64, stray: &StrayRecord, levels: &Axis) -> Result<()> {
@@ -63,19 +134,6 @@ fn mark(canvas: &Canvas<'_>, y: f64, stray: &StrayRecord, levels: &Axis) -> Resu
     let Some(level) = stray.level_dbfs else { return Ok(()) };
     let right = levels.within(level).clamp(LEVEL_LEFT + 2.0, LEVEL_RIGHT);
     canvas.line((LEVEL_LEFT, y), (right, y), Pen::new(2.4, STRAY))
-}
-
-/// One of the many without an explanation beside it.
-fn mark_weak(canvas: &Canvas<'_>, y: f64, stray: &StrayRecord, levels: &Axis) -> Result<()> {
-    let pen = Pen::new(0.8, STRAY).strength(0.5);
-    canvas.line((DIAMOND_MIDDLE - 3.0, y), (DIAMOND_MIDDLE + 3.0, y), pen)?;
-    let Some(level) = stray.level_dbfs else { return Ok(()) };
-    canvas.line((LEVEL_LEFT, y), (levels.within(level), y), pen)
-}
-
-fn among(note: &NoteRecord, stray: &StrayRecord, rows: &Rows) -> bool {
-    let number = stray.frequency_hz.and_then(|frequency| partial_number(note, frequency));
-    number.is_some_and(|number| rows.holds(rows.y(number)))
 }
 
 /// The partial number, not whole, at which the stretched series has a frequency: `f = n·f0·sqrt(1 + B·n²)` solved for n.
