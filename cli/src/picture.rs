@@ -1,5 +1,5 @@
-//! The picture of a file: the plumb view of one of its notes, what its partials say together, and the level of each
-//! partial over the whole file.
+//! The picture of a file: the plumb view of one of its notes, what the note's partials say together, and the level of
+//! each over its time.
 
 mod axis;
 mod canvas;
@@ -25,13 +25,21 @@ use theme::{GROUND, HEAD, LEVELS_HEIGHT, MARGIN, WIDTH};
 /// Gaps marked at most.
 const GAPS_MAX: usize = 1024;
 
+/// The note to be drawn.
+struct Chosen {
+    number: u64,
+    note: NoteRecord,
+    levels: LevelHistory,
+}
+
 /// The picture of one file in the making.
 pub(crate) struct PictureReport {
     place: PathBuf,
     wanted: Option<u32>,
     timebase: Timebase,
     notes: u64,
-    chosen: Option<(u64, NoteRecord)>,
+    chosen: Option<Chosen>,
+    /// Since the last note.
     history: LevelHistory,
     gaps: Vec<GapRecord>,
 }
@@ -44,15 +52,15 @@ impl PictureReport {
     }
 
     /// The picture as an SVG document.
-    fn draw(&self, facts: &FileFacts, number: u64, note: &NoteRecord) -> Result<String> {
+    fn draw(&self, facts: &FileFacts, chosen: &Chosen) -> Result<String> {
+        let Chosen { number, note, levels } = chosen;
         let plumb_height = plumb::height(note);
         let levels_top = HEAD + MARGIN + plumb_height + 12.0;
         let height = levels_top + LEVELS_HEIGHT + MARGIN;
-        let levels =
-            Levels { history: &self.history, gaps: &self.gaps, note, timebase: self.timebase };
+        let levels = Levels { history: levels, gaps: &self.gaps, note, timebase: self.timebase };
         canvas::svg(WIDTH, height, |canvas| {
             canvas.rectangle((0.0, 0.0), (WIDTH, height), GROUND, 1.0)?;
-            head::draw(canvas, facts, note, number)?;
+            head::draw(canvas, facts, note, *number)?;
             plumb::draw(canvas, note)?;
             sound::draw(canvas, note, plumb_height)?;
             levels.draw(canvas, levels_top)
@@ -71,11 +79,12 @@ impl Report for PictureReport {
         let choose = match self.wanted {
             Some(wanted) => self.notes == u64::from(wanted),
             None => {
-                self.chosen.as_ref().is_none_or(|(_, chosen)| note.length_s() > chosen.length_s())
+                self.chosen.as_ref().is_none_or(|chosen| note.length_s() > chosen.note.length_s())
             }
         };
+        let levels = self.history.take(note.span.clone());
         if choose {
-            self.chosen = Some((self.notes, note.clone()));
+            self.chosen = Some(Chosen { number: self.notes, note: note.clone(), levels });
         }
         Ok(())
     }
@@ -89,8 +98,8 @@ impl Report for PictureReport {
 
     fn finish(self: Box<Self>, facts: &FileFacts) -> Result<Ending> {
         match (&self.chosen, self.wanted) {
-            (Some((number, note)), _) => {
-                write(&self.place, &self.draw(facts, *number, note)?)?;
+            (Some(chosen), _) => {
+                write(&self.place, &self.draw(facts, chosen)?)?;
                 Ok(Ending::default())
             }
             (None, Some(wanted)) => Ok(Ending::unmet(format!(
@@ -166,7 +175,9 @@ mod tests {
         for index in 0..300 {
             report.reading(&fixtures::reading(24_000 + index * 400, partials)).unwrap();
         }
-        report.draw(facts, facts.notes, &fixtures::record(note)).unwrap()
+        report.note(&fixtures::record(note)).unwrap();
+        let chosen = report.chosen.take().unwrap();
+        report.draw(facts, &Chosen { number: facts.notes, ..chosen }).unwrap()
     }
 
     fn collect_texts(group: &usvg::Group, texts: &mut Vec<(String, usvg::Rect)>) {

@@ -5,6 +5,7 @@ use crate::measure::Timebase;
 use plumbtone_analysis::tuning::Tuning;
 use plumbtone_analysis::{Gap, GapReason, Note, NotePartial, Reading, State, Stray, StrayKind};
 use serde::Serialize;
+use std::ops::Range;
 
 /// One reading.
 #[derive(Debug, Clone, Serialize)]
@@ -46,6 +47,9 @@ pub(crate) struct NoteRecord {
     pub(crate) tristimulus: Option<[f64; 3]>,
     pub(crate) centroid_partial: Option<f64>,
     pub(crate) strays_left_out: usize,
+    /// First sample and the one after the last, from where the engine started.
+    #[serde(skip)]
+    pub(crate) span: Range<u64>,
 }
 
 /// One partial of a note.
@@ -135,6 +139,7 @@ impl NoteRecord {
             tristimulus: about.tristimulus,
             centroid_partial: about.centroid_partial.and_then(measured),
             strays_left_out: note.strays_left_out,
+            span: note.start..note.end,
         }
     }
 

@@ -2,19 +2,24 @@
 
 use crate::convert::single;
 use plumbtone_analysis::Reading;
+use std::ops::Range;
 
 /// Columns kept at most: more than a picture is wide. When full, neighbours are averaged and each then stands for twice
 /// the time.
 const COLUMNS_MAX: usize = 4096;
+/// Readings without a pitch in a row that are kept: a note bridges fewer.
+const IDLE_MAX: u32 = 100;
 
 /// Levels over time.
-#[derive(Debug, Default)]
+#[derive(Debug)]
 pub(crate) struct LevelHistory {
     columns: Vec<Column>,
     /// Readings that a column stands for.
     span: u32,
     /// The column being filled.
     open: Option<(Column, u32)>,
+    /// Readings without a pitch since the last one with.
+    idle: u32,
 }
 
 /// The level of one partial at one time.
@@ -38,10 +43,19 @@ struct Column {
     powers: Vec<(f32, u32)>,
 }
 
+impl Default for LevelHistory {
+    fn default() -> Self {
+        Self { columns: Vec::new(), span: 1, open: None, idle: 0 }
+    }
+}
+
 impl LevelHistory {
     /// Takes in the next reading.
     pub(crate) fn push(&mut self, reading: &Reading) {
-        self.span = self.span.max(1);
+        self.idle = if reading.pitch.is_some() { 0 } else { self.idle.saturating_add(1) };
+        if self.idle > IDLE_MAX {
+            return;
+        }
         let (mut column, count) = self.open.take().unwrap_or_else(|| (Column::at(reading), 0));
         for partial in &reading.partials {
             let slot = crate::convert::index(u64::from(partial.number.saturating_sub(1)));
@@ -61,10 +75,18 @@ impl LevelHistory {
         }
     }
 
-    /// First and last sample position, if there is more than one.
-    pub(crate) fn extent(&self) -> Option<(u64, u64)> {
-        let (first, last) = (self.columns.first()?.position, self.columns.last()?.position);
-        (last > first).then_some((first, last))
+    /// Moves what lies within a span of sample positions out, and forgets what lies before its end.
+    pub(crate) fn take(&mut self, span: Range<u64>) -> Self {
+        let rest = self
+            .columns
+            .split_off(self.columns.partition_point(|column| column.position < span.end));
+        let mut columns = std::mem::replace(&mut self.columns, rest);
+        columns.retain(|column| span.contains(&column.position));
+        let taken = Self { columns, span: self.span, open: None, idle: 0 };
+        if self.columns.is_empty() {
+            *self = Self::default();
+        }
+        taken
     }
 
     /// Highest partial number met.
@@ -118,7 +140,7 @@ impl Column {
 #[cfg(test)]
 mod tests {
     use super::*;
-    use plumbtone_analysis::Partial;
+    use plumbtone_analysis::{Partial, Pitch};
 
     #[test]
     fn a_long_file_keeps_its_levels_in_bounded_memory() {
@@ -126,7 +148,12 @@ mod tests {
         let readings = 10 * COLUMNS_MAX as u64;
         for index in 0..readings {
             let partials = if index < readings / 2 { vec![partial(2, -20.0)] } else { Vec::new() };
-            history.push(&Reading { centre: index * 480, partials, ..Reading::default() });
+            history.push(&Reading {
+                centre: index * 480,
+                pitch: PITCH,
+                partials,
+                ..Reading::default()
+            });
         }
         assert!(history.columns.len() < COLUMNS_MAX, "{} columns", history.columns.len());
         assert_eq!(history.partials(), 2, "highest partial");
@@ -145,6 +172,34 @@ mod tests {
             "no level of a partial never met"
         );
     }
+
+    #[test]
+    fn each_note_takes_its_own_levels_in_full_detail() {
+        let mut history = LevelHistory::default();
+        // Long unpitched sound before a note must not coarsen it.
+        for index in 0..10 * COLUMNS_MAX as u64 {
+            history.push(&Reading { centre: index, ..Reading::default() });
+        }
+        for index in 0..60 {
+            let partials = vec![partial(1, -20.0)];
+            history.push(&Reading {
+                centre: 1_000_000 + index,
+                pitch: PITCH,
+                partials,
+                ..Reading::default()
+            });
+        }
+        for (span, count) in
+            [(1_000_000..1_000_030, 30), (1_000_040..1_000_050, 10), (1_000_000..1_000_060, 10)]
+        {
+            let taken = history.take(span.clone());
+            let positions: Vec<u64> = taken.levels(1).map(|at| at.position).collect();
+            assert_eq!(positions.len(), count, "{span:?}: {positions:?}");
+            assert!(positions.iter().all(|at| span.contains(at)), "{span:?}: {positions:?}");
+        }
+    }
+
+    const PITCH: Option<Pitch> = Some(Pitch { f0_hz: 100.0, f0_sd_cents: 1.0, confidence: 1.0 });
 
     fn partial(number: u32, level_dbfs: f64) -> Partial {
         Partial {

@@ -1,9 +1,9 @@
-//! The level of each partial over time.
+//! The level of each partial over the time of the note.
 
 use super::axis::{Axis, tick_decimals};
 use super::canvas::{Canvas, Pen, Side, Type};
 use super::history::LevelHistory;
-use super::theme::{DIM, GRID_ON_SPAN, INK, LEVELS_HEIGHT, MARGIN, PANEL, PARTIAL, SPAN, WIDTH};
+use super::theme::{DIM, GRID, INK, LEVELS_HEIGHT, MARGIN, PANEL, PARTIAL, WIDTH};
 use crate::measure::Timebase;
 use crate::output::records::{GapRecord, NoteRecord};
 use crate::output::words::signed;
@@ -42,7 +42,7 @@ impl Levels<'_> {
         let curves: Vec<(u32, Vec<Curve>)> = (1..=self.history.partials())
             .map(|number| (number, self.curves(number, levels.values.0)))
             .collect();
-        self.spans(canvas, &times, &levels)?;
+        self.draw_gaps(canvas, &times, &levels)?;
         grid(canvas, &times, &levels)?;
         // Low numbers last: they lie on top.
         for (number, pieces) in curves.iter().rev() {
@@ -78,11 +78,8 @@ impl Levels<'_> {
     }
 
     fn axes(&self, top: f64) -> Option<(Axis, Axis)> {
-        let (first, last) = self.history.extent()?;
-        let times = Axis {
-            values: (self.timebase.seconds(first), self.timebase.seconds(last)),
-            units: (PLOT_LEFT, PLOT_RIGHT),
-        };
+        let times =
+            Axis { values: (self.note.start_s, self.note.end_s), units: (PLOT_LEFT, PLOT_RIGHT) };
         let all = || {
             (1..=self.history.partials())
                 .flat_map(|number| self.history.levels(number))
@@ -97,12 +94,10 @@ impl Levels<'_> {
         Some((times, levels))
     }
 
-    /// The note that the plumb view shows, and the gaps.
-    fn spans(&self, canvas: &Canvas<'_>, times: &Axis, levels: &Axis) -> Result<()> {
+    fn draw_gaps(&self, canvas: &Canvas<'_>, times: &Axis, levels: &Axis) -> Result<()> {
         let (bottom, top) = levels.units;
-        let (from, to) = (times.within(self.note.start_s), times.within(self.note.end_s));
-        canvas.rectangle((from, top), (to, bottom), SPAN, 1.0)?;
-        for gap in self.gaps {
+        let (start_s, end_s) = times.values;
+        for gap in self.gaps.iter().filter(|gap| gap.end_s > start_s && gap.start_s < end_s) {
             let (from, to) = (times.within(gap.start_s), times.within(gap.end_s));
             canvas.rectangle((from, top), (to.max(from + 1.0), bottom), DIM, 0.25)?;
             if to - from > 24.0 {
@@ -122,7 +117,7 @@ fn grid(canvas: &Canvas<'_>, times: &Axis, levels: &Axis) -> Result<()> {
     let (bottom, top) = levels.units;
     for tick in levels.ticks(6) {
         let y = levels.at(tick);
-        canvas.line((PLOT_LEFT, y), (PLOT_RIGHT, y), Pen::new(1.0, GRID_ON_SPAN))?;
+        canvas.line((PLOT_LEFT, y), (PLOT_RIGHT, y), Pen::new(1.0, GRID))?;
         canvas.text(
             PLOT_LEFT - 8.0,
             y,
@@ -134,7 +129,7 @@ fn grid(canvas: &Canvas<'_>, times: &Axis, levels: &Axis) -> Result<()> {
     let decimals = tick_decimals(&ticks);
     for &tick in &ticks {
         let x = times.at(tick);
-        canvas.line((x, top), (x, bottom), Pen::new(1.0, GRID_ON_SPAN))?;
+        canvas.line((x, top), (x, bottom), Pen::new(1.0, GRID))?;
         canvas.text(
             x,
             bottom + 13.0,

@@ -5,14 +5,10 @@ use plotters::style::RGBColor;
 pub(super) const GROUND: RGBColor = RGBColor(0x14, 0x17, 0x1c);
 pub(super) const PANEL: RGBColor = RGBColor(0x1b, 0x20, 0x27);
 pub(super) const GRID: RGBColor = RGBColor(0x23, 0x2a, 0x33);
-/// Grid on the span of a note.
-pub(super) const GRID_ON_SPAN: RGBColor = RGBColor(0x2f, 0x38, 0x44);
 pub(super) const INK: RGBColor = RGBColor(0xe6, 0xe9, 0xee);
 pub(super) const DIM: RGBColor = RGBColor(0x94, 0xa0, 0xb0);
 pub(super) const PARTIAL: RGBColor = RGBColor(0x56, 0xb4, 0xe9);
 pub(super) const STRAY: RGBColor = RGBColor(0xe8, 0x74, 0x3b);
-/// Behind the span of the note drawn.
-pub(super) const SPAN: RGBColor = RGBColor(0x22, 0x2a, 0x34);
 
 /// Proportional type; the names behind the first are of the same widths, or nearly.
 pub(super) const SANS: &str = "DejaVu Sans, Verdana, sans-serif";

@@ -1,5 +1,6 @@
 //! Drives the built program on sound files of every kind, good and bad.
 #![forbid(unsafe_code)]
+#![expect(clippy::unwrap_used, reason = "a test fails by panicking")]
 
 mod bad_input;
 mod batch;

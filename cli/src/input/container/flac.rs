@@ -5,9 +5,8 @@ use anyhow::Result;
 use std::fs::File;
 use std::io::{Seek as _, SeekFrom};
 
-/// Marker, head of the first metadata block, and the least and largest block size in it.
+/// Marker, head of the first metadata block (its kind and three bytes of length), and the least and largest block size in it.
 const HEAD_BYTES: usize = 12;
-const BLOCK_HEAD_BYTES: u64 = 4;
 
 /// Some encoders count the last, short block of a stream of fixed block size into the least block size. The decoder
 /// would take such a stream for one of variable block size, and find no frame in it.
@@ -31,7 +30,7 @@ pub(super) fn find(mut file: File) -> Result<Section> {
 fn has_fixed_blocks(file: &mut File) -> Result<bool> {
     let mut position = 4;
     loop {
-        let mut head = [0; BLOCK_HEAD_BYTES as usize];
+        let mut head = [0; 4];
         file.seek(SeekFrom::Start(position))?;
         if read_up_to(file, &mut head)? < head.len() {
             return Ok(false);
@@ -41,7 +40,6 @@ fn has_fixed_blocks(file: &mut File) -> Result<bool> {
             return Ok(head[1] & 1 == 0);
         }
         let [_, sizes @ ..] = head;
-        position +=
-            BLOCK_HEAD_BYTES + u64::from(u32::from_be_bytes([0, sizes[0], sizes[1], sizes[2]]));
+        position += 4 + u64::from(u32::from_be_bytes([0, sizes[0], sizes[1], sizes[2]]));
     }
 }
