@@ -9,13 +9,15 @@ use std::path::PathBuf;
 const EXIT_STATUS: &str = "\
 Exit status:
   0  every file was measured
-  2  bad usage, a file that cannot be read, or one with nothing measurable in it (the other files are still measured)";
+  2  bad usage, a file that cannot be read, or one without a measurable pitch;
+     the other files are measured all the same";
 
 const MEASURE_DETAILS: &str = "\
 Reads WAV (8, 16, 24, 32 bit, float, RF64), AIFF, AIFF-C and FLAC, at sample rates from 8 to 384 kHz.
 
-Every figure comes with its standard deviation, after ±. Times are seconds from the file's first sample, levels dBFS
-where 0 dBFS is a full-scale sine. \"Cents off\" compares a partial with its place in the harmonic series n·f0.
+Every figure comes with its standard deviation, after ±. Times are seconds from the file's first sample. \
+Levels are dBFS, where 0 dBFS is a full-scale sine. \"Cents off\" compares a partial with its place in the \
+harmonic series n·f0. What was odd about a file is said on standard error.
 
 Examples:
   plumbtone measure piano.wav
