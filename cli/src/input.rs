@@ -129,17 +129,13 @@ impl Input {
     pub(crate) fn remarks(&self, read_to_end: bool) -> Vec<String> {
         let seconds = |frames: u64| frames as f64 / f64::from(self.sample_rate_hz);
         let mut remarks = self.remarks.clone();
-        let unread = if read_to_end {
-            self.frames.map_or(0, |all| all.saturating_sub(self.position))
-        } else {
-            0
-        };
-        let missing = self.missing + unread;
-        if missing > 0 {
+        let all = self.frames.unwrap_or(self.position);
+        let there = if read_to_end { self.position } else { all };
+        let announced = all.max(there) + self.missing;
+        if announced > there {
+            let (there, announced) = (seconds(there), seconds(announced));
             remarks.push(format!(
-                "truncated: the first {:.3} s of {:.3} s are there, and were measured",
-                seconds(self.position),
-                seconds(self.position + missing)
+                "truncated: only the first {there:.3} s of {announced:.3} s are there"
             ));
         }
         if self.lost > 0 {
@@ -179,7 +175,7 @@ impl Input {
 
     /// Whether a time stamp can be right.
     fn plausible(&self, start: u64, hole: u64) -> bool {
-        self.frames.map_or(hole <= HOLE_FRAMES_MAX, |frames| start < frames)
+        hole == 0 || self.frames.map_or(hole <= HOLE_FRAMES_MAX, |frames| start < frames)
     }
 
     /// Decodes into the planes; false when the packet is damaged.

@@ -79,13 +79,17 @@ fn broken_sound_is_measured_as_far_as_it_goes() {
     let mut holed = tone(0.8);
     holed[4_800..9_600].fill(f64::NAN);
     check(vec![
-        case("cut.wav", cut(whole.clone()), "truncated: the first 0.400 s of 0.800 s are there"),
+        case(
+            "cut.wav",
+            cut(whole.clone()),
+            "truncated: only the first 0.400 s of 0.800 s are there",
+        ),
         case(
             "cut.aiff",
             cut(aiff(&[tone(0.8)], false)),
-            "truncated: the first 0.400 s of 0.800 s are there",
+            "truncated: only the first 0.400 s of 0.800 s are there",
         ),
-        case("cut.flac", cut(flac(&[tone(0.8)])), "truncated: the first"),
+        case("cut.flac", cut(flac(&[tone(0.8)])), "truncated: only the first"),
         case(
             "clipped.wav",
             wav(&[loud], Coding::S16),
@@ -97,10 +101,24 @@ fn broken_sound_is_measured_as_far_as_it_goes() {
         case(
             "huge.wav",
             with_sizes(&whole, 0x7fff_ffff, 0x7fff_fff0),
-            "truncated: the first 0.800 s",
+            "truncated: only the first 0.800 s",
         ),
         case("small.wav", with_sizes(&whole, 0x100, 48_000), "28800 bytes behind the sound data"),
     ]);
+}
+
+#[test]
+fn a_flac_file_may_state_any_length() {
+    let whole = flac(&[tone(0.8)]);
+    for (what, frames) in [("nothing", 0_u32), ("too little", 9_600)] {
+        let mut file = whole.clone();
+        // The lowest 32 of the 36 bits of the number of frames (RFC 9639, 8.2).
+        file[22..26].copy_from_slice(&frames.to_be_bytes());
+        let folder = folder_with([("a.flac", file)]);
+        let run = measure(folder.path(), &["--json", "a.flac"]);
+        assert_eq!((run.status, run.stderr.as_str()), (Some(0), ""), "states {what}");
+        assert_eq!(run.objects()[0]["duration_s"], 0.8, "states {what}");
+    }
 }
 
 #[test]
