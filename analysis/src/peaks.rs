@@ -15,6 +15,16 @@ const NOISE_BLOCK: usize = 48;
 /// Share of bins below the chosen one in a block: low, since partials fill most of a block of a low note.
 const NOISE_QUANTILE: f32 = 0.25;
 
+/// Level below a masker at its own place, and the slopes of its excitation to either side (M. Schroeder, B. Atal & J. Hall,
+/// JASA 66(6):1647-1652, 1979: 25 dB per Bark below, 10 dB per Bark above).
+const MASK_DB: f64 = 12.0;
+const UPWARD_DB_PER_BARK: f64 = 10.0;
+const DOWNWARD_DB_PER_BARK: f64 = 25.0;
+/// Exponent that compresses amplitudes.
+const COMPRESSION: f64 = 0.85;
+/// Compressed amplitude, against the strongest peak's, that no longer counts: 40 dB down.
+const NOTHING: f64 = 0.02;
+
 /// A peak.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub(crate) struct Peak {
@@ -22,6 +32,8 @@ pub(crate) struct Peak {
     pub(crate) hz: f64,
     /// Amplitude.
     pub(crate) amplitude: f64,
+    /// What it counts for pitch: its compressed amplitude, 0 when a stronger peak near it masks it.
+    pub(crate) weight: f64,
 }
 
 /// Noise power in one bin of the longest frame, by block.
@@ -98,5 +110,34 @@ pub(crate) fn pick(
 pub(crate) fn interpolate(power: &[f32], k: usize, bin_hz: f64) -> Peak {
     let [a, b, c] = [power[k - 1], power[k], power[k + 1]].map(|x| f64::from(x).sqrt());
     let delta = (2.0 * (c - a) / (a + 2.0 * b + c)).clamp(-0.5, 0.5);
-    Peak { hz: (k as f64 + delta) * bin_hz, amplitude: b / kernel(delta) }
+    Peak { hz: (k as f64 + delta) * bin_hz, amplitude: b / kernel(delta), weight: 0.0 }
+}
+
+/// Weighs peaks sorted by frequency for pitch. A peak that lies under the spread excitation of a stronger one is not heard
+/// (E. Terhardt, G. Stoll & M. Seewann, JASA 71(3):679-688, 1982, drop masked components from the pitch in the same way):
+/// lines of a loop, of rattle or of modulation around a strong partial make no pitch of their own.
+pub(crate) fn weigh(peaks: &mut [Peak]) {
+    let strongest = peaks.iter().map(|p| p.amplitude).fold(f64::MIN_POSITIVE, f64::max);
+    let mut mask = (f64::NEG_INFINITY, 0.0);
+    for peak in peaks.iter_mut() {
+        let level = 20.0 * peak.amplitude.log10();
+        mask = (mask.0 - UPWARD_DB_PER_BARK * (bark(peak.hz) - mask.1), bark(peak.hz));
+        let loud = (peak.amplitude / strongest).powf(COMPRESSION) - NOTHING;
+        peak.weight = if level > mask.0 { loud.max(0.0) } else { 0.0 };
+        mask.0 = mask.0.max(level - MASK_DB);
+    }
+    let mut mask = (f64::NEG_INFINITY, 0.0);
+    for peak in peaks.iter_mut().rev() {
+        let level = 20.0 * peak.amplitude.log10();
+        mask = (mask.0 - DOWNWARD_DB_PER_BARK * (mask.1 - bark(peak.hz)), bark(peak.hz));
+        if level < mask.0 {
+            peak.weight = 0.0;
+        }
+        mask.0 = mask.0.max(level - MASK_DB);
+    }
+}
+
+/// Critical-band rate (H. Traunmueller, JASA 88(1):97-100, 1990).
+fn bark(hz: f64) -> f64 {
+    26.81 * hz / (1960.0 + hz) - 0.53
 }

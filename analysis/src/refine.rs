@@ -6,10 +6,11 @@
 
 use realfft::num_complex::Complex;
 
-use crate::convert::nearest_index;
+use crate::convert::{nearest_index, number};
 use crate::peaks::NoiseFloor;
+use crate::reading::Partial;
 use crate::spectrum::{Frame, kernel};
-use crate::stiff::partial_hz;
+use crate::stiff::{CENTS_PER_NEPER, DB_PER_NEPER, Point, partial_hz};
 
 /// Rounds of relaxation.
 const ROUNDS: usize = 3;
@@ -39,6 +40,30 @@ pub(crate) struct Tone {
     pub(crate) amplitude: Complex<f64>,
     /// Power over the noise in one bin.
     pub(crate) snr: f64,
+}
+
+impl Tone {
+    /// The tone as a partial of a reading, not averaged.
+    pub(crate) fn partial(&self, f0: f64, f0_sd_cents: f64) -> Partial {
+        let cents_sd = CENTS_PER_NEPER * self.sd_hz / self.hz;
+        Partial {
+            number: number(self.n),
+            frequency_hz: self.hz,
+            frequency_sd_hz: self.sd_hz,
+            cents_from_harmonic: CENTS_PER_NEPER * (self.hz / (self.n as f64 * f0)).ln(),
+            cents_sd: cents_sd.hypot(f0_sd_cents),
+            level_dbfs: 10.0 * self.amplitude.norm_sqr().log10(),
+            level_sd_db: DB_PER_NEPER * (0.5 / self.snr).sqrt(),
+            phase_rad: self.amplitude.arg(),
+            snr_db: 10.0 * self.snr.log10(),
+        }
+    }
+}
+
+impl From<&Tone> for Point {
+    fn from(tone: &Tone) -> Self {
+        Self { n: tone.n as f64, hz: tone.hz, sd_hz: tone.sd_hz }
+    }
 }
 
 #[derive(Debug, Clone, Copy)]

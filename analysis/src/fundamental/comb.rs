@@ -10,17 +10,16 @@ use crate::peaks::Peak;
 /// Highest partial of the comb.
 const TEETH: usize = 24;
 /// Exponent that compresses amplitudes: between loudness and mere presence.
-const COMPRESSION: f64 = 0.5;
 /// Distance from the expectation within which a peak is a partial, as a share of the expectation.
 const REACH: f64 = 0.022;
 /// The same as a share of the fundamental, where that is nearer.
-const REACH_OF_F0: f64 = 0.2;
+const REACH_OF_F0: f64 = 0.14;
 /// Smallest reach, in bins.
 const REACH_BINS: f64 = 0.6;
 /// Largest inharmonicity that the comb follows.
 const B_MAX: f64 = 0.02;
 /// Exponent of the share of teeth found.
-const PRESENCE: f64 = 0.6;
+const PRESENCE: f64 = 0.7;
 
 /// A comb fitted to peaks.
 #[derive(Debug, Clone, Copy)]
@@ -91,7 +90,7 @@ impl Comb {
             limit = expected + 0.5 * guess_hz;
             let Some(peak) = strongest_within(peaks, &mut next, expected, reach) else { continue };
             let off = (peak.hz - expected) / reach;
-            let v = peak.amplitude.powf(COMPRESSION) * (1.0 - 0.5 * off * off);
+            let v = peak.weight * (1.0 - 0.5 * off * off);
             *tooth = v;
             explained += v;
             last = i + 1;
@@ -101,9 +100,14 @@ impl Comb {
         if last == 0 {
             return None;
         }
-        let total: f64 =
-            peaks.iter().take_while(|p| p.hz < limit).map(|p| p.amplitude.powf(COMPRESSION)).sum();
-        let explained = (explained / total.max(f64::MIN_POSITIVE)).min(1.0);
+        let (mut total, mut chance) = (f64::MIN_POSITIVE, 0.0);
+        for p in peaks.iter().take_while(|p| p.hz < limit) {
+            total += p.weight;
+            chance += p.weight * (2.0 * REACH * p.hz / guess_hz).min(2.0 * REACH_OF_F0);
+        }
+        let (explained, chance) = (explained / total, chance / total);
+        // What a comb of such reach explains of peaks anywhere at all is no merit.
+        let explained = ((explained - chance) / (1.0 - chance)).clamp(0.0, 1.0);
         let score = explained * presence(&teeth[..last]).powf(PRESENCE);
         Some(Self { hz: base.sqrt(), b, score, explained })
     }
@@ -117,6 +121,7 @@ fn strongest_within(peaks: &[Peak], next: &mut usize, expected: f64, reach: f64)
     peaks[*next..]
         .iter()
         .take_while(|p| p.hz <= expected + reach)
+        .filter(|p| p.weight > 0.0)
         .copied()
         .max_by(|a, b| a.amplitude.total_cmp(&b.amplitude))
 }

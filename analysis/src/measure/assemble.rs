@@ -1,6 +1,8 @@
 //! A note from its stretches: the figures of each put together, the strays named, the descriptors drawn up.
 
-use super::note::{Meter, STRETCH_S};
+use super::lines::LINES_MAX;
+use super::note::{Meter, SPARE, STRETCH_S};
+use super::rows::Row;
 use crate::convert::{index, nearest_index, number};
 use crate::descriptors::Descriptors;
 use crate::history::History;
@@ -8,7 +10,8 @@ use crate::note::{Note, NotePartial};
 use crate::reading::{StrayKind, Stretch};
 use crate::refine::Tone;
 use crate::stiff::{self, CENTS_PER_NEPER, Point, StiffFit, partial_hz};
-use crate::strays::{self, Candidate, Source};
+use crate::strays::aliases::{self, Own};
+use crate::strays::{self, Candidate, mains};
 
 /// Decibels in one neper.
 const DB_PER_NEPER: f64 = 8.685_889_638_065_037;
@@ -42,6 +45,7 @@ pub(crate) struct Assembler {
     sums: Vec<Sums>,
     points: Vec<Point>,
     candidates: Vec<Candidate>,
+    own: Vec<Own>,
     start: u64,
     stretch_start: u64,
     seconds: f64,
@@ -60,7 +64,8 @@ impl Assembler {
             meter: Meter::new(sample_rate_hz, partials, hop),
             sums: vec![Sums::default(); partials + 1],
             points: Vec::with_capacity(partials),
-            candidates: Vec::with_capacity(8_192),
+            candidates: Vec::with_capacity(LINES_MAX),
+            own: Vec::with_capacity(partials + SPARE),
             start: 0,
             stretch_start: 0,
             seconds: 0.0,
@@ -133,9 +138,9 @@ impl Assembler {
         self.log_f0.0 += w;
         self.log_f0.1 += w * fit.f0.ln();
         let since = (start - self.start) as f64 / self.sample_rate_hz;
-        for row in self.meter.rows.iter().filter(|r| r.present && r.n <= self.partials) {
+        for row in self.meter.rows.rows.iter().filter(|r| r.present && r.n <= self.partials) {
             let s = &mut self.sums[row.n];
-            let hz = row.expected_hz + row.fit.delta_hz;
+            let hz = row.hz();
             let w = (hz / row.fit.delta_sd_hz).powi(2);
             s.frequency.0 += w;
             s.frequency.1 += w * hz.ln();
@@ -197,28 +202,43 @@ impl Assembler {
         for line in &long.lines {
             let n = nearest_number(line.hz, fit);
             let near = |n: usize| {
-                let row = self.meter.rows.iter().find(|r| r.present && r.n == n);
+                let row = self.meter.rows.rows.iter().find(|r| r.present && r.n == n);
                 let hz = row.map_or_else(
                     || partial_hz(fit.f0, fit.b, n as f64),
-                    |r| r.expected_hz + r.fit.delta_hz,
+                    Row::hz,
                 );
                 (line.hz - hz).abs() < own + 1.5 * sweep * hz
             };
             let is_partial = (n.saturating_sub(1).max(1)..=n + 1).any(near);
             if !is_partial && self.candidates.len() < self.candidates.capacity() {
-                self.candidates.push(Candidate { line: *line, kind: StrayKind::Unexplained });
+                self.candidates.push(Candidate::new(*line));
             }
         }
-        let significant = fit.b.abs() > 4.0 * fit.b_sd;
-        let source = Source {
+        self.name(fit);
+    }
+
+    /// Explains the lines collected.
+    fn name(&mut self, fit: &StiffFit) {
+        let resolution_hz = self.meter.long.resolution_hz;
+        let rows = &self.meter.rows.rows;
+        self.own.clear();
+        self.own.extend(rows.iter().filter(|r| r.present).map(|r| Own {
+            n: r.n,
+            hz: r.hz(),
+            sd_hz: r.fit.delta_sd_hz,
+            amplitude: r.fit.mean_square.sqrt(),
+        }));
+        let tone = aliases::Tone {
+            own: &self.own,
+            looked_for: rows.last().map_or(0, |r| r.n),
             f0: fit.f0,
             f0_sd: fit.f0 * fit.f0_sd_cents / CENTS_PER_NEPER,
-            b: if significant { fit.b } else { 0.0 },
+            b: (fit.b.abs() > 4.0 * fit.b_sd).then_some(fit.b),
             sample_rate_hz: self.sample_rate_hz,
-            resolution_hz: long.resolution_hz,
+            resolution_hz,
         };
-        strays::name_aliases(&mut self.candidates, source);
-        strays::name_mains(&mut self.candidates, long.resolution_hz);
+        aliases::name_aliases(&mut self.candidates, &tone);
+        mains::name_mains(&mut self.candidates, resolution_hz);
     }
 
     fn strays_of_note(&mut self, fit: &StiffFit) {

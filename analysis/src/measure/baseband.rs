@@ -5,7 +5,7 @@ use realfft::num_complex::Complex;
 use crate::convert::single;
 
 /// Partials brought down together: the width of the inner loop.
-const LANES: usize = 8;
+pub(crate) const LANES: usize = 8;
 
 /// The slow signals of a note: row by row, a partial each.
 #[derive(Debug)]
@@ -16,7 +16,6 @@ pub(crate) struct Baseband {
     rows_max: usize,
     blocks: usize,
     data: Vec<Complex<f32>>,
-    clean: Vec<Complex<f64>>,
 }
 
 impl Baseband {
@@ -28,7 +27,6 @@ impl Baseband {
             rows_max,
             blocks: 0,
             data: vec![Complex::default(); rows_max.next_multiple_of(LANES) * blocks_max],
-            clean: Vec::with_capacity(blocks_max),
         }
     }
 
@@ -65,14 +63,6 @@ impl Baseband {
             }
         }
     }
-
-    /// A row in double precision, to take others' shares away from.
-    pub(crate) fn copy_row(&mut self, row: usize) -> &mut Vec<Complex<f64>> {
-        let from = &self.data[row * self.blocks_max..][..self.blocks];
-        self.clean.clear();
-        self.clean.extend(from.iter().map(|z| Complex::new(f64::from(z.re), f64::from(z.im))));
-        &mut self.clean
-    }
 }
 
 /// Oscillators side by side.
@@ -82,6 +72,8 @@ struct Lanes {
     phases: [f64; LANES],
     step_re: [f32; LANES],
     step_im: [f32; LANES],
+    /// What the rounding of the steps does to a block's sum, undone.
+    undo: [Complex<f64>; LANES],
 }
 
 impl Lanes {
@@ -95,6 +87,9 @@ impl Lanes {
                 let (sin, cos) = step.sin_cos();
                 self.step_re[i] = single(cos);
                 self.step_im[i] = single(-sin);
+                let taken = Complex::new(f64::from(self.step_re[i]), f64::from(self.step_im[i]));
+                let error = Complex::new(cos, -sin) / taken - 1.0;
+                self.undo[i] = 1.0 + error * (0.5 * (samples.len() - 1) as f64);
             }
             let (sin, cos) = self.phases[i].sin_cos();
             c_re[i] = single(cos);
@@ -113,7 +108,10 @@ impl Lanes {
                 c_re[i] = re;
             }
         }
-        let scale = 2.0 / samples.len() as f32;
-        core::array::from_fn(|i| Complex::new(a_re[i] * scale, a_im[i] * scale))
+        let scale = 2.0 / samples.len() as f64;
+        core::array::from_fn(|i| {
+            let sum = Complex::new(f64::from(a_re[i]), f64::from(a_im[i])) * self.undo[i] * scale;
+            Complex::new(single(sum.re), single(sum.im))
+        })
     }
 }

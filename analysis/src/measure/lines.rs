@@ -14,8 +14,8 @@ use crate::window::CosineSum;
 
 /// Lengths of the transforms, in seconds before rounding to a power of two.
 const LENGTHS_S: [f64; 2] = [32_768.0 / 48_000.0, 131_072.0 / 48_000.0];
-/// Most lines kept.
-const LINES_MAX: usize = 6_000;
+/// Most lines kept; when there are more, the weaker half is dropped.
+pub(crate) const LINES_MAX: usize = 4_096;
 /// Bins of one block of the noise floor.
 const NOISE_BLOCK: usize = 128;
 /// Power over the mean noise at which a bin is a line: one noise bin in three million passes (12 dB by -ln p, with a
@@ -123,6 +123,7 @@ impl LongSpectrum {
         let strongest = p.iter().fold(0.0f32, |a, &b| a.max(b));
         // Rounding of single precision leaves a floor of its own.
         let least = strongest * 1e-13;
+        let mut faintest = 0.0;
         for (block, start) in (0..p.len()).step_by(NOISE_BLOCK).enumerate() {
             let end = (start + NOISE_BLOCK).min(p.len());
             self.order.clear();
@@ -140,8 +141,11 @@ impl LongSpectrum {
                 }
                 let below = p[k - wide..k].iter().fold(f32::MAX, |a, &b| a.min(b));
                 let above = p[k + 1..=k + wide].iter().fold(f32::MAX, |a, &b| a.min(b));
-                if here < PROMINENCE * below.max(above) || self.lines.len() == LINES_MAX {
+                if here < PROMINENCE * below.max(above) || here < faintest {
                     continue;
+                }
+                if self.lines.len() == LINES_MAX {
+                    faintest = drop_weaker_half(&mut self.lines);
                 }
                 let [a, b, c] = [p[k - 1], here, p[k + 1]].map(|x| f64::from(x).ln());
                 let curve = a - 2.0 * b + c;
@@ -154,4 +158,15 @@ impl LongSpectrum {
             }
         }
     }
+}
+
+/// Drops the weaker half of the lines; returns the squared amplitude of the weakest kept.
+fn drop_weaker_half(lines: &mut Vec<Line>) -> f32 {
+    let middle = lines.len() / 2;
+    let by_amplitude = |a: &Line, b: &Line| a.amplitude.total_cmp(&b.amplitude);
+    let (_, median, _) = lines.select_nth_unstable_by(middle, by_amplitude);
+    let least = median.amplitude;
+    lines.retain(|l| l.amplitude >= least);
+    lines.sort_unstable_by(|a, b| a.hz.total_cmp(&b.hz));
+    single(least * least)
 }
