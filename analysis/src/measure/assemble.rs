@@ -203,10 +203,7 @@ impl Assembler {
             let n = nearest_number(line.hz, fit);
             let near = |n: usize| {
                 let row = self.meter.rows.rows.iter().find(|r| r.present && r.n == n);
-                let hz = row.map_or_else(
-                    || partial_hz(fit.f0, fit.b, n as f64),
-                    Row::hz,
-                );
+                let hz = row.map_or_else(|| partial_hz(fit.f0, fit.b, n as f64), Row::hz);
                 (line.hz - hz).abs() < own + 1.5 * sweep * hz
             };
             let is_partial = (n.saturating_sub(1).max(1)..=n + 1).any(near);

@@ -148,9 +148,8 @@ impl Rows {
     fn clean(&mut self, baseband: &Baseband, i: usize) {
         let row = &self.rows[i];
         self.clean.clear();
-        self.clean.extend(
-            baseband.row(i).iter().map(|z| Complex::new(f64::from(z.re), f64::from(z.im))),
-        );
+        self.clean
+            .extend(baseband.row(i).iter().map(|z| Complex::new(f64::from(z.re), f64::from(z.im))));
         self.shares.take(&mut self.clean, i, row.expected_hz, row.noise);
     }
 
