@@ -19,6 +19,8 @@ const SETTLED: f64 = 0.1;
 const PRESENT: f64 = 11.2;
 /// Energy over the noise of a partial that the model may be built on: 16 dB.
 const CERTAIN: f64 = 40.0;
+/// A fit beyond this share of its limits is held back by them.
+const HELD: f64 = 0.98;
 /// Farthest that a partial is searched, as a share of the fundamental, and in Hz.
 const REACH_OF_F0: f64 = 0.3;
 const REACH_HZ: f64 = 40.0;
@@ -52,15 +54,17 @@ impl Row {
         self.expected_hz + self.fit.delta_hz
     }
 
-    /// Whether it stands out, and where it was searched.
-    fn there(&self) -> bool {
-        let near = self.fit.delta_hz.abs() <= self.reach_hz + 2.0 * self.fit.delta_sd_hz;
-        self.fit.snr > PRESENT && near
+    /// Whether it stands out, where it was searched, and not held back by the limits of the fit.
+    fn there(&self, limits: Limits) -> bool {
+        let fit = &self.fit;
+        let near = fit.delta_hz.abs() <= self.reach_hz + 2.0 * fit.delta_sd_hz;
+        let held = fit.sigma > HELD * limits.sigma || fit.delta_hz.abs() > HELD * limits.off_hz;
+        fit.snr > PRESENT && near && !held
     }
 
     /// Whether the model may be built on it.
-    fn certain(&self) -> bool {
-        self.there() && self.fit.snr > CERTAIN
+    fn certain(&self, limits: Limits) -> bool {
+        self.there(limits) && self.fit.snr > CERTAIN
     }
 }
 
@@ -149,7 +153,7 @@ impl Rows {
     pub(crate) fn judge(&mut self, times: Times, f0: f64) -> Option<StiffFit> {
         self.points.clear();
         for row in &mut self.rows {
-            row.present = row.there() && row.fit.delta_sd_hz < 0.1 * f0;
+            row.present = row.there(self.limits) && row.fit.delta_sd_hz < 0.1 * f0;
             if row.present {
                 let response = block_response(row.fit.delta_hz, row.fit.sigma, times.step_s);
                 row.fit.a /= response;
@@ -183,7 +187,7 @@ impl Rows {
     /// Makes row `i` known to the others.
     fn enter(&mut self, i: usize, relaxed: bool) {
         let row = &self.rows[i];
-        let there = relaxed && row.there();
+        let there = relaxed && row.there(self.limits);
         self.shares.set(i, row.expected_hz, there.then_some(&row.fit));
     }
 
@@ -195,7 +199,7 @@ impl Rows {
         row.fit = damped::fit(&self.clean, times, &before, self.limits);
         let now = row.fit;
         self.enter(i, true);
-        if !self.rows[i].there() {
+        if !self.rows[i].there(self.limits) {
             return 0.0;
         }
         let turned = ((now.a / before.a).norm().ln()).abs() / now.log_sd;
@@ -206,14 +210,15 @@ impl Rows {
     /// Searches the weak partials again, close to where the strong ones let expect them: a wide search finds something in
     /// noise alone, and a false partial far up turns the whole model.
     fn look_again(&mut self, baseband: &Baseband, times: Times, f0: f64, relaxed: bool) {
+        let limits = self.limits;
         self.points.clear();
-        self.points.extend(self.rows.iter().filter(|r| r.certain()).map(point));
+        self.points.extend(self.rows.iter().filter(|r| r.certain(limits)).map(point));
         let Some(model) = stiff::fit(&self.points, None) else { return };
         let sd = model.f0_sd_cents.hypot(model.scatter_cents) / CENTS_PER_NEPER;
         for k in 0..self.order.len() {
             let i = self.order[k];
             let row = &mut self.rows[i];
-            if row.certain() {
+            if row.certain(self.limits) {
                 continue;
             }
             let n = row.n as f64;
