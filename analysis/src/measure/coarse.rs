@@ -34,43 +34,48 @@ impl Search {
         Self { merged: Vec::with_capacity(blocks_max) }
     }
 
-    /// The best guess within `reach_hz` of `around_hz`.
+    /// The best guess within so many Hz of a frequency, with a decay of up to `sigma_max` nepers per second.
     pub(crate) fn run(
         &mut self,
         z: &[Complex<f64>],
         times: Times,
-        around_hz: f64,
-        reach_hz: f64,
+        (around_hz, reach_hz): (f64, f64),
+        sigma_max: f64,
     ) -> Damped {
         let merge = floor_index(0.2 / (reach_hz * times.step_s)).clamp(1, MERGED_MAX);
         self.merge(z, times, around_hz, merge);
         let step_s = merge as f64 * times.step_s;
         let spacing = GRID / times.duration(z.len());
         let half = nearest_index((reach_hz / spacing).ceil()).clamp(1, FREQUENCIES_MAX / 2);
-        let mut best = (0.0, 0.0, 0.0);
+        let mut best = Best::default();
         for first in (0..=2 * half).step_by(LANES) {
-            let off: [f64; LANES] =
-                core::array::from_fn(|i| ((first + i) as f64 - half as f64) * spacing);
-            let mut sums = Sums::new(off.map(|hz| TAU * hz * step_s));
-            let mut from = 0;
-            for halving in (0..=HALVINGS).rev() {
-                let to = self.merged.len() >> halving;
-                if to <= from {
-                    continue;
-                }
-                sums.add(&self.merged[from..to]);
-                from = to;
-                let powers = sums.powers(to);
-                for (power, hz) in powers.into_iter().zip(off) {
-                    if power > best.0 && hz <= (half as f64 + 0.5) * spacing {
-                        let sigma =
-                            if halving == 0 { 0.0 } else { BEST_DECAY / (to as f64 * step_s) };
-                        best = (power, sigma, hz);
-                    }
+            // Lanes beyond the last frequency repeat it.
+            let off = core::array::from_fn(|i| {
+                ((first + i).min(2 * half) as f64 - half as f64) * spacing
+            });
+            self.lanes(off, step_s, sigma_max, &mut best);
+        }
+        Damped { sigma: best.sigma, delta_hz: around_hz + best.hz, ..Damped::default() }
+    }
+
+    /// Tries frequencies side by side, over the whole and halved again and again.
+    fn lanes(&self, off: [f64; LANES], step_s: f64, sigma_max: f64, best: &mut Best) {
+        let mut sums = Sums::new(off.map(|hz| TAU * hz * step_s));
+        let mut from = 0;
+        for halving in (0..=HALVINGS).rev() {
+            let to = self.merged.len() >> halving;
+            let sigma = if halving == 0 { 0.0 } else { BEST_DECAY / (to as f64 * step_s) };
+            if to <= from || sigma > sigma_max {
+                continue;
+            }
+            sums.add(&self.merged[from..to]);
+            from = to;
+            for (power, hz) in sums.powers(to).into_iter().zip(off) {
+                if power > best.power {
+                    *best = Best { power, sigma, hz };
                 }
             }
         }
-        Damped { sigma: best.1, delta_hz: around_hz + best.2, ..Damped::default() }
     }
 
     /// Sums of so many blocks, turned back by a frequency.
@@ -87,6 +92,14 @@ impl Search {
             self.merged.push(Complex::new(single(sum.re), single(sum.im)));
         }
     }
+}
+
+/// The best so far.
+#[derive(Debug, Default)]
+struct Best {
+    power: f32,
+    sigma: f64,
+    hz: f64,
 }
 
 /// Running sums at several frequencies.

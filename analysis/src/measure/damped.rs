@@ -211,9 +211,7 @@ fn pass(z: &[Complex<f64>], times: Times, g: Complex<f64>) -> Sums {
     };
     let (whole, rest) = z.as_chunks::<LANES>();
     for z in whole {
-        for i in 0..LANES {
-            take(i, z[i]);
-        }
+        z.iter().enumerate().for_each(|(i, z)| take(i, *z));
     }
     rest.iter().enumerate().for_each(|(i, z)| take(i, *z));
     let sum = |x: [f64; LANES]| x.iter().sum::<f64>();

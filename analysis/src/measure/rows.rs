@@ -11,18 +11,23 @@ use crate::stiff::{self, CENTS_PER_NEPER, Point, StiffFit, partial_hz};
 
 /// Most rounds in which the others' shares are taken away.
 const ROUNDS: usize = 12;
+/// The round before which what is not where the others let expect it is searched again.
+const LOOK_AGAIN: usize = 2;
 /// A round in which no partial moves by more than this many of its deviations is the last.
 const SETTLED: f64 = 0.1;
 /// Energy over the noise at which a partial is there: 10.5 dB.
 const PRESENT: f64 = 11.2;
 /// Energy over the noise of a partial that the model may be built on: 16 dB.
 const CERTAIN: f64 = 40.0;
+/// A fit beyond this share of its limits is held back by them.
+const HELD: f64 = 0.98;
 /// Farthest that a partial is searched, as a share of the fundamental, and in Hz.
 const REACH_OF_F0: f64 = 0.3;
 const REACH_HZ: f64 = 40.0;
-/// Fastest decay fitted is the fundamental's frequency, in nepers per second, within these limits: faster, a partial is
-/// wider than the distance to the next. 60 dB in 0.15 and 0.017 s.
-const SIGMA_MAX: (f64, f64) = (46.0, 400.0);
+/// Fastest decay fitted, in nepers per second, as a share of the fundamental's frequency and within limits (60 dB in 0.23
+/// and 0.017 s): faster, a partial is nearly as wide as the distance to the next.
+const SIGMA_OF_F0: f64 = 0.4;
+const SIGMA_MAX: (f64, f64) = (30.0, 400.0);
 
 /// One partial of the stretch.
 #[derive(Debug, Clone, Copy, Default)]
@@ -47,6 +52,19 @@ impl Row {
     /// Frequency as fitted, in Hz.
     pub(crate) fn hz(&self) -> f64 {
         self.expected_hz + self.fit.delta_hz
+    }
+
+    /// Whether it stands out, where it was searched, and not held back by the limits of the fit.
+    fn there(&self, limits: Limits) -> bool {
+        let fit = &self.fit;
+        let near = fit.delta_hz.abs() <= self.reach_hz + 2.0 * fit.delta_sd_hz;
+        let held = fit.sigma > HELD * limits.sigma || fit.delta_hz.abs() > HELD * limits.off_hz;
+        fit.snr > PRESENT && near && !held
+    }
+
+    /// Whether the model may be built on it.
+    fn certain(&self, limits: Limits) -> bool {
+        self.there(limits) && self.fit.snr > CERTAIN
     }
 }
 
@@ -111,12 +129,15 @@ impl Rows {
         if !relaxed {
             return;
         }
-        for _ in 0..ROUNDS {
+        for round in 0..ROUNDS {
+            if round == LOOK_AGAIN {
+                self.look_again(baseband, times, f0, relaxed);
+            }
             let mut moved = 0.0f64;
             for k in 0..self.order.len() {
                 moved = moved.max(self.relax(baseband, times, self.order[k]));
             }
-            if moved < SETTLED {
+            if moved < SETTLED && round >= LOOK_AGAIN {
                 break;
             }
         }
@@ -124,7 +145,7 @@ impl Rows {
 
     fn begin(&mut self, baseband: &Baseband, times: Times, f0: f64) {
         self.shares.clear(times, baseband.blocks());
-        let sigma = f0.clamp(SIGMA_MAX.0, SIGMA_MAX.1);
+        let sigma = (SIGMA_OF_F0 * f0).clamp(SIGMA_MAX.0, SIGMA_MAX.1);
         self.limits = Limits { off_hz: reach(f64::INFINITY, f0), sigma };
     }
 
@@ -132,8 +153,7 @@ impl Rows {
     pub(crate) fn judge(&mut self, times: Times, f0: f64) -> Option<StiffFit> {
         self.points.clear();
         for row in &mut self.rows {
-            let near = row.fit.delta_hz.abs() <= row.reach_hz + 2.0 * row.fit.delta_sd_hz;
-            row.present = row.fit.snr > PRESENT && near && row.fit.delta_sd_hz < 0.1 * f0;
+            row.present = row.there(self.limits) && row.fit.delta_sd_hz < 0.1 * f0;
             if row.present {
                 let response = block_response(row.fit.delta_hz, row.fit.sigma, times.step_s);
                 row.fit.a /= response;
@@ -150,21 +170,24 @@ impl Rows {
         self.clean.clear();
         self.clean
             .extend(baseband.row(i).iter().map(|z| Complex::new(f64::from(z.re), f64::from(z.im))));
-        self.shares.take(&mut self.clean, i, row.expected_hz, row.noise);
+        // Where lines are wide, the long transform takes their skirts for noise.
+        let noise = if row.fit.left > 0.0 { row.noise.min(row.fit.left) } else { row.noise };
+        self.shares.take(&mut self.clean, i, row.expected_hz, noise);
     }
 
     /// Searches and fits row `i` from nothing, around `around_hz` off the frequency that it is brought down by.
     fn find(&mut self, baseband: &Baseband, times: Times, i: usize, around_hz: f64) {
         self.clean(baseband, i);
         let row = &mut self.rows[i];
-        let guess = self.search.run(&self.clean, times, around_hz, row.reach_hz);
+        let guess =
+            self.search.run(&self.clean, times, (around_hz, row.reach_hz), self.limits.sigma);
         row.fit = damped::fit(&self.clean, times, &guess, self.limits);
     }
 
     /// Makes row `i` known to the others.
     fn enter(&mut self, i: usize, relaxed: bool) {
         let row = &self.rows[i];
-        let there = relaxed && row.fit.snr > PRESENT;
+        let there = relaxed && row.there(self.limits);
         self.shares.set(i, row.expected_hz, there.then_some(&row.fit));
     }
 
@@ -176,7 +199,7 @@ impl Rows {
         row.fit = damped::fit(&self.clean, times, &before, self.limits);
         let now = row.fit;
         self.enter(i, true);
-        if now.snr < PRESENT {
+        if !self.rows[i].there(self.limits) {
             return 0.0;
         }
         let turned = ((now.a / before.a).norm().ln()).abs() / now.log_sd;
@@ -187,14 +210,15 @@ impl Rows {
     /// Searches the weak partials again, close to where the strong ones let expect them: a wide search finds something in
     /// noise alone, and a false partial far up turns the whole model.
     fn look_again(&mut self, baseband: &Baseband, times: Times, f0: f64, relaxed: bool) {
+        let limits = self.limits;
         self.points.clear();
-        self.points.extend(self.rows.iter().filter(|r| r.fit.snr > CERTAIN).map(point));
+        self.points.extend(self.rows.iter().filter(|r| r.certain(limits)).map(point));
         let Some(model) = stiff::fit(&self.points, None) else { return };
         let sd = model.f0_sd_cents.hypot(model.scatter_cents) / CENTS_PER_NEPER;
         for k in 0..self.order.len() {
             let i = self.order[k];
             let row = &mut self.rows[i];
-            if row.fit.snr > CERTAIN {
+            if row.certain(self.limits) {
                 continue;
             }
             let n = row.n as f64;

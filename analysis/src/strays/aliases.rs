@@ -86,9 +86,9 @@ struct Trace {
     tests: [(f64, f64); TESTED.len()],
 }
 
-/// Frequency at which a partial appears after sampling.
-pub(crate) fn folded_hz(hz: f64, sample_rate_hz: f64) -> f64 {
-    (hz - sample_rate_hz * (hz / sample_rate_hz).round()).abs()
+/// Frequency at which a partial appears after sampling; negative where it folds back, so that it moves the other way.
+fn folded_hz(hz: f64, sample_rate_hz: f64) -> f64 {
+    hz - sample_rate_hz * (hz / sample_rate_hz).round()
 }
 
 /// Names the aliases among lines sorted by frequency, and drops those that turn out to be partials in their place.
@@ -187,7 +187,7 @@ impl Tracer<'_> {
             }
             expected[n % 2] *= FORGET;
             let most = STRONGER * expected[n % 2] / n as f64;
-            let turned = hz - tone.sample_rate_hz * (hz / tone.sample_rate_hz).round();
+            let turned = folded_hz(hz, tone.sample_rate_hz);
             let lies = turned.abs();
             let first = candidates.partition_point(|c| c.line.hz < lies - widest);
             let found = candidates[first..]
@@ -235,6 +235,9 @@ impl Trace {
             if off.abs() < DEVIATIONS * sd.hypot(order / self.model.weight.sqrt()) {
                 self.explained += own.amplitude;
                 self.model.learn(off / order, sd / order);
+            }
+            // What lies far off is something else in the place of a partial that may not be there.
+            if off.abs() < MATCH * tone.resolution_hz {
                 expected[own.n % 2] = expected[own.n % 2].max(own.amplitude * own.n as f64);
             }
         }
