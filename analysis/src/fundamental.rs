@@ -7,8 +7,8 @@
 pub(crate) mod comb;
 pub(crate) mod lag;
 
-use crate::peaks::Peak;
-use comb::Comb;
+use crate::peaks::{PEAKS_MAX, Peak};
+use comb::{Comb, Weighed};
 use lag::Periodicity;
 
 /// Periods that the frame which judges a candidate should hold; the longest frame takes what is left.
@@ -62,6 +62,7 @@ pub(crate) struct Search {
     range_hz: (f64, f64),
     seeds: Vec<Peak>,
     guesses: Vec<f64>,
+    sums: Vec<(f64, f64)>,
 }
 
 impl Search {
@@ -70,6 +71,7 @@ impl Search {
         Self {
             range_hz,
             seeds: Vec::with_capacity(SEEDS + 1),
+            sums: Vec::with_capacity(PEAKS_MAX + 1),
             guesses: Vec::with_capacity(4 * (SEEDS * SEED_NUMBER + lag::MAXIMA)),
         }
     }
@@ -83,9 +85,10 @@ impl Search {
                 continue;
             }
             self.collect(view, frame, band);
+            let peaks = Weighed::new(view.peaks[frame], &mut self.sums);
+            let bin_hz = 1.0 / view.frame_s[frame];
             for &hz in &self.guesses {
-                let bin_hz = 1.0 / view.frame_s[frame];
-                let Some(fit) = Comb::fit(view.peaks[frame], hz, bin_hz) else { continue };
+                let Some(fit) = Comb::fit(&peaks, hz, bin_hz) else { continue };
                 if fit.hz < self.range_hz.0 * 0.98 || fit.hz > self.range_hz.1 * 1.02 {
                     continue;
                 }

@@ -6,7 +6,7 @@ use crate::convert::{floor_index, nearest_index};
 use crate::fundamental::lag::{Autocorrelation, Periodicity};
 use crate::fundamental::{Candidate, Search, View};
 use crate::history::History;
-use crate::peaks::{self, NoiseFloor, Peak};
+use crate::peaks::{self, NoiseFloor, PEAKS_MAX, Peak};
 use crate::refine::Refiner;
 use crate::settings::Settings;
 use crate::spectrum::{Frame, Transform};
@@ -22,8 +22,8 @@ const REFINE_PERIODS: f64 = 4.5;
 const SEARCH_PEAKS_HZ: f64 = 6_000.0;
 /// Lowest peak looked at, in Hz.
 const LOWEST_PEAK_HZ: f64 = 15.0;
-/// Most peaks kept of one frame.
-const PEAKS_MAX: usize = 200;
+/// Least sample rate at which the periodicity of the shorter and of the longest frame is taken, in Hz.
+const LAG_RATES_HZ: [f64; 2] = [22_000.0, 11_000.0];
 /// Share of the peaks that the pitch explains, above which no second voice is searched.
 const ONE_VOICE: f64 = 0.8;
 
@@ -101,8 +101,9 @@ impl Evidence {
         let shortest = 1usize << nearest_index((SHORTEST_S * rate).log2());
         let transforms: Vec<_> =
             (0..LENGTHS).map(|i| Transform::new(shortest << i, &mut planner)).collect();
-        let short = Autocorrelation::new(shortest << 2, rate, &mut planner);
-        let long = Autocorrelation::new(shortest << 3, rate, &mut planner);
+        let narrower = LAG_RATES_HZ.map(|least| 1 << floor_index((rate / least).log2()));
+        let short = Autocorrelation::new(shortest << 2, narrower[0], rate, &mut planner);
+        let long = Autocorrelation::new(shortest << 3, narrower[1], rate, &mut planner);
         Self {
             now: Frames::new(rate, &transforms),
             newest: Frames::new(rate, &transforms),

@@ -209,7 +209,7 @@ impl Line {
         let first = self.bin as f64 - 1.0;
         let (mut sum, mut norm) = (Complex::default(), 0.0);
         for (j, y) in y.into_iter().enumerate() {
-            let k = kernel(first + j as f64 - self.nu);
+            let k = self.at(self.bin + j + 1, first + j as f64 - self.nu);
             sum += y * k;
             norm += k * k;
         }

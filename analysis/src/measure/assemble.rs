@@ -19,6 +19,8 @@ const DB_PER_NEPER: f64 = 8.685_889_638_065_037;
 const OWN: f64 = 4.0;
 /// The same for a line that nothing else explains, in cents: strings in pairs and choruses spread a partial.
 const SPREAD_CENTS: f64 = 15.0;
+/// And at most, as a share of the fundamental.
+const SPREAD_OF_F0: f64 = 0.2;
 
 /// Sums over the stretches of a note for one partial.
 #[derive(Debug, Clone, Copy, Default)]
@@ -199,6 +201,7 @@ impl Assembler {
         let long = &self.meter.long;
         let own = OWN * long.resolution_hz;
         let sweep = self.meter.sweep;
+        let last = self.meter.rows.rows.last().map_or(0, |r| r.n);
         for line in &long.lines {
             let n = nearest_number(line.hz, fit);
             let near = |n: usize| {
@@ -206,7 +209,7 @@ impl Assembler {
                 let hz = row.map_or_else(|| partial_hz(fit.f0, fit.b, n as f64), Row::hz);
                 (line.hz - hz).abs() < own + 1.5 * sweep * hz
             };
-            let is_partial = (n.saturating_sub(1).max(1)..=n + 1).any(near);
+            let is_partial = (n.saturating_sub(1).max(1)..=(n + 1).min(last)).any(near);
             if !is_partial && self.candidates.len() < self.candidates.capacity() {
                 self.candidates.push(Candidate::new(*line));
             }
@@ -239,11 +242,12 @@ impl Assembler {
     }
 
     fn strays_of_note(&mut self, fit: &StiffFit) {
-        let spread = SPREAD_CENTS / CENTS_PER_NEPER;
+        let own = OWN * self.meter.long.resolution_hz;
         self.candidates.retain(|c| {
             let n = nearest_number(c.line.hz, fit);
             let hz = partial_hz(fit.f0, fit.b, n as f64);
-            c.kind != StrayKind::Unexplained || (c.line.hz / hz).ln().abs() > spread
+            let spread = (SPREAD_CENTS / CENTS_PER_NEPER * hz).min(SPREAD_OF_F0 * fit.f0);
+            c.kind != StrayKind::Unexplained || (c.line.hz - hz).abs() > spread.max(own)
         });
         self.candidates.sort_unstable_by(|a, b| b.line.amplitude.total_cmp(&a.line.amplitude));
         let kept = self.candidates.len().min(Note::STRAYS_MAX);

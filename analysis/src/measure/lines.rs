@@ -4,6 +4,7 @@
 //! the logarithms (M. Gasior & J. Gonzalez, CERN-AB-2004-021, 2004), whose bias under this window, 0.003 bin, is far below
 //! the width of a line.
 
+use core::f64::consts::{PI, TAU};
 use std::sync::Arc;
 
 use realfft::num_complex::Complex;
@@ -24,6 +25,8 @@ const LINE_OVER_NOISE: f32 = 17.0;
 /// Bins on either side within which a line must stand out by [`PROMINENCE`] in power.
 const PROMINENCE_BINS: usize = 6;
 const PROMINENCE: f32 = 4.0;
+/// Samples of the window between two exact cosines.
+const EXACT_EVERY: usize = 512;
 
 /// A line.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -88,10 +91,7 @@ impl LongSpectrum {
         let len = plan.len();
         let used = samples.len().min(len);
         let scale = 2.0 / (used as f64 * CosineSum::BLACKMAN_HARRIS.coherent_gain());
-        let window = CosineSum::BLACKMAN_HARRIS.samples(used);
-        for ((x, s), w) in self.input.iter_mut().zip(samples).zip(window) {
-            *x = s * single(w * scale);
-        }
+        taper(&samples[..used], scale, &mut self.input[..used]);
         self.input[used..len].fill(0.0);
         let bins = &mut self.bins[..len / 2 + 1];
         let done = plan.process_with_scratch(
@@ -127,7 +127,8 @@ impl LongSpectrum {
         for (block, start) in (0..p.len()).step_by(NOISE_BLOCK).enumerate() {
             let end = (start + NOISE_BLOCK).min(p.len());
             self.order.clear();
-            self.order.extend_from_slice(&p[start..end]);
+            // Neighbours say the same under the window.
+            self.order.extend(p[start..end].iter().step_by(2));
             let middle = self.order.len() / 2;
             let (_, median, _) = self.order.select_nth_unstable_by(middle, f32::total_cmp);
             let floor = (*median / core::f32::consts::LN_2).max(f32::MIN_POSITIVE);
@@ -157,6 +158,26 @@ impl LongSpectrum {
                 });
             }
         }
+    }
+}
+
+/// Samples under the window, times `scale`. The window's cosine is turned on from one exact value to the next, and serves
+/// both ends.
+fn taper(samples: &[f32], scale: f64, out: &mut [f32]) {
+    let count = samples.len();
+    let turn = Complex::cis(TAU / count as f64);
+    let mut e = Complex::default();
+    for n in 0..=count / 2 {
+        if n % EXACT_EVERY == 0 {
+            // From the start of the frame, half a turn from its centre.
+            e = Complex::cis(TAU * n as f64 / count as f64 - PI);
+        }
+        let w = single(scale * CosineSum::BLACKMAN_HARRIS.of_cosine(e.re));
+        out[n] = samples[n] * w;
+        if n > 0 {
+            out[count - n] = samples[count - n] * w;
+        }
+        e *= turn;
     }
 }
 

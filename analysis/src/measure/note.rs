@@ -21,6 +21,10 @@ pub(crate) const SPARE: usize = 3;
 /// Nearest to the Nyquist frequency at which a partial can be told from its own image, in resolutions.
 const CLEAR_OF_IMAGE: f64 = 4.0;
 
+/// A moving pitch must leave less of the strongest partials than a held one by this much, in nepers of power each on
+/// average: the pitch of the instants may waver where the tone does not.
+const BENT_LEAVES_LESS: f64 = 0.1;
+
 /// What the instants of the note said of one partial.
 #[derive(Debug, Clone, Copy, Default)]
 struct Seen {
@@ -119,7 +123,7 @@ impl Meter {
         let moves = moves.filter(|m| {
             let straight = self.misfit(f0, b, times, false);
             self.sweep = m.sweep;
-            self.misfit(m.mean_log.exp(), b, times, true) < straight
+            self.misfit(m.mean_log.exp(), b, times, true) < straight - BENT_LEAVES_LESS
         });
         if moves.is_none() {
             self.bend.clear();

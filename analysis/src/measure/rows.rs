@@ -84,8 +84,8 @@ impl Rows {
         self.rows.sort_unstable_by_key(|r| r.n);
     }
 
-    /// Fits every row by itself; the sum of the logarithms of what is left, which is minus the logarithm of the
-    /// likelihood but for factors.
+    /// Fits every row by itself; the mean of the logarithms of what is left, which is minus the logarithm of the likelihood
+    /// but for factors.
     pub(crate) fn misfit(&mut self, baseband: &Baseband, times: Times, f0: f64) -> f64 {
         self.begin(baseband, times, f0);
         let mut sum = 0.0;
@@ -93,7 +93,7 @@ impl Rows {
             self.find(baseband, times, i, 0.0);
             sum += self.rows[i].fit.left.ln();
         }
-        sum
+        sum / self.rows.len().max(1) as f64
     }
 
     /// Fits every row. `relaxed` says that the pitch holds, so that shares of others are what [`Shares`] expects.

@@ -225,19 +225,18 @@ impl Trace {
         let mut expected = [0.0f64; 2];
         let mut before = 0;
         for own in tone.own {
+            for n in before + 1..=own.n {
+                expected[n % 2] *= FORGET;
+            }
+            before = own.n;
             let order = partial_hz(1.0, self.model.b, own.n as f64);
             let off = own.hz - order * self.model.f0;
             let sd = own.sd_hz.hypot(LINE_SD * tone.resolution_hz);
             if off.abs() < DEVIATIONS * sd.hypot(order / self.model.weight.sqrt()) {
                 self.explained += own.amplitude;
                 self.model.learn(off / order, sd / order);
+                expected[own.n % 2] = expected[own.n % 2].max(own.amplitude * own.n as f64);
             }
-            for n in before + 1..=own.n {
-                expected[n % 2] *= FORGET;
-            }
-            before = own.n;
-            let most = &mut expected[own.n % 2];
-            *most = most.max(own.amplitude * own.n as f64);
         }
         expected
     }
