@@ -296,7 +296,7 @@ impl Analyzer {
             }
             self.points.clear();
             self.points.extend(instant.tones.iter().map(Point::from));
-            match stiff::fit(&self.points, None) {
+            match stiff::fit(&self.points) {
                 Some(fit) => {
                     instant.f0 = fit.f0;
                     instant.f0_sd_cents = fit.f0_sd_cents;
@@ -364,7 +364,7 @@ impl Analyzer {
                 self.evidence.refine_newest(model, self.settings.partials, &mut self.refiner);
             self.points.clear();
             self.points.extend(self.refiner.tones.iter().map(Point::from));
-            if let Some(fit) = stiff::fit(&self.points, None) {
+            if let Some(fit) = stiff::fit(&self.points) {
                 reading.state = State::Steady;
                 reading.stretch =
                     fit.b_sd.is_finite().then_some(Stretch { b: fit.b, b_sd: fit.b_sd });

@@ -22,6 +22,8 @@ const SAME: f64 = 1.012;
 /// Cost of an octave lower, and where the octaves are counted from.
 const OCTAVE_COST: f64 = 0.05;
 const OCTAVES_FROM_HZ: f64 = 5_000.0;
+/// Periodicity below which a guess is not worth a comb.
+const APERIODIC: f64 = 0.1;
 /// Share of a score that no periodicity takes away.
 const WITHOUT_CLARITY: f64 = 0.35;
 /// Candidates handed on per instant.
@@ -88,6 +90,9 @@ impl Search {
             let peaks = Weighed::new(view.peaks[frame], &mut self.sums);
             let bin_hz = 1.0 / view.frame_s[frame];
             for &hz in &self.guesses {
+                if view.periodicity.is_some_and(|p| p.at(hz) < APERIODIC) {
+                    continue;
+                }
                 let Some(fit) = Comb::fit(&peaks, hz, bin_hz) else { continue };
                 if fit.hz < self.range_hz.0 * 0.98 || fit.hz > self.range_hz.1 * 1.02 {
                     continue;

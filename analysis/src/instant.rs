@@ -252,6 +252,5 @@ fn on_comb(peak: &Peak, candidate: &Candidate) -> bool {
 
 /// Level of a Hann frame: a sine of amplitude A puts 1.5 A^2 into its bins.
 fn level_dbfs(frame: &Frame) -> f64 {
-    let sum: f32 = frame.power[2..].iter().sum();
-    10.0 * (f64::from(sum) / 1.5).log10()
+    10.0 * (f64::from(frame.total()) / 1.5).log10()
 }

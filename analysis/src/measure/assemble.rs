@@ -167,7 +167,7 @@ impl Assembler {
             let hz = (s.frequency.1 / s.frequency.0).exp();
             self.points.push(Point { n: n as f64, hz, sd_hz: hz / s.frequency.0.sqrt() });
         }
-        let fit = stiff::fit(&self.points, None).or_else(|| self.without_partials())?;
+        let fit = stiff::fit(&self.points).or_else(|| self.without_partials())?;
         self.note.f0_hz = fit.f0;
         self.note.f0_sd_cents = fit.f0_sd_cents;
         self.note.stretch = fit.b_sd.is_finite().then_some(Stretch { b: fit.b, b_sd: fit.b_sd });

@@ -179,7 +179,7 @@ impl Meter {
             let hz = number * f0 * (r.sum / r.weight).exp();
             self.points.push(Point { n: number, hz, sd_hz: hz * r.sd().max(1e-7) });
         }
-        let fit = stiff::fit(&self.points, None)?;
+        let fit = stiff::fit(&self.points)?;
         Some(StiffFit { f0_sd_cents: fit.f0_sd_cents.hypot(CENTS_PER_NEPER * self.spread), ..fit })
     }
 
