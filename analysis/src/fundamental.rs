@@ -45,6 +45,8 @@ pub(crate) struct Candidate {
     pub(crate) clarity: f64,
     /// Compressed share of the peaks it explains, 0 to 1.
     pub(crate) explained: f64,
+    /// Partials that its comb finds.
+    pub(crate) partials: usize,
 }
 
 /// What one instant offers the search: the peaks of each frame length and the periodicity.
@@ -100,10 +102,13 @@ impl Search {
                 let clarity = view.periodicity.map_or(1.0, |p| p.at(fit.hz));
                 let score =
                     fit.score * (WITHOUT_CLARITY + (1.0 - WITHOUT_CLARITY) * clarity.max(0.0));
-                let explained = fit.explained;
+                let (explained, partials) = (fit.explained, fit.partials);
                 let octaves = (OCTAVES_FROM_HZ / fit.hz).log2();
                 let cost = OCTAVE_COST * octaves - score.max(1e-6).ln();
-                keep(out, Candidate { hz: fit.hz, b: fit.b, score, cost, clarity, explained });
+                keep(
+                    out,
+                    Candidate { hz: fit.hz, b: fit.b, score, cost, clarity, explained, partials },
+                );
             }
         }
     }

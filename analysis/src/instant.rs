@@ -26,6 +26,8 @@ const SEARCH_PEAKS_HZ: f64 = 6_000.0;
 const LOWEST_PEAK_HZ: f64 = 15.0;
 /// Least sample rate at which the periodicity of the shorter and of the longest frame is taken, in Hz.
 const LAG_RATES_HZ: [f64; 2] = [22_000.0, 11_000.0];
+/// Partials of a second voice: less are the overtones of a bar, a bell or a skin.
+const VOICE_PARTIALS: usize = 3;
 /// Share of the peaks that the pitch explains, above which no second voice is searched.
 const ONE_VOICE: f64 = 0.8;
 
@@ -178,7 +180,8 @@ impl Evidence {
         };
         self.search.run(&view, &mut self.second);
         let rest: f64 = self.rest.iter().map(|p| p.weight).sum();
-        self.second.first().map_or(0.0, |c| c.score * rest / total.max(f64::MIN_POSITIVE))
+        let second = self.second.first().filter(|c| c.partials >= VOICE_PARTIALS);
+        second.map_or(0.0, |c| c.score * rest / total.max(f64::MIN_POSITIVE))
     }
 
     /// Lists the strays of an instant whose pitch is known.
