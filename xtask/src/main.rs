@@ -1,6 +1,10 @@
 //! The project's own commands, each with all the set-up it needs: `cargo xtask test`, `bench`, `demo`, `tidy`.
 #![forbid(unsafe_code)]
-#![expect(clippy::print_stdout, reason = "printing is what these commands are for")]
+#![expect(
+    clippy::print_stdout,
+    clippy::print_stderr,
+    reason = "printing is what these commands are for"
+)]
 
 mod bench;
 mod command;
@@ -8,6 +12,8 @@ mod demo;
 mod sound_bank;
 mod test;
 mod tidy;
+
+use std::process::ExitCode;
 
 use anyhow::{Result, bail};
 
@@ -18,7 +24,17 @@ cargo xtask bench                print how fast the engine is, as ratios measure
 cargo xtask demo                 synthesise the demo sound, measure it, say where the pictures are
 cargo xtask tidy                 check the rules of the source tree that no lint knows";
 
-fn main() -> Result<()> {
+fn main() -> ExitCode {
+    match run() {
+        Ok(()) => ExitCode::SUCCESS,
+        Err(error) => {
+            eprintln!("error: {error:#}");
+            ExitCode::FAILURE
+        }
+    }
+}
+
+fn run() -> Result<()> {
     let arguments: Vec<String> = std::env::args().skip(1).collect();
     let Some((command, rest)) = arguments.split_first() else { bail!("{USAGE}") };
     match command.as_str() {
