@@ -27,7 +27,7 @@ const CLEAR_COST: f64 = 0.25;
 const SWEEP_CENTS: f64 = 60.0;
 /// Partials up to which a sound that fades or wavers may be a drum's mode or a narrow band of noise; and how far it may
 /// fade, in dB, and waver, in cents, among the neighbours before it is taken for one.
-const FEW_PARTIALS: usize = 3;
+const FEW_PARTIALS: usize = 5;
 const FADES_DB: f64 = 4.0;
 const WAVERS_CENTS: f64 = 12.0;
 /// Confidence of what does not hold still.
@@ -189,7 +189,7 @@ fn uncurve(run: &Run, here: &Instant, hop_s: f64) -> (f64, f64) {
     let gain = KERNEL_MOMENT * here.frame_s * here.frame_s;
     let shift = gain * curvature;
     // The correction is itself measured over a span, and the next term of the series is left out.
-    let left = 0.08 * CENTS_PER_NEPER * shift.abs();
+    let left = 0.15 * CENTS_PER_NEPER * shift.abs();
     (own - shift, sd.hypot(CENTS_PER_NEPER * gain * curvature_sd).hypot(left))
 }
 
