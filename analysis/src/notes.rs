@@ -65,10 +65,10 @@ impl Notes {
         if let Some(event) = begun {
             self.event(history, event, sink);
         }
-        if let (Some(f0), Some(_)) = (step.f0, self.start) {
-            if self.segmenter.holds(step.centre) {
-                self.assembler.add(history, step.centre, (f0, pitch_sd_cents), tones);
-            }
+        if let (Some(f0), Some(_)) = (step.f0, self.start)
+            && self.segmenter.holds(step.centre)
+        {
+            self.assembler.add(history, step.centre, (f0, pitch_sd_cents), tones);
         }
     }
 
@@ -100,10 +100,10 @@ impl Notes {
                 } else {
                     found.unwrap_or(last + self.hop / 2).min(stream_end)
                 };
-                if end > start {
-                    if let Some(note) = self.assembler.end(history, end) {
-                        sink.note(note);
-                    }
+                if end > start
+                    && let Some(note) = self.assembler.end(history, end)
+                {
+                    sink.note(note);
                 }
             }
         }

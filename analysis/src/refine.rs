@@ -203,7 +203,7 @@ impl Line {
         if q.abs() < 1e-3 {
             return kernel(d);
         }
-        let s = if bin_plus_two % 2 == 0 { -self.sine } else { self.sine };
+        let s = if bin_plus_two.is_multiple_of(2) { -self.sine } else { self.sine };
         s / q
     }
 
