@@ -192,12 +192,12 @@ impl Meter {
         let least = self.often();
         for n in 1..=self.partials + SPARE {
             let seen = self.seen[n];
-            let often = seen.count >= least;
-            let expected_hz = if often {
-                n as f64 * f0 * (seen.sum / seen.weight).exp()
-            } else {
-                partial_hz(f0, b, n as f64)
-            };
+            let model_hz = partial_hz(f0, b, n as f64);
+            let seen_hz = n as f64 * f0 * (seen.sum / seen.weight).exp();
+            // Instants that were wrong about the model took one partial for another.
+            let often =
+                seen.count >= least && (seen_hz - model_hz).abs() < reach(f64::INFINITY, f0);
+            let expected_hz = if often { seen_hz } else { model_hz };
             if expected_hz > top {
                 break;
             }
@@ -206,6 +206,7 @@ impl Meter {
                 n,
                 expected_hz,
                 reach_hz: reach(loose * expected_hz + 1.5 / duration, f0),
+                resolution_hz: 1.0 / duration,
                 power: seen.power,
                 noise: self.long.noise_of_sum(expected_hz, self.baseband.block()),
                 ..Row::default()
