@@ -14,6 +14,7 @@ use crate::segment::Step;
 use crate::settings::{Settings, SettingsError};
 use crate::settle::{self, Instant, NEIGHBOURS};
 use crate::stiff::{self, Point};
+use crate::strays::peaks::STRAYS_MAX;
 use crate::track::{LOOK_AHEAD, Tracker};
 
 /// Level below which nothing is searched, in dBFS: under the noise of dithered 16-bit silence.
@@ -93,7 +94,11 @@ impl Analyzer {
             decided: 0,
             delivered: 0,
             first_centre: 0,
-            reading: Reading { partials: Vec::with_capacity(partials), ..Reading::default() },
+            reading: Reading {
+                partials: Vec::with_capacity(partials),
+                strays: Vec::with_capacity(STRAYS_MAX),
+                ..Reading::default()
+            },
             live: Vec::with_capacity(CANDIDATES + 1),
             missing: None,
             settings: settings.clone(),
@@ -238,8 +243,10 @@ impl Analyzer {
         instant.tones.clear();
         instant.model = (0.0, 0.0);
         instant.second = 0.0;
+        instant.strays.clear();
         if let (Some(best), _) = self.tracker.decide(0) {
             instant.second = self.evidence.second_voice(&best);
+            self.evidence.strays((best.hz, best.b), &mut instant.strays);
             Self::refine(
                 &mut self.evidence,
                 &self.history,
@@ -277,6 +284,7 @@ impl Analyzer {
             let next = others.map(|c| c.cost).fold(f64::INFINITY, f64::min);
             instant.advantage = next - chosen.cost;
             if chosen.hz.total_cmp(&instant.model.0).is_ne() {
+                instant.strays.clear();
                 Self::refine(
                     &mut self.evidence,
                     &self.history,
@@ -288,7 +296,7 @@ impl Analyzer {
             }
             self.points.clear();
             self.points.extend(instant.tones.iter().map(Point::from));
-            match stiff::fit(&self.points, None) {
+            match stiff::fit(&self.points) {
                 Some(fit) => {
                     instant.f0 = fit.f0;
                     instant.f0_sd_cents = fit.f0_sd_cents;
@@ -314,6 +322,7 @@ impl Analyzer {
         reading.level_dbfs = instant.level_dbfs;
         reading.state = settled.state;
         reading.partials.clear();
+        reading.strays.clear();
         reading.stretch = None;
         reading.pitch = settled.pitch.map(|(f0_hz, f0_sd_cents, confidence)| Pitch {
             f0_hz,
@@ -321,6 +330,7 @@ impl Analyzer {
             confidence,
         });
         if let Some(pitch) = reading.pitch {
+            reading.strays.extend_from_slice(&instant.strays);
             reading.stretch = instant.b.map(|(b, b_sd)| Stretch { b, b_sd });
             let f0 = (pitch.f0_hz, pitch.f0_sd_cents);
             self.averager.run(f0, instant.frame_s, &instant.tones, &mut reading.partials);
@@ -342,6 +352,7 @@ impl Analyzer {
         reading.centre = self.history.end();
         reading.level_dbfs = level_dbfs;
         reading.partials.clear();
+        reading.strays.clear();
         reading.pitch = None;
         reading.stretch = None;
         let loud = level_dbfs > SILENCE_DBFS;
@@ -353,7 +364,7 @@ impl Analyzer {
                 self.evidence.refine_newest(model, self.settings.partials, &mut self.refiner);
             self.points.clear();
             self.points.extend(self.refiner.tones.iter().map(Point::from));
-            if let Some(fit) = stiff::fit(&self.points, None) {
+            if let Some(fit) = stiff::fit(&self.points) {
                 reading.state = State::Steady;
                 reading.stretch =
                     fit.b_sd.is_finite().then_some(Stretch { b: fit.b, b_sd: fit.b_sd });

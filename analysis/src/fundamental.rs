@@ -22,6 +22,8 @@ const SAME: f64 = 1.012;
 /// Cost of an octave lower, and where the octaves are counted from.
 const OCTAVE_COST: f64 = 0.05;
 const OCTAVES_FROM_HZ: f64 = 5_000.0;
+/// Periodicity below which a guess is not worth a comb.
+const APERIODIC: f64 = 0.1;
 /// Share of a score that no periodicity takes away.
 const WITHOUT_CLARITY: f64 = 0.35;
 /// Candidates handed on per instant.
@@ -43,6 +45,8 @@ pub(crate) struct Candidate {
     pub(crate) clarity: f64,
     /// Compressed share of the peaks it explains, 0 to 1.
     pub(crate) explained: f64,
+    /// Partials that its comb finds.
+    pub(crate) partials: usize,
 }
 
 /// What one instant offers the search: the peaks of each frame length and the periodicity.
@@ -88,6 +92,9 @@ impl Search {
             let peaks = Weighed::new(view.peaks[frame], &mut self.sums);
             let bin_hz = 1.0 / view.frame_s[frame];
             for &hz in &self.guesses {
+                if view.periodicity.is_some_and(|p| p.at(hz) < APERIODIC) {
+                    continue;
+                }
                 let Some(fit) = Comb::fit(&peaks, hz, bin_hz) else { continue };
                 if fit.hz < self.range_hz.0 * 0.98 || fit.hz > self.range_hz.1 * 1.02 {
                     continue;
@@ -95,10 +102,13 @@ impl Search {
                 let clarity = view.periodicity.map_or(1.0, |p| p.at(fit.hz));
                 let score =
                     fit.score * (WITHOUT_CLARITY + (1.0 - WITHOUT_CLARITY) * clarity.max(0.0));
-                let explained = fit.explained;
+                let (explained, partials) = (fit.explained, fit.partials);
                 let octaves = (OCTAVES_FROM_HZ / fit.hz).log2();
                 let cost = OCTAVE_COST * octaves - score.max(1e-6).ln();
-                keep(out, Candidate { hz: fit.hz, b: fit.b, score, cost, clarity, explained });
+                keep(
+                    out,
+                    Candidate { hz: fit.hz, b: fit.b, score, cost, clarity, explained, partials },
+                );
             }
         }
     }

@@ -7,9 +7,11 @@ use crate::fundamental::lag::{Autocorrelation, Periodicity};
 use crate::fundamental::{Candidate, Search, View};
 use crate::history::History;
 use crate::peaks::{self, NoiseFloor, PEAKS_MAX, Peak};
+use crate::reading::Stray;
 use crate::refine::Refiner;
 use crate::settings::Settings;
 use crate::spectrum::{Frame, Transform};
+use crate::strays;
 
 /// Shortest frame, in seconds, before rounding to a power of two; each further one is twice as long.
 const SHORTEST_S: f64 = 1024.0 / 48_000.0;
@@ -18,12 +20,14 @@ pub(crate) const LENGTHS: usize = 4;
 const LONGEST: usize = LENGTHS - 1;
 /// Periods that the frame in which partials are refined should hold.
 const REFINE_PERIODS: f64 = 4.5;
-/// Highest peak, in Hz, that the search for the fundamental looks at in the longer frames.
+/// Highest peak, in Hz, looked at in the middle frames.
 const SEARCH_PEAKS_HZ: f64 = 6_000.0;
 /// Lowest peak looked at, in Hz.
 const LOWEST_PEAK_HZ: f64 = 15.0;
 /// Least sample rate at which the periodicity of the shorter and of the longest frame is taken, in Hz.
 const LAG_RATES_HZ: [f64; 2] = [22_000.0, 11_000.0];
+/// Partials of a second voice: less are the overtones of a bar, a bell or a skin.
+const VOICE_PARTIALS: usize = 3;
 /// Share of the peaks that the pitch explains, above which no second voice is searched.
 const ONE_VOICE: f64 = 0.8;
 
@@ -53,7 +57,7 @@ impl Frames {
     }
 
     fn pick(&mut self, i: usize, noise: &NoiseFloor) {
-        let top = if i == 0 { f64::MAX } else { SEARCH_PEAKS_HZ };
+        let top = if i == 0 || i == LONGEST { f64::MAX } else { SEARCH_PEAKS_HZ };
         let range_hz = (LOWEST_PEAK_HZ, top.min(self.sample_rate_hz / 2.0));
         peaks::pick(&self.frames[i], self.bin_hz(i), noise, range_hz, &mut self.peaks[i]);
         peaks::weigh(&mut self.peaks[i]);
@@ -176,7 +180,15 @@ impl Evidence {
         };
         self.search.run(&view, &mut self.second);
         let rest: f64 = self.rest.iter().map(|p| p.weight).sum();
-        self.second.first().map_or(0.0, |c| c.score * rest / total.max(f64::MIN_POSITIVE))
+        let second = self.second.first().filter(|c| c.partials >= VOICE_PARTIALS);
+        second.map_or(0.0, |c| c.score * rest / total.max(f64::MIN_POSITIVE))
+    }
+
+    /// Lists the strays of an instant whose pitch is known.
+    pub(crate) fn strays(&self, model: (f64, f64), out: &mut Vec<Stray>) {
+        let bin_hz = self.now.bin_hz(LONGEST);
+        let peaks = &self.now.peaks[LONGEST];
+        strays::peaks::list(peaks, model, bin_hz, self.now.sample_rate_hz, out);
     }
 
     /// Root mean square around the centre as a level in dBFS, the constant left out.
@@ -243,6 +255,5 @@ fn on_comb(peak: &Peak, candidate: &Candidate) -> bool {
 
 /// Level of a Hann frame: a sine of amplitude A puts 1.5 A^2 into its bins.
 fn level_dbfs(frame: &Frame) -> f64 {
-    let sum: f32 = frame.power[2..].iter().sum();
-    10.0 * (f64::from(sum) / 1.5).log10()
+    10.0 * (f64::from(frame.total()) / 1.5).log10()
 }

@@ -30,7 +30,7 @@ const FAINT: f64 = 0.01;
 const NOTHING: f64 = 0.02;
 
 /// Most peaks kept of one frame.
-pub(crate) const PEAKS_MAX: usize = 200;
+pub(crate) const PEAKS_MAX: usize = 400;
 
 /// A peak.
 #[derive(Debug, Clone, Copy, PartialEq)]

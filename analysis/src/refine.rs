@@ -16,6 +16,9 @@ use crate::stiff::{CENTS_PER_NEPER, DB_PER_NEPER, Point, partial_hz};
 const ROUNDS: usize = 3;
 /// Bins beyond which a partial's sidelobes are left out.
 const NEAR_BINS: f64 = 16.0;
+/// Power of a bin's noise, against the strongest partial, under which it is never taken to be: what a frame's far
+/// sidelobes, rounding and unresolved lines leave of it.
+const FAINTEST: f64 = 1e-8;
 /// Nearest to the image at negative frequencies, in bins, at which it is left out.
 const IMAGE_BINS: f64 = 12.0;
 /// Power over the noise in a bin below which a partial is not there (see the peaks' own limit).
@@ -171,9 +174,10 @@ impl Refiner {
         self.tones.clear();
         let len = (frame.power.len() - 1) * 2;
         let mut before = 0.0;
+        let loudest = self.lines.iter().map(|l| l.a.norm_sqr()).fold(0.0, f64::max);
         for line in &self.lines {
             let power = line.a.norm_sqr();
-            let floor = f64::from(noise.at(line.bin, len)).max(1e-18);
+            let floor = f64::from(noise.at(line.bin, len)).max(FAINTEST * loudest);
             let off = (line.nu - line.bin as f64).abs();
             let snr = power / floor;
             // Two lines on the same peak are one.

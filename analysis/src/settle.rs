@@ -1,9 +1,10 @@
 //! What an instant is said to be once its neighbours are known: pitch, deviation, confidence, state.
 
 use crate::fundamental::Candidate;
-use crate::reading::State;
+use crate::reading::{State, Stray};
 use crate::refine::Tone;
 use crate::stiff::CENTS_PER_NEPER;
+use crate::strays::peaks::STRAYS_MAX;
 
 /// Instants on either side that an instant is settled with.
 pub(crate) const NEIGHBOURS: usize = 5;
@@ -48,6 +49,8 @@ pub(crate) struct Instant {
     pub(crate) frame_s: f64,
     /// Partials.
     pub(crate) tones: Vec<Tone>,
+    /// Strays.
+    pub(crate) strays: Vec<Stray>,
     /// The candidate decided for, and by how much it beat the others.
     pub(crate) decided: Option<Candidate>,
     /// Cost by which it beat the next.
@@ -71,6 +74,7 @@ impl Instant {
             model: (0.0, 0.0),
             frame_s: 0.0,
             tones: Vec::with_capacity(partials),
+            strays: Vec::with_capacity(STRAYS_MAX),
             decided: None,
             advantage: 0.0,
             f0: 0.0,

@@ -22,6 +22,19 @@ pub(crate) struct Frame {
     pub(crate) power: Vec<f32>,
 }
 
+impl Frame {
+    /// Sum of the power of all bins but those that a constant reaches.
+    pub(crate) fn total(&self) -> f32 {
+        let mut lanes = [0.0f32; 8];
+        for chunk in self.power[2..].chunks(8) {
+            for (lane, p) in lanes.iter_mut().zip(chunk) {
+                *lane += p;
+            }
+        }
+        lanes.iter().sum()
+    }
+}
+
 /// A planned transform of one length.
 pub(crate) struct Transform {
     len: usize,

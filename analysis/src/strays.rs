@@ -1,7 +1,8 @@
-//! Explanations for lines that belong to no partial: alias of a partial ([`aliases`]), mains hum ([`mains`]), or none.
+//! Explanations for lines that belong to no partial: alias of a partial ([`aliases`]), mains hum ([`mains`]), or none. [`peaks`] does it for one reading.
 
 pub(crate) mod aliases;
 pub(crate) mod mains;
+pub(crate) mod peaks;
 
 use crate::measure::lines::Line;
 use crate::reading::{Stray, StrayKind};

@@ -66,6 +66,8 @@ pub(crate) struct Comb {
     pub(crate) score: f64,
     /// Compressed share of the peaks in reach that the comb explains.
     pub(crate) explained: f64,
+    /// Partials found.
+    pub(crate) partials: usize,
 }
 
 /// Running least squares of `(f_n / n)^2` on `n^2`.
@@ -148,7 +150,7 @@ impl Comb {
         // What a comb of such reach explains of peaks anywhere at all is no merit.
         let explained = ((explained - chance) / (1.0 - chance)).clamp(0.0, 1.0);
         let score = explained * presence(&teeth[..last]).powf(PRESENCE);
-        Some(Self { hz: base.sqrt(), b, score, explained })
+        Some(Self { hz: base.sqrt(), b, score, explained, partials: line.count })
     }
 }
 
@@ -165,15 +167,20 @@ fn strongest_within(peaks: &[Peak], next: &mut usize, expected: f64, reach: f64)
         .max_by(|a, b| a.amplitude.total_cmp(&b.amplitude))
 }
 
-/// Share of the teeth up to the last one that is there, the low ones counting most.
+/// Share of the comb that is there: teeth count by their strength, low ones most, and one that is missing as much as the
+/// weaker of its nearest neighbours that are there.
 fn presence(teeth: &[f64]) -> f64 {
-    let (mut there, mut expected) = (0.0, 0.0);
+    let (mut there, mut missing) = (0.0, 0.0);
+    let (mut below, mut hole) = (f64::INFINITY, 0.0);
     for (i, &tooth) in teeth.iter().enumerate() {
         let weight = 1.0 / (i + 1) as f64;
-        expected += weight;
         if tooth > 0.0 {
-            there += weight;
+            there += weight * tooth;
+            missing += hole * tooth.min(below);
+            (below, hole) = (tooth, 0.0);
+        } else {
+            hole += weight;
         }
     }
-    there / expected
+    there / (there + missing)
 }

@@ -167,7 +167,7 @@ impl Assembler {
             let hz = (s.frequency.1 / s.frequency.0).exp();
             self.points.push(Point { n: n as f64, hz, sd_hz: hz / s.frequency.0.sqrt() });
         }
-        let fit = stiff::fit(&self.points, None)?;
+        let fit = stiff::fit(&self.points).or_else(|| self.without_partials())?;
         self.note.f0_hz = fit.f0;
         self.note.f0_sd_cents = fit.f0_sd_cents;
         self.note.stretch = fit.b_sd.is_finite().then_some(Stretch { b: fit.b, b_sd: fit.b_sd });
@@ -194,6 +194,17 @@ impl Assembler {
             });
         }
         Some(fit)
+    }
+
+    /// What is left to say of a note in which no partial could be measured: where its instants lay.
+    fn without_partials(&self) -> Option<StiffFit> {
+        (self.log_f0.0 > 0.0).then(|| StiffFit {
+            f0: (self.log_f0.1 / self.log_f0.0).exp(),
+            f0_sd_cents: self.log_f0.0.sqrt().recip(),
+            b: 0.0,
+            b_sd: f64::INFINITY,
+            scatter_cents: 0.0,
+        })
     }
 
     /// Keeps the lines of the stretch that are no partial's own.

@@ -121,8 +121,8 @@ impl LongSpectrum {
         let wide = nearest_index(PROMINENCE_BINS as f64 * self.resolution_hz / bin_hz);
         let p = &self.power;
         let strongest = p.iter().fold(0.0f32, |a, &b| a.max(b));
-        // Rounding of single precision leaves a floor of its own.
-        let least = strongest * 1e-13;
+        // The window's side lobes, at -92 dB, are lines of nothing.
+        let least = strongest * 1e-9;
         let mut faintest = 0.0;
         for (block, start) in (0..p.len()).step_by(NOISE_BLOCK).enumerate() {
             let end = (start + NOISE_BLOCK).min(p.len());

@@ -31,6 +31,8 @@ struct Seen {
     /// Weight, and weighted logarithmic distance from the harmonic series.
     weight: f64,
     sum: f64,
+    /// Weighted square of that distance.
+    square: f64,
     /// Sum of squared amplitudes.
     power: f64,
     count: usize,
@@ -56,6 +58,8 @@ pub(crate) struct Meter {
     pub(crate) mean_square: f64,
     /// Half the range of the pitch over the stretch, as a natural logarithm; 0 where it holds.
     pub(crate) sweep: f64,
+    /// Standard deviation of the instants' pitch, as a natural logarithm.
+    spread: f64,
 }
 
 impl Meter {
@@ -78,6 +82,7 @@ impl Meter {
             points: Vec::with_capacity(rows),
             mean_square: 0.0,
             sweep: 0.0,
+            spread: 0.0,
         }
     }
 
@@ -97,7 +102,9 @@ impl Meter {
             let Some(seen) = self.seen.get_mut(tone.n) else { continue };
             let w = (tone.hz / tone.sd_hz).powi(2);
             seen.weight += w;
-            seen.sum += w * (tone.hz / (tone.n as f64 * f0)).ln();
+            let off = (tone.hz / (tone.n as f64 * f0)).ln();
+            seen.sum += w * off;
+            seen.square += w * off * off;
             seen.power += tone.amplitude.norm_sqr();
             seen.count += 1;
         }
@@ -116,7 +123,8 @@ impl Meter {
         self.mean_square =
             self.samples.iter().map(|&x| f64::from(x) * f64::from(x)).sum::<f64>() / length as f64;
         self.long.run(&self.samples);
-        let (f0, b) = self.expect()?;
+        let seen = self.expect()?;
+        let (f0, b) = (seen.f0, seen.b);
         let grid = (start, block, length / block);
         let times = self.times();
         let moves = path::follow(&self.path, grid, &mut self.bend);
@@ -133,7 +141,8 @@ impl Meter {
         self.lay_out();
         self.baseband.run(&self.samples, &self.steps, &self.bend);
         self.rows.fit(&self.baseband, times, f0, self.bend.is_empty());
-        self.rows.judge(times, f0)
+        // Where no partial holds still enough for a line of its own, what the instants saw is all there is to say.
+        Some(self.rows.judge(times, f0).unwrap_or(seen))
     }
 
     /// How badly the strongest partials are explained by a pitch that holds, or that follows `bend`.
@@ -154,12 +163,15 @@ impl Meter {
     }
 
     /// The model that the instants of the note agree on.
-    fn expect(&mut self) -> Option<(f64, f64)> {
+    fn expect(&mut self) -> Option<StiffFit> {
         let middle = self.path.len() / 2;
         self.bend.clear();
         self.bend.extend(self.path.iter().map(|p| p.log_f0));
         let (_, median, _) = self.bend.select_nth_unstable_by(middle, f64::total_cmp);
-        let f0 = median.exp();
+        let log_f0 = *median;
+        let f0 = log_f0.exp();
+        let square: f64 = self.path.iter().map(|p| (p.log_f0 - log_f0).powi(2)).sum();
+        self.spread = (square / self.path.len() as f64).sqrt();
         self.points.clear();
         let least = self.often();
         for (n, r) in self.seen.iter().enumerate().filter(|(_, r)| r.count >= least) {
@@ -167,8 +179,8 @@ impl Meter {
             let hz = number * f0 * (r.sum / r.weight).exp();
             self.points.push(Point { n: number, hz, sd_hz: hz * r.sd().max(1e-7) });
         }
-        let fit = stiff::fit(&self.points, None)?;
-        Some((fit.f0, fit.b))
+        let fit = stiff::fit(&self.points)?;
+        Some(StiffFit { f0_sd_cents: fit.f0_sd_cents.hypot(CENTS_PER_NEPER * self.spread), ..fit })
     }
 
     /// Says how fast each row turns.
@@ -201,7 +213,8 @@ impl Meter {
             if expected_hz > top {
                 break;
             }
-            let loose = if often { (5.0 * seen.sd()).clamp(5e-5, 3e-3) } else { 3e-3 };
+            let wide = (5.0 * seen.sd()).max(3.0 * seen.spread()).max(3.0 * self.spread);
+            let loose = if often { wide.clamp(5e-5, 3e-3) } else { 3e-3 };
             self.rows.rows.push(Row {
                 n,
                 expected_hz,
@@ -219,5 +232,11 @@ impl Seen {
     /// Relative deviation of the mean: the instants overlap, and share what the model gets wrong.
     fn sd(&self) -> f64 {
         (4.0 / self.weight).sqrt()
+    }
+
+    /// How far the instants lie apart, relative: the attack of a note is louder than the rest, and elsewhere.
+    fn spread(&self) -> f64 {
+        let mean = self.sum / self.weight;
+        (self.square / self.weight - mean * mean).max(0.0).sqrt()
     }
 }

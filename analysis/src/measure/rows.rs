@@ -188,7 +188,7 @@ impl Rows {
                 self.points.push(point(row));
             }
         }
-        stiff::fit(&self.points, None)
+        stiff::fit(&self.points)
     }
 
     /// The signal of row `i` without the others' shares.
@@ -241,7 +241,7 @@ impl Rows {
         let limits = self.limits;
         self.points.clear();
         self.points.extend(self.rows.iter().filter(|r| r.certain(limits)).map(point));
-        let Some(model) = stiff::fit(&self.points, None) else { return };
+        let Some(model) = stiff::fit(&self.points) else { return };
         let sd = model.f0_sd_cents.hypot(model.scatter_cents) / CENTS_PER_NEPER;
         for k in 0..self.order.len() {
             let i = self.order[k];

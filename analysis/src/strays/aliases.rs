@@ -87,7 +87,7 @@ struct Trace {
 }
 
 /// Frequency at which a partial appears after sampling; negative where it folds back, so that it moves the other way.
-fn folded_hz(hz: f64, sample_rate_hz: f64) -> f64 {
+pub(super) fn folded_hz(hz: f64, sample_rate_hz: f64) -> f64 {
     hz - sample_rate_hz * (hz / sample_rate_hz).round()
 }
 
