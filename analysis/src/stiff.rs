@@ -5,7 +5,7 @@
 //! that, one very sure partial of a real instrument would dictate the fit and the stated deviation would be far too small.
 
 /// Cents in one neper of frequency ratio: `1200 / ln 2`.
-pub(crate) const CENTS_PER_NEPER: f64 = 1731.234_049_066_756_1;
+pub(crate) const CENTS_PER_NEPER: f64 = 1_731.234_049_066_756_1;
 /// Decibels in one neper of amplitude: `20 / ln 10`.
 pub(crate) const DB_PER_NEPER: f64 = 8.685_889_638_065_037;
 /// Rounds of reweighting.

@@ -86,8 +86,13 @@ struct Trace {
     tests: [(f64, f64); TESTED.len()],
 }
 
-/// Frequency at which a partial appears after sampling; negative where it folds back, so that it moves the other way.
+/// Frequency at which a partial appears after sampling.
 pub(super) fn folded_hz(hz: f64, sample_rate_hz: f64) -> f64 {
+    turned_hz(hz, sample_rate_hz).abs()
+}
+
+/// The same, negative where it moves down as the partial moves up.
+fn turned_hz(hz: f64, sample_rate_hz: f64) -> f64 {
     hz - sample_rate_hz * (hz / sample_rate_hz).round()
 }
 
@@ -185,7 +190,7 @@ impl Tracer<'_> {
             }
             expected[n % 2] *= FORGET;
             let most = STRONGER * expected[n % 2] / n as f64;
-            let turned = folded_hz(hz, tone.sample_rate_hz);
+            let turned = turned_hz(hz, tone.sample_rate_hz);
             let lies = turned.abs();
             let first = candidates.partition_point(|c| c.line.hz < lies - widest);
             let found = candidates[first..]
@@ -271,7 +276,7 @@ mod tests {
             Own { n, hz: n as f64 * f0, sd_hz: 1e-4, amplitude }
         });
         let line = |n: usize| {
-            let hz = folded_hz(n as f64 * f0, RATE).abs();
+            let hz = folded_hz(n as f64 * f0, RATE);
             Candidate::new(Line { hz, amplitude: 0.3 / n as f64, snr: 1e5 })
         };
         let mut lines: Vec<_> = (first..=last).map(line).collect();
@@ -294,7 +299,7 @@ mod tests {
     #[test]
     fn published_examples_fold_where_they_should() {
         for (n, hz) in [(7.0, 19_460.0), (13.0, 1_660.0)] {
-            let found = folded_hz(n * 3520.0, RATE).abs();
+            let found = folded_hz(n * 3520.0, RATE);
             assert!((found - hz).abs() < 1e-9, "partial {n} of 3520 Hz: {found}");
         }
     }
