@@ -69,3 +69,22 @@ impl History {
         target[first..].copy_from_slice(&self.ring[..rest]);
     }
 }
+
+/// A span of samples that are to be read piece by piece.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct Span<'a> {
+    /// Where they are.
+    pub(crate) history: &'a History,
+    /// Position of the first.
+    pub(crate) start: u64,
+    /// How many.
+    pub(crate) length: usize,
+}
+
+impl Span<'_> {
+    /// Copies the samples from the `first`th on.
+    pub(crate) fn read(&self, first: usize, out: &mut [f32]) {
+        let from = self.start + first as u64;
+        self.history.read(i64::try_from(from).unwrap_or(i64::MAX), out);
+    }
+}

@@ -115,3 +115,50 @@ impl ChangePoint {
         }
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::convert::single;
+
+    /// Silence, a tone of five partials, silence.
+    fn struck(f0: f64, rate: f64, (from, to): (usize, usize), length: usize) -> History {
+        let mut history = History::new(length);
+        let samples: Vec<f32> = (0..length)
+            .map(|n| {
+                let turns = f0 * (n as f64 - from as f64) / rate;
+                let wave = |k: f64| (core::f64::consts::TAU * k * turns + k * k).cos() / k;
+                let tone = [1.0, 2.0, 3.0, 4.0, 5.0].map(wave).iter().sum::<f64>();
+                if (from..to).contains(&n) { single(0.1 * tone) } else { 0.0 }
+            })
+            .collect();
+        history.push(&samples);
+        history
+    }
+
+    #[test]
+    fn hard_edges_are_found_to_a_fraction_of_a_millisecond() {
+        let rate = 48_000.0;
+        for f0 in [41.2, 110.0, 440.0, 1760.0] {
+            let (from, to) = (9_731, 28_345);
+            let history = struck(f0, rate, (from, to), 38_000);
+            let period = nearest_index(rate / f0);
+            let mut change = ChangePoint::new(rate);
+            for (edge, span, way) in
+                [(from, (2_000, 16_000), Direction::Rise), (to, (22_000, 36_000), Direction::Fall)]
+            {
+                let found = change.find(&history, span, period, way).expect("an edge");
+                let off = index(found.abs_diff(edge as u64));
+                assert!(off < 60, "{f0} Hz, {way:?}: {found}, {edge} is right");
+            }
+        }
+    }
+
+    #[test]
+    fn where_nothing_changes_nothing_is_found() {
+        let history = struck(220.0, 48_000.0, (0, 38_000), 38_000);
+        let found =
+            ChangePoint::new(48_000.0).find(&history, (8_000, 24_000), 218, Direction::Rise);
+        assert_eq!(found, None, "a tone that holds");
+    }
+}

@@ -1,4 +1,5 @@
-//! Explanations for lines that belong to no partial: alias of a partial ([`aliases`]), mains hum ([`mains`]), or none. [`peaks`] does it for one reading.
+//! Explanations for lines that belong to no partial: alias of a partial ([`aliases`]), mains hum ([`mains`]), or none.
+//! [`peaks`] does it for one reading.
 
 pub(crate) mod aliases;
 pub(crate) mod mains;

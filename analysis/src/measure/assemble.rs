@@ -5,7 +5,7 @@ use super::note::{Meter, SPARE, STRETCH_S};
 use super::rows::Row;
 use crate::convert::{index, nearest_index, number};
 use crate::descriptors::Descriptors;
-use crate::history::History;
+use crate::history::{History, Span};
 use crate::note::{Note, NotePartial};
 use crate::reading::{StrayKind, Stretch};
 use crate::refine::Tone;
@@ -135,7 +135,7 @@ impl Assembler {
             self.collect_lines(&fit);
         }
         self.seconds += seconds;
-        self.energy += self.meter.mean_square * seconds;
+        self.energy += mean_square(history, start, end) * seconds;
         let w = 1.0 / fit.f0_sd_cents.max(1e-9).powi(2);
         self.log_f0.0 += w;
         self.log_f0.1 += w * fit.f0.ln();
@@ -274,4 +274,17 @@ fn nearest_number(hz: f64, fit: &StiffFit) -> usize {
     // n^2 (1 + B n^2) = x^2, solved for n^2 without loss for a small B.
     let q = 4.0 * fit.b.max(0.0) * x * x;
     nearest_index((2.0 * x * x / (1.0 + (1.0 + q).sqrt())).sqrt()).max(1)
+}
+
+/// Mean square of the samples from `start` to `end`.
+fn mean_square(history: &History, start: u64, end: u64) -> f64 {
+    let mut piece = [0.0f32; 512];
+    let length = index(end - start);
+    let mut sum = 0.0;
+    for first in (0..length).step_by(piece.len()) {
+        let piece = &mut piece[..(length - first).min(512)];
+        Span { history, start, length }.read(first, piece);
+        sum += piece.iter().map(|&x| f64::from(x) * f64::from(x)).sum::<f64>();
+    }
+    sum / length as f64
 }

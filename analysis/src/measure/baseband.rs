@@ -9,6 +9,7 @@ use core::f64::consts::TAU;
 use realfft::num_complex::Complex;
 
 use crate::convert::single;
+use crate::history::Span;
 
 /// Partials brought down together: the width of the inner loop.
 pub(crate) const LANES: usize = 8;
@@ -22,6 +23,7 @@ pub(crate) struct Baseband {
     rows_max: usize,
     blocks: usize,
     data: Vec<Complex<f32>>,
+    samples: Vec<f32>,
     /// Sums and differences of the samples of one block about its centre.
     pairs: Vec<(f32, f32)>,
 }
@@ -35,6 +37,7 @@ impl Baseband {
             rows_max,
             blocks: 0,
             data: vec![Complex::default(); rows_max.next_multiple_of(LANES) * blocks_max],
+            samples: vec![0.0; block],
             pairs: Vec::with_capacity(block.div_ceil(2)),
         }
     }
@@ -56,8 +59,8 @@ impl Baseband {
 
     /// Brings the samples down by `steps[row]` radians per sample, times `bend[block]` where the pitch moves (empty where it
     /// holds). Phases are 0 at the first sample. The scale is amplitude: a partial of amplitude `A` reads `A`.
-    pub(crate) fn run(&mut self, samples: &[f32], steps: &[f64], bend: &[f64]) {
-        self.blocks = (samples.len() / self.block).min(self.blocks_max);
+    pub(crate) fn run(&mut self, sound: Span<'_>, steps: &[f64], bend: &[f64]) {
+        self.blocks = (sound.length / self.block).min(self.blocks_max);
         let rows = steps.len().min(self.rows_max);
         for first in (0..rows).step_by(LANES) {
             let mut lanes = Lanes::default();
@@ -65,12 +68,13 @@ impl Baseband {
                 lanes.steps[lane] = *step;
             }
             lanes.turn_by(1.0, self.block);
-            for (m, block) in samples.chunks_exact(self.block).take(self.blocks).enumerate() {
+            for m in 0..self.blocks {
+                sound.read(m * self.block, &mut self.samples);
                 if let Some(factor) = bend.get(m) {
                     lanes.turn_by(*factor, self.block);
                 }
                 self.pairs.clear();
-                self.pairs.extend(pairs(block));
+                self.pairs.extend(pairs(&self.samples));
                 let sums = lanes.block(&self.pairs, self.block);
                 for (lane, sum) in sums.into_iter().enumerate() {
                     self.data[(first + lane) * self.blocks_max + m] = sum;
@@ -157,6 +161,17 @@ fn rounded(phase: f64) -> (f32, f32) {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::history::History;
+
+    fn held(samples: &[f32]) -> History {
+        let mut history = History::new(samples.len());
+        history.push(samples);
+        history
+    }
+
+    fn whole(history: &History, length: usize) -> Span<'_> {
+        Span { history, start: 0, length }
+    }
 
     /// A sum of cosines: (amplitude, radians per sample, phase).
     fn sound(parts: &[(f64, f64, f64)], samples: usize) -> Vec<f32> {
@@ -171,7 +186,7 @@ mod tests {
             let samples = sound(&parts, 40 * block);
             let steps: Vec<f64> = (0..11).map(|k| [0.0036, 0.7, 3.1, 1.3][k % 4]).collect();
             let mut baseband = Baseband::new(steps.len(), 40, block);
-            baseband.run(&samples, &steps, &[]);
+            baseband.run(whole(&held(&samples), samples.len()), &steps, &[]);
             for (row, step) in steps.iter().enumerate() {
                 for m in [0, 1, 17, 39] {
                     let exact: Complex<f64> = (m * block..(m + 1) * block)
@@ -201,7 +216,7 @@ mod tests {
             }
         }
         let mut baseband = Baseband::new(1, 50, block);
-        baseband.run(&samples, &[0.2], &bend);
+        baseband.run(whole(&held(&samples), samples.len()), &[0.2], &bend);
         for (m, z) in baseband.row(0).iter().enumerate() {
             // The image at negative frequencies leaves its share.
             assert!((z.norm() - 0.5).abs() < 0.012, "block {m}: {z}");

@@ -223,3 +223,73 @@ fn pass(z: &[Complex<f64>], times: Times, g: Complex<f64>) -> Sums {
         b1: Complex::new(sum(b1_re), sum(b1_im)),
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::coarse::Search;
+    use super::*;
+
+    const TIMES: Times = Times { first_s: 0.0025, step_s: 0.005 };
+    const LIMITS: Limits = Limits { off_hz: 30.0, sigma: 100.0 };
+
+    /// Uniform numbers of -1 to 1 by D. Lehmer's method; twelve make a normal one.
+    struct Noise(u64);
+
+    impl Noise {
+        fn normal(&mut self) -> f64 {
+            let mut sum = 0.0;
+            for _ in 0..12 {
+                self.0 = self.0 * 48_271 % 2_147_483_647;
+                sum += self.0 as f64 / 2_147_483_647.0;
+            }
+            sum - 6.0
+        }
+    }
+
+    fn decaying(a: Complex<f64>, g: Complex<f64>, noise: f64, seed: u64) -> Vec<Complex<f64>> {
+        let mut random = Noise(seed);
+        let mut at = |m: f64| {
+            let each = noise / 2.0f64.sqrt();
+            let off = Complex::new(each * random.normal(), each * random.normal());
+            a * (g * (TIMES.first_s + m * TIMES.step_s)).exp() + off
+        };
+        (0..600).map(|m| at(f64::from(m))).collect()
+    }
+
+    #[test]
+    fn exact_exponentials_are_found_exactly() {
+        for (sigma, hz) in
+            [(0.0, 0.3), (0.9, -4.2), (6.9, 2.0), (23.0, 5.5), (60.0, -1.0), (-0.5, 1.0)]
+        {
+            let z = decaying(Complex::new(0.1, -0.2), Complex::new(-sigma, TAU * hz), 0.0, 1);
+            let guess = Search::new(z.len()).run(&z, TIMES, (0.0, 6.0), 100.0);
+            let found = fit(&z, TIMES, &guess, LIMITS);
+            assert!((found.sigma - sigma).abs() < 1e-6, "{sigma} Np/s, {hz} Hz: {found:?}");
+            assert!((found.delta_hz - hz).abs() < 1e-6, "{sigma} Np/s, {hz} Hz: {found:?}");
+            let off = (found.a - Complex::new(0.1, -0.2)).norm();
+            assert!(off < 1e-7, "{sigma} Np/s, {hz} Hz: {found:?}");
+        }
+    }
+
+    #[test]
+    fn errors_reach_the_bound_and_are_stated() {
+        for (sigma, hz, noise) in [(0.0, 0.7, 0.3), (2.3, -3.1, 0.1), (23.0, 4.0, 0.03)] {
+            let truth = Complex::from_polar(0.5, 1.0);
+            let (mut rate, mut decay, mut level) = (0.0, 0.0, 0.0);
+            let trials = 200;
+            for seed in 1..=trials {
+                let g = Complex::new(-sigma, TAU * hz);
+                let z = decaying(truth, g, noise, 7919 * seed);
+                let guess = Search::new(z.len()).run(&z, TIMES, (0.0, 6.0), 100.0);
+                let found = fit(&z, TIMES, &guess, LIMITS);
+                rate += ((found.delta_hz - hz) / found.delta_sd_hz).powi(2);
+                decay += ((found.sigma - sigma) / found.sigma_sd).powi(2);
+                level += ((found.a.norm() / truth.norm()).ln() / found.log_sd).powi(2);
+            }
+            for (what, sum) in [("frequency", rate), ("decay", decay), ("level", level)] {
+                let rms = (sum / trials as f64).sqrt();
+                assert!((0.85..1.15).contains(&rms), "{what}, {sigma} Np/s: {rms} deviations");
+            }
+        }
+    }
+}

@@ -11,6 +11,7 @@ use realfft::num_complex::Complex;
 use realfft::{RealFftPlanner, RealToComplex};
 
 use crate::convert::{nearest_index, single};
+use crate::history::Span;
 use crate::window::CosineSum;
 
 /// Lengths of the transforms, in seconds before rounding to a power of two.
@@ -42,10 +43,10 @@ pub(crate) struct Line {
 /// Long transforms and their scratch.
 pub(crate) struct LongSpectrum {
     plans: [Arc<dyn RealToComplex<f32>>; 2],
+    /// Samples under the window, then the power of the bins.
     input: Vec<f32>,
     bins: Vec<Complex<f32>>,
     scratch: Vec<Complex<f32>>,
-    power: Vec<f32>,
     order: Vec<f32>,
     /// Mean noise power of the blocks of bins.
     floors: Vec<f32>,
@@ -74,7 +75,6 @@ impl LongSpectrum {
             input: longest.make_input_vec(),
             bins: longest.make_output_vec(),
             scratch: longest.make_scratch_vec(),
-            power: vec![0.0; longest.len() / 2 + 1],
             order: Vec::with_capacity(NOISE_BLOCK),
             floors: Vec::with_capacity(longest.len() / 2 / NOISE_BLOCK + 1),
             bin_hz: 1.0,
@@ -86,12 +86,13 @@ impl LongSpectrum {
     }
 
     /// Finds the lines of a note from its samples, as many of them as the longest transform takes.
-    pub(crate) fn run(&mut self, samples: &[f32]) {
-        let plan = &self.plans[usize::from(samples.len() > self.plans[0].len())];
+    pub(crate) fn run(&mut self, sound: Span<'_>) {
+        let plan = &self.plans[usize::from(sound.length > self.plans[0].len())];
         let len = plan.len();
-        let used = samples.len().min(len);
+        let used = sound.length.min(len);
         let scale = 2.0 / (used as f64 * CosineSum::BLACKMAN_HARRIS.coherent_gain());
-        taper(&samples[..used], scale, &mut self.input[..used]);
+        sound.read(0, &mut self.input[..used]);
+        taper(&mut self.input[..used], scale);
         self.input[used..len].fill(0.0);
         let bins = &mut self.bins[..len / 2 + 1];
         let done = plan.process_with_scratch(
@@ -100,10 +101,12 @@ impl LongSpectrum {
             &mut self.scratch[..plan.get_scratch_len()],
         );
         debug_assert!(done.is_ok(), "lengths are planned");
-        self.power.clear();
-        self.power.extend(bins.iter().map(|x| x.re * x.re + x.im * x.im));
+        // The transform has used its input up.
+        for (power, x) in self.input.iter_mut().zip(bins.iter()) {
+            *power = x.re * x.re + x.im * x.im;
+        }
         self.resolution_hz = self.sample_rate_hz / used as f64;
-        self.find(self.sample_rate_hz / len as f64);
+        self.find(len / 2 + 1, self.sample_rate_hz / len as f64);
     }
 
     /// Noise at a frequency, as the variance (squared amplitude) of a sum over `samples` samples brought down from there.
@@ -114,12 +117,12 @@ impl LongSpectrum {
         floor * used / (CosineSum::BLACKMAN_HARRIS.enbw_bins() * samples as f64)
     }
 
-    fn find(&mut self, bin_hz: f64) {
+    fn find(&mut self, count: usize, bin_hz: f64) {
         self.lines.clear();
         self.floors.clear();
         self.bin_hz = bin_hz;
         let wide = nearest_index(PROMINENCE_BINS as f64 * self.resolution_hz / bin_hz);
-        let p = &self.power;
+        let p = &self.input[..count];
         let strongest = p.iter().fold(0.0f32, |a, &b| a.max(b));
         // The window's side lobes, at -92 dB, are lines of nothing.
         let least = strongest * 1e-9;
@@ -163,7 +166,7 @@ impl LongSpectrum {
 
 /// Samples under the window, times `scale`. The window's cosine is turned on from one exact value to the next, and serves
 /// both ends.
-fn taper(samples: &[f32], scale: f64, out: &mut [f32]) {
+fn taper(samples: &mut [f32], scale: f64) {
     let count = samples.len();
     let turn = Complex::cis(TAU / count as f64);
     let mut e = Complex::default();
@@ -173,9 +176,9 @@ fn taper(samples: &[f32], scale: f64, out: &mut [f32]) {
             e = Complex::cis(TAU * n as f64 / count as f64 - PI);
         }
         let w = single(scale * CosineSum::BLACKMAN_HARRIS.of_cosine(e.re));
-        out[n] = samples[n] * w;
-        if n > 0 {
-            out[count - n] = samples[count - n] * w;
+        samples[n] *= w;
+        if n > 0 && 2 * n < count {
+            samples[count - n] *= w;
         }
         e *= turn;
     }

@@ -8,7 +8,7 @@ use super::lines::LongSpectrum;
 use super::path::{self, PathPoint};
 use super::rows::{Row, Rows, reach};
 use crate::convert::{index, nearest_index};
-use crate::history::History;
+use crate::history::{History, Span};
 use crate::refine::Tone;
 use crate::stiff::{self, CENTS_PER_NEPER, Point, StiffFit, partial_hz};
 
@@ -43,7 +43,10 @@ struct Seen {
 pub(crate) struct Meter {
     sample_rate_hz: f64,
     partials: usize,
-    samples: Vec<f32>,
+    /// Longest stretch, in samples.
+    longest: usize,
+    /// Duration of the current one.
+    duration_s: f64,
     baseband: Baseband,
     /// Lines of the stretch.
     pub(crate) long: LongSpectrum,
@@ -54,8 +57,6 @@ pub(crate) struct Meter {
     bend: Vec<f64>,
     steps: Vec<f64>,
     points: Vec<Point>,
-    /// Mean square of the stretch.
-    pub(crate) mean_square: f64,
     /// Half the range of the pitch over the stretch, as a natural logarithm; 0 where it holds.
     pub(crate) sweep: f64,
     /// Standard deviation of the instants' pitch, as a natural logarithm.
@@ -71,7 +72,8 @@ impl Meter {
         Self {
             sample_rate_hz,
             partials,
-            samples: Vec::with_capacity(longest),
+            longest,
+            duration_s: 0.0,
             baseband: Baseband::new(rows, blocks, block),
             long: LongSpectrum::new(sample_rate_hz),
             rows: Rows::new(sample_rate_hz, rows, blocks),
@@ -80,7 +82,6 @@ impl Meter {
             bend: Vec::with_capacity((longest / hop + 64).max(blocks)),
             steps: Vec::with_capacity(rows),
             points: Vec::with_capacity(rows),
-            mean_square: 0.0,
             sweep: 0.0,
             spread: 0.0,
         }
@@ -112,26 +113,23 @@ impl Meter {
 
     /// Measures the stretch from `start` to `end`. `None` when there is too little of it.
     pub(crate) fn run(&mut self, history: &History, start: u64, end: u64) -> Option<StiffFit> {
-        self.samples.clear();
-        let length = index(end - start).min(self.samples.capacity());
-        self.samples.resize(length, 0.0);
-        history.read(i64::try_from(start).unwrap_or(0), &mut self.samples);
+        let length = index(end - start).min(self.longest);
+        let sound = Span { history, start, length };
         let block = self.baseband.block();
         if length < 6 * block || self.path.is_empty() {
             return None;
         }
-        self.mean_square =
-            self.samples.iter().map(|&x| f64::from(x) * f64::from(x)).sum::<f64>() / length as f64;
-        self.long.run(&self.samples);
+        self.duration_s = length as f64 / self.sample_rate_hz;
+        self.long.run(sound);
         let seen = self.expect()?;
         let (f0, b) = (seen.f0, seen.b);
         let grid = (start, block, length / block);
         let times = self.times();
         let moves = path::follow(&self.path, grid, &mut self.bend);
         let moves = moves.filter(|m| {
-            let straight = self.misfit(f0, b, times, false);
+            let straight = self.misfit(sound, (f0, b), times, false);
             self.sweep = m.sweep;
-            self.misfit(m.mean_log.exp(), b, times, true) < straight - BENT_LEAVES_LESS
+            self.misfit(sound, (m.mean_log.exp(), b), times, true) < straight - BENT_LEAVES_LESS
         });
         if moves.is_none() {
             self.bend.clear();
@@ -139,18 +137,18 @@ impl Meter {
         }
         self.place(moves.map_or(f0, |m| m.mean_log.exp()), b);
         self.lay_out();
-        self.baseband.run(&self.samples, &self.steps, &self.bend);
+        self.baseband.run(sound, &self.steps, &self.bend);
         self.rows.fit(&self.baseband, times, f0, self.bend.is_empty());
         // Where no partial holds still enough for a line of its own, what the instants saw is all there is to say.
         Some(self.rows.judge(times, f0).unwrap_or(seen))
     }
 
     /// How badly the strongest partials are explained by a pitch that holds, or that follows `bend`.
-    fn misfit(&mut self, f0: f64, b: f64, times: Times, bent: bool) -> f64 {
+    fn misfit(&mut self, sound: Span<'_>, (f0, b): (f64, f64), times: Times, bent: bool) -> f64 {
         self.place(f0, b);
         self.rows.keep_strongest(LANES);
         self.lay_out();
-        self.baseband.run(&self.samples, &self.steps, if bent { &self.bend } else { &[] });
+        self.baseband.run(sound, &self.steps, if bent { &self.bend } else { &[] });
         self.rows.misfit(&self.baseband, times, f0)
     }
 
@@ -198,18 +196,18 @@ impl Meter {
     /// Lays out the rows for a model.
     fn place(&mut self, f0: f64, b: f64) {
         self.rows.rows.clear();
-        let duration = self.samples.len() as f64 / self.sample_rate_hz;
+        let duration = self.duration_s;
         let nyquist = 0.5 * self.sample_rate_hz;
         let top = (nyquist - CLEAR_OF_IMAGE / duration) * (-self.sweep).exp();
         let least = self.often();
         for n in 1..=self.partials + SPARE {
             let seen = self.seen[n];
-            let often = seen.count >= least;
-            let expected_hz = if often {
-                n as f64 * f0 * (seen.sum / seen.weight).exp()
-            } else {
-                partial_hz(f0, b, n as f64)
-            };
+            let model_hz = partial_hz(f0, b, n as f64);
+            let seen_hz = n as f64 * f0 * (seen.sum / seen.weight).exp();
+            // Instants that were wrong about the model took one partial for another.
+            let often =
+                seen.count >= least && (seen_hz - model_hz).abs() < reach(f64::INFINITY, f0);
+            let expected_hz = if often { seen_hz } else { model_hz };
             if expected_hz > top {
                 break;
             }
@@ -219,6 +217,7 @@ impl Meter {
                 n,
                 expected_hz,
                 reach_hz: reach(loose * expected_hz + 1.5 / duration, f0),
+                resolution_hz: 1.0 / duration,
                 power: seen.power,
                 noise: self.long.noise_of_sum(expected_hz, self.baseband.block()),
                 ..Row::default()

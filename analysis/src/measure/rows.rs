@@ -9,14 +9,16 @@ use super::damped::{self, Damped, Limits, Times};
 use super::shares::{Shares, block_response};
 use crate::stiff::{self, CENTS_PER_NEPER, Point, StiffFit, partial_hz};
 
-/// Most rounds in which the others' shares are taken away.
+/// Rounds in which the others' shares are taken away: before what is not where the others let expect it is searched again,
+/// then at most until nothing moves, and at most once more when what strayed is out.
+const ROUNDS_BETWEEN: [usize; 2] = [2, 2];
 const ROUNDS: usize = 12;
-/// The round before which what is not where the others let expect it is searched again.
-const LOOK_AGAIN: usize = 2;
+const ROUNDS_LAST: usize = 6;
 /// A round in which no partial moves by more than this many of its deviations is the last.
 const SETTLED: f64 = 0.1;
-/// Energy over the noise at which a partial is there: 10.5 dB.
+/// Energy over the noise at which a partial is there, 10.5 dB, when it is searched within so many resolutions.
 const PRESENT: f64 = 11.2;
+const PLACES: f64 = 2.0;
 /// Energy over the noise of a partial that the model may be built on: 16 dB.
 const CERTAIN: f64 = 40.0;
 /// A fit beyond this share of its limits is held back by them.
@@ -36,8 +38,10 @@ pub(crate) struct Row {
     pub(crate) n: usize,
     /// Frequency that it is brought down by, in Hz.
     pub(crate) expected_hz: f64,
-    /// How far around it is searched.
+    /// How far around it is searched, and one over the duration, in Hz.
     pub(crate) reach_hz: f64,
+    /// See above.
+    pub(crate) resolution_hz: f64,
     /// Mean power as the instants of the note saw it, to begin with the strongest.
     pub(crate) power: f64,
     /// Noise variance of one block, as the long transform sees it.
@@ -59,7 +63,13 @@ impl Row {
         let fit = &self.fit;
         let near = fit.delta_hz.abs() <= self.reach_hz + 2.0 * fit.delta_sd_hz;
         let held = fit.sigma > HELD * limits.sigma || fit.delta_hz.abs() > HELD * limits.off_hz;
-        fit.snr > PRESENT && near && !held
+        fit.snr > self.least() && near && !held
+    }
+
+    /// Energy over the noise at which it is there: noise alone exceeds a level with a chance of `exp(-level)` at each of
+    /// the places searched.
+    fn least(&self) -> f64 {
+        PRESENT + (self.reach_hz / self.resolution_hz / PLACES).max(1.0).ln()
     }
 
     /// Whether the model may be built on it.
@@ -129,18 +139,35 @@ impl Rows {
         if !relaxed {
             return;
         }
-        for round in 0..ROUNDS {
-            if round == LOOK_AGAIN {
-                self.look_again(baseband, times, f0, relaxed);
-            }
+        for rounds in ROUNDS_BETWEEN {
+            self.settle(baseband, times, rounds);
+            self.look_again(baseband, times, f0, relaxed);
+        }
+        self.settle(baseband, times, ROUNDS);
+        self.drop_strayed();
+        self.settle(baseband, times, ROUNDS_LAST);
+    }
+
+    /// Fits in what the others leave until nothing moves, or for so many rounds.
+    fn settle(&mut self, baseband: &Baseband, times: Times, rounds: usize) {
+        for _ in 0..rounds {
             let mut moved = 0.0f64;
             for k in 0..self.order.len() {
                 moved = moved.max(self.relax(baseband, times, self.order[k]));
             }
-            if moved < SETTLED && round >= LOOK_AGAIN {
+            if moved < SETTLED {
                 break;
             }
         }
+    }
+
+    /// Takes out for good what is no partial: it may have taken a partial's share with it.
+    fn drop_strayed(&mut self) {
+        for (i, row) in self.rows.iter().enumerate().filter(|(_, r)| !r.there(self.limits)) {
+            self.shares.set(i, row.expected_hz, None);
+        }
+        let rows = &self.rows;
+        self.order.retain(|&i| rows[i].there(self.limits));
     }
 
     fn begin(&mut self, baseband: &Baseband, times: Times, f0: f64) {
@@ -172,7 +199,7 @@ impl Rows {
             .extend(baseband.row(i).iter().map(|z| Complex::new(f64::from(z.re), f64::from(z.im))));
         // Where lines are wide, the long transform takes their skirts for noise.
         let noise = if row.fit.left > 0.0 { row.noise.min(row.fit.left) } else { row.noise };
-        self.shares.take(&mut self.clean, i, row.expected_hz, noise);
+        self.shares.take(&mut self.clean, i, (row.expected_hz, row.reach_hz), noise);
     }
 
     /// Searches and fits row `i` from nothing, around `around_hz` off the frequency that it is brought down by.
@@ -187,7 +214,8 @@ impl Rows {
     /// Makes row `i` known to the others.
     fn enter(&mut self, i: usize, relaxed: bool) {
         let row = &self.rows[i];
-        let there = relaxed && row.there(self.limits);
+        // Even what strayed explains something for now; taken out, it would come back as everyone's trouble.
+        let there = relaxed && row.fit.snr > PRESENT;
         self.shares.set(i, row.expected_hz, there.then_some(&row.fit));
     }
 
@@ -224,8 +252,7 @@ impl Rows {
             let n = row.n as f64;
             let hz = partial_hz(model.f0, model.b, n);
             let bend = if model.b_sd.is_finite() { 0.5 * n * n * model.b_sd } else { 0.0 };
-            let resolution = 1.0 / times.duration(baseband.blocks());
-            row.reach_hz = reach(4.0 * hz * sd.hypot(bend) + resolution, f0);
+            row.reach_hz = reach(4.0 * hz * sd.hypot(bend) + row.resolution_hz, f0);
             let around = hz - row.expected_hz;
             self.find(baseband, times, i, around);
             self.enter(i, relaxed);

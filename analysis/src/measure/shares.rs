@@ -90,8 +90,15 @@ impl Shares {
         }
     }
 
-    /// Takes all others' shares away from a row brought down by `own_hz`, with `noise` the variance of one block.
-    pub(crate) fn take(&mut self, z: &mut [Complex<f64>], row: usize, own_hz: f64, noise: f64) {
+    /// Takes all others' shares away from a row brought down by `own_hz` and looked at within `reach_hz` of that, with `noise`
+    /// the variance of one block.
+    pub(crate) fn take(
+        &mut self,
+        z: &mut [Complex<f64>],
+        row: usize,
+        (own_hz, reach_hz): (f64, f64),
+        noise: f64,
+    ) {
         self.sum_re.fill(0.0);
         self.sum_im.fill(0.0);
         let block = self.times.step_s * self.rate_hz;
@@ -114,8 +121,8 @@ impl Shares {
             };
             let image =
                 source.a.conj() * response(source.half_block.conj(), source.half_sample.conj());
-            let shows = direct.norm() * self.summed(&source, source.hz - own_hz)
-                + image.norm() * self.summed(&source, source.hz + own_hz);
+            let shows = direct.norm() * self.summed(&source, source.hz - own_hz, reach_hz)
+                + image.norm() * self.summed(&source, source.hz + own_hz, reach_hz);
             if shows > worth {
                 self.add(k, direct, image);
             }
@@ -128,13 +135,13 @@ impl Shares {
         }
     }
 
-    /// How much of an exponential off by `off_hz` is left in the mean over the stretch, at most.
-    fn summed(&self, source: &Source, off_hz: f64) -> f64 {
+    /// How much of an exponential off by `off_hz` is left, at most, in the mean over the stretch at a frequency in reach.
+    fn summed(&self, source: &Source, off_hz: f64, reach_hz: f64) -> f64 {
         let turns = off_hz * self.times.step_s;
         let alias_hz = (turns - turns.round()) / self.times.step_s;
         let span = self.times.duration(self.blocks);
         let long = 1.0 / span + source.sigma.max(0.0);
-        1.0 / (span * long.hypot(PI * alias_hz))
+        1.0 / (span * long.hypot(PI * (alias_hz.abs() - reach_hz).max(0.0)))
     }
 
     /// Adds `direct E + image conj(E)` of a partial to the sums.

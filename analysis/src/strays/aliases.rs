@@ -86,8 +86,13 @@ struct Trace {
     tests: [(f64, f64); TESTED.len()],
 }
 
-/// Frequency at which a partial appears after sampling; negative where it folds back, so that it moves the other way.
+/// Frequency at which a partial appears after sampling.
 pub(super) fn folded_hz(hz: f64, sample_rate_hz: f64) -> f64 {
+    turned_hz(hz, sample_rate_hz).abs()
+}
+
+/// The same, negative where it moves down as the partial moves up.
+fn turned_hz(hz: f64, sample_rate_hz: f64) -> f64 {
     hz - sample_rate_hz * (hz / sample_rate_hz).round()
 }
 
@@ -111,15 +116,13 @@ pub(crate) fn name_aliases(candidates: &mut Vec<Candidate>, tone: &Tone<'_>) {
     }
     let Some((model, _)) = best else { return };
     let trace = tracer.run(model, candidates, ORDERS);
-    if !trace.tests.iter().any(|&(found, chance)| beyond_chance(found, chance)) {
-        return;
-    }
+    let believed = trace.tests.iter().any(|&(found, chance)| beyond_chance(found, chance));
     let nyquist = 0.5 * tone.sample_rate_hz;
     let hz_of = |n: usize| partial_hz(trace.model.f0, trace.model.b, n as f64);
     candidates.retain_mut(|c| {
         let (n, by) = c.traced;
         let hz = hz_of(n);
-        if by == tracer.number && hz > nyquist {
+        if by == tracer.number && hz > nyquist && believed {
             let folds = number(floor_index(hz / nyquist));
             c.kind = StrayKind::Alias { partial: number(n), folds };
         }
@@ -187,7 +190,7 @@ impl Tracer<'_> {
             }
             expected[n % 2] *= FORGET;
             let most = STRONGER * expected[n % 2] / n as f64;
-            let turned = folded_hz(hz, tone.sample_rate_hz);
+            let turned = turned_hz(hz, tone.sample_rate_hz);
             let lies = turned.abs();
             let first = candidates.partition_point(|c| c.line.hz < lies - widest);
             let found = candidates[first..]
@@ -258,4 +261,98 @@ impl Model {
 /// line's ratio to the noise, and what its neighbours do to it.
 fn line_sd(line: &Line, resolution_hz: f64) -> f64 {
     resolution_hz * LINE_SD.hypot(0.6 / line.snr.sqrt())
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    const RATE: f64 = 44_100.0;
+
+    /// Lines of a saw of this fundamental from partial `first` to `last`, folded, with its own below.
+    fn saw(f0: f64, first: usize, last: usize) -> (Vec<Candidate>, Vec<Own>) {
+        let own = (1..first).map(|n| {
+            let amplitude = 0.3 / n as f64;
+            Own { n, hz: n as f64 * f0, sd_hz: 1e-4, amplitude }
+        });
+        let line = |n: usize| {
+            let hz = folded_hz(n as f64 * f0, RATE);
+            Candidate::new(Line { hz, amplitude: 0.3 / n as f64, snr: 1e5 })
+        };
+        let mut lines: Vec<_> = (first..=last).map(line).collect();
+        lines.sort_by(|a, b| a.line.hz.total_cmp(&b.line.hz));
+        (lines, own.collect())
+    }
+
+    fn tone(own: &[Own], f0: f64) -> Tone<'_> {
+        Tone {
+            own,
+            looked_for: own.len(),
+            f0,
+            f0_sd: 1e-3,
+            b: None,
+            sample_rate_hz: RATE,
+            resolution_hz: 0.35,
+        }
+    }
+
+    #[test]
+    fn published_examples_fold_where_they_should() {
+        for (n, hz) in [(7.0, 19_460.0), (13.0, 1_660.0)] {
+            let found = folded_hz(n * 3520.0, RATE);
+            assert!((found - hz).abs() < 1e-9, "partial {n} of 3520 Hz: {found}");
+        }
+    }
+
+    #[test]
+    fn every_alias_of_a_saw_is_named() {
+        let f0 = 1234.567;
+        let (mut lines, own) = saw(f0, 18, 300);
+        // The fundamental is off by more than the aliases allow, and one of its own partials lies on something else.
+        let mut own = own;
+        own[4].hz += 2.5;
+        name_aliases(&mut lines, &tone(&own, f0 + 0.01));
+        let mut numbers: Vec<u32> = lines
+            .iter()
+            .filter_map(|c| match c.kind {
+                StrayKind::Alias { partial, .. } => Some(partial),
+                _ => None,
+            })
+            .collect();
+        numbers.sort_unstable();
+        assert_eq!(numbers, (18..=300).collect::<Vec<u32>>(), "aliases of {f0} Hz");
+    }
+
+    #[test]
+    fn partials_in_their_place_are_dropped() {
+        let f0 = 110.0;
+        let (mut lines, own) = saw(f0, 44, 200);
+        name_aliases(&mut lines, &tone(&own, f0));
+        assert_eq!(lines.len(), 0, "lines left, though 200 times 110 Hz lies below 22050 Hz");
+    }
+
+    #[test]
+    fn lines_by_chance_are_no_aliases() {
+        let (_, own) = saw(261.6, 44, 44);
+        let mut lines: Vec<_> = (0..60)
+            .map(|k| {
+                let hz = 300.0 + 321.7 * f64::from(k) + 17.0 * (f64::from(k) * 1.7).sin();
+                Candidate::new(Line { hz, amplitude: 1e-4, snr: 1e3 })
+            })
+            .collect();
+        name_aliases(&mut lines, &tone(&own, 261.6));
+        let named = lines.iter().filter(|c| c.kind != StrayKind::Unexplained).count();
+        assert_eq!((named, lines.len()), (0, 60), "unrelated lines");
+    }
+
+    #[test]
+    fn a_line_stronger_than_the_partials_before_is_no_alias() {
+        let f0 = 1234.567;
+        let (mut lines, own) = saw(f0, 18, 60);
+        let loud = lines.iter_mut().max_by(|a, b| a.line.hz.total_cmp(&b.line.hz)).expect("lines");
+        loud.line.amplitude *= 30.0;
+        name_aliases(&mut lines, &tone(&own, f0));
+        let unexplained = lines.iter().filter(|c| c.kind == StrayKind::Unexplained).count();
+        assert_eq!(unexplained, 1, "one line out of line");
+    }
 }

@@ -52,3 +52,40 @@ fn multiple_of(c: &Candidate, hz: f64, resolution_hz: f64) -> Option<f64> {
     let matches = multiple >= 1.0 && multiple <= MULTIPLES && off < MATCH * resolution_hz;
     (matches && c.kind == StrayKind::Unexplained).then_some(multiple)
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::measure::lines::Line;
+
+    fn lines(hz: &[f64]) -> Vec<Candidate> {
+        let line = |&hz: &f64| Candidate::new(Line { hz, amplitude: 1e-3, snr: 1e4 });
+        hz.iter().map(line).collect()
+    }
+
+    fn multiples(candidates: &[Candidate]) -> Vec<Option<(f64, u32)>> {
+        let named = |c: &Candidate| match c.kind {
+            StrayKind::Mains { base_hz, multiple } => Some((base_hz, multiple)),
+            _ => None,
+        };
+        candidates.iter().map(named).collect()
+    }
+
+    #[test]
+    fn a_family_is_named_where_the_mains_are_a_little_off() {
+        for (nominal, hz) in [(50.0, 50.2), (50.0, 49.8), (60.0, 59.9), (60.0, 60.15)] {
+            let mut candidates = lines(&[hz, 77.7, 2.0 * hz, 3.0 * hz, 333.3, 7.0 * hz]);
+            name_mains(&mut candidates, 0.35);
+            let expected = [Some(1), None, Some(2), Some(3), None, Some(7)];
+            let expected: Vec<_> = expected.iter().map(|m| m.map(|m| (nominal, m))).collect();
+            assert_eq!(multiples(&candidates), expected, "mains of {hz} Hz");
+        }
+    }
+
+    #[test]
+    fn what_is_no_multiple_stays_unexplained() {
+        let mut candidates = lines(&[47.0, 64.0, 131.0, 211.0]);
+        name_mains(&mut candidates, 0.35);
+        assert_eq!(multiples(&candidates), [None; 4], "no mains");
+    }
+}
