@@ -1,0 +1,278 @@
+//! The audio thread's side: copies the chosen signal and marks into wait-free rings and does nothing else.
+//!
+//! Nothing here allocates, locks, logs, calls the system or can panic. While in real time a block for which the rings
+//! have no room is dropped whole and becomes a gap; in the host's offline mode the tap waits for room instead.
+
+use std::sync::Arc;
+use std::time::Duration;
+
+use rtrb::{Consumer, Producer, RingBuffer};
+
+use crate::controls::Controls;
+use crate::convert::{index, nearest, position};
+use crate::marks::{Cause, Event, Mark};
+use crate::parameters::Channel;
+use crate::session::{Anchor, News, Transport};
+use crate::status::Status;
+
+/// Time that the ring of samples holds at least, in seconds.
+const RING_S: f64 = 0.7;
+/// Blocks of the host's largest size that it holds at least.
+const RING_BLOCKS: usize = 4;
+/// Marks that their ring holds: a second of dense playing.
+const RING_MARKS: usize = 512;
+/// Slots of that ring kept for what a block may need beside its notes.
+const MARKS_A_BLOCK: usize = 8;
+/// How long the offline tap sleeps before it looks for room again, and how often until it gives up on a worker that
+/// makes no room at all (a quarter of a minute).
+const WAIT: Duration = Duration::from_micros(250);
+const WAITS_MAX: u32 = 60_000;
+
+/// What the tap is built for.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(crate) struct Format {
+    pub(crate) sample_rate_hz: f64,
+    pub(crate) block_max: usize,
+    pub(crate) offline: bool,
+}
+
+/// The worker's end of the rings.
+#[derive(Debug)]
+pub(crate) struct Intake {
+    pub(crate) samples: Consumer<f32>,
+    pub(crate) marks: Consumer<Mark>,
+    pub(crate) format: Format,
+}
+
+/// A key that went down or up within a block.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct Note {
+    /// Samples after the block's first.
+    pub(crate) offset: usize,
+    pub(crate) key: u8,
+    pub(crate) down: bool,
+}
+
+/// The audio thread's end of the rings.
+#[derive(Debug)]
+pub(crate) struct Tap {
+    samples: Producer<f32>,
+    marks: Producer<Mark>,
+    mixed: Vec<f32>,
+    format: Format,
+    status: Arc<Status>,
+    /// Samples put into the ring since it was made.
+    sent: u64,
+    /// Stream position: those, less what went before the last start, plus what was missed since.
+    at: u64,
+    /// Whether the next mark has to start a stream.
+    starting: bool,
+    /// What the worker was last told.
+    told_controls: Option<Controls>,
+    told_transport: Option<Anchor>,
+    /// Samples that the worker has still to be told it missed.
+    overrun: u64,
+    unwatched: u64,
+    listening: bool,
+}
+
+impl Tap {
+    /// Takes all the memory that both ends will need.
+    pub(crate) fn new(format: Format, status: Arc<Status>) -> (Self, Intake) {
+        let seconds = index(nearest(RING_S * format.sample_rate_hz));
+        let capacity = seconds.max(RING_BLOCKS * format.block_max).next_power_of_two();
+        let (samples, samples_out) = RingBuffer::new(capacity);
+        let (marks, marks_out) = RingBuffer::new(RING_MARKS);
+        let tap = Self {
+            samples,
+            marks,
+            mixed: vec![0.0; format.block_max.max(1)],
+            format,
+            status,
+            sent: 0,
+            at: 0,
+            starting: true,
+            told_controls: None,
+            told_transport: None,
+            overrun: 0,
+            unwatched: 0,
+            listening: false,
+        };
+        (tap, Intake { samples: samples_out, marks: marks_out, format })
+    }
+
+    pub(crate) fn format(&self) -> Format {
+        self.format
+    }
+
+    /// Begins a new stream at position 0.
+    pub(crate) fn start(&mut self) {
+        self.at = 0;
+        self.starting = true;
+        self.told_controls = None;
+        self.told_transport = None;
+        self.overrun = 0;
+        self.unwatched = 0;
+        self.listening = false;
+    }
+
+    /// Ends the stream: the worker delivers what is still to come.
+    pub(crate) fn end(&mut self) {
+        if self.listening && (self.has_room(0) || self.wait_for_room(0)) {
+            self.mark(0, Event::End);
+            self.listening = false;
+        }
+    }
+
+    /// Takes one block. `channels` are of equal length; `notes` come in order.
+    pub(crate) fn block(
+        &mut self,
+        channels: &[&mut [f32]],
+        controls: &Controls,
+        transport: &Transport,
+        notes: impl Iterator<Item = Note>,
+    ) {
+        let length = channels.first().map_or(0, |channel| channel.len());
+        if length == 0 {
+            return;
+        }
+        if !self.listens(controls) {
+            self.pass_by(position(length));
+            return;
+        }
+        if !self.has_room(length) && !self.wait_for_room(length) {
+            self.drop_block(position(length));
+            return;
+        }
+        self.mark_changes(controls, transport);
+        self.mark_notes(notes, length);
+        self.copy(channels, controls.channel, length);
+    }
+
+    /// Whether anybody uses what would be measured.
+    fn listens(&self, controls: &Controls) -> bool {
+        self.format.offline || controls.check || self.status.watched()
+    }
+
+    fn pass_by(&mut self, length: u64) {
+        if self.listening && self.has_room(0) {
+            self.mark(0, Event::Pause);
+            self.listening = false;
+        }
+        self.unwatched += length;
+        self.advance(length);
+    }
+
+    fn drop_block(&mut self, length: u64) {
+        self.overrun += length;
+        self.status.lose_samples(length);
+        self.advance(length);
+    }
+
+    fn advance(&mut self, length: u64) {
+        self.at += length;
+        self.status.at(self.at);
+    }
+
+    fn has_room(&self, length: usize) -> bool {
+        self.samples.slots() >= length && self.marks.slots() >= MARKS_A_BLOCK
+    }
+
+    /// Offline, waits until there is room; false while in real time, or when the worker makes none for very long.
+    fn wait_for_room(&self, length: usize) -> bool {
+        if !self.format.offline || length > self.samples.buffer().capacity() {
+            return false;
+        }
+        let mut slots = self.samples.slots();
+        let mut waits = 0;
+        while waits < WAITS_MAX && !self.samples.is_abandoned() {
+            std::thread::sleep(WAIT);
+            if self.has_room(length) {
+                return true;
+            }
+            waits = if self.samples.slots() > slots { 0 } else { waits + 1 };
+            slots = self.samples.slots();
+        }
+        false
+    }
+
+    fn mark(&mut self, offset: usize, event: Event) {
+        let mark = Mark { after: self.sent + position(offset), event };
+        // Room was made sure of before; a mark that finds none would only be missing.
+        let _ = self.marks.push(mark);
+    }
+
+    /// Marks all that is new since the last block that got through; at most [`MARKS_A_BLOCK`] marks.
+    fn mark_changes(&mut self, controls: &Controls, transport: &Transport) {
+        self.listening = true;
+        if self.starting {
+            self.starting = false;
+            self.mark(0, Event::Start);
+        }
+        for (samples, cause) in [(self.overrun, Cause::Overrun), (self.unwatched, Cause::Unwatched)]
+        {
+            if samples > 0 {
+                self.mark(0, Event::Missed { samples, cause });
+            }
+        }
+        (self.overrun, self.unwatched) = (0, 0);
+        if self.told_controls.as_ref() != Some(controls) {
+            self.told_controls = Some(*controls);
+            self.mark(0, Event::Controls(*controls));
+        }
+        let news = self.told_transport.as_ref().map_or(News::Changed, |told| {
+            told.news(self.at, transport, self.format.sample_rate_hz)
+        });
+        if news == News::Jumped {
+            self.mark(0, Event::Jump);
+        }
+        if news != News::None {
+            self.told_transport = Some(Anchor { at: self.at, transport: *transport });
+            self.mark(0, Event::Transport(*transport));
+        }
+    }
+
+    fn mark_notes(&mut self, notes: impl Iterator<Item = Note>, length: usize) {
+        for Note { offset, key, down } in notes {
+            if self.marks.slots() > 0 {
+                self.mark(offset.min(length - 1), Event::Note { key, down });
+            } else {
+                self.status.lose_note();
+            }
+        }
+    }
+
+    fn copy(&mut self, channels: &[&mut [f32]], channel: Channel, length: usize) {
+        let mut from = 0;
+        while from < length {
+            let to = length.min(from + self.mixed.len());
+            let pushed = match (channels, channel) {
+                ([left, right], Channel::Mid) => {
+                    let mixed = &mut self.mixed[..to - from];
+                    mix(mixed, &left[from..to], &right[from..to], |l, r| 0.5 * (l + r));
+                    self.samples.push_entire_slice(mixed)
+                }
+                ([left, right], Channel::Side) => {
+                    let mixed = &mut self.mixed[..to - from];
+                    mix(mixed, &left[from..to], &right[from..to], |l, r| 0.5 * (l - r));
+                    self.samples.push_entire_slice(mixed)
+                }
+                ([_, right], Channel::Right) => self.samples.push_entire_slice(&right[from..to]),
+                ([only, ..], _) => self.samples.push_entire_slice(&only[from..to]),
+                ([], _) => Ok(()),
+            };
+            debug_assert!(pushed.is_ok(), "room was made sure of");
+            from = to;
+        }
+        self.sent += position(length);
+        self.advance(position(length));
+    }
+}
+
+/// Mixes sample by sample; all slices are of equal length.
+#[inline]
+fn mix(mixed: &mut [f32], left: &[f32], right: &[f32], f: impl Fn(f32, f32) -> f32) {
+    for ((out, &l), &r) in mixed.iter_mut().zip(left).zip(right) {
+        *out = f(l, r);
+    }
+}
