@@ -2,9 +2,11 @@
 
 pub mod bounds;
 pub mod cast;
+pub mod clap_host;
 pub mod figures;
 pub mod lowest_peak;
 pub mod periodicity;
+pub mod readings;
 pub mod recorded;
 pub mod soundfont;
 pub mod take;
