@@ -3,6 +3,7 @@
 pub mod bounds;
 pub mod cast;
 pub mod clap_host;
+pub mod estimators;
 pub mod figures;
 pub mod lowest_peak;
 pub mod periodicity;

@@ -1,2 +1,38 @@
-//! The project's own commands.
-fn main() {}
+//! The project's own commands, each with all the set-up it needs: `cargo xtask test`, `bench`, `demo`, `tidy`.
+#![forbid(unsafe_code)]
+#![expect(clippy::print_stdout, reason = "printing is what these commands are for")]
+
+mod bench;
+mod command;
+mod demo;
+mod sound_bank;
+mod test;
+mod tidy;
+
+use anyhow::{Result, bail};
+
+const USAGE: &str = "\
+cargo xtask test [ARGUMENT...]   fetch what the tests need, then run them all; arguments go to the test runner
+cargo xtask fetch                only fetch the sound bank of the recorded instruments
+cargo xtask bench                print how fast the engine is, as ratios measured in one run
+cargo xtask demo                 synthesise the demo sound, measure it, say where the pictures are
+cargo xtask tidy                 check the rules of the source tree that no lint knows";
+
+fn main() -> Result<()> {
+    let arguments: Vec<String> = std::env::args().skip(1).collect();
+    let Some((command, rest)) = arguments.split_first() else { bail!("{USAGE}") };
+    match command.as_str() {
+        "test" => test::run(rest),
+        "fetch" => fetch(),
+        "bench" => bench::run(),
+        "demo" => demo::run(),
+        "tidy" => tidy::run(),
+        _ => bail!("no command {command}\n{USAGE}"),
+    }
+}
+
+fn fetch() -> Result<()> {
+    let Some(bank) = sound_bank::fetch()? else { bail!("no package registry could be reached") };
+    println!("the sound bank is at {}", bank.display());
+    Ok(())
+}

@@ -22,6 +22,8 @@ const DUE_DB: [f64; 2] = [-40.0, -60.0];
 const TRUE_DB: f64 = -100.0;
 /// Least distance in Hz from anything stronger for an alias to be due: closer ones cannot be told apart in 3 s.
 const APART_HZ: f64 = 2.0;
+/// Most aliases due: the least that a note lists.
+const DUE_MAX: usize = 512;
 /// Farthest in Hz from the truth that is right.
 const RIGHT_HZ: f64 = 0.5;
 
@@ -93,15 +95,17 @@ impl AliasFigures {
         by_strength.sort_by(|a, b| b.amplitude.total_cmp(&a.amplitude));
         for (tally, due_db) in self.named.iter_mut().zip(DUE_DB) {
             let floor = strongest * 10.0_f64.powf(due_db / 20.0);
-            for (rank, truth) in by_strength.iter().enumerate() {
-                let apart = by_strength[..rank]
-                    .iter()
-                    .all(|other| (other.frequency_hz - truth.frequency_hz).abs() > APART_HZ);
-                // Partials folded to 0 Hz have no place of their own.
-                let due = truth.folds > 0 && truth.amplitude >= floor && apart;
-                if due && truth.frequency_hz > 2.0 * APART_HZ {
-                    tally.push(named(note, truth), name);
-                }
+            let apart = |rank: usize, truth: &WavePartial| {
+                let stronger = by_strength[..rank].iter();
+                stronger.map(|other| other.frequency_hz - truth.frequency_hz).all(far)
+            };
+            let due = by_strength.iter().enumerate().filter(|&(rank, truth)| {
+                // A partial folded to 0 Hz has no place of its own.
+                let own_place = apart(rank, truth) && far(truth.frequency_hz / 2.0);
+                truth.folds > 0 && truth.amplitude >= floor && own_place
+            });
+            for (_, truth) in due.take(DUE_MAX) {
+                tally.push(named(note, truth), name);
             }
         }
         for stray in &note.strays {
@@ -119,6 +123,10 @@ impl AliasFigures {
             self.stray.push(!in_place, name);
         }
     }
+}
+
+fn far(difference_hz: f64) -> bool {
+    difference_hz.abs() > APART_HZ
 }
 
 fn named(note: &Note, truth: &WavePartial) -> bool {
