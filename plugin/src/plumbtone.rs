@@ -38,7 +38,7 @@ impl Default for Plumbtone {
     fn default() -> Self {
         let (input, output) = triple_buffer(&Readout::default());
         let repaint = RepaintNotifier::new();
-        let delivery = Delivery::new(input, repaint.clone(), ReadingsLog::from_environment());
+        let delivery = Delivery::new(input, repaint.clone(), ReadingsLog::open());
         Self {
             parameters: Arc::default(),
             status: Arc::default(),

@@ -1,24 +1,35 @@
 //! Every reading of every instance as a line of JSON, for scripts and tests that have no editor to look at.
 //!
-//! Off unless the environment variable [`VARIABLE`] names a folder when an instance is made. Each instance writes a file
-//! of its own there, from the worker, never from the audio thread.
+//! Off unless the environment variable [`VARIABLE`] names a folder when an instance is made (or [`log_into`] does, in a
+//! program that links the plugin). Each instance writes a file of its own there, from the worker, never from the audio
+//! thread.
 
+use std::cell::RefCell;
 use std::fs::{self, File};
 use std::io::{self, BufWriter, Write as _};
 use std::path::{Path, PathBuf};
 use std::sync::atomic::{AtomicU64, Ordering};
 
 use plumbtone_analysis::{Reading, State};
-use serde::{Deserialize, Serialize};
+use serde::Serialize;
 
 use crate::session::SessionPosition;
 
 /// The environment variable that names the folder.
 pub const VARIABLE: &str = "PLUMBTONE_READINGS";
 
+thread_local! {
+    static FOLDER: RefCell<Option<PathBuf>> = const { RefCell::new(None) };
+}
+
+/// Makes the instances that this thread makes from here on log into a folder, or as the environment says.
+pub fn log_into(folder: Option<&Path>) {
+    FOLDER.set(folder.map(Path::to_path_buf));
+}
+
 /// One reading. Fields are named as in the command line's JSON; numbers are printed with all their digits, and what
 /// could not be measured is null.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct Line {
     /// Number of the stream since the instance was made: a host's reset begins a new one.
     pub stream: u64,
@@ -99,9 +110,13 @@ pub(crate) struct ReadingsLog {
 
 impl ReadingsLog {
     /// The log of a new instance, if one is wanted and its file can be made.
-    pub(crate) fn from_environment() -> Option<Self> {
-        let folder = std::env::var_os(VARIABLE).filter(|folder| !folder.is_empty())?;
-        Self::create(Path::new(&folder)).ok()
+    pub(crate) fn open() -> Option<Self> {
+        let told = FOLDER.with_borrow(Clone::clone);
+        let folder = told.or_else(|| {
+            let set = std::env::var_os(VARIABLE).filter(|folder| !folder.is_empty())?;
+            Some(PathBuf::from(set))
+        })?;
+        Self::create(&folder).ok()
     }
 
     fn create(folder: &Path) -> io::Result<Self> {
