@@ -20,7 +20,7 @@ use crate::readout::Readout;
 use crate::session::Transport;
 use crate::state;
 use crate::status::Status;
-use crate::tap::{Format, Note, Tap};
+use crate::tap::{Format, Note, Patience, Tap};
 
 /// An instance of the plugin. It belongs to the audio thread while that runs.
 #[derive(Debug)]
@@ -38,10 +38,12 @@ impl Default for Plumbtone {
     fn default() -> Self {
         let (input, output) = triple_buffer(&Readout::default());
         let repaint = RepaintNotifier::new();
-        let delivery = Delivery::new(input, repaint.clone(), ReadingsLog::open());
+        let log = ReadingsLog::open();
+        let status = Arc::new(Status::new(log.is_some()));
+        let delivery = Delivery::new(input, repaint.clone(), log);
         Self {
             parameters: Arc::default(),
-            status: Arc::default(),
+            status,
             place: Place::take(Analysis::new(Analyzer::new, delivery)),
             tap: None,
             readout: Some(output),
@@ -51,13 +53,11 @@ impl Default for Plumbtone {
 }
 
 impl Plumbtone {
-    /// Ends the stream. Offline, all of it is measured before this returns: the host may take the instance away next.
+    /// Ends the stream. All of it is measured before this returns: the host may take the instance away next.
     fn end(&mut self) {
         if let Some(tap) = &mut self.tap {
             tap.end();
-            if tap.format().offline {
-                self.place.drain();
-            }
+            self.place.drain();
         }
     }
 }
@@ -68,15 +68,18 @@ impl Drop for Plumbtone {
     }
 }
 
-/// Channels of the sidechain.
-const SIDECHAIN: &[NonZeroU32] = &[new_nonzero_u32(2)];
+/// Channels of the sidechain of either layout.
+const STEREO: &[NonZeroU32] = &[new_nonzero_u32(2)];
+const MONO: &[NonZeroU32] = &[new_nonzero_u32(1)];
 
-/// A layout with equal main input and output and a stereo sidechain.
-const fn layout(channels: u32, name: &'static str) -> AudioIOLayout {
+/// A layout whose main input, main output and sidechain have equally many channels: the framework compares a VST3 host's
+/// main input with the sidechain too.
+const fn layout(sidechain: &'static [NonZeroU32], name: &'static str) -> AudioIOLayout {
+    let channels = Some(sidechain[0]);
     AudioIOLayout {
-        main_input_channels: NonZeroU32::new(channels),
-        main_output_channels: NonZeroU32::new(channels),
-        aux_input_ports: SIDECHAIN,
+        main_input_channels: channels,
+        main_output_channels: channels,
+        aux_input_ports: sidechain,
         aux_output_ports: &[],
         names: PortNames {
             layout: Some(name),
@@ -95,7 +98,7 @@ impl Plugin for Plumbtone {
     const EMAIL: &'static str = "";
     const VERSION: &'static str = env!("CARGO_PKG_VERSION");
 
-    const AUDIO_IO_LAYOUTS: &'static [AudioIOLayout] = &[layout(2, "Stereo"), layout(1, "Mono")];
+    const AUDIO_IO_LAYOUTS: &'static [AudioIOLayout] = &[layout(STEREO, "Stereo"), layout(MONO, "Mono")];
     const MIDI_INPUT: MidiConfig = MidiConfig::Basic;
     /// Parameter changes reach the tap at their sample, whatever the block size.
     const SAMPLE_ACCURATE_AUTOMATION: bool = true;
@@ -126,12 +129,12 @@ impl Plugin for Plumbtone {
         &mut self,
         _audio_io_layout: &AudioIOLayout,
         buffer_config: &BufferConfig,
-        _context: &mut impl ActivateContext<Self>,
+        context: &mut impl ActivateContext<Self>,
     ) -> bool {
         let format = Format {
             sample_rate_hz: f64::from(buffer_config.sample_rate),
             block_max: index(u64::from(buffer_config.max_buffer_size)),
-            offline: buffer_config.process_mode == ProcessMode::Offline,
+            patience: patience(context.plugin_api(), buffer_config.process_mode),
         };
         // Hosts activate again and again; only another format needs other rings.
         if self.tap.as_ref().is_none_or(|tap| tap.format() != format) {
@@ -211,6 +214,16 @@ impl Vst3Plugin for Plumbtone {
     const VST3_CLASS_ID: [u8; 16] = *b"PlumbtonePlugin1";
     const VST3_SUBCATEGORIES: &'static [Vst3SubCategory] =
         &[Vst3SubCategory::Fx, Vst3SubCategory::Analyzer, Vst3SubCategory::Tools];
+}
+
+/// Whether the tap may wait. The framework passes on a VST3 host's process mode one change late, so that it tells of the
+/// render before.
+fn patience(api: PluginApi, mode: ProcessMode) -> Patience {
+    match (api, mode) {
+        (PluginApi::Vst3, _) => Patience::WhenAhead,
+        (_, ProcessMode::Offline) => Patience::Always,
+        (_, ProcessMode::Realtime | ProcessMode::Buffered) => Patience::Never,
+    }
 }
 
 /// A key that went down or up.

@@ -5,6 +5,8 @@ use std::sync::atomic::{AtomicBool, AtomicU64, Ordering};
 /// Values of one instance.
 #[derive(Debug, Default)]
 pub(crate) struct Status {
+    /// Whether the readings are logged.
+    logged: bool,
     /// Whether an editor is open.
     watched: AtomicBool,
     /// Stream position after the last sample the tap saw.
@@ -16,8 +18,13 @@ pub(crate) struct Status {
 }
 
 impl Status {
+    pub(crate) fn new(logged: bool) -> Self {
+        Self { logged, ..Self::default() }
+    }
+
+    /// Whether anybody gets to see the readings.
     pub(crate) fn watched(&self) -> bool {
-        self.watched.load(Ordering::Relaxed)
+        self.logged || self.watched.load(Ordering::Relaxed)
     }
 
     pub(crate) fn watch(&self, watched: bool) {

@@ -1,10 +1,10 @@
 //! The audio thread's side: copies the chosen signal and marks into wait-free rings and does nothing else.
 //!
 //! Nothing here allocates, locks, logs, calls the system or can panic. While in real time a block for which the rings
-//! have no room is dropped whole and becomes a gap; in the host's offline mode the tap waits for room instead.
+//! have no room is dropped whole and becomes a gap; where the host renders offline the tap waits for room instead.
 
 use std::sync::Arc;
-use std::time::Duration;
+use std::time::{Duration, Instant};
 
 use rtrb::{Consumer, Producer, RingBuffer};
 
@@ -28,12 +28,26 @@ const MARKS_A_BLOCK: usize = 8;
 const WAIT: Duration = Duration::from_micros(250);
 const WAITS_MAX: u32 = 60_000;
 
+/// How far ahead of the clock a host is that renders offline: this many times, and by this many seconds.
+const AHEAD: (f64, f64) = (1.25, 0.1);
+
 /// What the tap is built for.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub(crate) struct Format {
     pub(crate) sample_rate_hz: f64,
     pub(crate) block_max: usize,
-    pub(crate) offline: bool,
+    pub(crate) patience: Patience,
+}
+
+/// Whether the tap may wait for room.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(crate) enum Patience {
+    /// Never: the host runs in real time.
+    Never,
+    /// Always: the host renders offline.
+    Always,
+    /// When the host is ahead of the clock, which it can only be offline. For hosts whose word is not to be had.
+    WhenAhead,
 }
 
 /// The worker's end of the rings.
@@ -74,6 +88,8 @@ pub(crate) struct Tap {
     overrun: u64,
     unwatched: u64,
     listening: bool,
+    /// When the stream's first block came.
+    begun: Option<Instant>,
 }
 
 impl Tap {
@@ -97,6 +113,7 @@ impl Tap {
             overrun: 0,
             unwatched: 0,
             listening: false,
+            begun: None,
         };
         (tap, Intake { samples: samples_out, marks: marks_out, format })
     }
@@ -114,6 +131,7 @@ impl Tap {
         self.overrun = 0;
         self.unwatched = 0;
         self.listening = false;
+        self.begun = None;
     }
 
     /// Ends the stream: the worker delivers what is still to come.
@@ -151,7 +169,7 @@ impl Tap {
 
     /// Whether anybody uses what would be measured.
     fn listens(&self, controls: &Controls) -> bool {
-        self.format.offline || controls.check || self.status.watched()
+        controls.check || self.status.watched()
     }
 
     fn pass_by(&mut self, length: u64) {
@@ -180,7 +198,7 @@ impl Tap {
 
     /// Offline, waits until there is room; false while in real time, or when the worker makes none for very long.
     fn wait_for_room(&self, length: usize) -> bool {
-        if !self.format.offline || length > self.samples.buffer().capacity() {
+        if !self.may_wait() || length > self.samples.buffer().capacity() {
             return false;
         }
         let mut slots = self.samples.slots();
@@ -196,6 +214,17 @@ impl Tap {
         false
     }
 
+    fn may_wait(&self) -> bool {
+        match self.format.patience {
+            Patience::Never => false,
+            Patience::Always => true,
+            Patience::WhenAhead => {
+                let elapsed_s = self.begun.map_or(0.0, |begun| begun.elapsed().as_secs_f64());
+                self.at as f64 / self.format.sample_rate_hz > AHEAD.0 * elapsed_s + AHEAD.1
+            }
+        }
+    }
+
     fn mark(&mut self, offset: usize, event: Event) {
         let mark = Mark { after: self.sent + position(offset), event };
         // Room was made sure of before; a mark that finds none would only be missing.
@@ -207,6 +236,7 @@ impl Tap {
         self.listening = true;
         if self.starting {
             self.starting = false;
+            self.begun = Some(Instant::now());
             self.mark(0, Event::Start);
         }
         for (samples, cause) in [(self.overrun, Cause::Overrun), (self.unwatched, Cause::Unwatched)]

@@ -40,15 +40,3 @@ fn a_live_instance_with_a_check_armed_measures_without_gap() {
     let last = centres.last().copied().unwrap_or_default();
     assert!(last + 24_000 > sound.len() as u64, "measured up to {last} of {}", sound.len());
 }
-
-#[test]
-fn an_instance_that_nobody_watches_measures_nothing() {
-    let sound = vec![tone(32, 220.0, 0.5, RATE); 2];
-    let log = Log::open();
-    let mut instance = instance();
-    let mut running = instance.start(Format::default()).expect("it starts");
-    running.play(&sound, &[BLOCK]).expect("it processes");
-    instance.stop(running);
-    let readings = log.readings().pop().expect("one log");
-    assert_eq!(readings, [], "no reading was asked for");
-}
