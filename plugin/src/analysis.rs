@@ -9,10 +9,12 @@ use crate::convert::{index, nearest, position};
 use crate::delivery::Delivery;
 use crate::marks::{Event, Mark};
 use crate::readout::Condition;
-use crate::tap::Intake;
+use crate::tap::{Intake, Patience};
 
-/// Most samples taken in one turn: short enough that instances take fair turns.
-const SLICE: usize = 2048;
+/// Most samples taken in one turn of an instance in real time, which may have fallen behind, and of one whose host waits:
+/// short enough that instances take fair turns.
+const SLICE: usize = 8192;
+const SLICE_WAITING: usize = 1024;
 /// Changed settings take effect at the next multiple of this stream time, in seconds, so that a parameter on the move
 /// does not rebuild the engine at each step; a fixed grid keeps that independent of blocks and speed.
 const SETTLE_S: f64 = 0.1;
@@ -82,7 +84,11 @@ impl Analysis {
     pub(crate) fn turn(&mut self) -> bool {
         let Some(intake) = &mut self.intake else { return false };
         // Samples first: all marks that belong before them are in their ring by then.
-        let count = intake.samples.slots().min(SLICE);
+        let most = match intake.format.patience {
+            Patience::Never => SLICE,
+            Patience::Always | Patience::WhenAhead => SLICE_WAITING,
+        };
+        let count = intake.samples.slots().min(most);
         let marks_before = self.marks.len();
         while let Ok(mark) = intake.marks.pop() {
             self.marks.push_back(mark);

@@ -68,18 +68,18 @@ impl Drop for Plumbtone {
     }
 }
 
-/// Channels of the sidechain of either layout.
-const STEREO: &[NonZeroU32] = &[new_nonzero_u32(2)];
-const MONO: &[NonZeroU32] = &[new_nonzero_u32(1)];
+/// Channels of the sidechain.
+const SIDECHAIN: &[NonZeroU32] = &[new_nonzero_u32(2)];
 
-/// A layout whose main input, main output and sidechain have equally many channels: the framework compares a VST3 host's
-/// main input with the sidechain too.
-const fn layout(sidechain: &'static [NonZeroU32], name: &'static str) -> AudioIOLayout {
-    let channels = Some(sidechain[0]);
+/// A layout with equal main input and output and a stereo sidechain. Only CLAP hosts get the mono one: asked for it by a
+/// VST3 host, the framework refuses (it compares the main input with the sidechain), and the host plays a mono track
+/// through the stereo one. With a mono sidechain it would accept, and then crash in hosts that switch the sidechain off.
+const fn layout(channels: u32, name: &'static str) -> AudioIOLayout {
+    let channels = NonZeroU32::new(channels);
     AudioIOLayout {
         main_input_channels: channels,
         main_output_channels: channels,
-        aux_input_ports: sidechain,
+        aux_input_ports: SIDECHAIN,
         aux_output_ports: &[],
         names: PortNames {
             layout: Some(name),
@@ -98,7 +98,7 @@ impl Plugin for Plumbtone {
     const EMAIL: &'static str = "";
     const VERSION: &'static str = env!("CARGO_PKG_VERSION");
 
-    const AUDIO_IO_LAYOUTS: &'static [AudioIOLayout] = &[layout(STEREO, "Stereo"), layout(MONO, "Mono")];
+    const AUDIO_IO_LAYOUTS: &'static [AudioIOLayout] = &[layout(2, "Stereo"), layout(1, "Mono")];
     const MIDI_INPUT: MidiConfig = MidiConfig::Basic;
     /// Parameter changes reach the tap at their sample, whatever the block size.
     const SAMPLE_ACCURATE_AUTOMATION: bool = true;

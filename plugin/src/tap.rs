@@ -124,6 +124,7 @@ impl Tap {
 
     /// Begins a new stream at position 0.
     pub(crate) fn start(&mut self) {
+        self.end();
         self.at = 0;
         self.starting = true;
         self.told_controls = None;

@@ -15,6 +15,9 @@ use clack_host::prelude::*;
 
 /// Id of the plugin under test.
 const PLUGIN: &CStr = c"org.plumbtone.plumbtone";
+/// Channels of the sidechain.
+const SIDECHAIN: usize = 2;
+
 /// Why the plugin could not be driven.
 pub type Failure = Box<dyn Error>;
 
@@ -237,10 +240,10 @@ impl Running {
         Self {
             processor,
             format,
-            inputs: AudioPorts::with_capacity(2 * format.channels, 2),
+            inputs: AudioPorts::with_capacity(format.channels + SIDECHAIN, 2),
             outputs: AudioPorts::with_capacity(format.channels, 1),
             input: buffers(format.channels),
-            sidechain: buffers(format.channels),
+            sidechain: buffers(SIDECHAIN),
             output: buffers(format.channels),
         }
     }
