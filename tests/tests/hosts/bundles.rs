@@ -14,6 +14,9 @@ use plumbtone_tests::take::Take;
 
 use crate::rig::tone;
 
+/// Readings before the end of a sound that may depend on what follows it: half a second.
+const LOOK_AHEAD_READINGS: usize = 50;
+
 fn target() -> PathBuf {
     std::env::var_os("CARGO_TARGET_DIR")
         .map_or_else(|| Path::new(env!("CARGO_MANIFEST_DIR")).join("../target"), PathBuf::from)
@@ -72,11 +75,16 @@ fn vst3_hosts_render_what_the_engine_measures() {
         let streams: Vec<_> = logs
             .iter()
             .flat_map(|log| log.chunk_by(|a, b| a.stream == b.stream))
-            .filter(|stream| stream.len() == engine.readings.len())
+            .filter(|stream| stream.len() >= engine.readings.len())
             .collect();
         assert!(streams.len() >= 3, "{host}: {} whole renders", streams.len());
         for (number, stream) in streams.iter().enumerate() {
-            for (logged, reading) in stream.iter().zip(&engine.readings) {
+            // dawdreamer renders whole blocks, so silence follows the sound's last samples.
+            let same = match host {
+                "dawdreamer" => engine.readings.len() - LOOK_AHEAD_READINGS,
+                _ => engine.readings.len(),
+            };
+            for (logged, reading) in stream.iter().zip(&engine.readings).take(same) {
                 assert!(logged.is(reading), "{host}, render {number}, at {}", logged.centre);
             }
         }
