@@ -1,20 +1,23 @@
 //! Processes blocks through the plugin itself, without a format's wrapper, for a profiler to count instructions.
 //!
-//! `block process|copy BLOCKS LENGTH`: stereo; `copy` copies the same blocks and does nothing else.
+//! `block process|copy BLOCKS LENGTH FOLDER`: stereo; `copy` copies the same blocks and does nothing else. The plugin logs
+//! its readings into the folder, for it measures nothing that nobody looks at.
 #![expect(clippy::print_stdout, reason = "what was done keeps it from being optimised away")]
 
 use std::hint::black_box;
+use std::path::Path;
 
 use nice_plug::context::PluginApi;
 use nice_plug::prelude::*;
 use plumbtone_plugin::Plumbtone;
+use plumbtone_plugin::readings_log::log_into;
 
 const RATE: f32 = 48_000.0;
 
 fn main() -> Result<(), Box<dyn std::error::Error>> {
     let arguments: Vec<String> = std::env::args().skip(1).collect();
-    let [what, blocks, length] = arguments.as_slice() else {
-        return Err("block process|copy BLOCKS LENGTH".into());
+    let [what, blocks, length, folder] = arguments.as_slice() else {
+        return Err("block process|copy BLOCKS LENGTH FOLDER".into());
     };
     let (blocks, length): (usize, usize) = (blocks.parse()?, length.parse()?);
     let mut left: Vec<f32> = (0..length).map(|n| (n as f32 * 0.05).sin()).collect();
@@ -27,6 +30,7 @@ fn main() -> Result<(), Box<dyn std::error::Error>> {
         println!("{}", black_box(copy)[1][length - 1]);
         return Ok(());
     }
+    log_into(Some(Path::new(folder)));
     let mut plugin = Plumbtone::default();
     let config = BufferConfig {
         sample_rate: RATE,

@@ -202,3 +202,90 @@ fn turn(analysis: &mut Analysis) -> bool {
 fn lock<T>(mutex: &Mutex<T>) -> MutexGuard<'_, T> {
     mutex.lock().unwrap_or_else(PoisonError::into_inner)
 }
+
+#[cfg(test)]
+mod tests {
+    use std::time::Instant;
+
+    use nice_plug_egui::RepaintNotifier;
+    use plumbtone_analysis::{Analyzer, Settings, SettingsError};
+    use triple_buffer::{Output, triple_buffer};
+
+    use super::*;
+    use crate::analysis::Build;
+    use crate::controls::Controls;
+    use crate::delivery::Delivery;
+    use crate::readout::{Condition, Readout};
+    use crate::session::Transport;
+    use crate::status::Status;
+    use crate::tap::{Format, Patience, Tap};
+
+    const FORMAT: Format =
+        Format { sample_rate_hz: 48_000.0, block_max: 512, patience: Patience::Always };
+
+    fn place(build: Build) -> (Place, Tap, Output<Readout>) {
+        let (input, output) = triple_buffer(&Readout::default());
+        let delivery = Delivery::new(input, RepaintNotifier::new(), None);
+        let place = Place::take(Analysis::new(build, delivery));
+        let status = Arc::new(Status::default());
+        status.watch(true);
+        let (tap, intake) = Tap::new(FORMAT, status);
+        place.install(intake);
+        (place, tap, output)
+    }
+
+    fn play(tap: &mut Tap, blocks: usize) {
+        for number in 0..blocks {
+            let mut block: Vec<f32> =
+                (0..512).map(|n| ((number * 512 + n) as f32 * 0.03).sin()).collect();
+            let channels = [&mut block[..]];
+            tap.block(&channels, &Controls::default(), &Transport::default(), std::iter::empty());
+        }
+        tap.end();
+    }
+
+    #[expect(clippy::panic, reason = "what a defect of the engine would do")]
+    fn broken(_: &Settings) -> Result<Analyzer, SettingsError> {
+        panic!("the engine of this test is broken")
+    }
+
+    #[test]
+    fn a_panic_ends_one_analysis_and_no_other() {
+        let (sick, mut sick_tap, mut sick_readout) = place(broken);
+        let (well, mut well_tap, mut well_readout) = place(Analyzer::new);
+        play(&mut sick_tap, 100);
+        play(&mut well_tap, 100);
+        sick.drain();
+        well.drain();
+        assert_eq!(sick_readout.read().condition, Condition::Failed, "the broken one says so");
+        assert_eq!(well_readout.read().condition, Condition::Ended, "the other went on");
+        assert!(well_readout.read().measured, "and measured");
+        assert!(!sick_readout.read().measured, "the broken one did not");
+    }
+
+    #[test]
+    fn a_sample_rate_out_of_range_is_said() {
+        let (place, _, mut readout) = place(Analyzer::new);
+        let status = Arc::new(Status::default());
+        status.watch(true);
+        let (mut tap, intake) = Tap::new(Format { sample_rate_hz: 4_000.0, ..FORMAT }, status);
+        place.install(intake);
+        play(&mut tap, 3);
+        place.drain();
+        let Readout { condition, measured, .. } = readout.read();
+        assert!(!measured, "{condition:?}");
+    }
+
+    #[test]
+    fn the_workers_find_work_by_themselves() {
+        let (_place, mut tap, mut readout) = place(Analyzer::new);
+        play(&mut tap, 100);
+        // Long enough for any machine; the condition ends the wait.
+        let start = Instant::now();
+        while readout.read().condition != Condition::Ended {
+            assert!(start.elapsed() < Duration::from_secs(60), "{:?}", readout.read().condition);
+            thread::sleep(REST);
+        }
+        assert!(readout.read().measured, "readings came");
+    }
+}

@@ -307,3 +307,117 @@ fn mix(mixed: &mut [f32], left: &[f32], right: &[f32], f: impl Fn(f32, f32) -> f
         *out = f(l, r);
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    const FORMAT: Format =
+        Format { sample_rate_hz: 48_000.0, block_max: 512, patience: Patience::Never };
+
+    fn watched() -> Arc<Status> {
+        let status = Arc::new(Status::default());
+        status.watch(true);
+        status
+    }
+
+    fn block(tap: &mut Tap, controls: &Controls, value: f32, length: usize) {
+        let (mut left, mut right) = (vec![value; length], vec![-0.5 * value; length]);
+        let channels = [&mut left[..], &mut right[..]];
+        tap.block(&channels, controls, &Transport::default(), std::iter::empty());
+    }
+
+    fn events(intake: &mut Intake) -> Vec<Mark> {
+        std::iter::from_fn(|| intake.marks.pop().ok()).collect()
+    }
+
+    #[test]
+    fn every_channel_is_the_one_it_is_called() {
+        for (channel, expected) in [
+            (Channel::Mid, 0.25),
+            (Channel::Left, 1.0),
+            (Channel::Right, -0.5),
+            (Channel::Side, 0.75),
+        ] {
+            let (mut tap, mut intake) = Tap::new(FORMAT, watched());
+            let controls = Controls { channel, ..Controls::default() };
+            block(&mut tap, &controls, 1.0, 512);
+            let mut samples = [0.0; 512];
+            assert!(intake.samples.pop_entire_slice(&mut samples).is_ok(), "{channel:?}");
+            let same = samples.iter().all(|x: &f32| x.to_bits() == f32::to_bits(expected));
+            assert!(same, "{channel:?}: {} instead of {expected}", samples[0]);
+        }
+    }
+
+    #[test]
+    fn nothing_is_taken_while_nobody_listens_and_that_is_marked() {
+        let status = Arc::new(Status::default());
+        let (mut tap, mut intake) = Tap::new(FORMAT, Arc::clone(&status));
+        let controls = Controls::default();
+        block(&mut tap, &controls, 1.0, 300);
+        assert_eq!(intake.samples.slots(), 0, "samples while unwatched");
+        assert_eq!(events(&mut intake), [], "marks while unwatched");
+        status.watch(true);
+        block(&mut tap, &controls, 1.0, 100);
+        let missed = Event::Missed { samples: 300, cause: Cause::Unwatched };
+        let marks = events(&mut intake);
+        assert!(marks.contains(&Mark { after: 0, event: missed }), "{marks:?}");
+        assert_eq!(intake.samples.slots(), 100, "samples since");
+        assert_eq!(status.position(), 400, "all samples count");
+    }
+
+    #[test]
+    fn an_armed_check_listens_without_an_editor() {
+        let (mut tap, intake) = Tap::new(FORMAT, Arc::default());
+        let controls = Controls { check: true, ..Controls::default() };
+        block(&mut tap, &controls, 1.0, 100);
+        assert_eq!(intake.samples.slots(), 100, "samples with a check armed");
+    }
+
+    #[test]
+    fn a_full_ring_drops_whole_blocks_and_marks_the_gap() {
+        let status = watched();
+        let (mut tap, mut intake) = Tap::new(FORMAT, Arc::clone(&status));
+        let controls = Controls::default();
+        let capacity = intake.samples.buffer().capacity();
+        let fitting = capacity / 512;
+        for _ in 0..fitting + 3 {
+            block(&mut tap, &controls, 1.0, 512);
+        }
+        assert_eq!(intake.samples.slots(), fitting * 512, "whole blocks");
+        assert_eq!(status.lost_samples(), 3 * 512, "counted");
+        events(&mut intake);
+        let mut room = vec![0.0; 512];
+        assert!(intake.samples.pop_entire_slice(&mut room).is_ok(), "room for one");
+        block(&mut tap, &controls, 1.0, 512);
+        let gap = Event::Missed { samples: 3 * 512, cause: Cause::Overrun };
+        let after = position(fitting * 512);
+        assert_eq!(events(&mut intake), [Mark { after, event: gap }], "one mark");
+    }
+
+    #[test]
+    fn a_host_ahead_of_the_clock_is_waited_for_and_one_in_time_is_not() {
+        let format = Format { patience: Patience::WhenAhead, ..FORMAT };
+        let (mut tap, _intake) = Tap::new(format, watched());
+        tap.begun = Some(Instant::now());
+        assert!(!tap.may_wait(), "nothing was played yet");
+        tap.at = 480_000;
+        assert!(tap.may_wait(), "ten seconds of sound in no time");
+    }
+
+    #[test]
+    fn a_reset_ends_the_stream_before_the_next_begins() {
+        let (mut tap, mut intake) = Tap::new(FORMAT, watched());
+        let controls = Controls::default();
+        block(&mut tap, &controls, 1.0, 64);
+        tap.start();
+        block(&mut tap, &controls, 1.0, 64);
+        let order: Vec<Mark> = events(&mut intake)
+            .into_iter()
+            .filter(|mark| matches!(mark.event, Event::Start | Event::End))
+            .collect();
+        let expected = [(0, Event::Start), (64, Event::End), (64, Event::Start)]
+            .map(|(after, event)| Mark { after, event });
+        assert_eq!(order, expected, "start, end, start");
+    }
+}

@@ -181,3 +181,97 @@ fn gaps(ui: &mut Ui, shown: &Shown<'_>) {
 fn level(dbfs: f64) -> String {
     if dbfs.is_finite() { format!("{dbfs:.1} dBFS") } else { "digital silence".to_owned() }
 }
+
+#[cfg(test)]
+mod tests {
+    use egui_kittest::Harness;
+    use egui_kittest::kittest::Queryable as _;
+    use plumbtone_analysis::{Pitch, State, Stretch};
+
+    use super::*;
+    use crate::readout::Gaps;
+    use crate::session::{BarBeat, SessionPosition};
+
+    fn measured() -> Readout {
+        let pitch = Pitch { f0_hz: 220.5, f0_sd_cents: 0.02, confidence: 0.97 };
+        let partial = Partial {
+            number: 7,
+            frequency_hz: 1544.25,
+            frequency_sd_hz: 0.01,
+            cents_from_harmonic: 0.79,
+            cents_sd: 0.03,
+            level_dbfs: -31.5,
+            level_sd_db: 0.1,
+            phase_rad: 0.0,
+            snr_db: 50.0,
+        };
+        Readout {
+            condition: Condition::Measuring,
+            sample_rate_hz: 48_000.0,
+            stream: 1,
+            measured: true,
+            reading: Reading {
+                centre: 48_000,
+                state: State::Steady,
+                pitch: Some(pitch),
+                level_dbfs: -12.0,
+                stretch: Some(Stretch { b: 2e-4, b_sd: 1e-6 }),
+                partials: vec![partial],
+                strays: Vec::new(),
+            },
+            session: SessionPosition {
+                playing: true,
+                samples: Some(96_000),
+                seconds: Some(2.0),
+                bar_beat: Some(BarBeat { bar: 2, beat: 1.5 }),
+            },
+            ..Readout::default()
+        }
+    }
+
+    fn shown(readout: &Readout) -> Harness<'_> {
+        Harness::new_ui(move |ui| {
+            let shown =
+                Shown { readout, position: 52_800, lost_samples: 0, lost_notes: 0, unsound: &[] };
+            show(ui, &shown);
+        })
+    }
+
+    #[test]
+    fn a_pitch_is_named_with_cents_deviation_place_and_age() {
+        let readout = measured();
+        let harness = shown(&readout);
+        for text in [
+            "A3  +3.93 ct",
+            "220.5000 Hz \u{b1} 0.02 ct",
+            "bar 2 | beat 1.50",
+            "100 ms old",
+            "2.000 s, sample 96000",
+            "1544.250",
+        ] {
+            assert!(harness.query_by_label_contains(text).is_some(), "{text} is shown");
+        }
+    }
+
+    #[test]
+    fn without_a_sure_pitch_none_is_named() {
+        let mut readout = measured();
+        for pitch in [None, readout.reading.pitch.map(|pitch| Pitch { confidence: 0.3, ..pitch })] {
+            readout.reading.pitch = pitch;
+            let harness = shown(&readout);
+            assert!(harness.query_by_label("No single pitch").is_some(), "{pitch:?}");
+            assert!(harness.query_by_label_contains("A3").is_none(), "{pitch:?}");
+        }
+    }
+
+    #[test]
+    fn gaps_and_failures_are_said() {
+        let mut readout = measured();
+        readout.gaps = Gaps { overrun: 1024, ..Gaps::default() };
+        readout.condition = Condition::Failed;
+        let harness = shown(&readout);
+        for text in ["1024 samples", "failed by a defect"] {
+            assert!(harness.query_by_label_contains(text).is_some(), "{text} is shown");
+        }
+    }
+}
