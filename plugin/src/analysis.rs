@@ -144,15 +144,9 @@ impl Analysis {
                 }
                 self.position += samples;
             }
-            Event::Pause => {
-                self.finish();
-                self.delivery.stand(Condition::Paused);
-            }
+            Event::Pause => self.rest(Condition::Paused),
             Event::Note { key, down } => self.delivery.key(key, down),
-            Event::End => {
-                self.finish();
-                self.delivery.stand(Condition::Ended);
-            }
+            Event::End => self.rest(Condition::Ended),
         }
     }
 
@@ -223,6 +217,14 @@ impl Analysis {
                 Engine::Refused
             }
         };
+    }
+
+    /// Delivers what is still to come and stands still; an engine that does not work goes on saying so.
+    fn rest(&mut self, condition: Condition) {
+        self.finish();
+        if matches!(self.engine, Engine::Absent | Engine::Running(_)) {
+            self.delivery.stand(condition);
+        }
     }
 
     fn finish(&mut self) {

@@ -86,6 +86,9 @@ fn headline(ui: &mut Ui, readout: &Readout) {
 fn place(ui: &mut Ui, shown: &Shown<'_>) {
     let Readout { reading, session, sample_rate_hz, played, .. } = shown.readout;
     let mut parts = Vec::new();
+    if session.samples.is_some() && !session.playing {
+        parts.push("transport stopped".to_owned());
+    }
     if let Some(at) = session.bar_beat {
         parts.push(format!("bar {} | beat {:.2}", at.bar, at.beat));
     }
