@@ -244,7 +244,6 @@ mod tests {
         tap.end();
     }
 
-    #[expect(clippy::panic, reason = "what a defect of the engine would do")]
     fn broken(_: &Settings) -> Result<Analyzer, SettingsError> {
         panic!("the engine of this test is broken")
     }

@@ -5,6 +5,7 @@
 mod bench;
 mod bundle;
 mod command;
+mod count;
 mod demo;
 mod demo_host;
 mod sound_bank;
@@ -19,6 +20,7 @@ cargo xtask test [ARGUMENT...]   fetch what the tests need, then run them all; a
 cargo xtask fetch                only fetch the sound bank of the recorded instruments
 cargo xtask bundle [ARGUMENT...] build the VST3 and CLAP bundles under target/bundled; arguments go to cargo build
 cargo xtask bench                print how fast the engine is, as ratios measured in one run
+cargo xtask count                count the instructions of the plugin's own process(), beside a bare copy (needs valgrind)
 cargo xtask demo                 synthesise the demo sound, measure it, play it through the plugin, say where the pictures are
 cargo xtask tidy                 check the rules of the source tree that no lint knows";
 
@@ -30,6 +32,7 @@ fn main() -> Result<()> {
         "fetch" => fetch(),
         "bench" => bench::run(),
         "bundle" => bundle::run(rest),
+        "count" => count::run(),
         "demo" => demo::run().and_then(|()| demo_host::run()),
         "tidy" => tidy::run(),
         _ => bail!("no command {command}\n{USAGE}"),
