@@ -1,50 +1,48 @@
 //! The streaming engine: samples in, readings and notes out.
 
-use crate::convert::{nearest_index, number};
-use crate::fundamental::Candidate;
+use crate::average::Averager;
+use crate::convert::{index, nearest_index};
+use crate::fundamental::{CANDIDATES, Candidate};
 use crate::history::History;
 use crate::instant::Evidence;
-use crate::measure::assemble::Assembler;
 use crate::measure::note::STRETCH_S;
 use crate::note::Note;
-use crate::onset::{ChangePoint, Direction};
-use crate::reading::{Gap, GapReason, Partial, Pitch, Reading, State, Stretch};
-use crate::refine::{Refiner, Tone};
-use crate::segment::{Event, Segmenter, Step};
+use crate::notes::Notes;
+use crate::reading::{Gap, GapReason, Pitch, Reading, State, Stretch};
+use crate::refine::Refiner;
+use crate::segment::Step;
 use crate::settings::{Settings, SettingsError};
-use crate::stiff::{self, CENTS_PER_NEPER, Point};
+use crate::settle::{self, Instant, NEIGHBOURS};
+use crate::stiff::{self, Point};
+use crate::strays::peaks::STRAYS_MAX;
 use crate::track::{LOOK_AHEAD, Tracker};
 
 /// Level below which nothing is searched, in dBFS: under the noise of dithered 16-bit silence.
 const SILENCE_DBFS: f64 = -92.0;
-/// Instants on either side that smooth a reading.
-const NEIGHBOURS: usize = 4;
-/// Instants kept: those being decided, those being smoothed, and the newest.
+/// Instants kept: those being decided, and those being settled with their neighbours.
 const KEPT: usize = LOOK_AHEAD + 2 * NEIGHBOURS + 2;
+/// Score of a candidate in the newest samples from which it is shown before anything is decided.
+const LIVE_SCORE: f64 = 0.45;
 
 /// Where an [`Analyzer`] delivers. What is lent is only lent: copy what is to stay.
 pub trait Sink {
+    /// Whether provisional readings are wanted; asked once per reading. They cost about as much as the readings.
+    fn wants_live(&self) -> bool {
+        false
+    }
+
+    /// A provisional reading of the newest samples, for the eye: quicker than a [`reading`](Self::reading) (whose neighbours
+    /// must be known), and not as sure. Its partials are not averaged.
+    fn live(&mut self, _reading: &Reading) {}
+
     /// The next reading of the grid; readings come in order, later than their centre by a fixed look-ahead.
     fn reading(&mut self, _reading: &Reading) {}
+
     /// A note that has ended, after the readings within it.
     fn note(&mut self, _note: &Note) {}
+
     /// A gap that has ended.
     fn gap(&mut self, _gap: &Gap) {}
-}
-
-/// What is known of one instant.
-#[derive(Debug)]
-struct Instant {
-    centre: u64,
-    level_dbfs: f64,
-    /// Fundamental and inharmonicity that the tones were refined for.
-    model: (f64, f64),
-    frame_s: f64,
-    tones: Vec<Tone>,
-    decided: Option<Candidate>,
-    f0: f64,
-    f0_sd_cents: f64,
-    b: Option<(f64, f64)>,
 }
 
 /// The engine.
@@ -58,18 +56,16 @@ pub struct Analyzer {
     tracker: Tracker,
     instants: Vec<Instant>,
     points: Vec<Point>,
+    averager: Averager,
+    notes: Notes,
     /// Instants analysed, decided and delivered since the stream began.
     analysed: usize,
     decided: usize,
     delivered: usize,
     first_centre: u64,
     reading: Reading,
+    live: Vec<Candidate>,
     missing: Option<Gap>,
-    segmenter: Segmenter,
-    change: ChangePoint,
-    assembler: Assembler,
-    /// Position of the note's onset, while one sounds.
-    note_start: Option<u64>,
 }
 
 impl Analyzer {
@@ -82,40 +78,30 @@ impl Analyzer {
         let evidence = Evidence::new(settings);
         let hop = Evidence::hop(settings);
         let partials = settings.partials;
-        let instant = || Instant {
-            centre: 0,
-            level_dbfs: f64::NEG_INFINITY,
-            model: (0.0, 0.0),
-            frame_s: 0.0,
-            tones: Vec::with_capacity(partials),
-            decided: None,
-            f0: 0.0,
-            f0_sd_cents: 0.0,
-            b: None,
-        };
+        let hop_s = hop as f64 / settings.sample_rate_hz;
+        let stretch = nearest_index(STRETCH_S * settings.sample_rate_hz);
         Ok(Self {
             hop,
-            history: History::new(
-                4 * evidence.reach()
-                    + (KEPT + 20) * hop
-                    + crate::convert::nearest_index(STRETCH_S * settings.sample_rate_hz),
-            ),
-            segmenter: Segmenter::default(),
-            change: ChangePoint::new(settings.sample_rate_hz),
-            assembler: Assembler::new(settings.sample_rate_hz, partials, hop),
-            note_start: None,
+            history: History::new(4 * evidence.reach() + (KEPT + 20) * hop + stretch),
+            evidence,
             refiner: Refiner::new(partials),
             tracker: Tracker::new(),
-            instants: (0..KEPT).map(|_| instant()).collect(),
+            instants: (0..KEPT).map(|_| Instant::new(partials)).collect(),
             points: Vec::with_capacity(partials),
+            averager: Averager::new(partials, hop_s, settings.integration_s),
+            notes: Notes::new(settings, hop),
             analysed: 0,
             decided: 0,
             delivered: 0,
             first_centre: 0,
-            reading: Reading { partials: Vec::with_capacity(partials), ..Reading::default() },
+            reading: Reading {
+                partials: Vec::with_capacity(partials),
+                strays: Vec::with_capacity(STRAYS_MAX),
+                ..Reading::default()
+            },
+            live: Vec::with_capacity(CANDIDATES + 1),
             missing: None,
             settings: settings.clone(),
-            evidence,
         })
     }
 
@@ -161,8 +147,8 @@ impl Analyzer {
         self.history.restart(position);
         self.evidence.restart();
         self.tracker.restart();
-        self.segmenter.restart();
-        self.note_start = None;
+        self.averager.restart();
+        self.notes.restart();
         self.analysed = 0;
         self.decided = 0;
         self.delivered = 0;
@@ -177,9 +163,9 @@ impl Analyzer {
             gap.end += samples;
             return;
         }
+        let start = self.missing.map_or(self.history.end(), |gap| gap.end);
         self.close_gap(sink);
         self.flush(sink);
-        let start = self.history.end();
         self.missing = Some(Gap { start, end: start + samples, reason });
     }
 
@@ -198,44 +184,44 @@ impl Analyzer {
         let reach = self.evidence.reach() as u64;
         while !samples.is_empty() {
             let due = self.centre(self.analysed) + reach;
-            let room = crate::convert::index(due - self.history.end());
+            let room = index(due - self.history.end());
             let (now, later) = samples.split_at(samples.len().min(room));
             self.history.push(now);
             samples = later;
             if self.history.end() == due {
-                self.analyse();
-                if self.analysed > LOOK_AHEAD {
-                    self.decide(LOOK_AHEAD);
-                    if self.decided > NEIGHBOURS {
-                        self.deliver(sink);
-                    }
+                self.advance(sink);
+                if sink.wants_live() {
+                    self.look_at_newest(sink);
                 }
             }
         }
     }
 
+    /// Analyses the next instant and passes on what it completes.
+    fn advance(&mut self, sink: &mut impl Sink) {
+        self.analyse();
+        if self.analysed > LOOK_AHEAD {
+            self.decide(LOOK_AHEAD);
+        }
+        if self.decided > self.delivered + NEIGHBOURS {
+            self.deliver(sink);
+        }
+    }
+
     fn flush(&mut self, sink: &mut impl Sink) {
         while self.centre(self.analysed) < self.history.end() {
-            self.analyse();
-            if self.analysed > LOOK_AHEAD {
-                self.decide(LOOK_AHEAD);
-                if self.decided > NEIGHBOURS {
-                    self.deliver(sink);
-                }
-            }
+            self.advance(sink);
         }
         while self.decided < self.analysed {
             self.decide(self.analysed - 1 - self.decided);
-            if self.decided > NEIGHBOURS {
+            if self.decided > self.delivered + NEIGHBOURS {
                 self.deliver(sink);
             }
         }
         while self.delivered < self.decided {
             self.deliver(sink);
         }
-        if let Some(event) = self.segmenter.finish() {
-            self.note_event(event, sink);
-        }
+        self.notes.finish(&self.history, sink);
     }
 
     fn centre(&self, index: usize) -> u64 {
@@ -256,36 +242,61 @@ impl Analyzer {
         instant.level_dbfs = level_dbfs;
         instant.tones.clear();
         instant.model = (0.0, 0.0);
+        instant.second = 0.0;
+        instant.strays.clear();
         if let (Some(best), _) = self.tracker.decide(0) {
-            instant.model = (best.hz, best.b);
-            instant.frame_s =
-                self.evidence.refine(instant.model, self.settings.partials, &mut self.refiner);
-            instant.tones.extend_from_slice(&self.refiner.tones);
+            instant.second = self.evidence.second_voice(&best);
+            self.evidence.strays((best.hz, best.b), &mut instant.strays);
+            Self::refine(
+                &mut self.evidence,
+                &self.history,
+                &mut self.refiner,
+                &self.settings,
+                instant,
+                &best,
+            );
         }
         self.analysed += 1;
     }
 
+    fn refine(
+        evidence: &mut Evidence,
+        history: &History,
+        refiner: &mut Refiner,
+        settings: &Settings,
+        instant: &mut Instant,
+        candidate: &Candidate,
+    ) {
+        instant.model = (candidate.hz, candidate.b);
+        instant.frame_s =
+            evidence.refine(history, instant.centre, instant.model, settings.partials, refiner);
+        instant.tones.clear();
+        instant.tones.extend_from_slice(&refiner.tones);
+    }
+
     /// Decides the pitch of the next instant, `age` instants old.
     fn decide(&mut self, age: usize) {
-        let (chosen, _) = self.tracker.decide(age);
+        let (chosen, candidates) = self.tracker.decide(age);
         let instant = &mut self.instants[self.decided % KEPT];
         instant.decided = chosen;
         if let Some(chosen) = chosen {
+            let others = candidates.iter().filter(|c| c.hz.total_cmp(&chosen.hz).is_ne());
+            let next = others.map(|c| c.cost).fold(f64::INFINITY, f64::min);
+            instant.advantage = next - chosen.cost;
             if chosen.hz.total_cmp(&instant.model.0).is_ne() {
-                self.evidence.revisit(&self.history, instant.centre, chosen.hz);
-                instant.model = (chosen.hz, chosen.b);
-                instant.frame_s =
-                    self.evidence.refine(instant.model, self.settings.partials, &mut self.refiner);
-                instant.tones.clear();
-                instant.tones.extend_from_slice(&self.refiner.tones);
+                instant.strays.clear();
+                Self::refine(
+                    &mut self.evidence,
+                    &self.history,
+                    &mut self.refiner,
+                    &self.settings,
+                    instant,
+                    &chosen,
+                );
             }
             self.points.clear();
-            self.points.extend(instant.tones.iter().map(|t| Point {
-                n: t.n as f64,
-                hz: t.hz,
-                sd_hz: t.sd_hz,
-            }));
-            match stiff::fit(&self.points, None) {
+            self.points.extend(instant.tones.iter().map(Point::from));
+            match stiff::fit(&self.points) {
                 Some(fit) => {
                     instant.f0 = fit.f0;
                     instant.f0_sd_cents = fit.f0_sd_cents;
@@ -297,90 +308,74 @@ impl Analyzer {
         self.decided += 1;
     }
 
-    /// Delivers the next reading.
+    /// Delivers the next reading and takes it into the notes.
     fn deliver(&mut self, sink: &mut impl Sink) {
+        let hop_s = self.hop as f64 / self.settings.sample_rate_hz;
         let instant = &self.instants[self.delivered % KEPT];
+        let around = |k: isize| {
+            let at = self.delivered.checked_add_signed(k).filter(|&at| at < self.decided)?;
+            Some(&self.instants[at % KEPT])
+        };
+        let settled = settle::settle(around, hop_s, SILENCE_DBFS);
         let reading = &mut self.reading;
         reading.centre = instant.centre;
         reading.level_dbfs = instant.level_dbfs;
+        reading.state = settled.state;
+        reading.partials.clear();
+        reading.strays.clear();
+        reading.stretch = None;
+        reading.pitch = settled.pitch.map(|(f0_hz, f0_sd_cents, confidence)| Pitch {
+            f0_hz,
+            f0_sd_cents,
+            confidence,
+        });
+        if let Some(pitch) = reading.pitch {
+            reading.strays.extend_from_slice(&instant.strays);
+            reading.stretch = instant.b.map(|(b, b_sd)| Stretch { b, b_sd });
+            let f0 = (pitch.f0_hz, pitch.f0_sd_cents);
+            self.averager.run(f0, instant.frame_s, &instant.tones, &mut reading.partials);
+        }
+        sink.reading(reading);
+        let step = Step {
+            centre: instant.centre,
+            f0: reading.pitch.map(|p| p.f0_hz),
+            level_dbfs: instant.level_dbfs,
+        };
+        self.notes.step(&self.history, step, instant.f0_sd_cents, &instant.tones, sink);
+        self.delivered += 1;
+    }
+
+    /// Delivers a provisional reading of the newest samples.
+    fn look_at_newest(&mut self, sink: &mut impl Sink) {
+        let level_dbfs = self.evidence.newest(&self.history, &mut self.live);
+        let reading = &mut self.reading;
+        reading.centre = self.history.end();
+        reading.level_dbfs = level_dbfs;
         reading.partials.clear();
         reading.strays.clear();
         reading.pitch = None;
         reading.stretch = None;
-        reading.state =
-            if instant.level_dbfs > SILENCE_DBFS { State::Unpitched } else { State::Silent };
-        if let Some(chosen) = instant.decided {
-            reading.state = State::Steady;
-            reading.pitch = Some(Pitch {
-                f0_hz: instant.f0,
-                f0_sd_cents: instant.f0_sd_cents,
-                confidence: chosen.score,
-            });
-            reading.stretch = instant.b.map(|(b, b_sd)| Stretch { b, b_sd });
-            for tone in &instant.tones {
-                let harmonic = tone.n as f64 * instant.f0;
-                reading.partials.push(Partial {
-                    number: number(tone.n),
-                    frequency_hz: tone.hz,
-                    frequency_sd_hz: tone.sd_hz,
-                    cents_from_harmonic: CENTS_PER_NEPER * (tone.hz / harmonic).ln(),
-                    cents_sd: CENTS_PER_NEPER * tone.sd_hz / tone.hz,
-                    level_dbfs: 10.0 * tone.amplitude.norm_sqr().log10(),
-                    level_sd_db: 8.686 * (0.5 / tone.snr).sqrt(),
-                    phase_rad: tone.amplitude.arg(),
-                    snr_db: 10.0 * tone.snr.log10(),
-                });
+        let loud = level_dbfs > SILENCE_DBFS;
+        reading.state = if loud { State::Unpitched } else { State::Silent };
+        let best = self.live.first().filter(|c| loud && c.score > LIVE_SCORE);
+        if let Some(best) = best {
+            let model = (best.hz, best.b);
+            reading.centre =
+                self.evidence.refine_newest(model, self.settings.partials, &mut self.refiner);
+            self.points.clear();
+            self.points.extend(self.refiner.tones.iter().map(Point::from));
+            if let Some(fit) = stiff::fit(&self.points) {
+                reading.state = State::Steady;
+                reading.stretch =
+                    fit.b_sd.is_finite().then_some(Stretch { b: fit.b, b_sd: fit.b_sd });
+                let confidence = settle::provisional_confidence(best);
+                reading.pitch =
+                    Some(Pitch { f0_hz: fit.f0, f0_sd_cents: fit.f0_sd_cents, confidence });
+                reading
+                    .partials
+                    .extend(self.refiner.tones.iter().map(|t| t.partial(fit.f0, fit.f0_sd_cents)));
             }
         }
-        sink.reading(reading);
-        self.follow_note(sink);
-        self.delivered += 1;
-    }
-
-    /// Takes the instant being delivered into the notes.
-    fn follow_note(&mut self, sink: &mut impl Sink) {
-        let instant = &self.instants[self.delivered % KEPT];
-        let step = Step {
-            centre: instant.centre,
-            f0: self.reading.pitch.map(|p| p.f0_hz),
-            level_dbfs: instant.level_dbfs,
-        };
-        let (ended, begun) = self.segmenter.step(step);
-        for event in [ended, begun].into_iter().flatten() {
-            self.note_event(event, sink);
-        }
-        if self.note_start.is_some() && self.segmenter.holds(step.centre) {
-            let instant = &self.instants[self.delivered % KEPT];
-            let pitch = (instant.f0, instant.f0_sd_cents);
-            self.assembler.add(&self.history, instant.centre, pitch, &instant.tones);
-        }
-    }
-
-    fn note_event(&mut self, event: Event, sink: &mut impl Sink) {
-        let hop = self.hop as u64;
-        let f0 = self.instants[self.delivered % KEPT].f0.max(self.settings.lowest_hz);
-        let period = nearest_index(self.settings.sample_rate_hz / f0);
-        match event {
-            Event::Begin { first } => {
-                let span = (first.saturating_sub(5 * hop), first + 5 * hop);
-                let found = self.change.find(&self.history, span, period, Direction::Rise);
-                let stream = self.history.start();
-                let start = found.unwrap_or(first.saturating_sub(hop / 2).max(stream));
-                self.note_start = Some(start);
-                self.assembler.begin(start);
-            }
-            Event::End { last } => {
-                let Some(start) = self.note_start.take() else { return };
-                let span = (last.saturating_sub(5 * hop), last + 5 * hop);
-                let found = self.change.find(&self.history, span, period, Direction::Fall);
-                let end = found.unwrap_or(last + hop / 2).min(self.history.end());
-                let end = if last + hop >= self.history.end() { self.history.end() } else { end };
-                if end > start {
-                    if let Some(note) = self.assembler.end(&self.history, end) {
-                        sink.note(note);
-                    }
-                }
-            }
-        }
+        sink.live(reading);
     }
 }

@@ -7,8 +7,8 @@
 pub(crate) mod comb;
 pub(crate) mod lag;
 
-use crate::peaks::Peak;
-use comb::Comb;
+use crate::peaks::{PEAKS_MAX, Peak};
+use comb::{Comb, Weighed};
 use lag::Periodicity;
 
 /// Periods that the frame which judges a candidate should hold; the longest frame takes what is left.
@@ -19,6 +19,13 @@ const SEEDS: usize = 7;
 const SEED_NUMBER: usize = 9;
 /// Candidates nearer than this ratio are one.
 const SAME: f64 = 1.012;
+/// Cost of an octave lower, and where the octaves are counted from.
+const OCTAVE_COST: f64 = 0.05;
+const OCTAVES_FROM_HZ: f64 = 5_000.0;
+/// Periodicity below which a guess is not worth a comb.
+const APERIODIC: f64 = 0.1;
+/// Share of a score that no periodicity takes away.
+const WITHOUT_CLARITY: f64 = 0.35;
 /// Candidates handed on per instant.
 pub(crate) const CANDIDATES: usize = 6;
 
@@ -31,10 +38,15 @@ pub(crate) struct Candidate {
     pub(crate) b: f64,
     /// How well it explains the instant, 0 to 1.
     pub(crate) score: f64,
+    /// What choosing it costs: the negative logarithm of its score, and a little for every octave it lies lower. A sound
+    /// that repeats with one period repeats with twice that too; the shorter one is the pitch.
+    pub(crate) cost: f64,
     /// Periodicity at its period, 0 to 1.
     pub(crate) clarity: f64,
     /// Compressed share of the peaks it explains, 0 to 1.
     pub(crate) explained: f64,
+    /// Partials that its comb finds.
+    pub(crate) partials: usize,
 }
 
 /// What one instant offers the search: the peaks of each frame length and the periodicity.
@@ -44,8 +56,8 @@ pub(crate) struct View<'a> {
     pub(crate) peaks: [&'a [Peak]; 4],
     /// Length of each frame in seconds.
     pub(crate) frame_s: [f64; 4],
-    /// Periodicity of the instant.
-    pub(crate) periodicity: &'a Periodicity,
+    /// Periodicity of the instant, where it is known.
+    pub(crate) periodicity: Option<&'a Periodicity>,
 }
 
 /// Search for candidates; owns its scratch.
@@ -54,6 +66,7 @@ pub(crate) struct Search {
     range_hz: (f64, f64),
     seeds: Vec<Peak>,
     guesses: Vec<f64>,
+    sums: Vec<(f64, f64)>,
 }
 
 impl Search {
@@ -62,6 +75,7 @@ impl Search {
         Self {
             range_hz,
             seeds: Vec::with_capacity(SEEDS + 1),
+            sums: Vec::with_capacity(PEAKS_MAX + 1),
             guesses: Vec::with_capacity(4 * (SEEDS * SEED_NUMBER + lag::MAXIMA)),
         }
     }
@@ -75,16 +89,26 @@ impl Search {
                 continue;
             }
             self.collect(view, frame, band);
+            let peaks = Weighed::new(view.peaks[frame], &mut self.sums);
+            let bin_hz = 1.0 / view.frame_s[frame];
             for &hz in &self.guesses {
-                let bin_hz = 1.0 / view.frame_s[frame];
-                let Some(fit) = Comb::fit(view.peaks[frame], hz, bin_hz) else { continue };
+                if view.periodicity.is_some_and(|p| p.at(hz) < APERIODIC) {
+                    continue;
+                }
+                let Some(fit) = Comb::fit(&peaks, hz, bin_hz) else { continue };
                 if fit.hz < self.range_hz.0 * 0.98 || fit.hz > self.range_hz.1 * 1.02 {
                     continue;
                 }
-                let clarity = view.periodicity.at(fit.hz);
-                let score = fit.score * (0.35 + 0.65 * clarity.max(0.0));
-                let explained = fit.explained;
-                keep(out, Candidate { hz: fit.hz, b: fit.b, score, clarity, explained });
+                let clarity = view.periodicity.map_or(1.0, |p| p.at(fit.hz));
+                let score =
+                    fit.score * (WITHOUT_CLARITY + (1.0 - WITHOUT_CLARITY) * clarity.max(0.0));
+                let (explained, partials) = (fit.explained, fit.partials);
+                let octaves = (OCTAVES_FROM_HZ / fit.hz).log2();
+                let cost = OCTAVE_COST * octaves - score.max(1e-6).ln();
+                keep(
+                    out,
+                    Candidate { hz: fit.hz, b: fit.b, score, cost, clarity, explained, partials },
+                );
             }
         }
     }
@@ -99,7 +123,7 @@ impl Search {
     /// Gathers the guesses of a band: submultiples of the strongest peaks, and the maxima in the lag domain.
     fn collect(&mut self, view: &View<'_>, frame: usize, band: (f64, f64)) {
         self.seeds.clear();
-        for peak in view.peaks[frame] {
+        for peak in view.peaks[frame].iter().filter(|p| p.weight > 0.0) {
             let at = self.seeds.partition_point(|s| s.amplitude > peak.amplitude);
             if at < SEEDS {
                 self.seeds.truncate(SEEDS - 1);
@@ -115,7 +139,7 @@ impl Search {
                 }
             }
         }
-        for hz in view.periodicity.maxima() {
+        for hz in view.periodicity.iter().flat_map(|p| p.maxima()) {
             if hz >= band.0 && hz < band.1 {
                 self.guesses.push(hz);
             }
@@ -129,12 +153,12 @@ impl Search {
 fn keep(out: &mut Vec<Candidate>, candidate: Candidate) {
     let near = |c: &Candidate| c.hz < candidate.hz * SAME && candidate.hz < c.hz * SAME;
     if let Some(at) = out.iter().position(near) {
-        if out[at].score >= candidate.score {
+        if out[at].cost <= candidate.cost {
             return;
         }
         out.remove(at);
     }
-    let at = out.partition_point(|c| c.score >= candidate.score);
+    let at = out.partition_point(|c| c.cost <= candidate.cost);
     if at < CANDIDATES {
         out.truncate(CANDIDATES - 1);
         out.insert(at, candidate);

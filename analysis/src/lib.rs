@@ -14,6 +14,7 @@
 #![forbid(unsafe_code)]
 
 mod analyzer;
+mod average;
 mod convert;
 mod descriptors;
 mod fundamental;
@@ -21,12 +22,14 @@ mod history;
 mod instant;
 mod measure;
 mod note;
+mod notes;
 mod onset;
 mod peaks;
 mod reading;
 mod refine;
 mod segment;
 mod settings;
+mod settle;
 #[cfg(feature = "signals")]
 pub mod signals;
 mod spectrum;
@@ -41,3 +44,6 @@ pub use descriptors::Descriptors;
 pub use note::{Note, NotePartial};
 pub use reading::{Gap, GapReason, Partial, Pitch, Reading, State, Stray, StrayKind, Stretch};
 pub use settings::{Settings, SettingsError};
+
+/// Version of the engine.
+pub const VERSION: &str = env!("CARGO_PKG_VERSION");

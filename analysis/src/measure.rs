@@ -7,7 +7,11 @@
 //! what belongs to no partial.
 
 pub(crate) mod assemble;
-pub(crate) mod baseband;
-pub(crate) mod damped;
+mod baseband;
+mod coarse;
+mod damped;
 pub(crate) mod lines;
 pub(crate) mod note;
+mod path;
+mod rows;
+mod shares;

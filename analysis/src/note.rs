@@ -59,5 +59,5 @@ pub struct Note {
 
 impl Note {
     /// Most strays that a note lists.
-    pub const STRAYS_MAX: usize = 1024;
+    pub const STRAYS_MAX: usize = 2048;
 }

@@ -5,6 +5,7 @@
 
 use crate::convert::nearest_index;
 use crate::spectrum::{Frame, kernel};
+use crate::stiff::DB_PER_NEPER;
 
 /// Power of a peak over the noise below which it is taken for noise: 11.4 dB is passed by one noise bin in a million.
 const PEAK_OVER_NOISE: f32 = 13.8;
@@ -12,8 +13,24 @@ const PEAK_OVER_NOISE: f32 = 13.8;
 const PEAK_RANGE: f32 = 1e-9;
 /// Bins in one block of the noise floor.
 const NOISE_BLOCK: usize = 48;
+/// Of those, one in so many is looked at: neighbours under a window say much the same.
+const NOISE_STEP: usize = 2;
 /// Share of bins below the chosen one in a block: low, since partials fill most of a block of a low note.
 const NOISE_QUANTILE: f32 = 0.25;
+
+/// Level below a masker at its own place, and the slopes of its excitation to either side (M. Schroeder, B. Atal & J. Hall,
+/// JASA 66(6):1647-1652, 1979: 25 dB per Bark below, 10 dB per Bark above).
+const MASK_DB: f64 = 12.0;
+const UPWARD_DB_PER_BARK: f64 = 10.0;
+const DOWNWARD_DB_PER_BARK: f64 = 25.0;
+/// Exponent that compresses amplitudes.
+const COMPRESSION: f64 = 0.85;
+/// Amplitude, against the strongest peak's, that no longer counts (40 dB down), and the same compressed.
+const FAINT: f64 = 0.01;
+const NOTHING: f64 = 0.02;
+
+/// Most peaks kept of one frame.
+pub(crate) const PEAKS_MAX: usize = 400;
 
 /// A peak.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -22,6 +39,8 @@ pub(crate) struct Peak {
     pub(crate) hz: f64,
     /// Amplitude.
     pub(crate) amplitude: f64,
+    /// What it counts for pitch: its compressed amplitude, 0 when a stronger peak near it masks it.
+    pub(crate) weight: f64,
 }
 
 /// Noise power in one bin of the longest frame, by block.
@@ -45,7 +64,7 @@ impl NoiseFloor {
         let scale = -1.0 / (1.0 - NOISE_QUANTILE).ln();
         for (block, power) in self.blocks.iter_mut().zip(frame.power[1..].chunks(NOISE_BLOCK)) {
             self.order.clear();
-            self.order.extend_from_slice(power);
+            self.order.extend(power.iter().step_by(NOISE_STEP));
             let at = self.order.len() / 4;
             let (_, quantile, _) = self.order.select_nth_unstable_by(at, f32::total_cmp);
             *block = *quantile * scale;
@@ -79,18 +98,21 @@ pub(crate) fn pick(
     }
     let strongest = p[first..=last].iter().fold(0.0f32, |a, &b| a.max(b));
     let floor = strongest * PEAK_RANGE;
-    for k in first..=last {
-        let here = p[k];
-        if here <= p[k - 1] || here < p[k + 1] || here < floor {
-            continue;
+    let ratio = noise.len / len;
+    let mut from = first;
+    while from <= last {
+        // One block of the noise floor at a time: its threshold turns most bins down at the first look.
+        let block = (from * ratio).saturating_sub(1) / NOISE_BLOCK;
+        let until = (((block + 1) * NOISE_BLOCK) / ratio + 1).clamp(from + 1, last + 1);
+        let least = floor.max(noise.at(from, len) * PEAK_OVER_NOISE);
+        for k in from..until {
+            let here = p[k];
+            if here < least || here <= p[k - 1] || here < p[k + 1] || out.len() == out.capacity() {
+                continue;
+            }
+            out.push(interpolate(p, k, bin_hz));
         }
-        if here < noise.at(k, len) * PEAK_OVER_NOISE {
-            continue;
-        }
-        if out.len() == out.capacity() {
-            break;
-        }
-        out.push(interpolate(p, k, bin_hz));
+        from = until;
     }
 }
 
@@ -98,5 +120,39 @@ pub(crate) fn pick(
 pub(crate) fn interpolate(power: &[f32], k: usize, bin_hz: f64) -> Peak {
     let [a, b, c] = [power[k - 1], power[k], power[k + 1]].map(|x| f64::from(x).sqrt());
     let delta = (2.0 * (c - a) / (a + 2.0 * b + c)).clamp(-0.5, 0.5);
-    Peak { hz: (k as f64 + delta) * bin_hz, amplitude: b / kernel(delta) }
+    Peak { hz: (k as f64 + delta) * bin_hz, amplitude: b / kernel(delta), weight: 0.0 }
+}
+
+/// Weighs peaks sorted by frequency for pitch. A peak that lies under the spread excitation of a stronger one is not heard
+/// (E. Terhardt, G. Stoll & M. Seewann, JASA 71(3):679-688, 1982, drop masked components from the pitch in the same way):
+/// lines of a loop, of rattle or of modulation around a strong partial make no pitch of their own.
+pub(crate) fn weigh(peaks: &mut [Peak]) {
+    let strongest = peaks.iter().map(|p| p.amplitude).fold(f64::MIN_POSITIVE, f64::max);
+    let mut mask = (f64::NEG_INFINITY, 0.0);
+    for peak in peaks.iter_mut() {
+        peak.weight = 0.0;
+        if peak.amplitude < strongest * FAINT {
+            continue;
+        }
+        let log = (peak.amplitude / strongest).ln();
+        let level = DB_PER_NEPER * log;
+        mask = (mask.0 - UPWARD_DB_PER_BARK * (bark(peak.hz) - mask.1), bark(peak.hz));
+        let loud = (COMPRESSION * log).exp() - NOTHING;
+        peak.weight = if level > mask.0 { loud.max(0.0) } else { 0.0 };
+        mask.0 = mask.0.max(level - MASK_DB);
+    }
+    let mut mask = (f64::NEG_INFINITY, 0.0);
+    for peak in peaks.iter_mut().rev().filter(|p| p.amplitude >= strongest * FAINT) {
+        let level = DB_PER_NEPER * (peak.amplitude / strongest).ln();
+        mask = (mask.0 - DOWNWARD_DB_PER_BARK * (mask.1 - bark(peak.hz)), bark(peak.hz));
+        if level < mask.0 {
+            peak.weight = 0.0;
+        }
+        mask.0 = mask.0.max(level - MASK_DB);
+    }
+}
+
+/// Critical-band rate (H. Traunmueller, JASA 88(1):97-100, 1990).
+fn bark(hz: f64) -> f64 {
+    26.81 * hz / (1960.0 + hz) - 0.53
 }

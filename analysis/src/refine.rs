@@ -6,15 +6,19 @@
 
 use realfft::num_complex::Complex;
 
-use crate::convert::nearest_index;
+use crate::convert::{nearest_index, number};
 use crate::peaks::NoiseFloor;
+use crate::reading::Partial;
 use crate::spectrum::{Frame, kernel};
-use crate::stiff::partial_hz;
+use crate::stiff::{CENTS_PER_NEPER, DB_PER_NEPER, Point, partial_hz};
 
 /// Rounds of relaxation.
 const ROUNDS: usize = 3;
 /// Bins beyond which a partial's sidelobes are left out.
 const NEAR_BINS: f64 = 16.0;
+/// Power of a bin's noise, against the strongest partial, under which it is never taken to be: what a frame's far
+/// sidelobes, rounding and unresolved lines leave of it.
+const FAINTEST: f64 = 1e-8;
 /// Nearest to the image at negative frequencies, in bins, at which it is left out.
 const IMAGE_BINS: f64 = 12.0;
 /// Power over the noise in a bin below which a partial is not there (see the peaks' own limit).
@@ -39,6 +43,30 @@ pub(crate) struct Tone {
     pub(crate) amplitude: Complex<f64>,
     /// Power over the noise in one bin.
     pub(crate) snr: f64,
+}
+
+impl Tone {
+    /// The tone as a partial of a reading, not averaged.
+    pub(crate) fn partial(&self, f0: f64, f0_sd_cents: f64) -> Partial {
+        let cents_sd = CENTS_PER_NEPER * self.sd_hz / self.hz;
+        Partial {
+            number: number(self.n),
+            frequency_hz: self.hz,
+            frequency_sd_hz: self.sd_hz,
+            cents_from_harmonic: CENTS_PER_NEPER * (self.hz / (self.n as f64 * f0)).ln(),
+            cents_sd: cents_sd.hypot(f0_sd_cents),
+            level_dbfs: 10.0 * self.amplitude.norm_sqr().log10(),
+            level_sd_db: DB_PER_NEPER * (0.5 / self.snr).sqrt(),
+            phase_rad: self.amplitude.arg(),
+            snr_db: 10.0 * self.snr.log10(),
+        }
+    }
+}
+
+impl From<&Tone> for Point {
+    fn from(tone: &Tone) -> Self {
+        Self { n: tone.n as f64, hz: tone.hz, sd_hz: tone.sd_hz }
+    }
 }
 
 #[derive(Debug, Clone, Copy)]
@@ -146,9 +174,10 @@ impl Refiner {
         self.tones.clear();
         let len = (frame.power.len() - 1) * 2;
         let mut before = 0.0;
+        let loudest = self.lines.iter().map(|l| l.a.norm_sqr()).fold(0.0, f64::max);
         for line in &self.lines {
             let power = line.a.norm_sqr();
-            let floor = f64::from(noise.at(line.bin, len)).max(1e-18);
+            let floor = f64::from(noise.at(line.bin, len)).max(FAINTEST * loudest);
             let off = (line.nu - line.bin as f64).abs();
             let snr = power / floor;
             // Two lines on the same peak are one.
@@ -174,7 +203,7 @@ impl Line {
         if q.abs() < 1e-3 {
             return kernel(d);
         }
-        let s = if bin_plus_two % 2 == 0 { -self.sine } else { self.sine };
+        let s = if bin_plus_two.is_multiple_of(2) { -self.sine } else { self.sine };
         s / q
     }
 
@@ -184,7 +213,7 @@ impl Line {
         let first = self.bin as f64 - 1.0;
         let (mut sum, mut norm) = (Complex::default(), 0.0);
         for (j, y) in y.into_iter().enumerate() {
-            let k = kernel(first + j as f64 - self.nu);
+            let k = self.at(self.bin + j + 1, first + j as f64 - self.nu);
             sum += y * k;
             norm += k * k;
         }

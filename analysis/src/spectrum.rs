@@ -11,6 +11,7 @@ use realfft::{RealFftPlanner, RealToComplex};
 
 use crate::convert::single;
 use crate::history::History;
+use crate::window::CosineSum;
 
 /// A spectrum of one frame.
 #[derive(Debug, Clone)]
@@ -19,6 +20,19 @@ pub(crate) struct Frame {
     pub(crate) bins: Vec<Complex<f32>>,
     /// Squared magnitude of `bins`.
     pub(crate) power: Vec<f32>,
+}
+
+impl Frame {
+    /// Sum of the power of all bins but those that a constant reaches.
+    pub(crate) fn total(&self) -> f32 {
+        let mut lanes = [0.0f32; 8];
+        for chunk in self.power[2..].chunks(8) {
+            for (lane, p) in lanes.iter_mut().zip(chunk) {
+                *lane += p;
+            }
+        }
+        lanes.iter().sum()
+    }
 }
 
 /// A planned transform of one length.
@@ -40,13 +54,10 @@ impl Transform {
     /// Plans a transform of `len` samples, a power of two.
     pub(crate) fn new(len: usize, planner: &mut RealFftPlanner<f32>) -> Self {
         let plan = planner.plan_fft_forward(len);
-        // The window carries the scale 2 / S1, with S1 = len / 2.
-        let window = (0..len)
-            .map(|n| {
-                let x = core::f64::consts::TAU * n as f64 / len as f64;
-                single((0.5 - 0.5 * x.cos()) * 4.0 / len as f64)
-            })
-            .collect();
+        // The window carries the scale 2 / S1, with S1 = len / 2, and is rotated like the samples.
+        let mut window: Vec<f32> =
+            CosineSum::HANN.samples(len).map(|w| single(w * 4.0 / len as f64)).collect();
+        window.rotate_left(len / 2);
         Self { len, window, input: plan.make_input_vec(), scratch: plan.make_scratch_vec(), plan }
     }
 
@@ -64,19 +75,17 @@ impl Transform {
     /// Transforms the frame centred on a position.
     pub(crate) fn run(&mut self, history: &History, centre: u64, out: &mut Frame) {
         let centre = i64::try_from(centre).unwrap_or(i64::MAX);
-        let half = i64::try_from(self.len / 2).unwrap_or(0);
-        history.read(centre - half, &mut self.input);
+        let half = self.len / 2;
+        // The second half first: phases then refer to the centre.
+        let (late, early) = self.input.split_at_mut(half);
+        history.read(centre, late);
+        history.read(centre - i64::try_from(half).unwrap_or(0), early);
         for (x, w) in self.input.iter_mut().zip(&self.window) {
             *x *= w;
         }
         let done =
             self.plan.process_with_scratch(&mut self.input, &mut out.bins, &mut self.scratch);
         debug_assert!(done.is_ok(), "lengths are planned");
-        for pair in out.bins.chunks_mut(2) {
-            if let [_, odd] = pair {
-                *odd = -*odd;
-            }
-        }
         for (p, x) in out.power.iter_mut().zip(&out.bins) {
             *p = x.re * x.re + x.im * x.im;
         }

@@ -59,11 +59,6 @@ impl Tracker {
         self.pushed = 0;
     }
 
-    /// Columns pushed since the last restart.
-    pub(crate) fn pushed(&self) -> usize {
-        self.pushed
-    }
-
     /// The column to fill before [`push`](Self::push).
     pub(crate) fn next(&mut self) -> &mut Vec<Candidate> {
         let at = self.pushed % self.columns.len();
@@ -122,13 +117,14 @@ impl Tracker {
     }
 }
 
-/// Cost of explaining an instant by a state.
+/// Cost of explaining an instant by a state. No pitch costs what a pitch of the threshold's score would in the place of the
+/// best one, so that the octave it lies in does not decide whether there is one.
 fn emission(candidates: &[Candidate], state: usize) -> f64 {
-    if state == CANDIDATES {
-        let best = candidates.first().map_or(0.0, |c| c.score);
-        return -NO_PITCH_SCORE.ln() + (best - NO_PITCH_SCORE).max(0.0);
+    if state < CANDIDATES {
+        return candidates.get(state).map_or(f64::INFINITY, |c| c.cost);
     }
-    candidates.get(state).map_or(f64::INFINITY, |c| -c.score.max(1e-6).ln())
+    let best = candidates.iter().max_by(|a, b| a.score.total_cmp(&b.score));
+    best.map_or(0.0, |c| c.cost + c.score.max(1e-6).ln() - NO_PITCH_SCORE.ln())
 }
 
 /// Cost of going from a state of one instant to a state of the next.

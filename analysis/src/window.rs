@@ -34,8 +34,18 @@ impl CosineSum {
     /// The window at a position of -0.5 to 0.5 frames from its centre.
     #[must_use]
     pub fn value(self, position: f64) -> f64 {
+        self.of_cosine((2.0 * PI * position).cos())
+    }
+
+    /// The window where the cosine of its first term, counted from the centre, has a value: the others are its Chebyshev
+    /// polynomials (C. Clenshaw's recurrence, 1955).
+    pub(crate) fn of_cosine(self, cosine: f64) -> f64 {
         // Counted from the centre, the signs no longer alternate.
-        self.lines().map(|(bin, a)| a * (2.0 * PI * bin * position).cos()).sum()
+        let (mut now, mut before) = (0.0, 0.0);
+        for &a in self.coefficients[1..].iter().rev() {
+            (now, before) = (2.0 * cosine * now - before + a, now);
+        }
+        self.coefficients[0] + cosine * now - before
     }
 
     /// Half the width of the main lobe, in bins: here, and at every whole bin beyond, the transform is zero.

@@ -28,8 +28,10 @@ const NEAR_CENTS: f64 = 30.0;
 const STANDS: f64 = 0.5;
 /// How close the correlation at an integer fraction of the period comes to overturn the stated pitch.
 const TIES: f64 = 0.005;
-/// Share of what the stated period leaves unexplained that any other period must leave at most to overturn it.
+/// Share of what the stated period leaves unexplained that any other period must leave at most to overturn it, and the
+/// correlation from which the stated period leaves too little for that.
 const CLEARLY_BETTER: f64 = 0.25;
+const BEYOND_DOUBT: f64 = 0.997;
 /// Periods that are tried against the stated one, as multiples of it, and the step between them in cents.
 const RIVALS: (f64, f64) = (0.18, 3.2);
 const RIVAL_STEP_CENTS: f64 = 5.0;
@@ -189,7 +191,8 @@ fn standing(samples: &[f32], sample_rate_hz: f64, f0_hz: f64) -> f64 {
         let cents = -1200.0 * factor.log2();
         best(cents - NEAR_CENTS, cents + NEAR_CENTS) > own - TIES
     });
-    let overturned = tied || 1.0 - rival < CLEARLY_BETTER * (1.0 - own) - TIES;
+    let beaten = own < BEYOND_DOUBT && 1.0 - rival < CLEARLY_BETTER * (1.0 - own);
+    let overturned = tied || beaten;
     if overturned { 0.0 } else { own }
 }
 

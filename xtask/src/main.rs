@@ -1,6 +1,10 @@
 //! The project's own commands, each with all the set-up it needs: `cargo xtask test`, `bundle`, `bench`, `demo`, `tidy`.
 #![forbid(unsafe_code)]
-#![expect(clippy::print_stdout, reason = "printing is what these commands are for")]
+#![expect(
+    clippy::print_stdout,
+    clippy::print_stderr,
+    reason = "printing is what these commands are for"
+)]
 
 mod bench;
 mod bundle;
@@ -13,6 +17,8 @@ mod test;
 mod tidy;
 mod vst3_hosts;
 
+use std::process::ExitCode;
+
 use anyhow::{Result, bail};
 
 const USAGE: &str = "\
@@ -24,7 +30,17 @@ cargo xtask count                count the instructions of the plugin's own proc
 cargo xtask demo                 synthesise the demo sound, measure it, play it through the plugin, say where the pictures are
 cargo xtask tidy                 check the rules of the source tree that no lint knows";
 
-fn main() -> Result<()> {
+fn main() -> ExitCode {
+    match run() {
+        Ok(()) => ExitCode::SUCCESS,
+        Err(error) => {
+            eprintln!("error: {error:#}");
+            ExitCode::FAILURE
+        }
+    }
+}
+
+fn run() -> Result<()> {
     let arguments: Vec<String> = std::env::args().skip(1).collect();
     let Some((command, rest)) = arguments.split_first() else { bail!("{USAGE}") };
     match command.as_str() {

@@ -28,10 +28,13 @@ pub(crate) fn run(arguments: &[String]) -> Result<()> {
     bundle::run(&[])?;
     let arguments: Vec<&str> = arguments.iter().map(String::as_str).collect();
     if succeeds("cargo", &["nextest", "--version"], &root()) {
-        run_cargo(&[&["nextest", "run", "--workspace"], &arguments[..]].concat(), true)?;
+        run_cargo(
+            &[&["nextest", "run", "--workspace", "--no-fail-fast"], &arguments[..]].concat(),
+            true,
+        )?;
         run_cargo(&["test", "--workspace", "--doc"], true)?;
     } else {
-        run_cargo(&[&["test", "--workspace"], &arguments[..]].concat(), true)?;
+        run_cargo(&[&["test", "--workspace", "--no-fail-fast"], &arguments[..]].concat(), true)?;
     }
     if bank.is_none() {
         println!("{SKIPPED}");

@@ -10,17 +10,50 @@ use crate::peaks::Peak;
 /// Highest partial of the comb.
 const TEETH: usize = 24;
 /// Exponent that compresses amplitudes: between loudness and mere presence.
-const COMPRESSION: f64 = 0.5;
+/// Teeth among which the first partial must be found: a comb without them would not pass for a pitch.
+const FIRST: usize = 6;
 /// Distance from the expectation within which a peak is a partial, as a share of the expectation.
 const REACH: f64 = 0.022;
 /// The same as a share of the fundamental, where that is nearer.
-const REACH_OF_F0: f64 = 0.2;
+const REACH_OF_F0: f64 = 0.14;
 /// Smallest reach, in bins.
 const REACH_BINS: f64 = 0.6;
 /// Largest inharmonicity that the comb follows.
 const B_MAX: f64 = 0.02;
 /// Exponent of the share of teeth found.
-const PRESENCE: f64 = 0.6;
+const PRESENCE: f64 = 0.7;
+
+/// Peaks sorted by frequency, with their weights added up from the lowest on.
+#[derive(Debug)]
+pub(crate) struct Weighed<'a> {
+    peaks: &'a [Peak],
+    /// Sums of weights, and of weights times frequencies, of the peaks before each.
+    sums: &'a [(f64, f64)],
+}
+
+impl<'a> Weighed<'a> {
+    /// Adds up the weights of peaks in `sums`.
+    pub(crate) fn new(peaks: &'a [Peak], sums: &'a mut Vec<(f64, f64)>) -> Self {
+        sums.clear();
+        let mut sum = (f64::MIN_POSITIVE, 0.0);
+        sums.push(sum);
+        for p in peaks {
+            sum = (sum.0 + p.weight, sum.1 + p.weight * p.hz);
+            sums.push(sum);
+        }
+        Self { peaks, sums }
+    }
+
+    /// Weight of all peaks below a limit, and what of it lies in reach of the comb of a fundamental by chance: weight times
+    /// the share of the axis that the reach covers there.
+    fn below(&self, limit_hz: f64, f0: f64) -> (f64, f64) {
+        let end = self.peaks.partition_point(|p| p.hz < limit_hz);
+        let turn = self.peaks.partition_point(|p| p.hz < f0 * REACH_OF_F0 / REACH).min(end);
+        let chance = 2.0 * REACH / f0 * self.sums[turn].1
+            + 2.0 * REACH_OF_F0 * (self.sums[end].0 - self.sums[turn].0);
+        (self.sums[end].0, chance)
+    }
+}
 
 /// A comb fitted to peaks.
 #[derive(Debug, Clone, Copy)]
@@ -33,6 +66,8 @@ pub(crate) struct Comb {
     pub(crate) score: f64,
     /// Compressed share of the peaks in reach that the comb explains.
     pub(crate) explained: f64,
+    /// Partials found.
+    pub(crate) partials: usize,
 }
 
 /// Running least squares of `(f_n / n)^2` on `n^2`.
@@ -78,20 +113,29 @@ impl Line {
 
 impl Comb {
     /// Fits the comb of a fundamental to peaks sorted by frequency; `None` when no peak is on it.
-    pub(crate) fn fit(peaks: &[Peak], guess_hz: f64, bin_hz: f64) -> Option<Self> {
+    pub(crate) fn fit(peaks: &Weighed<'_>, guess_hz: f64, bin_hz: f64) -> Option<Self> {
         let mut line = Line::default();
         let mut teeth = [0.0f64; TEETH];
         let (mut explained, mut last, mut next) = (0.0, 0, 0);
         let (mut base, mut b) = (guess_hz * guess_hz, 0.0);
         let mut limit = 0.0;
+        let highest = peaks.peaks.last()?.hz;
         for (i, tooth) in teeth.iter_mut().enumerate() {
             let n = (i + 1) as f64;
+            if last == 0 && i == FIRST {
+                return None;
+            }
             let expected = n * (base * (1.0 + b * n * n)).sqrt();
             let reach = (REACH * expected).min(REACH_OF_F0 * guess_hz).max(REACH_BINS * bin_hz);
             limit = expected + 0.5 * guess_hz;
-            let Some(peak) = strongest_within(peaks, &mut next, expected, reach) else { continue };
+            if expected - reach > highest {
+                break;
+            }
+            let Some(peak) = strongest_within(peaks.peaks, &mut next, expected, reach) else {
+                continue;
+            };
             let off = (peak.hz - expected) / reach;
-            let v = peak.amplitude.powf(COMPRESSION) * (1.0 - 0.5 * off * off);
+            let v = peak.weight * (1.0 - 0.5 * off * off);
             *tooth = v;
             explained += v;
             last = i + 1;
@@ -101,11 +145,12 @@ impl Comb {
         if last == 0 {
             return None;
         }
-        let total: f64 =
-            peaks.iter().take_while(|p| p.hz < limit).map(|p| p.amplitude.powf(COMPRESSION)).sum();
-        let explained = (explained / total.max(f64::MIN_POSITIVE)).min(1.0);
+        let (total, chance) = peaks.below(limit, guess_hz);
+        let (explained, chance) = (explained / total, chance / total);
+        // What a comb of such reach explains of peaks anywhere at all is no merit.
+        let explained = ((explained - chance) / (1.0 - chance)).clamp(0.0, 1.0);
         let score = explained * presence(&teeth[..last]).powf(PRESENCE);
-        Some(Self { hz: base.sqrt(), b, score, explained })
+        Some(Self { hz: base.sqrt(), b, score, explained, partials: line.count })
     }
 }
 
@@ -117,19 +162,25 @@ fn strongest_within(peaks: &[Peak], next: &mut usize, expected: f64, reach: f64)
     peaks[*next..]
         .iter()
         .take_while(|p| p.hz <= expected + reach)
+        .filter(|p| p.weight > 0.0)
         .copied()
         .max_by(|a, b| a.amplitude.total_cmp(&b.amplitude))
 }
 
-/// Share of the teeth up to the last one that is there, the low ones counting most.
+/// Share of the comb that is there: teeth count by their strength, low ones most, and one that is missing as much as the
+/// weaker of its nearest neighbours that are there.
 fn presence(teeth: &[f64]) -> f64 {
-    let (mut there, mut expected) = (0.0, 0.0);
+    let (mut there, mut missing) = (0.0, 0.0);
+    let (mut below, mut hole) = (f64::INFINITY, 0.0);
     for (i, &tooth) in teeth.iter().enumerate() {
         let weight = 1.0 / (i + 1) as f64;
-        expected += weight;
         if tooth > 0.0 {
-            there += weight;
+            there += weight * tooth;
+            missing += hole * tooth.min(below);
+            (below, hole) = (tooth, 0.0);
+        } else {
+            hole += weight;
         }
     }
-    there / expected
+    there / (there + missing)
 }

@@ -1,7 +1,8 @@
 //! Periodicity in the lag domain: the normalised autocorrelation of a Hann frame, divided by the window's own
 //! (P. Boersma, Proc. Inst. Phonetic Sci. Amsterdam 17:97-110, 1993), from the power spectrum by an inverse transform.
 //!
-//! The circular wrap of the unpadded frame is left in: for lags up to a third of the frame the window's tails make it
+//! Only the lower part of the spectrum is taken back to the lag domain: a pitch repeats there, and the transform is shorter
+//! by as much. The circular wrap of the unpadded frame is left in: for lags up to a third of the frame the window's tails make it
 //! smaller than the estimate's own scatter.
 
 use std::sync::Arc;
@@ -40,8 +41,15 @@ impl core::fmt::Debug for Autocorrelation {
 }
 
 impl Autocorrelation {
-    /// Plans for frames of `len` samples.
-    pub(crate) fn new(len: usize, sample_rate_hz: f64, planner: &mut RealFftPlanner<f32>) -> Self {
+    /// Plans for frames of `len` samples, of whose spectrum the lower part, one in `narrower`, is used.
+    pub(crate) fn new(
+        len: usize,
+        narrower: usize,
+        sample_rate_hz: f64,
+        planner: &mut RealFftPlanner<f32>,
+    ) -> Self {
+        let len = len / narrower;
+        let sample_rate_hz = sample_rate_hz / narrower as f64;
         let plan = planner.plan_fft_inverse(len);
         let lags = floor_index(LONGEST * len as f64);
         Self {
@@ -86,7 +94,15 @@ impl Autocorrelation {
         if b >= self.normalised.len() {
             return 0.0;
         }
-        f64::from(self.normalised[a..=b].iter().fold(-1.0f32, |m, &r| m.max(r)))
+        let r = &self.normalised;
+        let best = (a..=b).max_by(|&i, &j| r[i].total_cmp(&r[j])).unwrap_or(a);
+        if best == 0 || best + 1 == r.len() {
+            return 0.0;
+        }
+        let [before, here, after] = [r[best - 1], r[best], r[best + 1]].map(f64::from);
+        let curve = before - 2.0 * here + after;
+        let rise = if curve < 0.0 { -0.125 * (before - after).powi(2) / curve } else { 0.0 };
+        here + rise
     }
 
     /// Adds the strongest maxima between two lags to a list kept in falling order.
@@ -142,7 +158,8 @@ impl Periodicity {
         let rate = self.short.sample_rate_hz;
         let (shortest, limit) = (rate / self.highest_hz, rate / self.limit_hz);
         self.short.collect((floor_index(shortest), floor_index(limit)), &mut self.maxima);
-        self.long.collect((floor_index(limit), self.long.normalised.len()), &mut self.maxima);
+        let limit = floor_index(self.long.sample_rate_hz / self.limit_hz);
+        self.long.collect((limit, self.long.normalised.len()), &mut self.maxima);
     }
 
     /// Periodicity at a fundamental, at most 1.

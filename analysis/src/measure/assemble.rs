@@ -1,6 +1,8 @@
 //! A note from its stretches: the figures of each put together, the strays named, the descriptors drawn up.
 
-use super::note::{Meter, STRETCH_S};
+use super::lines::LINES_MAX;
+use super::note::{Meter, SPARE, STRETCH_S};
+use super::rows::Row;
 use crate::convert::{index, nearest_index, number};
 use crate::descriptors::Descriptors;
 use crate::history::History;
@@ -8,7 +10,8 @@ use crate::note::{Note, NotePartial};
 use crate::reading::{StrayKind, Stretch};
 use crate::refine::Tone;
 use crate::stiff::{self, CENTS_PER_NEPER, Point, StiffFit, partial_hz};
-use crate::strays::{self, Candidate, Source};
+use crate::strays::aliases::{self, Own};
+use crate::strays::{self, Candidate, mains};
 
 /// Decibels in one neper.
 const DB_PER_NEPER: f64 = 8.685_889_638_065_037;
@@ -16,6 +19,8 @@ const DB_PER_NEPER: f64 = 8.685_889_638_065_037;
 const OWN: f64 = 4.0;
 /// The same for a line that nothing else explains, in cents: strings in pairs and choruses spread a partial.
 const SPREAD_CENTS: f64 = 15.0;
+/// And at most, as a share of the fundamental.
+const SPREAD_OF_F0: f64 = 0.2;
 
 /// Sums over the stretches of a note for one partial.
 #[derive(Debug, Clone, Copy, Default)]
@@ -42,6 +47,7 @@ pub(crate) struct Assembler {
     sums: Vec<Sums>,
     points: Vec<Point>,
     candidates: Vec<Candidate>,
+    own: Vec<Own>,
     start: u64,
     stretch_start: u64,
     seconds: f64,
@@ -60,7 +66,8 @@ impl Assembler {
             meter: Meter::new(sample_rate_hz, partials, hop),
             sums: vec![Sums::default(); partials + 1],
             points: Vec::with_capacity(partials),
-            candidates: Vec::with_capacity(8_192),
+            candidates: Vec::with_capacity(LINES_MAX),
+            own: Vec::with_capacity(partials + SPARE),
             start: 0,
             stretch_start: 0,
             seconds: 0.0,
@@ -133,9 +140,9 @@ impl Assembler {
         self.log_f0.0 += w;
         self.log_f0.1 += w * fit.f0.ln();
         let since = (start - self.start) as f64 / self.sample_rate_hz;
-        for row in self.meter.rows.iter().filter(|r| r.present && r.n <= self.partials) {
+        for row in self.meter.rows.rows.iter().filter(|r| r.present && r.n <= self.partials) {
             let s = &mut self.sums[row.n];
-            let hz = row.expected_hz + row.fit.delta_hz;
+            let hz = row.hz();
             let w = (hz / row.fit.delta_sd_hz).powi(2);
             s.frequency.0 += w;
             s.frequency.1 += w * hz.ln();
@@ -160,7 +167,7 @@ impl Assembler {
             let hz = (s.frequency.1 / s.frequency.0).exp();
             self.points.push(Point { n: n as f64, hz, sd_hz: hz / s.frequency.0.sqrt() });
         }
-        let fit = stiff::fit(&self.points, None)?;
+        let fit = stiff::fit(&self.points).or_else(|| self.without_partials())?;
         self.note.f0_hz = fit.f0;
         self.note.f0_sd_cents = fit.f0_sd_cents;
         self.note.stretch = fit.b_sd.is_finite().then_some(Stretch { b: fit.b, b_sd: fit.b_sd });
@@ -189,44 +196,69 @@ impl Assembler {
         Some(fit)
     }
 
+    /// What is left to say of a note in which no partial could be measured: where its instants lay.
+    fn without_partials(&self) -> Option<StiffFit> {
+        (self.log_f0.0 > 0.0).then(|| StiffFit {
+            f0: (self.log_f0.1 / self.log_f0.0).exp(),
+            f0_sd_cents: self.log_f0.0.sqrt().recip(),
+            b: 0.0,
+            b_sd: f64::INFINITY,
+            scatter_cents: 0.0,
+        })
+    }
+
     /// Keeps the lines of the stretch that are no partial's own.
     fn collect_lines(&mut self, fit: &StiffFit) {
         let long = &self.meter.long;
         let own = OWN * long.resolution_hz;
         let sweep = self.meter.sweep;
+        let last = self.meter.rows.rows.last().map_or(0, |r| r.n);
         for line in &long.lines {
             let n = nearest_number(line.hz, fit);
             let near = |n: usize| {
-                let row = self.meter.rows.iter().find(|r| r.present && r.n == n);
-                let hz = row.map_or_else(
-                    || partial_hz(fit.f0, fit.b, n as f64),
-                    |r| r.expected_hz + r.fit.delta_hz,
-                );
+                let row = self.meter.rows.rows.iter().find(|r| r.present && r.n == n);
+                let hz = row.map_or_else(|| partial_hz(fit.f0, fit.b, n as f64), Row::hz);
                 (line.hz - hz).abs() < own + 1.5 * sweep * hz
             };
-            let is_partial = (n.saturating_sub(1).max(1)..=n + 1).any(near);
+            let is_partial = (n.saturating_sub(1).max(1)..=(n + 1).min(last)).any(near);
             if !is_partial && self.candidates.len() < self.candidates.capacity() {
-                self.candidates.push(Candidate { line: *line, kind: StrayKind::Unexplained });
+                self.candidates.push(Candidate::new(*line));
             }
         }
-        let significant = fit.b.abs() > 4.0 * fit.b_sd;
-        let source = Source {
+        self.name(fit);
+    }
+
+    /// Explains the lines collected.
+    fn name(&mut self, fit: &StiffFit) {
+        let resolution_hz = self.meter.long.resolution_hz;
+        let rows = &self.meter.rows.rows;
+        self.own.clear();
+        self.own.extend(rows.iter().filter(|r| r.present).map(|r| Own {
+            n: r.n,
+            hz: r.hz(),
+            sd_hz: r.fit.delta_sd_hz,
+            amplitude: r.fit.mean_square.sqrt(),
+        }));
+        let tone = aliases::Tone {
+            own: &self.own,
+            looked_for: rows.last().map_or(0, |r| r.n),
             f0: fit.f0,
             f0_sd: fit.f0 * fit.f0_sd_cents / CENTS_PER_NEPER,
-            b: if significant { fit.b } else { 0.0 },
+            b: (fit.b.abs() > 4.0 * fit.b_sd).then_some(fit.b),
             sample_rate_hz: self.sample_rate_hz,
-            resolution_hz: long.resolution_hz,
+            resolution_hz,
         };
-        strays::name_aliases(&mut self.candidates, source);
-        strays::name_mains(&mut self.candidates, long.resolution_hz);
+        aliases::name_aliases(&mut self.candidates, &tone);
+        mains::name_mains(&mut self.candidates, resolution_hz);
     }
 
     fn strays_of_note(&mut self, fit: &StiffFit) {
-        let spread = SPREAD_CENTS / CENTS_PER_NEPER;
+        let own = OWN * self.meter.long.resolution_hz;
         self.candidates.retain(|c| {
             let n = nearest_number(c.line.hz, fit);
             let hz = partial_hz(fit.f0, fit.b, n as f64);
-            c.kind != StrayKind::Unexplained || (c.line.hz / hz).ln().abs() > spread
+            let spread = (SPREAD_CENTS / CENTS_PER_NEPER * hz).min(SPREAD_OF_F0 * fit.f0);
+            c.kind != StrayKind::Unexplained || (c.line.hz - hz).abs() > spread.max(own)
         });
         self.candidates.sort_unstable_by(|a, b| b.line.amplitude.total_cmp(&a.line.amplitude));
         let kept = self.candidates.len().min(Note::STRAYS_MAX);

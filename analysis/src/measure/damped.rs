@@ -9,12 +9,14 @@ use core::f64::consts::TAU;
 
 use realfft::num_complex::Complex;
 
-/// Rounds of Gauss-Newton.
-const ROUNDS: usize = 5;
-/// Decay rates tried first, in nepers per second: about 60 dB in never, 4, 1.2, 0.4 and 0.15 s.
-const DECAYS: [f64; 5] = [0.0, 1.7, 5.8, 17.0, 46.0];
-/// Frequencies tried first are this many resolutions (one over the duration) apart.
-const GRID: f64 = 0.5;
+/// Most rounds of Gauss-Newton, those that have to step back included.
+const ROUNDS: usize = 16;
+/// A step of less than this many of its own deviations ends the rounds.
+const SETTLED: f64 = 0.01;
+/// Most nepers by which a partial may grow over the stretch.
+const GROWTH: f64 = 20.0;
+/// Oscillators side by side, so that no product waits for the last.
+const LANES: usize = 4;
 
 /// A fitted exponential, referred to the note's first sample.
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
@@ -33,8 +35,10 @@ pub(crate) struct Damped {
     pub(crate) sigma_sd: f64,
     /// See above.
     pub(crate) log_sd: f64,
-    /// Noise variance of one block.
+    /// Noise variance of one block, without slow misfit.
     pub(crate) noise: f64,
+    /// The same with all that is left.
+    pub(crate) left: f64,
     /// Mean power over the note, as squared amplitude.
     pub(crate) mean_square: f64,
 }
@@ -55,150 +59,167 @@ impl Times {
     }
 }
 
-/// Sums of one pass over the signal for a rate `g`.
-#[derive(Default)]
+/// How far a fit may go.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct Limits {
+    /// Off the frequency brought down by, in Hz.
+    pub(crate) off_hz: f64,
+    /// Decay, in nepers per second.
+    pub(crate) sigma: f64,
+}
+
+/// Sums of one pass over the signal for a rate `g`, with `e = exp(g t)`.
+#[derive(Debug, Clone, Copy, Default)]
 struct Sums {
+    /// Of `|e|^2`, and that times `t` and `t^2`.
     s0: f64,
     s1: f64,
     s2: f64,
+    /// Of `conj(e) z`, and that times `t`.
     b0: Complex<f64>,
     b1: Complex<f64>,
 }
 
-/// First guess: the best of a grid of decays and frequencies within `reach_hz` of `around_hz`.
-pub(crate) fn search(z: &[Complex<f64>], times: Times, around_hz: f64, reach_hz: f64) -> Damped {
-    let duration = z.len() as f64 * times.step_s;
-    let spacing = GRID / duration;
-    let steps = crate::convert::nearest_index((reach_hz / spacing).ceil()).clamp(1, 64);
-    let mut best = (0.0, 0.0, 0.0);
-    for i in 0..=2 * steps {
-        let delta = around_hz + (i as f64 - steps as f64) * spacing;
-        for sigma in DECAYS {
-            if sigma * duration < 0.5 && sigma > 0.0 {
-                continue;
-            }
-            let s = pass(z, times, Complex::new(-sigma, TAU * delta), 0);
-            let power = s.b0.norm_sqr() / s.s0;
-            if power > best.0 {
-                best = (power, sigma, delta);
-            }
-        }
+impl Sums {
+    fn det(&self) -> f64 {
+        self.s0 * self.s2 - self.s1 * self.s1
     }
-    let s = pass(z, times, Complex::new(-best.1, TAU * best.2), 0);
-    Damped { a: s.b0 / s.s0, sigma: best.1, delta_hz: best.2, ..Damped::default() }
+
+    /// Energy that the best amplitude at this rate explains.
+    fn energy(&self) -> f64 {
+        self.b0.norm_sqr() / self.s0
+    }
 }
 
-/// Fits from a first guess. Deviations are those of white noise of the residual's own variance, widened where the
-/// residual is not white.
-pub(crate) fn fit(z: &[Complex<f64>], times: Times, guess: &Damped) -> Damped {
-    let duration = z.len() as f64 * times.step_s;
-    let mut g = Complex::new(-guess.sigma, TAU * guess.delta_hz);
-    let mut a = guess.a;
-    let mut sums = Sums::default();
+/// Fits from a first guess of decay and frequency. Deviations are those of white noise of the residual's own variance,
+/// widened where the residual is not white.
+pub(crate) fn fit(z: &[Complex<f64>], times: Times, guess: &Damped, limits: Limits) -> Damped {
+    let duration = times.duration(z.len());
+    let count = z.len() as f64;
+    let total: f64 = z.iter().map(Complex::norm_sqr).sum();
+    let widest = TAU * limits.off_hz;
+    let bounded = |g: Complex<f64>| {
+        let re = g.re.clamp(-limits.sigma, GROWTH / duration);
+        Complex::new(re, g.im.clamp(-widest, widest))
+    };
+    let mut g = bounded(Complex::new(-guess.sigma, TAU * guess.delta_hz));
+    let mut sums = pass(z, times, g);
+    let mut shrink = 1.0;
     for _ in 0..ROUNDS {
-        sums = pass(z, times, g, 1);
-        let det = sums.s0 * sums.s2 - sums.s1 * sums.s1;
-        if !(det > 0.0) {
+        let det = sums.det();
+        if !(det > 0.0 && sums.energy() > 0.0) {
             break;
         }
-        // With a at its best for this rate, the step of the rate alone remains.
-        a = sums.b0 / sums.s0;
-        let step = (sums.b1 * sums.s0 - sums.b0 * sums.s1) / det;
-        if !(a.norm_sqr() > 0.0) {
-            break;
+        // With the amplitude at its best for this rate, the step of the rate alone remains.
+        let step = (sums.b1 * sums.s0 - sums.b0 * sums.s1) * sums.s0 / (sums.b0 * det);
+        // One over the spread of the times that count is as far as the linearisation reaches.
+        let reach = 0.5 * sums.s0 / det.sqrt();
+        let step = step * (shrink * (reach / step.norm()).min(1.0));
+        let next = bounded(g + step);
+        let tried = pass(z, times, next);
+        if !(tried.energy() >= sums.energy()) {
+            shrink *= 0.25;
+            if shrink < 1e-3 {
+                break;
+            }
+            continue;
         }
-        let step = step / a;
-        let limit = 2.0 / duration;
-        let step = if step.norm() > limit { step * (limit / step.norm()) } else { step };
-        g += step;
-        g.re = g.re.clamp(-400.0, 20.0 / duration);
-        if step.norm() * duration < 1e-9 {
+        let noise = (total - tried.energy()).max(0.0) / count;
+        let sd = (0.5 * noise * tried.s0 / det / (tried.energy() / tried.s0)).sqrt();
+        g = next;
+        sums = tried;
+        shrink = 1.0;
+        if step.norm() < SETTLED * sd {
             break;
         }
     }
-    let sums_now = pass(z, times, g, 1);
-    if sums_now.s0 > 0.0 {
-        a = sums_now.b0 / sums_now.s0;
-        sums = sums_now;
-    }
-    describe(z, times, a, g, &sums)
+    describe(z, times, g, &sums)
 }
 
 /// Residual variance, deviations and the like of a fitted exponential.
-fn describe(
-    z: &[Complex<f64>],
-    times: Times,
-    a: Complex<f64>,
-    g: Complex<f64>,
-    sums: &Sums,
-) -> Damped {
+fn describe(z: &[Complex<f64>], times: Times, g: Complex<f64>, sums: &Sums) -> Damped {
+    let a = if sums.s0 > 0.0 { sums.b0 / sums.s0 } else { Complex::default() };
     let mut y = a * (g * times.first_s).exp();
     let ratio = (g * times.step_s).exp();
-    let (mut energy, mut lagged, mut total, mut rough) = (0.0, 0.0, 0.0, 0.0);
-    let (mut before, mut z_before) = (Complex::default(), Complex::default());
+    let (mut energy, mut lagged, mut rough) = (0.0, 0.0, 0.0);
+    let mut before = Complex::<f64>::default();
     for (m, z) in z.iter().enumerate() {
         let r = z - y;
         energy += r.norm_sqr();
-        total += z.norm_sqr();
         if m > 0 {
-            lagged += (r * Complex::conj(&before)).re;
+            lagged += (r * before.conj()).re;
             rough += (r - before).norm_sqr();
         }
         before = r;
-        z_before = *z;
         y *= ratio;
     }
-    let _ = z_before;
     let count = z.len() as f64;
     let noise = energy / (count - 2.0).max(1.0);
     // Noise as the differences of neighbouring residuals show it: a slow misfit is not in it.
     let fine = (0.5 * rough / (count - 1.0).max(1.0)).min(noise);
     let rho = if energy > 0.0 { lagged / energy } else { 0.0 };
-    let widen = if rho > 2.0 / count.sqrt() {
-        ((1.0 + rho) / (1.0 - rho).max(0.01)).min(100.0)
-    } else {
-        1.0
-    };
-    let det = (sums.s0 * sums.s2 - sums.s1 * sums.s1).max(f64::MIN_POSITIVE);
+    let coloured = rho > 2.0 / count.sqrt();
+    let widen = if coloured { ((1.0 + rho) / (1.0 - rho).max(0.01)).min(100.0) } else { 1.0 };
+    let det = sums.det().max(f64::MIN_POSITIVE);
     let half = 0.5 * noise * widen / a.norm_sqr().max(f64::MIN_POSITIVE);
     let rate_sd = (half * sums.s0 / det).sqrt();
+    let explained = a.norm_sqr() * sums.s0;
     Damped {
         a,
         sigma: -g.re,
         delta_hz: g.im / TAU,
-        snr: a.norm_sqr() * sums.s0 / noise.max(f64::MIN_POSITIVE),
+        snr: explained / noise.max(f64::MIN_POSITIVE),
         delta_sd_hz: rate_sd / TAU,
         sigma_sd: rate_sd,
         log_sd: (half * sums.s2 / det).sqrt(),
         noise: fine,
-        mean_square: (total / count - fine).max(0.0),
+        left: noise,
+        mean_square: explained / count + if coloured { noise - fine } else { 0.0 },
     }
 }
 
-/// One pass: sums for the amplitude, and with `order` 1 for the rate too.
-fn pass(z: &[Complex<f64>], times: Times, g: Complex<f64>, order: usize) -> Sums {
+/// One pass over the signal.
+fn pass(z: &[Complex<f64>], times: Times, g: Complex<f64>) -> Sums {
+    let step = (g * times.step_s).exp();
     let mut e = (g * times.first_s).exp();
-    let ratio = (g * times.step_s).exp();
-    let mut t = times.first_s;
-    let mut s = Sums::default();
-    if order == 0 {
-        for z in z {
-            s.s0 += e.norm_sqr();
-            s.b0 += e.conj() * z;
-            e *= ratio;
-        }
-        return s;
+    let (mut e_re, mut e_im) = ([0.0; LANES], [0.0; LANES]);
+    for i in 0..LANES {
+        (e_re[i], e_im[i]) = (e.re, e.im);
+        e *= step;
     }
-    for z in z {
-        let power = e.norm_sqr();
-        let share = e.conj() * z;
-        s.s0 += power;
-        s.s1 += power * t;
-        s.s2 += power * t * t;
-        s.b0 += share;
-        s.b1 += share * t;
-        e *= ratio;
-        t += times.step_s;
+    let far = step * step * step * step;
+    let mut t: [f64; LANES] = core::array::from_fn(|i| times.first_s + i as f64 * times.step_s);
+    let hop = LANES as f64 * times.step_s;
+    let (mut s0, mut s1, mut s2) = ([0.0; LANES], [0.0; LANES], [0.0; LANES]);
+    let (mut b0_re, mut b0_im) = ([0.0; LANES], [0.0; LANES]);
+    let (mut b1_re, mut b1_im) = ([0.0; LANES], [0.0; LANES]);
+    let mut take = |i: usize, z: Complex<f64>| {
+        let power = e_re[i] * e_re[i] + e_im[i] * e_im[i];
+        let re = e_re[i] * z.re + e_im[i] * z.im;
+        let im = e_re[i] * z.im - e_im[i] * z.re;
+        s0[i] += power;
+        s1[i] += power * t[i];
+        s2[i] += power * t[i] * t[i];
+        b0_re[i] += re;
+        b0_im[i] += im;
+        b1_re[i] += re * t[i];
+        b1_im[i] += im * t[i];
+        let turned = e_re[i] * far.re - e_im[i] * far.im;
+        e_im[i] = e_re[i] * far.im + e_im[i] * far.re;
+        e_re[i] = turned;
+        t[i] += hop;
+    };
+    let (whole, rest) = z.as_chunks::<LANES>();
+    for z in whole {
+        z.iter().enumerate().for_each(|(i, z)| take(i, *z));
     }
-    s
+    rest.iter().enumerate().for_each(|(i, z)| take(i, *z));
+    let sum = |x: [f64; LANES]| x.iter().sum::<f64>();
+    Sums {
+        s0: sum(s0),
+        s1: sum(s1),
+        s2: sum(s2),
+        b0: Complex::new(sum(b0_re), sum(b0_im)),
+        b1: Complex::new(sum(b1_re), sum(b1_im)),
+    }
 }

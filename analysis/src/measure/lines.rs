@@ -4,6 +4,7 @@
 //! the logarithms (M. Gasior & J. Gonzalez, CERN-AB-2004-021, 2004), whose bias under this window, 0.003 bin, is far below
 //! the width of a line.
 
+use core::f64::consts::{PI, TAU};
 use std::sync::Arc;
 
 use realfft::num_complex::Complex;
@@ -14,8 +15,8 @@ use crate::window::CosineSum;
 
 /// Lengths of the transforms, in seconds before rounding to a power of two.
 const LENGTHS_S: [f64; 2] = [32_768.0 / 48_000.0, 131_072.0 / 48_000.0];
-/// Most lines kept.
-const LINES_MAX: usize = 6_000;
+/// Most lines kept; when there are more, the weaker half is dropped.
+pub(crate) const LINES_MAX: usize = 4_096;
 /// Bins of one block of the noise floor.
 const NOISE_BLOCK: usize = 128;
 /// Power over the mean noise at which a bin is a line: one noise bin in three million passes (12 dB by -ln p, with a
@@ -24,6 +25,8 @@ const LINE_OVER_NOISE: f32 = 17.0;
 /// Bins on either side within which a line must stand out by [`PROMINENCE`] in power.
 const PROMINENCE_BINS: usize = 6;
 const PROMINENCE: f32 = 4.0;
+/// Samples of the window between two exact cosines.
+const EXACT_EVERY: usize = 512;
 
 /// A line.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -88,10 +91,7 @@ impl LongSpectrum {
         let len = plan.len();
         let used = samples.len().min(len);
         let scale = 2.0 / (used as f64 * CosineSum::BLACKMAN_HARRIS.coherent_gain());
-        let window = CosineSum::BLACKMAN_HARRIS.samples(used);
-        for ((x, s), w) in self.input.iter_mut().zip(samples).zip(window) {
-            *x = s * single(w * scale);
-        }
+        taper(&samples[..used], scale, &mut self.input[..used]);
         self.input[used..len].fill(0.0);
         let bins = &mut self.bins[..len / 2 + 1];
         let done = plan.process_with_scratch(
@@ -121,12 +121,14 @@ impl LongSpectrum {
         let wide = nearest_index(PROMINENCE_BINS as f64 * self.resolution_hz / bin_hz);
         let p = &self.power;
         let strongest = p.iter().fold(0.0f32, |a, &b| a.max(b));
-        // Rounding of single precision leaves a floor of its own.
-        let least = strongest * 1e-13;
+        // The window's side lobes, at -92 dB, are lines of nothing.
+        let least = strongest * 1e-9;
+        let mut faintest = 0.0;
         for (block, start) in (0..p.len()).step_by(NOISE_BLOCK).enumerate() {
             let end = (start + NOISE_BLOCK).min(p.len());
             self.order.clear();
-            self.order.extend_from_slice(&p[start..end]);
+            // Neighbours say the same under the window.
+            self.order.extend(p[start..end].iter().step_by(2));
             let middle = self.order.len() / 2;
             let (_, median, _) = self.order.select_nth_unstable_by(middle, f32::total_cmp);
             let floor = (*median / core::f32::consts::LN_2).max(f32::MIN_POSITIVE);
@@ -140,8 +142,11 @@ impl LongSpectrum {
                 }
                 let below = p[k - wide..k].iter().fold(f32::MAX, |a, &b| a.min(b));
                 let above = p[k + 1..=k + wide].iter().fold(f32::MAX, |a, &b| a.min(b));
-                if here < PROMINENCE * below.max(above) || self.lines.len() == LINES_MAX {
+                if here < PROMINENCE * below.max(above) || here < faintest {
                     continue;
+                }
+                if self.lines.len() == LINES_MAX {
+                    faintest = drop_weaker_half(&mut self.lines);
                 }
                 let [a, b, c] = [p[k - 1], here, p[k + 1]].map(|x| f64::from(x).ln());
                 let curve = a - 2.0 * b + c;
@@ -154,4 +159,35 @@ impl LongSpectrum {
             }
         }
     }
+}
+
+/// Samples under the window, times `scale`. The window's cosine is turned on from one exact value to the next, and serves
+/// both ends.
+fn taper(samples: &[f32], scale: f64, out: &mut [f32]) {
+    let count = samples.len();
+    let turn = Complex::cis(TAU / count as f64);
+    let mut e = Complex::default();
+    for n in 0..=count / 2 {
+        if n % EXACT_EVERY == 0 {
+            // From the start of the frame, half a turn from its centre.
+            e = Complex::cis(TAU * n as f64 / count as f64 - PI);
+        }
+        let w = single(scale * CosineSum::BLACKMAN_HARRIS.of_cosine(e.re));
+        out[n] = samples[n] * w;
+        if n > 0 {
+            out[count - n] = samples[count - n] * w;
+        }
+        e *= turn;
+    }
+}
+
+/// Drops the weaker half of the lines; returns the squared amplitude of the weakest kept.
+fn drop_weaker_half(lines: &mut Vec<Line>) -> f32 {
+    let middle = lines.len() / 2;
+    let by_amplitude = |a: &Line, b: &Line| a.amplitude.total_cmp(&b.amplitude);
+    let (_, median, _) = lines.select_nth_unstable_by(middle, by_amplitude);
+    let least = median.amplitude;
+    lines.retain(|l| l.amplitude >= least);
+    lines.sort_unstable_by(|a, b| a.hz.total_cmp(&b.hz));
+    single(least * least)
 }

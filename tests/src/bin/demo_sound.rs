@@ -33,7 +33,8 @@ fn contents(sound: &Demo) -> String {
         sound.hum.lines.iter().map(|line| format!("{} Hz", line.frequency_hz)).collect();
     format!(
         "The demo sound holds
-  from {:.2} to {:.2} s a plucked string: f0 {:.4} Hz, B {:.2e}, {} partials, and partial {} folded to {:.2} Hz;
+  from {:.2} to {:.2} s a plucked string: f0 {:.4} Hz, B {:.2e}, {} partials, and {} more that fold, from
+    partial {} at {:.2} Hz on;
   from {:.2} to {:.2} s the same string, held, while it drifts by {} cents per second;
   under both, mains hum at {}.
 ",
@@ -42,8 +43,9 @@ fn contents(sound: &Demo) -> String {
         sound.pluck.f0_hz,
         sound.pluck.b,
         sound.pluck.partials.len(),
-        sound.alias.number,
-        sound.alias.frequency_hz,
+        sound.aliases.len(),
+        sound.aliases[0].number,
+        sound.aliases[0].frequency_hz,
         sound.held_s.0,
         sound.held_s.1,
         sound.held.motion.drift_cents_per_s,

@@ -57,19 +57,24 @@ impl Errors {
         self.0.iter().filter(|(e, _)| *e > size).count() as f64 / self.0.len() as f64
     }
 
-    /// The largest errors with their cases, largest first, one per case.
+    /// The largest errors with their cases, largest first, one per case: what follows a semicolon in a case's name only says
+    /// where in it the error is.
     #[must_use]
     pub fn worst(&self, count: usize) -> Vec<(f64, &str)> {
         let mut sorted: Vec<(f64, &str)> = self.0.iter().map(|(e, case)| (*e, &**case)).collect();
         sorted.sort_by(|a, b| b.0.total_cmp(&a.0));
         let mut worst: Vec<(f64, &str)> = Vec::new();
         for (error, case) in sorted {
-            if worst.len() < count && worst.iter().all(|&(_, seen)| seen != case) {
+            if worst.len() < count && worst.iter().all(|&(_, seen)| whole(seen) != whole(case)) {
                 worst.push((error, case));
             }
         }
         worst
     }
+}
+
+fn whole(case: &str) -> &str {
+    case.split(';').next().unwrap_or(case)
 }
 
 /// How many of what was due came, and the cases where something did not.
@@ -112,7 +117,7 @@ impl Tally {
     pub fn worst(&self, count: usize) -> Vec<(usize, &str)> {
         let mut cases: std::collections::BTreeMap<&str, usize> = std::collections::BTreeMap::new();
         for case in &self.misses {
-            *cases.entry(case).or_default() += 1;
+            *cases.entry(whole(case)).or_default() += 1;
         }
         let mut worst: Vec<(usize, &str)> = cases.into_iter().map(|(c, n)| (n, c)).collect();
         worst.sort_by_key(|&(misses, _)| std::cmp::Reverse(misses));

@@ -97,9 +97,11 @@ impl ExactFigures {
             let steady = reading.pitch.filter(|_| reading.state == State::Steady);
             self.steady.push(steady.is_some(), &case.name);
             let Some(pitch) = steady.filter(|_| case.snr_db >= READINGS_FROM_DB) else { continue };
+            let time_s = reading.centre as f64 / case.tone.sample_rate_hz;
+            let name: Arc<str> = format!("{}; at {time_s:.2} s", case.name).into();
             let error = cents(pitch.f0_hz, case.tone.f0_hz);
-            self.frame_cents.push(error, &case.name);
-            self.calibration.frame_f0.push(error / pitch.f0_sd_cents, &case.name);
+            self.frame_cents.push(error, &name);
+            self.calibration.frame_f0.push(error / pitch.f0_sd_cents, &name);
         }
     }
 

@@ -82,7 +82,7 @@ fn one(seed: u64, kind: &'static str, motion: Draws) -> Result<MovingFigures, Se
         if inside && moving.motion.nearest_step_s(time_s) > margin {
             let truth = moving.f0_hz(time_s);
             let error = reading.pitch.map(|p| (cents(p.f0_hz, truth), p.f0_sd_cents));
-            figures.push(error, &name);
+            figures.push(error, &format!("{name}; at {time_s:.2} s").into());
         }
     }
     Ok(figures)

@@ -30,7 +30,8 @@ pub(crate) fn moving(draw: Draw, worst: usize) -> Result<(), Box<dyn Error>> {
 pub(crate) fn live() -> Result<(), Box<dyn Error>> {
     heading("Live: first right reading after the onset, worst of 5 sounds");
     for figure in figures::live(5)? {
-        let reached = format!("{:.1} ms", figure.reached_ms);
+        let reached =
+            format!("{:.1} ms (settled at {:.0} ms)", figure.reached_ms, figure.settled_ms);
         row(&format!("{} Hz", figure.f0_hz), &reached, &format!("{} ms", figure.due_ms));
     }
     Ok(())

@@ -1,0 +1,121 @@
+//! The strays of one reading, from the peaks of its longest frame: coarser than a note's, and at once.
+//!
+//! At a frame's resolution a high alias would be named by chance, so only partials that folded once or twice are tried.
+
+use crate::convert::{floor_index, number};
+use crate::peaks::Peak;
+use crate::reading::{Stray, StrayKind};
+use crate::stiff::partial_hz;
+
+/// Most strays of a reading.
+pub(crate) const STRAYS_MAX: usize = 32;
+/// Distance from a partial within which a peak is that partial's, in bins.
+const OWN_BINS: f64 = 3.0;
+/// The same in cents: a partial of several strings or voices is wide.
+const OWN_CENTS: f64 = 20.0;
+/// Widest match of an alias and of a mains multiple, in Hz.
+const MATCH_HZ: f64 = 1.0;
+/// Highest multiple of the mains frequency.
+const MAINS_MULTIPLES: f64 = 20.0;
+/// Highest frequency of a partial that is tried as an alias, in sample rates.
+const FOLDED_TO: f64 = 1.5;
+/// Amplitude, against the strongest peak, under which a peak may be a sidelobe.
+const FAINTEST: f64 = 3e-4;
+
+/// Lists the peaks that lie on no partial of a model `(f0, B)`, strongest first.
+pub(crate) fn list(
+    peaks: &[Peak],
+    model: (f64, f64),
+    bin_hz: f64,
+    sample_rate_hz: f64,
+    out: &mut Vec<Stray>,
+) {
+    out.clear();
+    let strongest = peaks.iter().map(|p| p.amplitude).fold(0.0, f64::max);
+    for peak in peaks.iter().filter(|p| p.amplitude > FAINTEST * strongest) {
+        if is_partial(peak.hz, model, bin_hz) {
+            continue;
+        }
+        let level_dbfs = 20.0 * peak.amplitude.log10();
+        let at = out.partition_point(|s| s.level_dbfs >= level_dbfs);
+        if at < STRAYS_MAX {
+            out.truncate(STRAYS_MAX - 1);
+            let kind = explain(peak.hz, model, sample_rate_hz);
+            out.insert(at, Stray { frequency_hz: peak.hz, level_dbfs, kind });
+        }
+    }
+}
+
+fn is_partial(hz: f64, (f0, b): (f64, f64), bin_hz: f64) -> bool {
+    let own = OWN_BINS * bin_hz + hz * OWN_CENTS / crate::stiff::CENTS_PER_NEPER;
+    let guess = (hz / f0).round();
+    // Stretch puts a partial of lower number where the harmonic series has this one.
+    let low = (hz / f0 / (1.0 + b * guess * guess).max(0.1).sqrt()).floor() - 1.0;
+    let mut n = low.max(1.0);
+    while n <= guess + 1.0 {
+        if (partial_hz(f0, b, n) - hz).abs() < own {
+            return true;
+        }
+        n += 1.0;
+    }
+    false
+}
+
+fn explain(hz: f64, (f0, b): (f64, f64), sample_rate_hz: f64) -> StrayKind {
+    for base_hz in [50.0, 60.0] {
+        let multiple = (hz / base_hz).round().max(1.0);
+        if multiple <= MAINS_MULTIPLES && (hz - multiple * base_hz).abs() < MATCH_HZ {
+            return StrayKind::Mains { base_hz, multiple: number(floor_index(multiple)) };
+        }
+    }
+    let mut n = (0.5 * sample_rate_hz / f0 / (1.0 + b * 1e4).sqrt()).floor().max(1.0);
+    loop {
+        let partial = partial_hz(f0, b, n);
+        if partial > FOLDED_TO * sample_rate_hz {
+            return StrayKind::Unexplained;
+        }
+        let lies = super::aliases::folded_hz(partial, sample_rate_hz);
+        if partial > 0.5 * sample_rate_hz && (lies - hz).abs() < MATCH_HZ {
+            let folds = number(floor_index(2.0 * partial / sample_rate_hz));
+            return StrayKind::Alias { partial: number(floor_index(n)), folds };
+        }
+        n += 1.0;
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn peak(hz: f64, amplitude: f64) -> Peak {
+        Peak { hz, amplitude, weight: 0.0 }
+    }
+
+    #[test]
+    fn names_what_lies_between_the_partials() {
+        // 48 kHz, 1000.3 Hz: partial 25 = 25 007.5 Hz folds to 22 992.5 Hz.
+        let peaks =
+            [peak(100.1, 0.01), peak(1000.3, 0.5), peak(1500.0, 0.02), peak(22_992.5, 0.03)];
+        let mut out = Vec::new();
+        list(&peaks, (1000.3, 0.0), 5.9, 48_000.0, &mut out);
+        let kinds: Vec<_> = out.iter().map(|s| s.kind).collect();
+        assert_eq!(
+            kinds,
+            [
+                StrayKind::Alias { partial: 25, folds: 1 },
+                StrayKind::Unexplained,
+                StrayKind::Mains { base_hz: 50.0, multiple: 2 },
+            ],
+            "strongest first: alias, unexplained, mains"
+        );
+    }
+
+    #[test]
+    fn a_stretched_partial_is_no_stray() {
+        let b = 2e-3;
+        let peaks = [peak(200.0, 0.5), peak(partial_hz(200.0, b, 30.0), 0.1)];
+        let mut out = Vec::new();
+        list(&peaks, (200.0, b), 5.9, 48_000.0, &mut out);
+        assert_eq!(out, [], "both are partials");
+    }
+}

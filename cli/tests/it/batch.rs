@@ -1,0 +1,67 @@
+//! Many files in one run.
+
+use crate::sounds::{Coding, tone_at, wav};
+use crate::{folder_with, measure};
+use std::process::{Command, Stdio};
+
+#[test]
+fn one_bad_file_does_not_stop_the_others_and_order_is_kept() {
+    // The first takes the longest, so that the others are ready before it.
+    let folder = folder_with([
+        ("long.wav", wav(&[tone_at(220.0, 4.0)], Coding::S16)),
+        ("bad.wav", b"no sound".to_vec()),
+        ("b.wav", wav(&[tone_at(330.0, 0.5)], Coding::S16)),
+        ("c.wav", wav(&[tone_at(440.0, 0.5)], Coding::S16)),
+    ]);
+    let run = measure(folder.path(), &["--json", "long.wav", "bad.wav", "b.wav", "c.wav"]);
+    assert_eq!(run.status, Some(2), "one file was bad");
+    assert_eq!(run.stderr, "plumbtone: bad.wav: is not a WAV, AIFF or FLAC file\n");
+    let files: Vec<_> = run.objects().iter().map(|object| object["file"].clone()).collect();
+    assert_eq!(files, ["long.wav", "b.wav", "c.wav"], "order of the objects");
+}
+
+#[test]
+fn more_files_than_run_ahead_all_come_out() {
+    let folder = folder_with([("a.wav", wav(&[tone_at(440.0, 0.3)], Coding::S16))]);
+    let arguments = [&["--json"][..], &vec!["a.wav"; 150]].concat();
+    let run = measure(folder.path(), &arguments);
+    assert_eq!(run.status, Some(0), "{}", run.stderr);
+    let mut lines: Vec<&str> = run.stdout.lines().collect();
+    assert_eq!(lines.len(), 150, "one object per mention of the file");
+    lines.dedup();
+    assert_eq!(lines.len(), 1, "equal files give equal figures");
+}
+
+#[test]
+fn a_reader_that_stops_early_is_no_failure() {
+    let folder = folder_with([("a.wav", wav(&[tone_at(440.0, 3.0)], Coding::S16))]);
+    let mut child = Command::new(env!("CARGO_BIN_EXE_plumbtone"))
+        .args(["measure", "--json"])
+        .args(vec!["a.wav"; 60])
+        .current_dir(folder.path())
+        .stdout(Stdio::piped())
+        .stderr(Stdio::piped())
+        .spawn()
+        .unwrap();
+    drop(child.stdout.take());
+    let output = child.wait_with_output().unwrap();
+    assert_eq!(output.status.code(), Some(0), "{}", String::from_utf8_lossy(&output.stderr));
+}
+
+#[test]
+fn bad_usage_is_refused_before_anything_is_measured() {
+    let folder = folder_with([("a.wav", wav(&[tone_at(440.0, 0.3)], Coding::S16))]);
+    for arguments in [
+        &["a.wav", "--concert-pitch", "200"][..],
+        &["a.wav", "--temperament", "wobbly"],
+        &["a.wav", "--lowest", "10"],
+        &["a.wav", "--lowest", "500", "--highest", "400"],
+        &["a.wav", "--partials", "0"],
+        &["a.wav", "--picture", "a.gif"],
+        &[],
+    ] {
+        let run = measure(folder.path(), arguments);
+        assert_eq!((run.status, run.stdout.as_str()), (Some(2), ""), "{arguments:?}");
+        assert!(!run.stderr.is_empty(), "{arguments:?}: a reason");
+    }
+}
