@@ -1,6 +1,7 @@
 //! Where an instance's engine delivers: the readout for the editor, and the log if one is wanted.
 
 use std::collections::VecDeque;
+use std::sync::Arc;
 
 use nice_plug_egui::RepaintNotifier;
 use plumbtone_analysis::tuning::NoteName;
@@ -9,8 +10,9 @@ use triple_buffer::Input;
 
 use crate::marks::Cause;
 use crate::readings_log::{Line, ReadingsLog};
-use crate::readout::{Condition, Gaps, Readout, copy_reading};
+use crate::readout::{Condition, Gaps, Live, Readout, copy_reading};
 use crate::session::{Anchor, SessionPosition, Transport};
+use crate::status::Status;
 
 /// The worker's end of an instance's results.
 #[derive(Debug)]
@@ -26,10 +28,12 @@ pub(crate) struct Delivery {
     output: Input<Readout>,
     repaint: RepaintNotifier,
     log: Option<ReadingsLog>,
+    status: Arc<Status>,
 }
 
 impl Delivery {
     pub(crate) fn new(
+        status: Arc<Status>,
         output: Input<Readout>,
         repaint: RepaintNotifier,
         log: Option<ReadingsLog>,
@@ -43,6 +47,7 @@ impl Delivery {
             output,
             repaint,
             log,
+            status,
         }
     }
 
@@ -50,6 +55,7 @@ impl Delivery {
     pub(crate) fn start(&mut self) {
         self.readout.stream += 1;
         self.readout.measured = false;
+        self.readout.live = None;
         self.readout.gaps = Gaps::default();
         self.readout.played = None;
         self.held.clear();
@@ -116,6 +122,18 @@ impl Delivery {
 }
 
 impl Sink for Delivery {
+    fn wants_live(&self) -> bool {
+        self.status.shown()
+    }
+
+    fn live(&mut self, reading: &Reading) {
+        if !self.frozen {
+            let Reading { centre, pitch, level_dbfs, .. } = *reading;
+            self.readout.live = Some(Live { centre, pitch, level_dbfs });
+            self.changed = true;
+        }
+    }
+
     fn reading(&mut self, reading: &Reading) {
         let session = self.session(reading.centre);
         if let Some(log) = &mut self.log {

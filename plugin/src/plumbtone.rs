@@ -40,7 +40,7 @@ impl Default for Plumbtone {
         let repaint = RepaintNotifier::new();
         let log = ReadingsLog::open();
         let status = Arc::new(Status::new(log.is_some()));
-        let delivery = Delivery::new(input, repaint.clone(), log);
+        let delivery = Delivery::new(Arc::clone(&status), input, repaint.clone(), log);
         Self {
             parameters: Arc::default(),
             status,

@@ -225,7 +225,7 @@ mod tests {
 
     fn place(build: Build) -> (Place, Tap, Output<Readout>) {
         let (input, output) = triple_buffer(&Readout::default());
-        let delivery = Delivery::new(input, RepaintNotifier::new(), None);
+        let delivery = Delivery::new(Arc::default(), input, RepaintNotifier::new(), None);
         let place = Place::take(Analysis::new(build, delivery));
         let status = Arc::new(Status::default());
         status.watch(true);

@@ -1,7 +1,7 @@
 //! What the worker publishes for the editor: plain data in engineering units, complete in itself.
 
 use plumbtone_analysis::tuning::{NoteName, Tuning};
-use plumbtone_analysis::{Reading, SettingsError};
+use plumbtone_analysis::{Pitch, Reading, SettingsError};
 
 use crate::session::SessionPosition;
 
@@ -18,7 +18,9 @@ pub struct Readout {
     pub measured: bool,
     /// The newest reading.
     pub reading: Reading,
-    /// Where in the session its centre lies.
+    /// The newest provisional reading, quicker and less sure; only while an editor is open.
+    pub live: Option<Live>,
+    /// Where in the session the centre of [`reading`](Self::reading) lies.
     pub session: SessionPosition,
     /// What notes are called.
     pub tuning: Tuning,
@@ -26,6 +28,17 @@ pub struct Readout {
     pub played: Option<NoteName>,
     /// What did not reach the engine in this stream.
     pub gaps: Gaps,
+}
+
+/// What a provisional reading says.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Live {
+    /// Sample position of its centre in the stream.
+    pub centre: u64,
+    /// The pitch, when a single one is claimed.
+    pub pitch: Option<Pitch>,
+    /// Level in dBFS.
+    pub level_dbfs: f64,
 }
 
 /// How an analysis stands.
@@ -68,6 +81,7 @@ impl Readout {
             stream,
             measured,
             reading,
+            live,
             session,
             tuning,
             played,
@@ -78,6 +92,7 @@ impl Readout {
         self.sample_rate_hz = *sample_rate_hz;
         self.stream = *stream;
         self.measured = *measured;
+        self.live = *live;
         self.session = *session;
         self.tuning = *tuning;
         self.played = *played;

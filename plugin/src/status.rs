@@ -22,9 +22,14 @@ impl Status {
         Self { logged, ..Self::default() }
     }
 
+    /// Whether an editor is open.
+    pub(crate) fn shown(&self) -> bool {
+        self.watched.load(Ordering::Relaxed)
+    }
+
     /// Whether anybody gets to see the readings.
     pub(crate) fn watched(&self) -> bool {
-        self.logged || self.watched.load(Ordering::Relaxed)
+        self.logged || self.shown()
     }
 
     pub(crate) fn watch(&self, watched: bool) {

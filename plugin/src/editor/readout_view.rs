@@ -4,7 +4,7 @@ use egui::{RichText, ScrollArea, Ui};
 use plumbtone_analysis::{Partial, Reading, Stray, StrayKind};
 
 use crate::readings_log::state_name;
-use crate::readout::{Condition, Readout};
+use crate::readout::{Condition, Live, Readout};
 
 /// Confidence below which a pitch is not shown as one.
 const CONFIDENCE_SHOWN: f64 = 0.5;
@@ -29,6 +29,9 @@ pub(crate) fn show(ui: &mut Ui, shown: &Shown<'_>) {
     for finding in shown.unsound {
         ui.label(format!("Loaded session: {finding}."));
     }
+    if let Some(live) = readout.live {
+        provisional(ui, shown, &live);
+    }
     if readout.measured {
         headline(ui, readout);
         place(ui, shown);
@@ -52,6 +55,18 @@ fn condition(condition: &Condition) -> String {
                 .to_owned()
         }
     }
+}
+
+/// What the provisional reading says, in one line.
+fn provisional(ui: &mut Ui, shown: &Shown<'_>, live: &Live) {
+    let Readout { tuning, sample_rate_hz, .. } = shown.readout;
+    let age_s = shown.position.saturating_sub(live.centre) as f64 / sample_rate_hz;
+    let pitch = live.pitch.filter(|pitch| pitch.confidence >= CONFIDENCE_SHOWN);
+    let what = pitch.and_then(|pitch| tuning.nearest(pitch.f0_hz)).map_or_else(
+        || format!("no single pitch, {}", level(live.level_dbfs)),
+        |at| format!("{} {:+.1} ct", at.note, at.cents),
+    );
+    ui.label(format!("Provisional, {:.0} ms old: {what}", 1000.0 * age_s));
 }
 
 /// The pitch, or why there is none.
