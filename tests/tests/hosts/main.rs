@@ -1,4 +1,6 @@
 //! The plugin in hosts: as CLAP linked into this program and driven as a host does, as VST3 in hosts of others.
+#![expect(clippy::expect_used, reason = "the helpers of these tests fail them as they should")]
+#![expect(clippy::print_stdout, reason = "what is skipped has to be said")]
 
 mod allocations;
 mod automation;
