@@ -2,10 +2,12 @@
 
 pub mod bounds;
 pub mod cast;
+pub mod clap_host;
 pub mod estimators;
 pub mod figures;
 pub mod lowest_peak;
 pub mod periodicity;
+pub mod readings;
 pub mod recorded;
 pub mod soundfont;
 pub mod take;

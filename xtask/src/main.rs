@@ -1,4 +1,4 @@
-//! The project's own commands, each with all the set-up it needs: `cargo xtask test`, `bench`, `demo`, `tidy`.
+//! The project's own commands, each with all the set-up it needs: `cargo xtask test`, `bundle`, `bench`, `demo`, `tidy`.
 #![forbid(unsafe_code)]
 #![expect(
     clippy::print_stdout,
@@ -7,11 +7,15 @@
 )]
 
 mod bench;
+mod bundle;
 mod command;
+mod count;
 mod demo;
+mod demo_host;
 mod sound_bank;
 mod test;
 mod tidy;
+mod vst3_hosts;
 
 use std::process::ExitCode;
 
@@ -20,8 +24,10 @@ use anyhow::{Result, bail};
 const USAGE: &str = "\
 cargo xtask test [ARGUMENT...]   fetch what the tests need, then run them all; arguments go to the test runner
 cargo xtask fetch                only fetch the sound bank of the recorded instruments
+cargo xtask bundle [ARGUMENT...] build the VST3 and CLAP bundles under target/bundled; arguments go to cargo build
 cargo xtask bench                print how fast the engine is, as ratios measured in one run
-cargo xtask demo                 synthesise the demo sound, measure it, say where the pictures are
+cargo xtask count                count the instructions of the plugin's own process(), beside a bare copy (needs valgrind)
+cargo xtask demo                 synthesise the demo sound, measure it, play it through the plugin, say where the pictures are
 cargo xtask tidy                 check the rules of the source tree that no lint knows";
 
 fn main() -> ExitCode {
@@ -41,7 +47,9 @@ fn run() -> Result<()> {
         "test" => test::run(rest),
         "fetch" => fetch(),
         "bench" => bench::run(),
-        "demo" => demo::run(),
+        "bundle" => bundle::run(rest),
+        "count" => count::run(),
+        "demo" => demo::run().and_then(|()| demo_host::run()),
         "tidy" => tidy::run(),
         _ => bail!("no command {command}\n{USAGE}"),
     }

@@ -1,0 +1,28 @@
+//! Plumbtone as a VST3 and CLAP plugin: audio passes through bit for bit while the engine measures it beside.
+//!
+//! The audio thread owns the [`tap`], which copies samples and marks into wait-free rings and does nothing else. A small
+//! [`pool`] of threads, shared by all instances of the process, takes them out again and runs one [`analysis`] per
+//! instance. What it finds goes to the [`editor`] as a [`readout`] of plain data through a triple buffer; single values
+//! go both ways through the atomics of [`status`].
+#![forbid(unsafe_code)]
+
+mod analysis;
+mod controls;
+mod convert;
+mod delivery;
+mod editor;
+mod marks;
+pub mod parameters;
+mod plumbtone;
+mod pool;
+pub mod readings_log;
+pub mod readout;
+pub mod session;
+mod state;
+mod status;
+mod tap;
+
+pub use plumbtone::Plumbtone;
+
+nice_plug::nice_export_clap!(Plumbtone);
+nice_plug::nice_export_vst3!(Plumbtone);
