@@ -231,8 +231,15 @@ impl Analyzer {
     /// Analyses the next instant, and refines the partials of what looks like its pitch so far.
     fn analyse(&mut self) {
         let centre = self.centre(self.analysed);
-        self.evidence.run(&self.history, centre, self.tracker.next());
-        let level_dbfs = self.evidence.level_dbfs();
+        let quiet = self.history.loud_until() + self.evidence.reach() as u64 <= centre;
+        let level_dbfs = if quiet {
+            // Nothing in the longest frame is above the silence threshold, so nothing is transformed.
+            self.evidence.restart();
+            f64::NEG_INFINITY
+        } else {
+            self.evidence.run(&self.history, centre, self.tracker.next());
+            self.evidence.level_dbfs()
+        };
         if !(level_dbfs > SILENCE_DBFS) {
             self.tracker.next().clear();
         }
@@ -347,7 +354,14 @@ impl Analyzer {
 
     /// Delivers a provisional reading of the newest samples.
     fn look_at_newest(&mut self, sink: &mut impl Sink) {
-        let level_dbfs = self.evidence.newest(&self.history, &mut self.live);
+        self.live.clear();
+        let heard = 2 * self.evidence.reach() as u64;
+        let quiet = self.history.loud_until() + heard <= self.history.end();
+        let level_dbfs = if quiet {
+            f64::NEG_INFINITY
+        } else {
+            self.evidence.newest(&self.history, &mut self.live)
+        };
         let reading = &mut self.reading;
         reading.centre = self.history.end();
         reading.level_dbfs = level_dbfs;

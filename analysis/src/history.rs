@@ -8,12 +8,17 @@ pub(crate) struct History {
     start: u64,
     /// Position after the newest sample.
     end: u64,
+    /// Position after the last sample that is not quiet.
+    loud_until: u64,
 }
+
+/// Amplitude under which a sample is quiet: a frame of such samples lies under -92 dBFS.
+const QUIET: f32 = 1.7e-5;
 
 impl History {
     /// A ring that holds at least `capacity` samples.
     pub(crate) fn new(capacity: usize) -> Self {
-        Self { ring: vec![0.0; capacity.next_power_of_two()], start: 0, end: 0 }
+        Self { ring: vec![0.0; capacity.next_power_of_two()], start: 0, end: 0, loud_until: 0 }
     }
 
     /// Position after the newest sample.
@@ -26,6 +31,11 @@ impl History {
         self.start
     }
 
+    /// Position after the last sample that is not quiet, or the stream's start.
+    pub(crate) fn loud_until(&self) -> u64 {
+        self.loud_until
+    }
+
     /// Oldest position still held.
     pub(crate) fn oldest(&self) -> u64 {
         self.start.max(self.end.saturating_sub(self.ring.len() as u64))
@@ -35,6 +45,7 @@ impl History {
     pub(crate) fn restart(&mut self, position: u64) {
         self.start = position;
         self.end = position;
+        self.loud_until = position;
     }
 
     /// Appends samples.
@@ -44,6 +55,9 @@ impl History {
         let first = samples.len().min(self.ring.len() - at);
         self.ring[at..at + first].copy_from_slice(&samples[..first]);
         self.ring[..samples.len() - first].copy_from_slice(&samples[first..]);
+        if let Some(last) = samples.iter().rposition(|x| x.abs() > QUIET) {
+            self.loud_until = self.end + last as u64 + 1;
+        }
         self.end += samples.len() as u64;
     }
 

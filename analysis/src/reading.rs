@@ -100,7 +100,7 @@ pub struct Reading {
     pub state: State,
     /// The pitch, when a single one is claimed.
     pub pitch: Option<Pitch>,
-    /// Level (root mean square) around the centre, in dBFS; negative infinity for digital silence.
+    /// Level (root mean square) around the centre, in dBFS; negative infinity where no sample near it reaches -95 dBFS.
     pub level_dbfs: f64,
     /// Inharmonicity, when the partials allow an estimate.
     pub stretch: Option<Stretch>,
