@@ -2,9 +2,9 @@
 //!
 //! The samples are turned once into one slow complex signal per partial ([`baseband`]): brought down by the partial's
 //! expected phase and summed over blocks of 5 ms, which loses nothing and keeps white noise white. In each, a damped
-//! exponential is fitted ([`damped`]) after the other partials' share has been taken away, round after round. When the
-//! note's pitch moves, the expected phase moves along. [`spectrum`] looks at the note through one long transform for
-//! what belongs to no partial.
+//! exponential is looked for ([`coarse`]) and fitted ([`damped`]) in what the other partials leave ([`shares`]), round after
+//! round until nothing moves ([`rows`]). Where the note's pitch moves, the expected phase moves along ([`path`]). [`lines`]
+//! looks at the note through one long transform for what belongs to no partial.
 
 pub(crate) mod assemble;
 mod baseband;

@@ -26,6 +26,7 @@ pub(crate) struct Baseband {
     samples: Vec<f32>,
     /// Sums and differences of the samples of one block about its centre.
     pairs: Vec<(f32, f32)>,
+    lanes: Vec<Lanes>,
 }
 
 impl Baseband {
@@ -39,6 +40,7 @@ impl Baseband {
             data: vec![Complex::default(); rows_max.next_multiple_of(LANES) * blocks_max],
             samples: vec![0.0; block],
             pairs: Vec::with_capacity(block.div_ceil(2)),
+            lanes: Vec::with_capacity(rows_max.div_ceil(LANES)),
         }
     }
 
@@ -62,22 +64,23 @@ impl Baseband {
     pub(crate) fn run(&mut self, sound: Span<'_>, steps: &[f64], bend: &[f64]) {
         self.blocks = (sound.length / self.block).min(self.blocks_max);
         let rows = steps.len().min(self.rows_max);
-        for first in (0..rows).step_by(LANES) {
+        self.lanes.clear();
+        for steps in steps[..rows].chunks(LANES) {
             let mut lanes = Lanes::default();
-            for (lane, step) in steps[first..rows].iter().take(LANES).enumerate() {
-                lanes.steps[lane] = *step;
-            }
+            lanes.steps[..steps.len()].copy_from_slice(steps);
             lanes.turn_by(1.0, self.block);
-            for m in 0..self.blocks {
-                sound.read(m * self.block, &mut self.samples);
+            self.lanes.push(lanes);
+        }
+        for m in 0..self.blocks {
+            sound.read(m * self.block, &mut self.samples);
+            pair(&self.samples, &mut self.pairs);
+            for (group, lanes) in self.lanes.iter_mut().enumerate() {
                 if let Some(factor) = bend.get(m) {
                     lanes.turn_by(*factor, self.block);
                 }
-                self.pairs.clear();
-                self.pairs.extend(pairs(&self.samples));
                 let sums = lanes.block(&self.pairs, self.block);
                 for (lane, sum) in sums.into_iter().enumerate() {
-                    self.data[(first + lane) * self.blocks_max + m] = sum;
+                    self.data[(group * LANES + lane) * self.blocks_max + m] = sum;
                 }
             }
         }
@@ -86,16 +89,19 @@ impl Baseband {
 
 /// Sums and differences of samples at the same distance from the centre, from the inside out. A middle sample makes its own
 /// sum.
-fn pairs(block: &[f32]) -> impl Iterator<Item = (f32, f32)> {
+fn pair(block: &[f32], out: &mut Vec<(f32, f32)>) {
     let half = block.len() / 2;
     let (before, after) = (&block[..half], &block[block.len() - half..]);
-    let middle = (block.len() % 2 == 1).then(|| (block[half], 0.0));
+    out.clear();
+    if block.len() % 2 == 1 {
+        out.push((block[half], 0.0));
+    }
     let around = after.iter().zip(before.iter().rev());
-    middle.into_iter().chain(around.map(|(late, early)| (late + early, late - early)))
+    out.extend(around.map(|(late, early)| (late + early, late - early)));
 }
 
 /// Oscillators side by side.
-#[derive(Default)]
+#[derive(Debug, Clone, Copy, Default)]
 struct Lanes {
     /// Radians per sample, as asked for and with the current bend.
     steps: [f64; LANES],

@@ -18,7 +18,7 @@ const ORDERS: usize = 4096;
 const ORDERS_COMPARED: usize = 320;
 /// Widest match, in resolutions of the long transform.
 const MATCH: f64 = 0.5;
-/// A match is within this many of its deviations.
+/// What is within this many of its deviations says more of the fundamental.
 const DEVIATIONS: f64 = 4.0;
 /// Deviation of a line's frequency that no signal-to-noise ratio improves, in resolutions.
 const LINE_SD: f64 = 0.01;
@@ -196,11 +196,7 @@ impl Tracer<'_> {
             let found = candidates[first..]
                 .iter_mut()
                 .take_while(|c| c.line.hz <= lies + widest)
-                .filter(|c| {
-                    let sd = line_sd(&c.line, tone.resolution_hz).hypot(slack);
-                    let off = (c.line.hz - lies).abs();
-                    c.traced.1 != self.number && off < DEVIATIONS * sd && c.line.amplitude <= most
-                })
+                .filter(|c| c.traced.1 != self.number && c.line.amplitude <= most)
                 .max_by(|a, b| a.line.amplitude.total_cmp(&b.line.amplitude));
             let matched = found.is_some();
             if let Some(c) = found {
@@ -208,7 +204,11 @@ impl Tracer<'_> {
                 trace.explained += c.line.amplitude;
                 expected[n % 2] = expected[n % 2].max(c.line.amplitude * n as f64);
                 let off = turned.signum() * (c.line.hz - lies);
-                trace.model.learn(off / order, line_sd(&c.line, tone.resolution_hz) / order);
+                let sd = line_sd(&c.line, tone.resolution_hz);
+                // Farther off, a weaker line too close to be told apart has drawn it aside.
+                if off.abs() < DEVIATIONS * sd.hypot(slack) {
+                    trace.model.learn(off / order, sd / order);
+                }
             }
             if hz > nyquist {
                 for (test, _) in trace.tests.iter_mut().zip(TESTED).filter(|(_, t)| folded < *t) {
