@@ -247,12 +247,14 @@ impl Analyzer {
         let instant = &mut self.instants[self.analysed % KEPT];
         instant.centre = centre;
         instant.level_dbfs = level_dbfs;
+        instant.calm_dbfs = level_dbfs;
         instant.tones.clear();
         instant.model = (0.0, 0.0);
         instant.second = 0.0;
         instant.strays.clear();
         if let (Some(best), _) = self.tracker.decide(0) {
             instant.second = self.evidence.second_voice(&best);
+            instant.calm_dbfs = self.evidence.calm_level_dbfs(best.hz);
             self.evidence.strays((best.hz, best.b), &mut instant.strays);
             Self::refine(
                 &mut self.evidence,
@@ -346,7 +348,7 @@ impl Analyzer {
         let step = Step {
             centre: instant.centre,
             f0: reading.pitch.map(|p| p.f0_hz),
-            level_dbfs: instant.level_dbfs,
+            level_dbfs: instant.calm_dbfs,
         };
         self.notes.step(&self.history, step, instant.f0_sd_cents, &instant.tones, sink);
         self.delivered += 1;

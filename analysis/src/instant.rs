@@ -28,6 +28,8 @@ const LOWEST_PEAK_HZ: f64 = 15.0;
 const LAG_RATES_HZ: [f64; 2] = [22_000.0, 11_000.0];
 /// Partials of a second voice: less are the overtones of a bar, a bell or a skin.
 const VOICE_PARTIALS: usize = 3;
+/// Bins between partials from which the power of a frame does not follow the single period.
+const CALM_BINS: f64 = 3.2;
 /// Share of the peaks that the pitch explains, above which no second voice is searched.
 const ONE_VOICE: f64 = 0.8;
 
@@ -189,6 +191,12 @@ impl Evidence {
         let bin_hz = self.now.bin_hz(LONGEST);
         let peaks = &self.now.peaks[LONGEST];
         strays::peaks::list(peaks, model, bin_hz, self.now.sample_rate_hz, out);
+    }
+
+    /// Level in the shortest frame in which a fundamental does not ripple: what an onset is told by.
+    pub(crate) fn calm_level_dbfs(&self, f0: f64) -> f64 {
+        let calm = |i: &usize| f0 > CALM_BINS * self.now.bin_hz(*i);
+        level_dbfs(&self.now.frames[(1..LONGEST).find(calm).unwrap_or(LONGEST)])
     }
 
     /// Root mean square around the centre as a level in dBFS, the constant left out.

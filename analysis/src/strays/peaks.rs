@@ -11,8 +11,9 @@ use crate::stiff::partial_hz;
 pub(crate) const STRAYS_MAX: usize = 32;
 /// Distance from a partial within which a peak is that partial's, in bins.
 const OWN_BINS: f64 = 3.0;
-/// The same in cents: a partial of several strings or voices is wide.
+/// The same in cents, for a partial of several strings or voices is wide; and at most, as a share of the fundamental.
 const OWN_CENTS: f64 = 20.0;
+const OWN_OF_F0: f64 = 0.1;
 /// Widest match of an alias and of a mains multiple, in Hz.
 const MATCH_HZ: f64 = 1.0;
 /// Highest multiple of the mains frequency.
@@ -47,7 +48,8 @@ pub(crate) fn list(
 }
 
 fn is_partial(hz: f64, (f0, b): (f64, f64), bin_hz: f64) -> bool {
-    let own = OWN_BINS * bin_hz + hz * OWN_CENTS / crate::stiff::CENTS_PER_NEPER;
+    let wide = hz * OWN_CENTS / crate::stiff::CENTS_PER_NEPER;
+    let own = OWN_BINS * bin_hz + wide.min(OWN_OF_F0 * f0);
     let guess = (hz / f0).round();
     // Stretch puts a partial of lower number where the harmonic series has this one.
     let low = (hz / f0 / (1.0 + b * guess * guess).max(0.1).sqrt()).floor() - 1.0;
@@ -93,11 +95,11 @@ mod tests {
 
     #[test]
     fn names_what_lies_between_the_partials() {
-        // 48 kHz, 1000.3 Hz: partial 25 = 25 007.5 Hz folds to 22 992.5 Hz.
+        // 48 kHz, 1010 Hz: partial 25 = 25 250 Hz folds to 22 750 Hz, between partials 22 and 23.
         let peaks =
-            [peak(100.1, 0.01), peak(1000.3, 0.5), peak(1500.0, 0.02), peak(22_992.5, 0.03)];
+            [peak(100.1, 0.01), peak(1010.0, 0.5), peak(1500.0, 0.02), peak(22_750.0, 0.03)];
         let mut out = Vec::new();
-        list(&peaks, (1000.3, 0.0), 5.9, 48_000.0, &mut out);
+        list(&peaks, (1010.0, 0.0), 5.9, 48_000.0, &mut out);
         let kinds: Vec<_> = out.iter().map(|s| s.kind).collect();
         assert_eq!(
             kinds,
