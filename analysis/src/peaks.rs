@@ -25,9 +25,9 @@ const UPWARD_DB_PER_BARK: f64 = 10.0;
 const DOWNWARD_DB_PER_BARK: f64 = 25.0;
 /// Exponent that compresses amplitudes.
 const COMPRESSION: f64 = 0.85;
-/// Amplitude, against the strongest peak's, that no longer counts (40 dB down), and the same compressed.
-const FAINT: f64 = 0.01;
-const NOTHING: f64 = 0.02;
+/// Amplitude, against the strongest peak's, that no longer counts (35 dB down), and the same compressed.
+const FAINT: f64 = 0.0178;
+const NOTHING: f64 = 0.0326;
 
 /// Most peaks kept of one frame.
 pub(crate) const PEAKS_MAX: usize = 400;
