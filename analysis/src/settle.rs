@@ -200,7 +200,7 @@ fn uncurve(run: &Run, here: &Instant, hop_s: f64) -> (f64, f64) {
 fn confidence(chosen: &Candidate, advantage: f64, run: &Run) -> f64 {
     let fits = provisional_confidence(chosen);
     let clear = 0.5 + 0.5 * (advantage / CLEAR_COST).clamp(0.0, 1.0);
-    let holds = run.length > NEIGHBOURS && CENTS_PER_NEPER * run.net < SWEEP_CENTS;
+    let holds = run.length >= 2 * NEIGHBOURS && CENTS_PER_NEPER * run.net < SWEEP_CENTS;
     let confidence = fits * clear;
     if holds { confidence } else { confidence.min(RESTLESS) }
 }

@@ -168,23 +168,24 @@ fn solve(m: &Normal) -> Option<(f64, f64, (f64, f64))> {
 
 /// Size of the middle relative residual, as the deviation of a normal distribution.
 fn middle_residual(points: &[Point], f0: f64, b: f64) -> f64 {
-    let sizes = points.iter().map(|p| (p.hz / partial_hz(f0, b, p.n)).ln().abs());
-    1.4826 * median(sizes).unwrap_or(0.0)
+    let sizes = points.iter().map(|p| ((p.hz / partial_hz(f0, b, p.n)).ln().abs(), deviation(p)));
+    1.4826 * middle(sizes).unwrap_or(0.0)
 }
 
-/// A starting line: the median inharmonicity over neighbouring pairs (M. Hodgkinson et al., DAFx-09, uses all pairs), then
+/// A starting line: the middle inharmonicity over neighbouring pairs (M. Hodgkinson et al., DAFx-09, uses all pairs), then
 /// the fundamental: the middle one where there are enough, or the weighted mean.
 fn start(points: &[Point]) -> Option<(f64, f64)> {
     let slopes = points.windows(2).filter_map(|pair| {
         let [p, q] = pair else { return None };
         let r = (q.n * p.hz / (p.n * q.hz)).powi(2);
         let b = (1.0 - r) / (r * q.n * q.n - p.n * p.n);
-        b.is_finite().then_some(b)
+        b.is_finite().then_some((b, deviation(p).max(deviation(q))))
     });
-    let b = median(slopes)?.clamp(-0.25 / largest_square(points), 0.1);
+    let b = middle(slopes)?.clamp(-0.25 / largest_square(points), 0.1);
     let log_f0 = |p: &Point| (p.hz / partial_hz(1.0, b, p.n)).ln();
     if points.len() >= OUTVOTED {
-        return median(points.iter().map(log_f0)).map(|log| (log.exp(), b));
+        let logs = points.iter().map(|p| (log_f0(p), deviation(p)));
+        return middle(logs).map(|log| (log.exp(), b));
     }
     let (mut sum, mut weight) = (0.0, 0.0);
     for p in points {
@@ -195,17 +196,29 @@ fn start(points: &[Point]) -> Option<(f64, f64)> {
     Some(((sum / weight).exp(), b))
 }
 
-/// The middle of the first so many values.
-fn median(values: impl Iterator<Item = f64>) -> Option<f64> {
-    let mut sorted = [0.0f64; MEDIAN_OF];
+/// The middle of the first so many values, given with the deviations of their partials: half the weight lies on either side.
+/// Surer partials weigh more, though far less than by their variances, or one of them would be the middle by itself.
+fn middle(values: impl Iterator<Item = (f64, f64)>) -> Option<f64> {
+    let mut sorted = [(0.0f64, 0.0f64); MEDIAN_OF];
     let mut count = 0;
-    for (slot, value) in sorted.iter_mut().zip(values) {
-        *slot = value;
+    for (slot, (value, deviation)) in sorted.iter_mut().zip(values) {
+        *slot = (value, deviation.max(1e-12).sqrt().recip());
         count += 1;
     }
     let sorted = sorted.get_mut(..count).filter(|s| !s.is_empty())?;
-    let (_, middle, _) = sorted.select_nth_unstable_by(count / 2, f64::total_cmp);
-    Some(*middle)
+    sorted.sort_unstable_by(|a, b| a.0.total_cmp(&b.0));
+    let half = 0.5 * sorted.iter().map(|s| s.1).sum::<f64>();
+    let mut sum = 0.0;
+    let at = sorted.iter().position(|s| {
+        sum += s.1;
+        sum >= half
+    });
+    at.map(|at| sorted[at].0)
+}
+
+/// Deviation of a partial, relative.
+fn deviation(p: &Point) -> f64 {
+    p.sd_hz / p.hz
 }
 
 #[cfg(test)]
