@@ -64,6 +64,8 @@ pub(crate) struct View<'a> {
 #[derive(Debug)]
 pub(crate) struct Search {
     range_hz: (f64, f64),
+    /// Peaks of the frame at hand that count.
+    heard: Vec<Peak>,
     seeds: Vec<Peak>,
     guesses: Vec<f64>,
     sums: Vec<(f64, f64)>,
@@ -74,6 +76,7 @@ impl Search {
     pub(crate) fn new(range_hz: (f64, f64)) -> Self {
         Self {
             range_hz,
+            heard: Vec::with_capacity(PEAKS_MAX),
             seeds: Vec::with_capacity(SEEDS + 1),
             sums: Vec::with_capacity(PEAKS_MAX + 1),
             guesses: Vec::with_capacity(4 * (SEEDS * SEED_NUMBER + lag::MAXIMA)),
@@ -88,8 +91,10 @@ impl Search {
             if band.0 >= band.1 {
                 continue;
             }
-            self.collect(view, frame, band);
-            let peaks = Weighed::new(view.peaks[frame], &mut self.sums);
+            self.heard.clear();
+            self.heard.extend(view.peaks[frame].iter().filter(|p| p.weight > 0.0));
+            self.collect(view, band);
+            let peaks = Weighed::new(&self.heard, &mut self.sums);
             let bin_hz = 1.0 / view.frame_s[frame];
             for &hz in &self.guesses {
                 if view.periodicity.is_some_and(|p| p.at(hz) < APERIODIC) {
@@ -121,9 +126,9 @@ impl Search {
     }
 
     /// Gathers the guesses of a band: submultiples of the strongest peaks, and the maxima in the lag domain.
-    fn collect(&mut self, view: &View<'_>, frame: usize, band: (f64, f64)) {
+    fn collect(&mut self, view: &View<'_>, band: (f64, f64)) {
         self.seeds.clear();
-        for peak in view.peaks[frame].iter().filter(|p| p.weight > 0.0) {
+        for peak in &self.heard {
             let at = self.seeds.partition_point(|s| s.amplitude > peak.amplitude);
             if at < SEEDS {
                 self.seeds.truncate(SEEDS - 1);

@@ -2,7 +2,7 @@
 
 use realfft::RealFftPlanner;
 
-use crate::convert::{floor_index, nearest_index};
+use crate::convert::{floor_index, nearest, nearest_index};
 use crate::fundamental::lag::{Autocorrelation, Periodicity};
 use crate::fundamental::{Candidate, Search, View};
 use crate::history::History;
@@ -256,7 +256,7 @@ impl Evidence {
 
 /// Whether a peak lies on the comb of a candidate.
 fn on_comb(peak: &Peak, candidate: &Candidate) -> bool {
-    let n = (peak.hz / candidate.hz).round().max(1.0);
+    let n = nearest(peak.hz / candidate.hz).max(1.0);
     let expected = crate::stiff::partial_hz(candidate.hz, candidate.b, n);
     (peak.hz - expected).abs() < (0.02 * expected).min(0.14 * candidate.hz)
 }

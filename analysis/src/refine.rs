@@ -9,7 +9,7 @@ use realfft::num_complex::Complex;
 use crate::convert::{nearest_index, number};
 use crate::peaks::NoiseFloor;
 use crate::reading::Partial;
-use crate::spectrum::{Frame, kernel};
+use crate::spectrum::{Frame, kernel, sin_pi};
 use crate::stiff::{CENTS_PER_NEPER, DB_PER_NEPER, Point, partial_hz};
 
 /// Rounds of relaxation.
@@ -54,7 +54,7 @@ impl Tone {
             frequency_hz: self.hz,
             frequency_sd_hz: self.sd_hz,
             cents_from_harmonic: CENTS_PER_NEPER * (self.hz / (self.n as f64 * f0)).ln(),
-            cents_sd: cents_sd.hypot(f0_sd_cents),
+            cents_sd: (cents_sd * cents_sd + f0_sd_cents * f0_sd_cents).sqrt(),
             level_dbfs: 10.0 * self.amplitude.norm_sqr().log10(),
             level_sd_db: DB_PER_NEPER * (0.5 / self.snr).sqrt(),
             phase_rad: self.amplitude.arg(),
@@ -209,7 +209,7 @@ impl Line {
 
     /// Least-squares amplitude of the line in its three bins.
     fn settle(&mut self, y: [Complex<f64>; 3]) {
-        self.sine = (core::f64::consts::PI * self.nu).sin() / core::f64::consts::PI;
+        self.sine = sin_pi(self.nu) / core::f64::consts::PI;
         let first = self.bin as f64 - 1.0;
         let (mut sum, mut norm) = (Complex::default(), 0.0);
         for (j, y) in y.into_iter().enumerate() {

@@ -62,6 +62,12 @@ pub(crate) fn partial_hz(f0: f64, b: f64, n: f64) -> f64 {
     n * f0 * (1.0 + b * n * n).max(1e-6).sqrt()
 }
 
+/// The (fractional) partial number at a frequency: the inverse of [`partial_hz`].
+pub(crate) fn partial_number(f0: f64, b: f64, hz: f64) -> f64 {
+    let harmonic = (hz / f0) * (hz / f0);
+    (2.0 * harmonic / (1.0 + (1.0 + 4.0 * b * harmonic).max(0.0).sqrt())).sqrt()
+}
+
 /// Fits the model. `None` without a usable partial; with a single one, `B` is 0 with an infinite deviation.
 pub(crate) fn fit(points: &[Point]) -> Option<StiffFit> {
     let first = points
@@ -126,7 +132,7 @@ fn largest_square(points: &[Point]) -> f64 {
 }
 
 /// Logarithm; for ratios close to 1, where nearly all calls are, by the series to the last digit.
-fn log_ratio(ratio: f64) -> f64 {
+pub(crate) fn log_ratio(ratio: f64) -> f64 {
     let x = ratio - 1.0;
     if x.abs() > 5e-4 {
         return ratio.ln();
@@ -168,7 +174,8 @@ fn solve(m: &Normal) -> Option<(f64, f64, (f64, f64))> {
 
 /// Size of the middle relative residual, as the deviation of a normal distribution.
 fn middle_residual(points: &[Point], f0: f64, b: f64) -> f64 {
-    let sizes = points.iter().map(|p| ((p.hz / partial_hz(f0, b, p.n)).ln().abs(), deviation(p)));
+    let sizes =
+        points.iter().map(|p| (log_ratio(p.hz / partial_hz(f0, b, p.n)).abs(), deviation(p)));
     1.4826 * middle(sizes).unwrap_or(0.0)
 }
 

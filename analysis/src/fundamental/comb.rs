@@ -23,7 +23,7 @@ const B_MAX: f64 = 0.02;
 /// Exponent of the share of teeth found.
 const PRESENCE: f64 = 0.7;
 
-/// Peaks sorted by frequency, with their weights added up from the lowest on.
+/// Peaks that count, sorted by frequency, with their weights added up from the lowest on.
 #[derive(Debug)]
 pub(crate) struct Weighed<'a> {
     peaks: &'a [Peak],
@@ -162,7 +162,6 @@ fn strongest_within(peaks: &[Peak], next: &mut usize, expected: f64, reach: f64)
     peaks[*next..]
         .iter()
         .take_while(|p| p.hz <= expected + reach)
-        .filter(|p| p.weight > 0.0)
         .copied()
         .max_by(|a, b| a.amplitude.total_cmp(&b.amplitude))
 }

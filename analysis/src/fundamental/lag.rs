@@ -95,7 +95,7 @@ impl Autocorrelation {
             return 0.0;
         }
         let r = &self.normalised;
-        let best = (a..=b).max_by(|&i, &j| r[i].total_cmp(&r[j])).unwrap_or(a);
+        let best = (a..=b).fold(a, |best, k| if r[k] >= r[best] { k } else { best });
         if best == 0 || best + 1 == r.len() {
             return 0.0;
         }
