@@ -170,7 +170,7 @@ pub(crate) fn largest(power: &[f32]) -> f32 {
 
 /// The peak around the local maximum `k`.
 pub(crate) fn interpolate(power: &[f32], k: usize, bin_hz: f64) -> Peak {
-    let [a, b, c] = [power[k - 1], power[k], power[k + 1]].map(|x| f64::from(x).sqrt());
+    let [a, b, c] = [power[k - 1], power[k], power[k + 1]].map(|x| f64::from(x.sqrt()));
     let delta = (2.0 * (c - a) / (a + 2.0 * b + c)).clamp(-0.5, 0.5);
     Peak { hz: (k as f64 + delta) * bin_hz, amplitude: b / kernel(delta), weight: 0.0 }
 }

@@ -119,7 +119,8 @@ pub(crate) fn sin_pi(x: f64) -> f64 {
         -1.0 / 1_307_674_368_000.0,
         1.0 / 355_687_428_096_000.0,
     ];
-    let sine = y + y * z * SERIES.iter().rev().fold(0.0, |sum, c| sum * z + c);
+    let (pairs, _) = SERIES.as_chunks::<2>();
+    let sine = y + y * z * pairs.iter().rev().fold(0.0, |sum, [a, b]| sum * (z * z) + (a + b * z));
     let half = 0.5 * whole;
     if (half - nearest(half)).abs() > 0.25 { -sine } else { sine }
 }

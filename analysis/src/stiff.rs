@@ -10,6 +10,8 @@ pub(crate) const CENTS_PER_NEPER: f64 = 1_731.234_049_066_756_1;
 pub(crate) const DB_PER_NEPER: f64 = 8.685_889_638_065_037;
 /// Rounds of reweighting.
 const ROUNDS: usize = 6;
+/// Squared step in deviations, and change of the scatter, below which nothing more is gained.
+const SETTLED: f64 = 1e-4;
 /// Residual, in deviations, beyond which a partial counts less (P. J. Huber's function).
 const HUBER: f64 = 2.5;
 /// Residual, in deviations, beyond which a partial does not count at all.
@@ -111,10 +113,15 @@ pub(crate) fn fit(points: &[Point]) -> Option<StiffFit> {
         let free = weight - if lone { 1.0 } else { 2.0 };
         // The residuals of this linearisation after the step.
         let left = (chi - du * m.u - db * m.b).max(0.0);
+        let before = scatter;
         if round >= 1 && free > 0.5 {
             // Moment estimate of a common variance (R. DerSimonian & N. Laird, 1986).
             let excess = (left - free) / linear * weight / free.max(1.0);
             scatter = (scatter * scatter + excess).max(0.0).sqrt();
+        }
+        let still = du * du < SETTLED * cov.0 && db * db < SETTLED * cov.1;
+        if round >= 3 && still && (scatter - before).abs() <= SETTLED * scatter {
+            break;
         }
     }
     Some(StiffFit {

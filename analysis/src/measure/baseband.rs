@@ -9,7 +9,7 @@ use core::f64::consts::TAU;
 use pulp::{Arch, NullaryFnOnce};
 use realfft::num_complex::Complex;
 
-use crate::convert::single;
+use crate::convert::{nearest, single};
 use crate::history::Span;
 
 /// Oscillators in one vector.
@@ -179,7 +179,8 @@ impl Lanes {
         core::array::from_fn(|i| {
             let sum = Complex::new(f64::from(self.sum_re[i]), f64::from(self.sum_im[i]));
             let sum = sum * self.turned[i] * self.scale[i];
-            self.phases[i] = (self.phases[i] + self.bent[i] * length) % TAU;
+            let phase = self.phases[i] + self.bent[i] * length;
+            self.phases[i] = phase - TAU * nearest(phase / TAU);
             Complex::new(single(sum.re), single(sum.im))
         })
     }
