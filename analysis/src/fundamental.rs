@@ -10,6 +10,7 @@ pub(crate) mod lag;
 use crate::peaks::{PEAKS_MAX, Peak};
 use comb::{Comb, Weighed};
 use lag::Periodicity;
+use pulp::{Arch, NullaryFnOnce};
 
 /// Periods that the frame which judges a candidate should hold; the longest frame takes what is left.
 const PERIODS: f64 = 7.0;
@@ -17,6 +18,8 @@ const PERIODS: f64 = 7.0;
 const SEEDS: usize = 7;
 /// Highest number that a seed peak is tried as.
 const SEED_NUMBER: usize = 9;
+/// Most guesses of one frame.
+const GUESSES_MAX: usize = SEEDS * SEED_NUMBER + lag::MAXIMA;
 /// Candidates nearer than this ratio are one.
 const SAME: f64 = 1.012;
 /// Cost of an octave lower, and where the octaves are counted from.
@@ -69,6 +72,30 @@ pub(crate) struct Search {
     seeds: Vec<Peak>,
     guesses: Vec<f64>,
     sums: Vec<(f64, f64)>,
+    fits: Vec<Comb>,
+    arch: Arch,
+}
+
+/// Fits the combs of all guesses.
+struct FitAll<'a> {
+    peaks: &'a Weighed<'a>,
+    guesses: &'a [f64],
+    bin_hz: f64,
+    fits: &'a mut Vec<Comb>,
+}
+
+impl NullaryFnOnce for FitAll<'_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn call(self) {
+        let Self { peaks, guesses, bin_hz, fits } = self;
+        for &hz in guesses {
+            if let Some(comb) = Comb::fit(peaks, hz, bin_hz) {
+                fits.push(comb);
+            }
+        }
+    }
 }
 
 impl Search {
@@ -79,7 +106,9 @@ impl Search {
             heard: Vec::with_capacity(PEAKS_MAX),
             seeds: Vec::with_capacity(SEEDS + 1),
             sums: Vec::with_capacity(PEAKS_MAX + 1),
-            guesses: Vec::with_capacity(4 * (SEEDS * SEED_NUMBER + lag::MAXIMA)),
+            guesses: Vec::with_capacity(GUESSES_MAX),
+            fits: Vec::with_capacity(GUESSES_MAX),
+            arch: Arch::new(),
         }
     }
 
@@ -96,11 +125,10 @@ impl Search {
             self.collect(view, band);
             let peaks = Weighed::new(&self.heard, &mut self.sums);
             let bin_hz = 1.0 / view.frame_s[frame];
-            for &hz in &self.guesses {
-                if view.periodicity.is_some_and(|p| p.at(hz) < APERIODIC) {
-                    continue;
-                }
-                let Some(fit) = Comb::fit(&peaks, hz, bin_hz) else { continue };
+            self.fits.clear();
+            let (guesses, fits) = (self.guesses.as_slice(), &mut self.fits);
+            self.arch.dispatch(FitAll { peaks: &peaks, guesses, bin_hz, fits });
+            for fit in &self.fits {
                 if fit.hz < self.range_hz.0 * 0.98 || fit.hz > self.range_hz.1 * 1.02 {
                     continue;
                 }
@@ -151,6 +179,9 @@ impl Search {
         }
         self.guesses.sort_unstable_by(f64::total_cmp);
         self.guesses.dedup_by(|next, kept| *next < *kept * SAME);
+        if let Some(periodicity) = view.periodicity {
+            self.guesses.retain(|&hz| periodicity.at(hz) >= APERIODIC);
+        }
     }
 }
 

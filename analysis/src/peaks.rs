@@ -3,10 +3,12 @@
 //! Interpolation: three-bin ratio for the Hann window (T. Grandke, IEEE Trans. Instrum. Meas. 32(2):350-355, 1983), exact
 //! for a lone stationary tone.
 
+use core::ops::Range;
+
 use pulp::{Arch, NullaryFnOnce};
 
 use crate::convert::nearest_index;
-use crate::spectrum::{Frame, kernel};
+use crate::spectrum::{Frame, near_kernel};
 use crate::stiff::DB_PER_NEPER;
 
 /// Power of a peak over the noise below which it is taken for noise: 11.4 dB is passed by one noise bin in a million.
@@ -126,36 +128,75 @@ pub(crate) fn pick(
     out: &mut Vec<Peak>,
 ) {
     out.clear();
-    let p = &frame.power;
-    let len = (p.len() - 1) * 2;
-    let first = nearest_index(range_hz.0 / bin_hz).max(2);
-    let last = nearest_index(range_hz.1 / bin_hz).min(p.len() - 3);
-    if first >= last {
-        return;
-    }
-    let strongest = largest(&p[first..=last]);
-    let floor = strongest * PEAK_RANGE;
-    let ratio = noise.len / len;
-    let mut from = first;
-    while from <= last {
-        // One block of the noise floor at a time: its threshold turns most bins down at the first look.
-        let block = (from * ratio).saturating_sub(1) / NOISE_BLOCK;
-        let until = (((block + 1) * NOISE_BLOCK) / ratio + 1).clamp(from + 1, last + 1);
-        let least = floor.max(noise.at(from, len) * PEAK_OVER_NOISE);
-        if largest(&p[from..until]) >= least {
-            for k in from..until {
-                let here = p[k];
-                let turned_down = here < least || here <= p[k - 1] || here < p[k + 1];
-                if !turned_down && out.len() < out.capacity() {
+    noise.arch.dispatch(Pick { frame, bin_hz, noise, range_hz, out });
+}
+
+/// See [`pick`].
+struct Pick<'a> {
+    frame: &'a Frame,
+    bin_hz: f64,
+    noise: &'a NoiseFloor,
+    range_hz: (f64, f64),
+    out: &'a mut Vec<Peak>,
+}
+
+impl NullaryFnOnce for Pick<'_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn call(self) {
+        let Self { frame, bin_hz, noise, range_hz, out } = self;
+        let p = &frame.power;
+        let len = (p.len() - 1) * 2;
+        let first = nearest_index(range_hz.0 / bin_hz).max(2);
+        let last = nearest_index(range_hz.1 / bin_hz).min(p.len() - 3);
+        if first >= last {
+            return;
+        }
+        let floor = largest(&p[first..=last]) * PEAK_RANGE;
+        let ratio = noise.len / len;
+        let mut from = first;
+        while from <= last {
+            // One block of the noise floor at a time has the same threshold.
+            let block = (from * ratio).saturating_sub(1) / NOISE_BLOCK;
+            let until = (((block + 1) * NOISE_BLOCK) / ratio + 1).clamp(from + 1, last + 1);
+            let least = floor.max(noise.at(from, len) * PEAK_OVER_NOISE);
+            maxima(p, from..until, least, |k| {
+                if out.len() < out.capacity() {
                     out.push(interpolate(p, k, bin_hz));
                 }
+            });
+            from = until;
+        }
+    }
+}
+
+/// Calls `found` for the local maxima of at least some power. Eight bins are judged at a time and without a branch each,
+/// for which of them are maxima cannot be foreseen.
+#[inline(always)]
+fn maxima(p: &[f32], range: Range<usize>, least: f32, mut found: impl FnMut(usize)) {
+    for from in range.clone().step_by(8) {
+        // The last eight of the frame overlap those before.
+        let first = from.min(p.len() - 9);
+        let Some(bins) = p[first - 1..].first_chunk::<10>() else { return };
+        let mut marks = [0u8; 8];
+        for i in 0..8 {
+            let (before, here, after) = (bins[i], bins[i + 1], bins[i + 2]);
+            marks[i] = u8::from((here >= least) & (here > before) & (here >= after));
+        }
+        let mut left = u64::from_le_bytes(marks);
+        while left > 0 {
+            let k = first + left.trailing_zeros() as usize / 8;
+            left &= left - 1;
+            if k >= from && k < range.end {
+                found(k);
             }
         }
-        from = until;
     }
 }
 
 /// The largest of some powers, side by side; 0 for none.
+#[inline(always)]
 pub(crate) fn largest(power: &[f32]) -> f32 {
     let larger = |a: f32, b: f32| if b > a { b } else { a };
     let (whole, rest) = power.as_chunks::<16>();
@@ -169,10 +210,11 @@ pub(crate) fn largest(power: &[f32]) -> f32 {
 }
 
 /// The peak around the local maximum `k`.
-pub(crate) fn interpolate(power: &[f32], k: usize, bin_hz: f64) -> Peak {
+#[inline(always)]
+fn interpolate(power: &[f32], k: usize, bin_hz: f64) -> Peak {
     let [a, b, c] = [power[k - 1], power[k], power[k + 1]].map(|x| f64::from(x.sqrt()));
     let delta = (2.0 * (c - a) / (a + 2.0 * b + c)).clamp(-0.5, 0.5);
-    Peak { hz: (k as f64 + delta) * bin_hz, amplitude: b / kernel(delta), weight: 0.0 }
+    Peak { hz: (k as f64 + delta) * bin_hz, amplitude: b / near_kernel(delta), weight: 0.0 }
 }
 
 /// Weighs peaks sorted by frequency for pitch. A peak that lies under the spread excitation of a stronger one is not heard

@@ -6,6 +6,7 @@
 
 use std::sync::Arc;
 
+use pulp::{Arch, NullaryFnOnce};
 use realfft::num_complex::Complex;
 use realfft::{RealFftPlanner, RealToComplex};
 
@@ -35,6 +36,23 @@ impl Frame {
     }
 }
 
+/// Squared magnitudes.
+struct Square<'a> {
+    bins: &'a [Complex<f32>],
+    power: &'a mut [f32],
+}
+
+impl NullaryFnOnce for Square<'_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn call(self) {
+        for (p, x) in self.power.iter_mut().zip(self.bins) {
+            *p = x.re * x.re + x.im * x.im;
+        }
+    }
+}
+
 /// A planned transform of one length.
 pub(crate) struct Transform {
     len: usize,
@@ -42,6 +60,7 @@ pub(crate) struct Transform {
     plan: Arc<dyn RealToComplex<f32>>,
     input: Vec<f32>,
     scratch: Vec<Complex<f32>>,
+    arch: Arch,
 }
 
 impl core::fmt::Debug for Transform {
@@ -58,7 +77,8 @@ impl Transform {
         let mut window: Vec<f32> =
             CosineSum::HANN.samples(len).map(|w| single(w * 4.0 / len as f64)).collect();
         window.rotate_left(len / 2);
-        Self { len, window, input: plan.make_input_vec(), scratch: plan.make_scratch_vec(), plan }
+        let (input, scratch) = (plan.make_input_vec(), plan.make_scratch_vec());
+        Self { len, window, input, scratch, plan, arch: Arch::new() }
     }
 
     /// Frame length in samples.
@@ -84,9 +104,7 @@ impl Transform {
         let done =
             self.plan.process_with_scratch(&mut self.input, &mut out.bins, &mut self.scratch);
         debug_assert!(done.is_ok(), "lengths are planned");
-        for (p, x) in out.power.iter_mut().zip(&out.bins) {
-            *p = x.re * x.re + x.im * x.im;
-        }
+        self.arch.dispatch(Square { bins: &out.bins, power: &mut out.power });
     }
 }
 
@@ -102,12 +120,27 @@ pub(crate) fn kernel(x: f64) -> f64 {
     sin_pi(d) / (core::f64::consts::PI * d * (1.0 - d * d))
 }
 
-/// `sin(pi x)` to 1e-13: Taylor's series on the nearest half turn, since nearly all calls of the library's sine would be
-/// for this.
+/// The Hann kernel at most half a bin off the frequency.
+#[inline(always)]
+pub(crate) fn near_kernel(x: f64) -> f64 {
+    let y = core::f64::consts::PI * x;
+    sinc_of_square(y * y) / (1.0 - x * x)
+}
+
+/// `sin(pi x)`.
+#[inline(always)]
 pub(crate) fn sin_pi(x: f64) -> f64 {
     let whole = nearest(x);
     let y = core::f64::consts::PI * (x - whole);
-    let z = y * y;
+    let sine = y * sinc_of_square(y * y);
+    let half = 0.5 * whole;
+    if (half - nearest(half)).abs() > 0.25 { -sine } else { sine }
+}
+
+/// `sin(y) / y` from `y` squared, to 1e-13 up to `pi / 2`: Taylor's series, since nearly all calls of the library's sine would
+/// be for this.
+#[inline(always)]
+fn sinc_of_square(z: f64) -> f64 {
     // 1 / n! with alternating signs, n = 3 to 17.
     const SERIES: [f64; 8] = [
         -1.0 / 6.0,
@@ -119,8 +152,7 @@ pub(crate) fn sin_pi(x: f64) -> f64 {
         -1.0 / 1_307_674_368_000.0,
         1.0 / 355_687_428_096_000.0,
     ];
-    let (pairs, _) = SERIES.as_chunks::<2>();
-    let sine = y + y * z * pairs.iter().rev().fold(0.0, |sum, [a, b]| sum * (z * z) + (a + b * z));
-    let half = 0.5 * whole;
-    if (half - nearest(half)).abs() > 0.25 { -sine } else { sine }
+    let [a, b, c, d, e, f, g, h] = SERIES;
+    let w = z * z;
+    1.0 + z * ((a + b * z) + w * ((c + d * z) + w * ((e + f * z) + w * (g + h * z))))
 }
