@@ -95,8 +95,8 @@ pub(crate) struct Evidence {
     rest: Vec<Peak>,
     second: Vec<Candidate>,
     centre: u64,
-    /// Whether the last instant renewed the longest frame.
-    renewed: bool,
+    /// Instants since the beginning.
+    count: usize,
 }
 
 impl Evidence {
@@ -120,7 +120,7 @@ impl Evidence {
             rest: Vec::with_capacity(PEAKS_MAX),
             second: Vec::with_capacity(crate::fundamental::CANDIDATES + 1),
             centre: 0,
-            renewed: false,
+            count: 0,
         }
     }
 
@@ -131,28 +131,29 @@ impl Evidence {
 
     /// Begins anew: the next instant computes everything.
     pub(crate) fn restart(&mut self) {
-        self.renewed = false;
+        self.count = 0;
     }
 
-    /// Analyses the instant around a centre. The longest frame is renewed at every other instant only.
+    /// Analyses the instant around a centre. Of the two longest frames, which change least from instant to instant, one is
+    /// renewed at a time.
     pub(crate) fn run(&mut self, history: &History, centre: u64, out: &mut Vec<Candidate>) {
-        self.renewed = !self.renewed;
         self.centre = centre;
-        for i in 0..LENGTHS {
-            if i < LONGEST || self.renewed {
-                self.transform(i, history);
-            }
+        let first = self.count == 0;
+        let renewed = [true, true, first || self.count % 2 == 1, self.count.is_multiple_of(2)];
+        self.count += 1;
+        for (i, _) in renewed.iter().enumerate().filter(|r| *r.1) {
+            self.transform(i, history);
         }
-        if self.renewed {
+        if renewed[LONGEST] {
             self.noise.estimate(&self.now.frames[LONGEST]);
             self.periodicity.long.run(&self.now.frames[LONGEST]);
         }
-        self.periodicity.short.run(&self.now.frames[2]);
+        if renewed[2] {
+            self.periodicity.short.run(&self.now.frames[2]);
+        }
         self.periodicity.update();
-        for i in 0..LENGTHS {
-            if i < LONGEST || self.renewed {
-                self.now.pick(i, &self.noise);
-            }
+        for (i, _) in renewed.iter().enumerate().filter(|r| *r.1) {
+            self.now.pick(i, &self.noise);
         }
         self.search.run(&self.now.view(Some(&self.periodicity)), out);
     }
