@@ -13,6 +13,7 @@ use crate::refine::Refiner;
 use crate::segment::Step;
 use crate::settings::{Settings, SettingsError};
 use crate::settle::{self, Instant, NEIGHBOURS};
+use crate::spectrum::TransformRuns;
 use crate::stiff::{self, Point};
 use crate::strays::peaks::STRAYS_MAX;
 use crate::track::{LOOK_AHEAD, Tracker};
@@ -109,6 +110,11 @@ impl Analyzer {
     #[must_use]
     pub fn hop(&self) -> usize {
         self.hop
+    }
+
+    /// How often each of the engine's transforms has run since it was built, for benches: what it takes at least.
+    pub fn transforms(&self) -> impl Iterator<Item = TransformRuns> {
+        self.evidence.transforms().chain(self.notes.transforms())
     }
 
     /// Takes in samples (full scale 1.0). Any cut of the same samples gives the same output.

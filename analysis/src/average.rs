@@ -3,7 +3,7 @@
 use crate::convert::number;
 use crate::reading::Partial;
 use crate::refine::Tone;
-use crate::stiff::{CENTS_PER_NEPER, DB_PER_NEPER, log_ratio};
+use crate::stiff::{CENTS_PER_NEPER, DB_PER_NEPER, log_ratio, quadrature};
 
 /// Share of a frame after which a Hann frame's estimate is nearly independent of the last.
 const FRESH: f64 = 0.6;
@@ -86,8 +86,7 @@ impl Averager {
                 frequency_hz: harmonic_hz * mean.log_ratio.exp(),
                 frequency_sd_hz: harmonic_hz * sd,
                 cents_from_harmonic: CENTS_PER_NEPER * mean.log_ratio,
-                cents_sd: ((CENTS_PER_NEPER * sd).powi(2) + f0_sd_cents.powi(2) / independent)
-                    .sqrt(),
+                cents_sd: quadrature(CENTS_PER_NEPER * sd, f0_sd_cents / independent.sqrt()),
                 level_dbfs: 10.0 * mean.power.log10(),
                 level_sd_db: DB_PER_NEPER * (0.5 * mean.noise_to_signal / independent).sqrt(),
                 phase_rad: tone.amplitude.arg(),

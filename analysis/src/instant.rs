@@ -10,7 +10,7 @@ use crate::peaks::{self, NoiseFloor, PEAKS_MAX, Peak};
 use crate::reading::Stray;
 use crate::refine::Refiner;
 use crate::settings::Settings;
-use crate::spectrum::{Frame, Transform};
+use crate::spectrum::{Frame, Transform, TransformRuns};
 use crate::strays;
 
 /// Shortest frame, in seconds, before rounding to a power of two; each further one is twice as long.
@@ -122,6 +122,12 @@ impl Evidence {
             centre: 0,
             count: 0,
         }
+    }
+
+    /// How often each transform has run.
+    pub(crate) fn transforms(&self) -> impl Iterator<Item = TransformRuns> {
+        let lags = [&self.periodicity.short, &self.periodicity.long];
+        self.transforms.iter().map(|t| t.runs).chain(lags.map(|l| l.runs))
     }
 
     /// Samples needed on either side of a centre.

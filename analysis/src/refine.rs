@@ -11,7 +11,7 @@ use crate::convert::{nearest_index, number};
 use crate::peaks::NoiseFloor;
 use crate::reading::Partial;
 use crate::spectrum::{Frame, kernel, sin_pi};
-use crate::stiff::{CENTS_PER_NEPER, DB_PER_NEPER, Point, partial_hz};
+use crate::stiff::{CENTS_PER_NEPER, DB_PER_NEPER, Point, partial_hz, quadrature};
 
 /// Rounds of relaxation.
 const ROUNDS: usize = 3;
@@ -55,7 +55,7 @@ impl Tone {
             frequency_hz: self.hz,
             frequency_sd_hz: self.sd_hz,
             cents_from_harmonic: CENTS_PER_NEPER * (self.hz / (self.n as f64 * f0)).ln(),
-            cents_sd: (cents_sd * cents_sd + f0_sd_cents * f0_sd_cents).sqrt(),
+            cents_sd: quadrature(cents_sd, f0_sd_cents),
             level_dbfs: 10.0 * self.amplitude.norm_sqr().log10(),
             level_sd_db: DB_PER_NEPER * (0.5 / self.snr).sqrt(),
             phase_rad: self.amplitude.arg(),

@@ -14,6 +14,24 @@ use crate::convert::{nearest, single};
 use crate::history::History;
 use crate::window::CosineSum;
 
+/// How often one kind of transform has run.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct TransformRuns {
+    /// Real samples on the one side; half as many bins and one more on the other.
+    pub length: usize,
+    /// Whether it goes from bins to samples.
+    pub inverse: bool,
+    /// How often.
+    pub runs: u64,
+}
+
+impl TransformRuns {
+    /// None so far.
+    pub(crate) fn none(length: usize, inverse: bool) -> Self {
+        Self { length, inverse, runs: 0 }
+    }
+}
+
 /// A spectrum of one frame.
 #[derive(Debug, Clone)]
 pub(crate) struct Frame {
@@ -55,7 +73,8 @@ impl NullaryFnOnce for Square<'_> {
 
 /// A planned transform of one length.
 pub(crate) struct Transform {
-    len: usize,
+    /// Runs so far.
+    pub(crate) runs: TransformRuns,
     window: Vec<f32>,
     plan: Arc<dyn RealToComplex<f32>>,
     input: Vec<f32>,
@@ -65,7 +84,7 @@ pub(crate) struct Transform {
 
 impl core::fmt::Debug for Transform {
     fn fmt(&self, f: &mut core::fmt::Formatter<'_>) -> core::fmt::Result {
-        f.debug_struct("Transform").field("len", &self.len).finish_non_exhaustive()
+        f.debug_struct("Transform").field("runs", &self.runs).finish_non_exhaustive()
     }
 }
 
@@ -78,24 +97,26 @@ impl Transform {
             CosineSum::HANN.samples(len).map(|w| single(w * 4.0 / len as f64)).collect();
         window.rotate_left(len / 2);
         let (input, scratch) = (plan.make_input_vec(), plan.make_scratch_vec());
-        Self { len, window, input, scratch, plan, arch: Arch::new() }
+        let runs = TransformRuns::none(len, false);
+        Self { runs, window, input, scratch, plan, arch: Arch::new() }
     }
 
     /// Frame length in samples.
     pub(crate) fn len(&self) -> usize {
-        self.len
+        self.runs.length
     }
 
     /// A frame to transform into.
     pub(crate) fn make_frame(&self) -> Frame {
-        let bins = self.len / 2 + 1;
+        let bins = self.len() / 2 + 1;
         Frame { bins: vec![Complex::default(); bins], power: vec![0.0; bins] }
     }
 
     /// Transforms the frame centred on a position.
     pub(crate) fn run(&mut self, history: &History, centre: u64, out: &mut Frame) {
         let centre = i64::try_from(centre).unwrap_or(i64::MAX);
-        let half = self.len / 2;
+        let half = self.len() / 2;
+        self.runs.runs += 1;
         // The second half first: phases then refer to the centre.
         let (late, early) = self.input.split_at_mut(half);
         let before = i64::try_from(half).unwrap_or(0);

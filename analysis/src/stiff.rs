@@ -138,6 +138,16 @@ fn largest_square(points: &[Point]) -> f64 {
     points.iter().fold(1.0, |m: f64, p| m.max(p.n * p.n))
 }
 
+/// Root of the sum of squares, as independent deviations add up.
+#[expect(
+    clippy::imprecise_flops,
+    reason = "nothing here overflows, and the library's `hypot` costs twenty times as much"
+)]
+#[inline(always)]
+pub(crate) fn quadrature(a: f64, b: f64) -> f64 {
+    (a * a + b * b).sqrt()
+}
+
 /// Logarithm; for ratios close to 1, where nearly all calls are, by the series to the last digit.
 pub(crate) fn log_ratio(ratio: f64) -> f64 {
     let x = ratio - 1.0;

@@ -11,7 +11,7 @@ use realfft::num_complex::Complex;
 use realfft::{ComplexToReal, RealFftPlanner};
 
 use crate::convert::{floor_index, nearest_index, single};
-use crate::spectrum::Frame;
+use crate::spectrum::{Frame, TransformRuns};
 
 /// Maxima in the lag domain handed to the search.
 pub(crate) const MAXIMA: usize = 6;
@@ -24,6 +24,8 @@ const SLACK: f64 = 0.012;
 
 /// Autocorrelation of one frame length.
 pub(crate) struct Autocorrelation {
+    /// Runs so far.
+    pub(crate) runs: TransformRuns,
     plan: Arc<dyn ComplexToReal<f32>>,
     spectrum: Vec<Complex<f32>>,
     scratch: Vec<Complex<f32>>,
@@ -55,6 +57,7 @@ impl Autocorrelation {
         let plan = planner.plan_fft_inverse(len);
         let lags = floor_index(LONGEST * len as f64);
         Self {
+            runs: TransformRuns::none(len, true),
             spectrum: plan.make_input_vec(),
             scratch: plan.make_scratch_vec(),
             output: plan.make_output_vec(),
@@ -69,6 +72,7 @@ impl Autocorrelation {
 
     /// Computes the normalised autocorrelation of a frame.
     pub(crate) fn run(&mut self, frame: &Frame) {
+        self.runs.runs += 1;
         for (s, p) in self.spectrum.iter_mut().zip(&frame.power) {
             *s = Complex::new(*p, 0.0);
         }

@@ -11,6 +11,7 @@ use realfft::num_complex::Complex;
 
 use crate::convert::{nearest, single};
 use crate::history::Span;
+use crate::stiff::quadrature;
 
 /// Oscillators in one vector.
 const LANES: usize = 8;
@@ -152,7 +153,7 @@ impl Lanes {
             (self.step_re[i], self.step_im[i]) = rounded(step);
             (self.start_re[i], self.start_im[i]) = rounded(step * distance);
             let (re, im) = (f64::from(self.step_re[i]), f64::from(self.step_im[i]));
-            let grows = (re * re + im * im).sqrt() - 1.0;
+            let grows = quadrature(re, im) - 1.0;
             let length = block as f64;
             self.scale[i] = 2.0 / length * (1.0 - 0.25 * length * grows);
         }
@@ -165,8 +166,8 @@ impl Lanes {
         for i in 0..LANES {
             match self.age {
                 0 => {
-                    self.turned[i] =
-                        Complex::cis(-(self.phases[i] + 0.5 * (length - 1.0) * self.bent[i]))
+                    let centre = self.phases[i] + 0.5 * (length - 1.0) * self.bent[i];
+                    self.turned[i] = Complex::cis(-centre);
                 }
                 1 => self.onward[i] = Complex::cis(-length * self.bent[i]),
                 _ => {}

@@ -12,6 +12,7 @@ use realfft::num_complex::Complex;
 
 use super::damped::{Damped, Times};
 use crate::convert::{nearest, single};
+use crate::stiff::quadrature;
 
 /// Share of another partial that is worth taking away, against the noise of the whole stretch.
 const WORTH: f64 = 0.05;
@@ -145,7 +146,7 @@ impl Shares {
         let span = self.times.duration(self.blocks);
         let long = 1.0 / span + source.sigma.max(0.0);
         let away = PI * (alias_hz.abs() - reach_hz).max(0.0);
-        1.0 / (span * (long * long + away * away).sqrt())
+        1.0 / (span * quadrature(long, away))
     }
 
     /// Adds `direct E + image conj(E)` of a partial to the sums.
