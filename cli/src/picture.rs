@@ -3,6 +3,7 @@
 
 mod axis;
 mod canvas;
+pub(crate) mod drift;
 mod head;
 mod history;
 mod levels;
