@@ -16,6 +16,8 @@ const EXTENT_CENTS: f64 = 2.0;
 const EXTENT_SDS: f64 = 4.0;
 /// Deviation added to what a reading states, in cents: what is too small to matter must not decide.
 const FLOOR_CENTS: f64 = 0.1;
+/// A scatter beside which all that readings state is equal, in squared cents.
+const EQUAL: f64 = 1e12;
 /// Parameters at most: offset, slope, and the two parts of a vibrato.
 const MOST: usize = 4;
 
@@ -58,8 +60,9 @@ impl Fit {
     /// their frames overlap.
     pub(super) fn line(window: &[Point], independent: f64) -> Self {
         let middle_s = middle(window);
-        let solved = solve(window, middle_s, None);
-        let Solved { values, left, variances } = solved;
+        let scatter = solve(window, Model { middle_s, rate_hz: None, scatter: EQUAL }).left;
+        let Solved { values, left, variances } =
+            solve(window, Model { middle_s, rate_hz: None, scatter });
         let scale = spread(window, left, independent);
         Self {
             middle_s,
@@ -80,8 +83,10 @@ impl Fit {
         if line.left < noise.max(0.25 * EXTENT_CENTS * EXTENT_CENTS) {
             return line;
         }
-        let Some(rate_hz) = best_rate(window, line.middle_s, length_s) else { return line };
-        let Solved { values, left, variances } = solve(window, line.middle_s, Some(rate_hz));
+        let model = Model { middle_s: line.middle_s, rate_hz: None, scatter: line.left };
+        let Some(rate_hz) = best_rate(window, model, length_s) else { return line };
+        let Solved { values, left, variances } =
+            solve(window, Model { rate_hz: Some(rate_hz), ..model });
         let wave = Wave { rate_hz, cosine: values[2], sine: values[3] };
         let scale = spread(window, left, independent);
         let extent_sd = (2.0 * scale * variances.0).sqrt();
@@ -118,9 +123,9 @@ impl Fit {
 }
 
 /// The rate at which a vibrato leaves least, to a fraction of the step by a parabola.
-fn best_rate(window: &[Point], middle_s: f64, length_s: f64) -> Option<f64> {
+fn best_rate(window: &[Point], model: Model, length_s: f64) -> Option<f64> {
     let lowest = RATES_HZ.0.max(PERIODS / length_s);
-    let left = |rate_hz: f64| solve(window, middle_s, Some(rate_hz)).left;
+    let left = |rate_hz: f64| solve(window, Model { rate_hz: Some(rate_hz), ..model }).left;
     let mut best: Option<(f64, f64)> = None;
     let mut rate_hz = lowest;
     while rate_hz <= RATES_HZ.1 {
@@ -137,6 +142,16 @@ fn best_rate(window: &[Point], middle_s: f64, length_s: f64) -> Option<f64> {
     Some(rate_hz + shift * RATE_STEP_HZ)
 }
 
+/// What is fitted.
+#[derive(Debug, Clone, Copy)]
+struct Model {
+    middle_s: f64,
+    /// Rate of the vibrato, where there is to be one.
+    rate_hz: Option<f64>,
+    /// Variance of the readings beyond what they state, in squared cents.
+    scatter: f64,
+}
+
 /// What a fit comes to.
 struct Solved {
     values: [f64; MOST],
@@ -147,7 +162,8 @@ struct Solved {
 }
 
 /// Weighted least squares of 1, t and, at a rate, cos and sin, by normal equations.
-fn solve(window: &[Point], middle_s: f64, rate_hz: Option<f64>) -> Solved {
+fn solve(window: &[Point], model: Model) -> Solved {
+    let Model { middle_s, rate_hz, scatter } = model;
     let count = if rate_hz.is_some() { MOST } else { 2 };
     let origin = window[0].cents;
     let turn = TAU * rate_hz.unwrap_or(0.0);
@@ -157,7 +173,7 @@ fn solve(window: &[Point], middle_s: f64, rate_hz: Option<f64>) -> Solved {
         let t = point.time_s - middle_s;
         let (sin, cos) = if rate_hz.is_some() { (turn * t).sin_cos() } else { (0.0, 0.0) };
         let row = [1.0, t, cos, sin];
-        let weight = weight(point);
+        let weight = 1.0 / (variance(point) + scatter);
         let y = point.cents - origin;
         for i in 0..count {
             for j in 0..=i {
@@ -219,8 +235,9 @@ fn substitute(factor: &[[f64; MOST]; MOST], mut x: [f64; MOST], count: usize) ->
     x
 }
 
-fn weight(point: &Point) -> f64 {
-    1.0 / (point.sd * point.sd + FLOOR_CENTS * FLOOR_CENTS)
+/// Variance that a reading states, in squared cents.
+fn variance(point: &Point) -> f64 {
+    point.sd * point.sd + FLOOR_CENTS * FLOOR_CENTS
 }
 
 /// Variance of one independent observation: what is left over, or what the readings state where that is more.
@@ -228,9 +245,9 @@ fn spread(window: &[Point], left: f64, independent: f64) -> f64 {
     independent * left.max(mean_variance(window))
 }
 
-/// Harmonic mean of the readings' variances, as the weights see them.
+/// Harmonic mean of the variances that the readings state: a few bad ones do not raise it.
 pub(super) fn mean_variance(window: &[Point]) -> f64 {
-    window.len() as f64 / window.iter().map(weight).sum::<f64>()
+    window.len() as f64 / window.iter().map(|point| 1.0 / variance(point)).sum::<f64>()
 }
 
 fn middle(window: &[Point]) -> f64 {

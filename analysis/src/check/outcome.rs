@@ -218,7 +218,9 @@ impl Totals {
     fn verdict(&self, sounding: &Sounding, spans: &Spans) -> Verdict {
         let (sounds, measured) = sounding.counts();
         let measured_s = self.count * self.hop_s;
-        let why = if sounding.is_empty() || sounds == 0.0 {
+        let why = if sounding.is_empty() {
+            Unmeasured::NoReference
+        } else if sounds == 0.0 {
             Unmeasured::Silent
         } else if measured == 0.0 && sounding.is_mostly_several() {
             Unmeasured::SeveralPitches

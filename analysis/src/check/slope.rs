@@ -6,7 +6,7 @@
 
 /// Length of the first blocks, and the least length of those that count, in seconds.
 const FIRST_S: f64 = 0.05;
-const LEAST_S: f64 = 0.2;
+const LEAST_S: f64 = 0.4;
 /// Blocks kept; when full, neighbours are joined.
 const BLOCKS_MAX: usize = 256;
 /// Blocks that the line is drawn through, at most and at least.
@@ -174,6 +174,6 @@ mod tests {
 
     #[test]
     fn too_short_a_time_has_no_slope() {
-        assert_eq!(of((0..30).map(|i| (f64::from(i) * 0.01, 0.0))).line(), None, "0.3 s");
+        assert_eq!(of((0..100).map(|i| (f64::from(i) * 0.01, 0.0))).line(), None, "1 s");
     }
 }

@@ -1,0 +1,28 @@
+//! The project's figures on drift checks.
+
+use plumbtone_tests::figures::{self, Draw, Errors};
+
+use crate::verdicts::Verdicts;
+
+#[test]
+fn drifts_of_known_size_get_the_right_verdicts_and_spans() {
+    let mut verdicts = Verdicts::default();
+    let mut drift = Errors::default();
+    for f in figures::drifts(Draw { seed: 20_000, count: 12 }).unwrap() {
+        let kind = f.kind;
+        verdicts.at_least_percent(&format!("{kind}: verdicts"), &f.verdicts, 100.0);
+        verdicts.at_least_percent(&format!("{kind}: vibrato told"), &f.vibrato_told, 100.0);
+        if !f.overlap.is_empty() {
+            let overlap = f.pooled_overlap();
+            verdicts.within(&format!("{kind}: overlap"), overlap, (0.95, 1.0), &f.overlap);
+        }
+        if !f.rate.is_empty() {
+            verdicts.at_most(&format!("{kind}: rate"), f.rate.percentile(100.0), 0.02, &f.rate);
+            let extent = f.extent.percentile(100.0);
+            verdicts.at_most(&format!("{kind}: extent"), extent, 0.05, &f.extent);
+        }
+        drift.append(f.drift);
+    }
+    verdicts.within("drift error over stated deviation", drift.rms(), (0.7, 1.5), &drift);
+    verdicts.assert_all_reached();
+}
