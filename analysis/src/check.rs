@@ -109,6 +109,10 @@ impl Check {
         given_hz: Option<f64>,
         sink: &mut impl CheckSink,
     ) {
+        if self.hearing.last_position().is_some_and(|last| reading.centre <= last) {
+            // The stream began anew.
+            self.interrupt(sink);
+        }
         let due = self.resolver.is_due(reading.centre, given_hz);
         let pitch = reading.pitch.filter(|pitch| pitch.confidence >= SURE && pitch.f0_hz > 0.0);
         if due {
@@ -292,7 +296,7 @@ mod tests {
 
     #[test]
     fn excursions_too_short_to_count_are_none() {
-        for (length_s, counts) in [(0.05, false), (0.3, true)] {
+        for (length_s, counts) in [(0.1, false), (0.3, true)] {
             let bump = |t: f64| Some(if (1.0..1.0 + length_s).contains(&t) { 30.0 } else { 0.0 });
             let outcome = outcome(10.0, &readings(0, bump, 3));
             assert_eq!(outcome.verdict == Verdict::Outside, counts, "{length_s} s: {outcome:?}");
@@ -339,10 +343,22 @@ mod tests {
         ] {
             assert_eq!(outcome(10.0, &readings).verdict, Verdict::Unmeasured(why), "{why:?}");
         }
-        let mixed = [readings(0, |_| Some(0.0), 1), noise].concat();
+        let later =
+            noise.iter().map(|r| Reading { centre: r.centre + 48_000, ..r.clone() }).collect();
+        let mixed = [readings(0, |_| Some(0.0), 1), later].concat();
         let verdict = outcome(10.0, &mixed).verdict;
         let share = matches!(verdict, Verdict::Unmeasured(Unmeasured::Share(s)) if (s - 1.0 / 3.0).abs() < 0.01);
         assert!(share, "{verdict:?}");
+    }
+
+    #[test]
+    fn a_stream_that_begins_anew_is_another_piece() {
+        let mut check = check(10.0);
+        for _ in 0..2 {
+            readings(0, |_| Some(25.0), 1).iter().for_each(|r| check.reading(r, &mut ()));
+        }
+        check.finish(&mut ());
+        assert_eq!(seconds(&check.outcome().spans).len(), 2, "{:?}", check.outcome());
     }
 
     #[test]

@@ -12,6 +12,7 @@ mod exact;
 mod hum;
 mod live;
 mod moving;
+mod vibrato;
 
 pub use aliases::{AliasFigures, aliases};
 pub use calibration::Calibration;
@@ -24,6 +25,7 @@ pub use exact::{ExactFigures, exact};
 pub use hum::hum;
 pub use live::{LiveFigure, live};
 pub use moving::{MovingFigures, moving};
+pub use vibrato::recorded_vibrato;
 
 /// Which random cases are drawn.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]

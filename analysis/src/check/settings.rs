@@ -2,6 +2,10 @@
 
 use crate::settings::SettingsError;
 
+/// Default of the shortest span that counts, in seconds: longer than half a swing of the slowest vibrato (132 ms at 3.8 Hz),
+/// so that one swing that is not recognised as vibrato is no span.
+const MIN_SPAN_S: f64 = 0.15;
+
 /// Settings of a [`Check`](super::Check).
 #[derive(Debug, Clone, PartialEq)]
 pub struct CheckSettings {
@@ -18,10 +22,10 @@ pub struct CheckSettings {
 }
 
 impl CheckSettings {
-    /// The defaults for the readings of an engine: 10 cents, 100 ms, half of the sounding time.
+    /// The defaults for the readings of an engine: 10 cents, 150 ms, half of the sounding time.
     #[must_use]
     pub fn new(sample_rate_hz: f64, hop: usize) -> Self {
-        Self { sample_rate_hz, hop, tolerance_cents: 10.0, min_span_s: 0.1, min_share: 0.5 }
+        Self { sample_rate_hz, hop, tolerance_cents: 10.0, min_span_s: MIN_SPAN_S, min_share: 0.5 }
     }
 
     /// Checks every value against its range.

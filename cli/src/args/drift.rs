@@ -64,7 +64,7 @@ pub(crate) struct Limits {
     #[arg(long, value_name = "CENTS", default_value = "10")]
     pub(crate) tolerance: f64,
     /// Shortest time outside that counts, 0.02 to 60 s
-    #[arg(long, value_name = "SECONDS", default_value = "0.1", value_parser = super::seconds)]
+    #[arg(long, value_name = "SECONDS", default_value = "0.15", value_parser = super::seconds)]
     pub(crate) min_span: f64,
     /// Share of the sounding time that must have a single pitch for a verdict, 0 to 1
     #[arg(long, value_name = "SHARE", default_value = "0.5")]

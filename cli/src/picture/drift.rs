@@ -207,7 +207,7 @@ impl DriftPicture<'_> {
         let left = 0.5 * WIDTH + 6.0;
         canvas.panel((left, top), (WIDTH - MARGIN, top + SPANS_HEIGHT), PANEL)?;
         canvas.text(left + 12.0, top + 16.0, "where it is outside", LABEL)?;
-        let columns = [left + 130.0, left + 250.0, left + 390.0, left + 530.0];
+        let columns = [left + 220.0, left + 320.0, left + 430.0, left + 540.0];
         for (x, head) in columns.into_iter().zip(["from s", "to s", "worst ct", "mean ct"]) {
             canvas.text(x, top + 16.0, head, LABEL.at(Side::Right))?;
         }
@@ -261,4 +261,90 @@ fn grid(canvas: &Canvas<'_>, times: &Axis, cents: &Axis) -> Result<()> {
         canvas.text(x, bottom + 13.0, &text, SMALL.at(Side::Centre))?;
     }
     Ok(())
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::drift::record::ReferenceWords;
+    use crate::fixtures;
+    use crate::picture::tests::check_texts;
+    use plumbtone_analysis::check::{
+        CheckSettings, Drift, Heard, Outcome, Span, Unmeasured, Verdict, Vibrato,
+    };
+
+    #[test]
+    fn no_text_lies_on_another_or_leaves_the_picture() {
+        let usual = outcome(3);
+        let nothing = Outcome {
+            verdict: Verdict::Unmeasured(Unmeasured::Share(0.123)),
+            reference_hz: None,
+            worst_cents: None,
+            mean_cents: None,
+            drift: None,
+            vibrato: None,
+            raw_cents: None,
+            measured_s: 0.0,
+            measured_share: None,
+            spans: Vec::new(),
+            ..usual.clone()
+        };
+        let long = FileFacts {
+            path: format!("{}.wav", "a very long name of a take ".repeat(9)).into(),
+            channel: "channel 26".to_owned(),
+            concert_pitch_hz: 415.305,
+            ..fixtures::facts()
+        };
+        let name = "a long name of a file of notes.mid".to_owned();
+        let words = ReferenceWords { kind: "expected", name };
+        for (what, outcome, facts, heard) in [
+            ("a usual check", &usual, &fixtures::facts(), 500),
+            ("more spans than are listed", &outcome(4000), &long, 5000),
+            ("nothing measured", &nothing, &long, 0),
+        ] {
+            check_texts(what, &drawn(outcome, &words, facts, heard));
+        }
+    }
+
+    fn drawn(outcome: &Outcome, words: &ReferenceWords, facts: &FileFacts, heard: u64) -> String {
+        let timebase = fixtures::TIMEBASE;
+        let settings = CheckSettings::new(timebase.sample_rate_hz, timebase.hop);
+        let record = DriftRecord::new(outcome, &settings, words, facts, timebase);
+        let mut trace = Trace::default();
+        for index in 0..heard {
+            let cents = 1700.0 * (index as f64 / 40.0).sin();
+            let position = 480 * (index + 100 * (index / 300));
+            trace.push(&Heard {
+                position,
+                reference_hz: 220.0,
+                cents,
+                sd_cents: 0.3,
+                raw_cents: 1.2 * cents,
+            });
+        }
+        DriftPicture { facts, record: &record, trace: &trace, timebase }.draw().unwrap()
+    }
+
+    fn outcome(spans: u64) -> Outcome {
+        let span = |i: u64| Span {
+            start: 480_000 * i,
+            end: 480_000 * i + 90_000,
+            worst_cents: -1700.2,
+            mean_cents: -1203.4,
+        };
+        Outcome {
+            verdict: Verdict::Outside,
+            reference_hz: Some(4186.01),
+            worst_cents: Some(-1700.2),
+            mean_cents: Some(-12.3),
+            drift: Some(Drift { cents_per_s: -1234.5, sd: 0.001 }),
+            vibrato: Some(Vibrato { rate_hz: 5.4, extent_cents: 123.4, share: 0.8 }),
+            raw_cents: Some((-2040.0, 2040.0)),
+            measured_s: 36_000.5,
+            measured_share: Some(0.92),
+            spans: (0..spans).map(span).collect(),
+            spans_left_out: spans / 2,
+            stability: Vec::new(),
+        }
+    }
 }

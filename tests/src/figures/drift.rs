@@ -229,7 +229,7 @@ fn true_spans(motion: &Motion, tolerance: f64) -> Vec<(f64, f64)> {
 }
 
 /// Shortest span that counts, in seconds: the check's default.
-const MIN_SPAN_S: f64 = 0.1;
+const MIN_SPAN_S: f64 = 0.15;
 
 /// Whether the verdict is clear: the same for a somewhat larger and a somewhat smaller tolerance.
 fn is_clear(motion: &Motion, tolerance: f64) -> bool {
@@ -290,10 +290,20 @@ fn steps(random: &mut Random, tolerance: f64) -> Motion {
     while time_s < DURATION_S {
         time_s += random.between(0.4, 1.5);
         course.push(Point { time_s, cents });
-        cents = tolerance * random.between(0.0, most) * sign(random);
+        cents = level(random, tolerance, most);
         course.push(Point { time_s, cents });
     }
     Motion { course, ..Motion::default() }
+}
+
+/// A level up to `most` tolerances to either side, clear of the tolerance itself.
+fn level(random: &mut Random, tolerance: f64, most: f64) -> f64 {
+    loop {
+        let size = random.between(0.0, most);
+        if (size - 1.0).abs() > CLEAR {
+            return tolerance * size * sign(random);
+        }
+    }
 }
 
 fn steps_and_vibrato(random: &mut Random, tolerance: f64) -> Motion {
@@ -309,7 +319,7 @@ fn glides(random: &mut Random, tolerance: f64) -> Motion {
         time_s += random.between(0.3, 1.0);
         course.push(Point { time_s, cents });
         time_s += random.between(0.2, 1.0);
-        cents = tolerance * random.between(0.0, most) * sign(random);
+        cents = level(random, tolerance, most);
         course.push(Point { time_s, cents });
     }
     Motion { course, ..Motion::default() }

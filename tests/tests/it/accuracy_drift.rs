@@ -1,6 +1,7 @@
 //! The project's figures on drift checks.
 
 use plumbtone_tests::figures::{self, Draw, Errors};
+use plumbtone_tests::recorded;
 
 use crate::verdicts::Verdicts;
 
@@ -24,5 +25,18 @@ fn drifts_of_known_size_get_the_right_verdicts_and_spans() {
         drift.append(f.drift);
     }
     verdicts.within("drift error over stated deviation", drift.rms(), (0.7, 1.5), &drift);
+    verdicts.assert_all_reached();
+}
+
+#[test]
+fn recorded_instruments_do_not_fail_for_their_vibrato() {
+    let Some(recordings) = recorded::recordings().unwrap() else {
+        println!("skipped: the sound bank has not been fetched (cargo xtask test does)");
+        return;
+    };
+    let tally = figures::recorded_vibrato(&recordings).unwrap();
+    assert!(tally.total > 20, "{} recordings swing about a pitch that holds", tally.total);
+    let mut verdicts = Verdicts::default();
+    verdicts.at_least_percent("recorded: within", &tally, 100.0);
     verdicts.assert_all_reached();
 }

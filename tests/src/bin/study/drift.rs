@@ -3,6 +3,7 @@
 use std::error::Error;
 
 use plumbtone_tests::figures::{self, Draw};
+use plumbtone_tests::recorded;
 
 use crate::table::{heading, hits, median_and_95th, row, worst_errors, worst_misses};
 
@@ -38,5 +39,10 @@ pub(crate) fn drift(draw: Draw, worst: usize) -> Result<(), Box<dyn Error>> {
         all.append(f.drift);
     }
     row("all: drift error / deviation, RMS", &format!("{:.3}", all.rms()), "0.7 to 1.5");
+    if let Some(recordings) = recorded::recordings()? {
+        let tally = figures::recorded_vibrato(&recordings)?;
+        row("recorded: swings about a held pitch, within", &hits(&tally), "(all)");
+        worst_misses(&tally, worst);
+    }
     Ok(())
 }
