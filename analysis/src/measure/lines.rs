@@ -12,6 +12,7 @@ use realfft::{RealFftPlanner, RealToComplex};
 
 use crate::convert::{nearest_index, single};
 use crate::history::Span;
+use crate::peaks::largest;
 use crate::window::CosineSum;
 
 /// Lengths of the transforms, in seconds before rounding to a power of two.
@@ -123,7 +124,7 @@ impl LongSpectrum {
         self.bin_hz = bin_hz;
         let wide = nearest_index(PROMINENCE_BINS as f64 * self.resolution_hz / bin_hz);
         let p = &self.input[..count];
-        let strongest = p.iter().fold(0.0f32, |a, &b| a.max(b));
+        let strongest = largest(p);
         // The window's side lobes, at -92 dB, are lines of nothing.
         let least = strongest * 1e-9;
         let mut faintest = 0.0;
