@@ -52,8 +52,7 @@ fn a_melody_is_checked_against_midi_and_csv_alike() {
             assert!((mean - 4.0).abs() < 0.2, "{expected}: {mean}");
         } else {
             let start_s = found["spans"][0]["start_s"].as_f64().unwrap();
-            // Within the leeway of 0.1 s the first note may go on.
-            assert!((1.0..1.2).contains(&start_s), "{expected}: from {start_s} s");
+            assert!((start_s - 1.0).abs() < 0.05, "{expected}: from {start_s} s");
         }
     }
 }

@@ -4,6 +4,7 @@ mod accuracy_moving;
 mod accuracy_recorded;
 mod accuracy_tones;
 mod fixtures_soundfont;
+mod properties_check;
 mod properties_engine;
 mod properties_tuning;
 mod published_bounds;
