@@ -158,7 +158,7 @@ fn judge_vibrato(sound: &Sound, outcome: &Outcome, figures: &mut DriftFigures) {
 fn sound(seed: u64, motion: Draws) -> Sound {
     let mut random = Random::new(seed);
     let rate = random.pick(&[44_100.0, 48_000.0]);
-    let f0 = random.log_between(80.0, 1200.0);
+    let f0 = random.log_between(55.0, 1500.0);
     let timbre = Timbre { partials: random.pick(&[10, 20, 30]), ..Timbre::default() };
     let tone = Tone::random(&mut random, rate, f0, random_b(seed), &timbre);
     let tolerance = random.log_between(3.0, 30.0);
@@ -180,7 +180,7 @@ fn sound(seed: u64, motion: Draws) -> Sound {
 }
 
 fn random_b(seed: u64) -> f64 {
-    if seed % 2 == 0 { 0.0 } else { 2e-4 }
+    if seed.is_multiple_of(2) { 0.0 } else { 2e-4 }
 }
 
 fn check(sound: &Sound) -> Result<(Outcome, f64), SettingsError> {
