@@ -75,3 +75,33 @@ impl Sounding {
         (measured + unmeasured + self.lost, measured)
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn background_between_notes_is_no_sound() {
+        for (level_dbfs, sounds) in [(-70.0, false), (-25.0, true), (f64::NEG_INFINITY, false)] {
+            let mut sounding = Sounding::default();
+            for _ in 0..50 {
+                sounding.push(State::Steady, -20.0, true);
+                sounding.push(State::Unpitched, level_dbfs, false);
+                sounding.push(State::Silent, -95.0, false);
+            }
+            let all = if sounds { 100.0 } else { 50.0 };
+            let (found, measured) = sounding.counts();
+            let close = (found - all).abs() < 0.5 && (measured - 50.0).abs() < 0.5;
+            assert!(close, "noise at {level_dbfs} dBFS: {found}, {measured}");
+        }
+    }
+
+    #[test]
+    fn without_any_pitch_all_noise_is_sound() {
+        let mut sounding = Sounding::default();
+        sounding.push(State::Unpitched, -80.0, false);
+        sounding.push(State::Silent, -95.0, false);
+        sounding.lose(2.0);
+        assert_eq!(sounding.counts(), (3.0, 0.0), "one of noise, two lost");
+    }
+}
