@@ -176,7 +176,8 @@ proptest! {
         let down = run(&events(&course, 220.0, -1.0), 220.0, 10.0, false).0;
         prop_assert!((seconds(&up.spans) - seconds(&down.spans)).abs() < 0.02);
         let (a, b) = (up.mean_cents.unwrap_or(0.0), down.mean_cents.unwrap_or(0.0));
-        prop_assert!((a + b).abs() < 1e-6, "means {} and {}", a, b);
+        // Not to the last digit: how far neighbouring readings are taken to be independent depends on the pitch.
+        prop_assert!((a + b).abs() < 0.05, "means {} and {}", a, b);
     }
 
     #[test]
