@@ -122,7 +122,8 @@ impl DriftRecord {
             vibrato_hz: outcome.vibrato.map(|vibrato| vibrato.rate_hz),
             vibrato_extent_cents: outcome.vibrato.map(|vibrato| vibrato.extent_cents),
             measured_share: outcome.measured_share,
-            outside_s: spans.iter().map(SpanRecord::length_s).sum(),
+            // A sum of nothing would be the negative zero.
+            outside_s: spans.iter().map(SpanRecord::length_s).fold(0.0, |sum, s| sum + s),
             spans,
             spans_left_out: outcome.spans_left_out,
             reason,

@@ -69,7 +69,7 @@ impl DriftPicture<'_> {
         let channel = &self.facts.channel;
         let reference = record.reference_hz.map(|hz| format!("{hz:.2} Hz"));
         let conditions = [
-            ("reference", shortened(&record.reference, 17.0)),
+            ("reference", shortened(&record.reference, 18.0)),
             ("at", reference.unwrap_or_else(|| "varies".to_owned())),
             ("tolerance", format!("±{} ct", record.tolerance_cents)),
             ("concert pitch", format!("{} Hz", self.facts.concert_pitch_hz)),
