@@ -15,6 +15,7 @@
 
 mod analyzer;
 mod average;
+pub mod check;
 mod convert;
 mod descriptors;
 mod fundamental;

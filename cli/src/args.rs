@@ -1,5 +1,9 @@
 //! What the user can say on the command line.
 
+mod drift;
+
+pub(crate) use drift::{Drift, Limits, ReferenceChoice};
+
 use crate::input::Channel;
 use clap::builder::{PossibleValuesParser, TypedValueParser};
 use clap::{Args as ClapArgs, Parser, Subcommand};
@@ -8,9 +12,11 @@ use std::path::PathBuf;
 
 const EXIT_STATUS: &str = "\
 Exit status:
-  0  every file was measured
+  0  every file was measured (drift: and is within its tolerance)
+  1  drift only: at least one file is outside its tolerance
   2  bad usage, a file that cannot be read, or one without a measurable pitch;
-     the other files are measured all the same";
+     the other files are measured all the same
+  130  interrupted";
 
 const MEASURE_DETAILS: &str = "\
 Reads WAV (8, 16, 24, 32 bit, float, RF64), AIFF, AIFF-C and FLAC, at sample rates from 8 to 384 kHz.
@@ -42,6 +48,8 @@ pub(crate) struct Args {
 pub(crate) enum Command {
     /// Measure the notes of sound files: fundamental, partials, stretch, strays
     Measure(Measure),
+    /// Check whether the pitch of sound files holds: within a tolerance of a reference, and where not
+    Drift(Drift),
 }
 
 #[derive(Debug, ClapArgs)]

@@ -7,7 +7,7 @@ use plumbtone_analysis::{
     Descriptors, Note, NotePartial, Partial, Pitch, Reading, State, Stray, StrayKind, Stretch,
 };
 
-pub(crate) const TIMEBASE: Timebase = Timebase { offset: 0, sample_rate_hz: 48_000.0 };
+pub(crate) const TIMEBASE: Timebase = Timebase { offset: 0, sample_rate_hz: 48_000.0, hop: 480 };
 
 /// A stiff string a little above A3 with that many partials, and strays.
 pub(crate) fn note(partials: u32, strays: Vec<Stray>) -> Note {

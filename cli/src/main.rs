@@ -8,10 +8,12 @@
 
 mod args;
 mod convert;
+mod drift;
 #[cfg(test)]
 mod fixtures;
 mod input;
 mod measure;
+mod measure_job;
 mod names;
 mod output;
 mod picture;
@@ -23,6 +25,7 @@ use std::process::ExitCode;
 fn main() -> ExitCode {
     let args = args::Args::parse();
     match args.command {
-        args::Command::Measure(measure) => run::measure_files(&measure),
+        args::Command::Measure(measure) => measure_job::measure_files(&measure),
+        args::Command::Drift(drift) => drift::check_files(drift),
     }
 }

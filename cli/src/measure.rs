@@ -2,6 +2,7 @@
 
 use crate::args::What;
 use crate::convert;
+use crate::drift::record::DriftRecord;
 use crate::input::{Block, Input};
 use crate::output::Report;
 use crate::output::records::NoteRecord;
@@ -19,6 +20,8 @@ pub(crate) struct Timebase {
     pub(crate) offset: u64,
     /// Sample rate in Hz.
     pub(crate) sample_rate_hz: f64,
+    /// Samples between two readings.
+    pub(crate) hop: usize,
 }
 
 impl Timebase {
@@ -51,8 +54,8 @@ pub(crate) struct Measured {
     pub(crate) remarks: Vec<String>,
     /// What was asked for and could not be had.
     pub(crate) unmet: Vec<String>,
-    /// Whether a pitch was found anywhere.
-    pub(crate) pitched: bool,
+    /// What a drift check came to, where one was made.
+    pub(crate) checked: Option<DriftRecord>,
 }
 
 /// Measures a file into the reports. `progress` hears from time to time which share of the file has been read.
@@ -73,7 +76,7 @@ pub(crate) fn measure(
     if end <= start {
         bail!("has nothing between the start and end asked for");
     }
-    let timebase = Timebase { offset: start, sample_rate_hz };
+    let timebase = Timebase { offset: start, sample_rate_hz, hop: analyzer.hop() };
     let mut fan =
         Fan::new(reports(timebase)?, timebase, Tuning::new(what.concert_pitch, what.temperament)?);
 
@@ -110,9 +113,7 @@ pub(crate) fn measure(
     };
     let mut remarks = input.remarks(read_to_end);
     remarks.extend(fan.remarks());
-    let pitched = fan.pitched || fan.notes > 0;
-    let (text, unmet) = fan.finish(&facts)?;
-    Ok(Measured { text, remarks, unmet, pitched })
+    fan.finish(&facts, remarks)
 }
 
 fn settings(what: &What, sample_rate_hz: f64) -> Settings {
@@ -165,7 +166,7 @@ struct Fan {
     notes: u64,
     strays_left_out: usize,
     non_finite: u64,
-    /// Whether a pitch was claimed at any instant.
+    /// Whether a pitch was claimed at any instant, or a note found.
     pitched: bool,
 }
 
@@ -210,15 +211,19 @@ impl Fan {
         remarks
     }
 
-    fn finish(self, facts: &FileFacts) -> Result<(Option<Spool>, Vec<String>)> {
-        let mut text = None;
-        let mut unmet = Vec::new();
+    fn finish(self, facts: &FileFacts, remarks: Vec<String>) -> Result<Measured> {
+        let mut measured = Measured { text: None, remarks, unmet: Vec::new(), checked: None };
         for report in self.reports {
             let ending = report.finish(facts)?;
-            text = ending.text.or(text);
-            unmet.extend(ending.unmet);
+            measured.text = ending.text.or(measured.text);
+            measured.unmet.extend(ending.unmet);
+            measured.checked = ending.checked.or(measured.checked);
         }
-        Ok((text, unmet))
+        // A check says itself why it came to no verdict.
+        if measured.checked.is_none() && !self.pitched {
+            measured.unmet.push("nothing measurable: no single pitch was found".to_owned());
+        }
+        Ok(measured)
     }
 }
 
@@ -230,6 +235,7 @@ impl Sink for Fan {
 
     fn note(&mut self, note: &Note) {
         self.notes += 1;
+        self.pitched = true;
         self.strays_left_out += note.strays_left_out;
         let record = NoteRecord::new(note, self.timebase, &self.tuning);
         self.each(|report| report.note(&record));

@@ -7,11 +7,12 @@ pub(crate) mod spool;
 pub(crate) mod table;
 pub(crate) mod words;
 
+use crate::drift::record::DriftRecord;
 use crate::measure::FileFacts;
 use anyhow::{Context as _, Result};
 use plumbtone_analysis::{Gap, Reading};
 use records::NoteRecord;
-use spool::Spool;
+pub(crate) use spool::Spool;
 use std::path::Path;
 use tempfile::NamedTempFile;
 
@@ -46,15 +47,17 @@ pub(crate) struct Ending {
     pub(crate) text: Option<Spool>,
     /// What was asked for and could not be had.
     pub(crate) unmet: Option<String>,
+    /// What a drift check came to.
+    pub(crate) checked: Option<DriftRecord>,
 }
 
 impl Ending {
     pub(crate) fn print(text: Spool) -> Self {
-        Self { text: Some(text), unmet: None }
+        Self { text: Some(text), ..Self::default() }
     }
 
     pub(crate) fn unmet(what: String) -> Self {
-        Self { text: None, unmet: Some(what) }
+        Self { unmet: Some(what), ..Self::default() }
     }
 }
 

@@ -4,6 +4,9 @@
 
 mod bad_input;
 mod batch;
+mod drift;
+mod drift_batch;
+mod drift_expected;
 mod formats;
 mod outputs;
 mod sounds;
@@ -22,8 +25,17 @@ struct Run {
 
 /// Runs `plumbtone measure` in a folder.
 fn measure(folder: &Path, arguments: &[&str]) -> Run {
+    plumbtone(folder, "measure", arguments)
+}
+
+/// Runs `plumbtone drift` in a folder.
+fn drift(folder: &Path, arguments: &[&str]) -> Run {
+    plumbtone(folder, "drift", arguments)
+}
+
+fn plumbtone(folder: &Path, command: &str, arguments: &[&str]) -> Run {
     let Output { status, stdout, stderr } = Command::new(env!("CARGO_BIN_EXE_plumbtone"))
-        .arg("measure")
+        .arg(command)
         .args(arguments)
         .current_dir(folder)
         .output()
