@@ -41,6 +41,10 @@ const ORIGIN_HZ: f64 = 440.0;
 /// Longest drop-out that leaves a pitch one piece, in seconds: shorter than the shortest note.
 const BRIDGED_S: f64 = 0.08;
 
+/// Readings in a row that may lie off the pitch before and after them, and are then left out: an estimate that slips for an
+/// instant is no note, for none is that short.
+const SLIPS_MAX: usize = 3;
+
 /// Where a [`Check`] delivers.
 pub trait CheckSink {
     /// The pitch heard at the next instant that was judged.
@@ -74,6 +78,8 @@ pub struct Check {
     settings: CheckSettings,
     resolver: Resolver,
     hearing: Hearing,
+    /// Readings that jumped away, and may come back.
+    jumped: Vec<Point>,
     spans: Spans,
     sounding: Sounding,
     totals: Totals,
@@ -89,6 +95,7 @@ impl Check {
         Ok(Self {
             resolver: Resolver::new(reference, settings.sample_rate_hz),
             hearing: Hearing::new(settings),
+            jumped: Vec::with_capacity(SLIPS_MAX + 1),
             spans: Spans::new(settings),
             sounding: Sounding::default(),
             totals: Totals::new(settings),
@@ -131,11 +138,10 @@ impl Check {
             sd: pitch.f0_sd_cents,
             given_hz,
         };
-        if self.idle_s(reading.centre) > BRIDGED_S || self.hearing.is_jump(&point) {
+        if self.idle_s(reading.centre) > BRIDGED_S {
             self.end_piece(sink);
         }
-        self.hearing.push(point);
-        self.judge(sink);
+        self.take(point, sink);
     }
 
     /// Takes in a gap: nothing is bridged over it.
@@ -173,7 +179,39 @@ impl Check {
         self.spans.interrupt(sink);
     }
 
+    /// Takes in a point of the piece, or of the next one when the pitch has jumped for good.
+    fn take(&mut self, point: Point, sink: &mut impl CheckSink) {
+        if self.hearing.is_jump(&point) {
+            self.jumped.push(point);
+            if self.jumped.len() > SLIPS_MAX {
+                self.take_jumped(sink);
+            }
+        } else {
+            self.jumped.clear();
+            self.hearing.push(point);
+            self.judge(sink);
+        }
+    }
+
+    /// Begins another piece with the points that jumped away.
+    fn take_jumped(&mut self, sink: &mut impl CheckSink) {
+        for index in 0..self.jumped.len() {
+            let point = self.jumped[index];
+            if self.hearing.is_jump(&point) {
+                self.close_piece(sink);
+            }
+            self.hearing.push(point);
+            self.judge(sink);
+        }
+        self.jumped.clear();
+    }
+
     fn end_piece(&mut self, sink: &mut impl CheckSink) {
+        self.take_jumped(sink);
+        self.close_piece(sink);
+    }
+
+    fn close_piece(&mut self, sink: &mut impl CheckSink) {
         self.hearing.end_piece();
         self.judge(sink);
         self.totals.end_piece();
