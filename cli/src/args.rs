@@ -1,8 +1,12 @@
 //! What the user can say on the command line.
 
 mod drift;
+mod keys;
+mod recipe;
 
 pub(crate) use drift::{Drift, Limits, ReferenceChoice};
+pub(crate) use keys::Keys;
+pub(crate) use recipe::Recipe;
 
 use crate::input::Channel;
 use clap::builder::{PossibleValuesParser, TypedValueParser};
@@ -50,6 +54,10 @@ pub(crate) enum Command {
     Measure(Measure),
     /// Check whether the pitch of sound files holds: within a tolerance of a reference, and where not
     Drift(Drift),
+    /// Write down what a sound is made of at one instant: as a list, as a single cycle, as sound
+    Recipe(Recipe),
+    /// Measure note by note how an instrument or a patch behaves over its keys
+    Keys(Keys),
 }
 
 #[derive(Debug, ClapArgs)]
@@ -92,6 +100,9 @@ pub(crate) struct What {
     /// Temperament that names the notes; A has the concert pitch in each
     #[arg(long, value_name = "NAME", default_value = "equal", value_parser = temperament_names())]
     pub(crate) temperament: Temperament,
+    /// Time over which the partials of a reading are averaged, where a command wants another than the engine's.
+    #[arg(skip)]
+    pub(crate) integration_s: Option<f64>,
 }
 
 /// Where the figures go.

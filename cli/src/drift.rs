@@ -1,6 +1,5 @@
 //! The command `drift`: the pitch of many files against a reference.
 
-mod inputs;
 mod junit;
 mod notes;
 pub(crate) mod record;
@@ -9,6 +8,7 @@ mod table;
 pub(crate) mod trace;
 
 use crate::args::{Drift, Limits, ReferenceChoice, What};
+use crate::files::expand;
 use crate::measure::Timebase;
 use crate::names::{distinct_names, picture_place};
 use crate::output::Report;
@@ -70,7 +70,7 @@ struct DriftJob {
 
 impl DriftJob {
     fn new(mut command: Drift) -> Result<Self> {
-        command.files = inputs::expand(&command.files)?;
+        command.files = expand(&command.files)?;
         let tuning = Tuning::new(command.what.concert_pitch, command.what.temperament)?;
         settings(&command.limits, 48_000.0, 480).validate()?;
         let read =

@@ -125,5 +125,6 @@ fn partial(number: u32, f0_hz: f64, b: f64) -> NotePartial {
         decay_db_per_s: 3.0 + n,
         decay_sd: 0.05,
         snr_db: 70.0 - n,
+        cluster: None,
     }
 }

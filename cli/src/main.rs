@@ -9,14 +9,17 @@
 mod args;
 mod convert;
 mod drift;
+mod files;
 #[cfg(test)]
 mod fixtures;
 mod input;
+mod keys;
 mod measure;
 mod measure_job;
 mod names;
 mod output;
 mod picture;
+mod recipe;
 mod run;
 
 use clap::Parser as _;
@@ -27,5 +30,7 @@ fn main() -> ExitCode {
     match args.command {
         args::Command::Measure(measure) => measure_job::measure_files(&measure),
         args::Command::Drift(drift) => drift::check_files(drift),
+        args::Command::Recipe(recipe) => recipe::write_recipes(recipe),
+        args::Command::Keys(keys) => keys::write_sheet(keys),
     }
 }

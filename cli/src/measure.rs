@@ -4,6 +4,7 @@ use crate::args::What;
 use crate::convert;
 use crate::drift::record::DriftRecord;
 use crate::input::{Block, Input};
+use crate::keys::record::KeyRecord;
 use crate::output::Report;
 use crate::output::records::NoteRecord;
 use crate::output::spool::Spool;
@@ -56,6 +57,8 @@ pub(crate) struct Measured {
     pub(crate) unmet: Vec<String>,
     /// What a drift check came to, where one was made.
     pub(crate) checked: Option<DriftRecord>,
+    /// The rows of a key sheet.
+    pub(crate) keys: Vec<KeyRecord>,
 }
 
 /// Measures a file into the reports. `progress` hears from time to time which share of the file has been read.
@@ -122,6 +125,7 @@ fn settings(what: &What, sample_rate_hz: f64) -> Settings {
         lowest_hz: what.lowest,
         highest_hz: what.highest.unwrap_or(defaults.highest_hz),
         partials: usize::from(what.partials),
+        integration_s: what.integration_s.unwrap_or(defaults.integration_s),
         ..defaults
     }
 }
@@ -144,7 +148,9 @@ fn feed(
     let to = span.end.clamp(from, position);
     match block {
         Block::Samples => {
-            analyzer.push(&samples[convert::index(from - start)..convert::index(to - start)], sink);
+            let samples = &samples[convert::index(from - start)..convert::index(to - start)];
+            sink.samples(from - span.start, samples);
+            analyzer.push(samples, sink);
         }
         Block::Lost(_) if to > from => analyzer.skip(to - from, sink),
         Block::Lost(_) => {}
@@ -191,6 +197,10 @@ impl Fan {
         }
     }
 
+    fn samples(&mut self, from: u64, samples: &[f32]) {
+        self.reports.iter_mut().for_each(|report| report.samples(from, samples));
+    }
+
     fn failure(&mut self) -> Result<()> {
         std::mem::replace(&mut self.failed, Ok(()))
     }
@@ -212,12 +222,14 @@ impl Fan {
     }
 
     fn finish(self, facts: &FileFacts, remarks: Vec<String>) -> Result<Measured> {
-        let mut measured = Measured { text: None, remarks, unmet: Vec::new(), checked: None };
+        let mut measured =
+            Measured { text: None, remarks, unmet: Vec::new(), checked: None, keys: Vec::new() };
         for report in self.reports {
             let ending = report.finish(facts)?;
             measured.text = ending.text.or(measured.text);
             measured.unmet.extend(ending.unmet);
             measured.checked = ending.checked.or(measured.checked);
+            measured.keys.extend(ending.keys);
         }
         // A check says itself why it came to no verdict.
         if measured.checked.is_none() && !self.pitched {
@@ -237,6 +249,7 @@ impl Sink for Fan {
         self.notes += 1;
         self.pitched = true;
         self.strays_left_out += note.strays_left_out;
+        self.reports.iter_mut().for_each(|report| report.engine_note(note));
         let record = NoteRecord::new(note, self.timebase, &self.tuning);
         self.each(|report| report.note(&record));
     }

@@ -172,6 +172,6 @@ impl Report for DriftReport {
         }
         let unmet = record.reason.as_ref().map(|why| format!("unmeasured: {why}"));
         let unmet = unmet.filter(|_| record.verdict == VerdictWord::Unmeasured);
-        Ok(Ending { text: Some(text), unmet, checked: Some(record) })
+        Ok(Ending { text: Some(text), unmet, checked: Some(record), ..Ending::default() })
     }
 }

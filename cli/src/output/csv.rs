@@ -41,6 +41,8 @@ const NOTES: &[Column<NoteRecord>] = &[
     ("tristimulus_3", |_, note| figure(note.tristimulus.map(|three| three[2]))),
     ("centroid_partial", |_, note| figure(note.centroid_partial)),
     ("strays_left_out", |_, note| note.strays_left_out.to_string()),
+    ("waveform", |_, note| note.waveform.as_ref().map(|w| w.name.to_owned()).unwrap_or_default()),
+    ("pulse_width", |_, note| figure(note.waveform.as_ref().and_then(|w| w.width))),
 ];
 
 const PARTIALS: &[Column<PartialRecord>] = &[
@@ -58,6 +60,9 @@ const PARTIALS: &[Column<PartialRecord>] = &[
     ("decay_db_per_s", |_, partial| figure(partial.decay_db_per_s)),
     ("decay_sd", |_, partial| figure(partial.decay_sd)),
     ("snr_db", |_, partial| figure(partial.snr_db)),
+    ("lines", |_, partial| partial.cluster.as_ref().map_or(1, |c| c.lines).to_string()),
+    ("spread_cents", |_, partial| figure(partial.cluster.as_ref().and_then(|c| c.spread_cents))),
+    ("beat_hz", |_, partial| figure(partial.cluster.as_ref().and_then(|c| c.beat_hz))),
 ];
 
 const STRAYS: &[Column<StrayRecord>] = &[
@@ -67,6 +72,9 @@ const STRAYS: &[Column<StrayRecord>] = &[
     ("kind", |_, stray| stray.kind.to_owned()),
     ("partial", |_, stray| stray.partial.map(|partial| partial.to_string()).unwrap_or_default()),
     ("explanation", |_, stray| words::explanation(stray.explanation)),
+    ("folds", |_, stray| stray.folds.map(|folds| folds.to_string()).unwrap_or_default()),
+    ("relative_db", |_, stray| figure(stray.relative_db)),
+    ("over_mask_db", |_, stray| figure(stray.over_mask_db)),
 ];
 
 /// The CSV files of one input in the making.

@@ -9,6 +9,7 @@ mod drift_batch;
 mod drift_expected;
 mod formats;
 mod outputs;
+mod patch;
 mod sounds;
 
 use serde_json::Value;

@@ -11,7 +11,7 @@ const ENDINGS: [&str; 7] = ["wav", "wave", "aif", "aiff", "aifc", "flac", "rf64"
 ///
 /// # Errors
 /// A folder or pattern without a sound file; a pattern that is none.
-pub(super) fn expand(named: &[PathBuf]) -> Result<Vec<PathBuf>> {
+pub(crate) fn expand(named: &[PathBuf]) -> Result<Vec<PathBuf>> {
     let mut files = Vec::new();
     let mut seen = HashSet::new();
     for path in named {
