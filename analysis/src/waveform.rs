@@ -91,15 +91,21 @@ pub fn waveform(partials: &[(u32, f64, f64)], looked_for: u32) -> Option<Wavefor
     if !(strongest > 0.0) {
         return None;
     }
-    let pulses =
-        (1..=WIDTHS).map(|i| Waveform::Pulse { width: 0.5 * i as f64 / (WIDTHS + 1) as f64 });
-    let best_width = pulses
-        .map(|pulse| (pulse, level_error(partials, looked_for, pulse)))
-        .min_by(|a, b| a.1.total_cmp(&b.1))
-        .map(|(pulse, _)| refined(partials, looked_for, pulse));
-    let candidates = Waveform::PLAIN.into_iter().chain(best_width);
-    let fits = candidates.filter_map(|wave| fit(partials, looked_for, wave));
-    fits.min_by(|a, b| badness(a).total_cmp(&badness(b)))
+    let plain = Waveform::PLAIN.into_iter().filter_map(|wave| fit(partials, looked_for, wave));
+    // Some width makes nearly a square, so pulses come after the others.
+    plain
+        .min_by(|a, b| badness(a).total_cmp(&badness(b)))
+        .or_else(|| fit(partials, looked_for, best_pulse(partials, looked_for)?))
+}
+
+/// The pulse whose levels fit best.
+fn best_pulse(partials: &[(u32, f64, f64)], looked_for: u32) -> Option<Waveform> {
+    let pulses = (1..=WIDTHS).map(|i| {
+        let pulse = Waveform::Pulse { width: 0.5 * i as f64 / (WIDTHS + 1) as f64 };
+        (pulse, level_error(partials, looked_for, pulse))
+    });
+    let best = pulses.min_by(|a, b| a.1.total_cmp(&b.1))?;
+    Some(refined(partials, looked_for, best.0))
 }
 
 /// One figure for how bad a fit is: both differences over what is allowed.

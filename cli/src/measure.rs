@@ -147,13 +147,13 @@ fn feed(
     let from = span.start.clamp(start, position);
     let to = span.end.clamp(from, position);
     match block {
-        Block::Samples => {
+        Block::Samples if to > from => {
             let samples = &samples[convert::index(from - start)..convert::index(to - start)];
             sink.samples(from - span.start, samples);
             analyzer.push(samples, sink);
         }
         Block::Lost(_) if to > from => analyzer.skip(to - from, sink),
-        Block::Lost(_) => {}
+        Block::Samples | Block::Lost(_) => {}
     }
 }
 

@@ -60,9 +60,9 @@ const PARTIALS: &[Column<PartialRecord>] = &[
     ("decay_db_per_s", |_, partial| figure(partial.decay_db_per_s)),
     ("decay_sd", |_, partial| figure(partial.decay_sd)),
     ("snr_db", |_, partial| figure(partial.snr_db)),
-    ("lines", |_, partial| partial.cluster.as_ref().map_or(1, |c| c.lines).to_string()),
-    ("spread_cents", |_, partial| figure(partial.cluster.as_ref().and_then(|c| c.spread_cents))),
-    ("beat_hz", |_, partial| figure(partial.cluster.as_ref().and_then(|c| c.beat_hz))),
+    ("lines", |_, partial| partial.lines.to_string()),
+    ("spread_cents", |_, partial| figure(partial.spread_cents)),
+    ("beat_hz", |_, partial| figure(partial.beat_hz)),
 ];
 
 const STRAYS: &[Column<StrayRecord>] = &[

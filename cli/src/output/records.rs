@@ -71,12 +71,7 @@ pub(crate) struct PartialRecord {
     pub(crate) decay_db_per_s: Option<f64>,
     pub(crate) decay_sd: Option<f64>,
     pub(crate) snr_db: Option<f64>,
-    pub(crate) cluster: Option<ClusterRecord>,
-}
-
-/// The lines of a partial that is several.
-#[derive(Debug, Clone, Serialize)]
-pub(crate) struct ClusterRecord {
+    /// Lines that it is made of; of several, their spread and the rate at which the two strongest beat.
     pub(crate) lines: u32,
     pub(crate) spread_cents: Option<f64>,
     pub(crate) beat_hz: Option<f64>,
@@ -197,11 +192,9 @@ impl PartialRecord {
             decay_db_per_s: measured(partial.decay_db_per_s),
             decay_sd: measured(partial.decay_sd),
             snr_db: measured(partial.snr_db),
-            cluster: partial.cluster.map(|cluster| ClusterRecord {
-                lines: cluster.lines,
-                spread_cents: measured(cluster.spread_cents),
-                beat_hz: measured(cluster.beat_hz),
-            }),
+            lines: partial.cluster.map_or(1, |cluster| cluster.lines),
+            spread_cents: partial.cluster.and_then(|cluster| measured(cluster.spread_cents)),
+            beat_hz: partial.cluster.and_then(|cluster| measured(cluster.beat_hz)),
         }
     }
 }

@@ -105,18 +105,17 @@ fn descriptors_text(note: &NoteRecord) -> String {
 
 /// Which partials are several lines.
 fn clusters_text(note: &NoteRecord) -> String {
-    let clusters: Vec<_> =
-        note.partials.iter().filter_map(|p| Some((p.number, p.cluster.as_ref()?))).collect();
+    let clusters: Vec<_> = note.partials.iter().filter(|partial| partial.lines > 1).collect();
     let Some(first) = clusters.first() else { return String::new() };
-    let spreads = clusters.iter().filter_map(|c| c.1.spread_cents);
+    let spreads = clusters.iter().filter_map(|partial| partial.spread_cents);
     let (low, high) =
         spreads.fold((f64::INFINITY, 0.0), |s, x| (f64::min(s.0, x), f64::max(s.1, x)));
-    let most = clusters.iter().map(|c| c.1.lines).max().unwrap_or(0);
+    let most = clusters.iter().map(|partial| partial.lines).max().unwrap_or(0);
     format!(
-        "  {} partials are clusters of up to {most} lines, {low:.1} to {high:.1} cents wide; partial {} beats at {} Hz\n",
+        "  clusters: {} partials of up to {most} lines, {low:.1} to {high:.1} cents wide; partial {} beats at {} Hz\n",
         clusters.len(),
-        first.0,
-        plain(first.1.beat_hz, 2),
+        first.number,
+        plain(first.beat_hz, 2),
     )
 }
 

@@ -16,7 +16,7 @@ const FILE: [&str; 9] = [
     "notes",
 ];
 const FRAME: [&str; 6] = ["time_s", "state", "f0_hz", "f0_sd_cents", "confidence", "level_dbfs"];
-const NOTE: [&str; 18] = [
+const NOTE: [&str; 19] = [
     "start_s",
     "end_s",
     "f0_hz",
@@ -35,8 +35,9 @@ const NOTE: [&str; 18] = [
     "tristimulus",
     "centroid_partial",
     "strays_left_out",
+    "waveform",
 ];
-const PARTIAL: [&str; 13] = [
+const PARTIAL: [&str; 16] = [
     "number",
     "frequency_hz",
     "frequency_sd_hz",
@@ -50,8 +51,12 @@ const PARTIAL: [&str; 13] = [
     "decay_db_per_s",
     "decay_sd",
     "snr_db",
+    "lines",
+    "spread_cents",
+    "beat_hz",
 ];
-const STRAY: [&str; 4] = ["frequency_hz", "level_dbfs", "kind", "partial"];
+const STRAY: [&str; 7] =
+    ["frequency_hz", "level_dbfs", "kind", "partial", "folds", "relative_db", "over_mask_db"];
 
 #[test]
 fn json_has_the_fields_promised_in_their_order() {

@@ -33,7 +33,7 @@ fn samples(file: &Path) -> Vec<f32> {
 fn a_recipe_is_what_the_sound_was_made_from() {
     let folder = folder_with([("tone.wav", wav(&[tone(2.0)], Coding::F32))]);
     let found = recipe(folder.path(), &["--at", "1.0", "tone.wav"]);
-    for n in 1..=6 {
+    for n in 1..=6_u32 {
         let number = f64::from(n);
         let (amplitude, phase) = partial(&found, u64::from(n));
         assert!((amplitude / (AMPLITUDE / number) - 1.0).abs() < 2e-3, "partial {n}: {amplitude}");
@@ -48,7 +48,8 @@ fn a_recipe_is_what_the_sound_was_made_from() {
 fn the_exported_sound_gives_the_recipe_back() {
     let folder = folder_with([("tone.wav", wav(&[tone(2.0)], Coding::F32))]);
     let first = recipe(folder.path(), &["--at", "1.0", "--sound", "again.wav", "tone.wav"]);
-    let second = recipe(folder.path(), &["--at", "1.0", "again.wav"]);
+    // The sound begins at the instant; farther on, what is left of the frequencies' errors turns the phases.
+    let second = recipe(folder.path(), &["--at", "0.2", "again.wav"]);
     for n in 1..=6 {
         let (a, b) = (partial(&first, n), partial(&second, n));
         assert!((a.0 / b.0 - 1.0).abs() < 1e-3, "partial {n}: amplitude {} became {}", a.0, b.0);
@@ -172,18 +173,17 @@ fn a_saw_is_called_a_saw_and_a_detuned_pair_a_cluster() {
     assert_eq!(one["waveform"]["name"], "saw", "{}", one["waveform"]);
     let clusters = |note: &Value| -> Vec<Value> {
         let partials = note["partials"].as_array().unwrap();
-        partials.iter().filter(|p| !p["cluster"].is_null()).cloned().collect()
+        partials.iter().filter(|p| p["lines"] != 1).cloned().collect()
     };
     assert!(clusters(&one).is_empty(), "a single voice: {:?}", clusters(&one));
     let two = clusters(&note("pair.wav"));
     assert!(two.len() >= 30, "{} of 40 partials are clusters", two.len());
     for partial in &two {
         let n = partial["number"].as_f64().unwrap();
-        let cluster = &partial["cluster"];
-        assert_eq!(cluster["lines"], 2, "partial {n}: {cluster}");
-        let spread = cluster["spread_cents"].as_f64().unwrap();
+        assert_eq!(partial["lines"], 2, "partial {n}: {partial}");
+        let spread = partial["spread_cents"].as_f64().unwrap();
         assert!((spread - 10.2).abs() < 0.3, "partial {n}: {spread} cents");
-        let beat = cluster["beat_hz"].as_f64().unwrap();
+        let beat = partial["beat_hz"].as_f64().unwrap();
         assert!((beat - 1.3 * n).abs() < 0.1, "partial {n}: beats at {beat} Hz");
     }
 }
