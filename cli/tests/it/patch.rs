@@ -16,7 +16,8 @@ fn recipe(folder: &Path, arguments: &[&str]) -> Value {
 fn partial(recipe: &Value, n: u64) -> (f64, f64) {
     let partials = recipe["partials"].as_array().unwrap();
     let found = partials.iter().find(|p| p["number"] == n);
-    let found = found.unwrap_or_else(|| panic!("partial {n} in {recipe}"));
+    assert!(found.is_some(), "partial {n} in {recipe}");
+    let found = found.unwrap();
     (found["amplitude"].as_f64().unwrap(), found["phase_from_fundamental_rad"].as_f64().unwrap())
 }
 
