@@ -4,7 +4,7 @@ use egui::{Align2, Rect, Ui, pos2, vec2};
 use plumbtone_analysis::tuning::Nearest;
 use plumbtone_analysis::{Pitch, State};
 
-use super::field::{self, Bench, Field};
+use super::field::{self, Bench, Field, Place};
 use super::ink;
 use super::knob::Knob;
 use super::screen::Shown;
@@ -19,6 +19,10 @@ const BUTTON: egui::Vec2 = vec2(72.0, 32.0);
 /// Width of a field, and of all that stands left of the fields at its widest.
 const FIELD: f32 = 104.0;
 const FIGURES: f32 = 372.0;
+/// Deviation below which "less than" is said, in cents.
+const LEAST_SD: f64 = 0.005;
+/// Width of the window below which the buttons stand one above the other.
+const NARROW: f32 = 560.0;
 /// Lines of the figures.
 const UPPER: f32 = 31.0;
 const LOWER: f32 = 55.0;
@@ -29,25 +33,25 @@ const FIELDS: [Field; 4] = [
         knob: Knob::ConcertPitch,
         caption: "concert pitch",
         help: "Frequency of A4. It names notes and changes no measurement. Drag, scroll, or double-click to type; right-click for 440 Hz.",
-        above: true,
+        place: Place::Under,
     },
     Field {
         knob: Knob::Temperament,
         caption: "temperament",
         help: "Where the notes lie within the octave; A keeps the concert pitch. Click to choose, right-click for equal.",
-        above: true,
+        place: Place::Under,
     },
     Field {
         knob: Knob::Integration,
         caption: "integration",
         help: "Time over which the partials are averaged: longer is steadier, shorter follows faster. The pitch itself is never averaged.",
-        above: true,
+        place: Place::Under,
     },
     Field {
         knob: Knob::Channel,
         caption: "listening to",
         help: "Which signal of a stereo pair is measured: mid is half the sum, side half the difference.",
-        above: true,
+        place: Place::Under,
     },
 ];
 
@@ -137,7 +141,10 @@ fn pitched(
     let cents = format!("{} ct", figures.cents.text(true));
     let cents = ink::text(ui, upper(x), &cents, bold(LARGE), palette.pitch);
     cents.on_hover_text("Cents off that note: a hundredth of a semitone each.");
-    let sd = format!("\u{b1} {}", figures.cents_sd.text(false));
+    let sd = match pitch.f0_sd_cents {
+        sd if sd < LEAST_SD => "\u{b1} < 0.01".to_owned(),
+        _ => format!("\u{b1} {}", figures.cents_sd.text(false)),
+    };
     ink::text(ui, lower(x), &sd, sans(TEXT), palette.dim)
         .on_hover_text("One standard deviation of the cents: two of them hold 95 % of what noise does.");
     let x = x + 118.0;
@@ -205,6 +212,14 @@ fn controls(ui: &mut Ui, rect: Rect, bench: &mut Bench<'_>) {
         (Knob::Check, "Check", "Arms the drift check: the pitch is measured even while the editor is closed."),
     ];
     let mut right = rect.right() - 14.0;
+    if rect.width() < NARROW {
+        for (k, (knob, caption, help)) in buttons.into_iter().enumerate() {
+            let y = rect.top() + 9.0 + 31.0 * k as f32;
+            let place = Rect::from_min_size(pos2(right - BUTTON.x, y), vec2(BUTTON.x, 27.0));
+            field::switch(ui, place, (knob, caption, help), bench);
+        }
+        return;
+    }
     for (knob, caption, help) in buttons.into_iter().rev() {
         let place = Rect::from_min_size(pos2(right - BUTTON.x, rect.top() + 22.0), BUTTON);
         field::switch(ui, place, (knob, caption, help), bench);

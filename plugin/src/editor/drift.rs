@@ -15,7 +15,7 @@ use egui::{
 use self::columns::{Column, columns};
 use self::reference::Target;
 use self::ticks::{Tick, ticks};
-use super::field::{self, Bench, Field};
+use super::field::{self, Bench, Field, Place};
 use super::ink;
 use super::knob::Knob;
 use super::plumb::{CENTS, Calm, round_step};
@@ -41,13 +41,15 @@ const LABELS_APART: f64 = 76.0;
 const TOLERANCES: f64 = 1.6;
 /// Deviations that the shade spans each way.
 const SHADE_SD: f32 = 2.0;
+/// A pitch that holds for less than this many seconds is passed over when the scale and the worst are found.
+const LASTING_S: f64 = 0.25;
 /// Share of the span that an arrow key moves by.
 const KEY_SHARE: f64 = 0.25;
 
 const FIELDS: [(Field, f32); 3] = [
-    (Field { knob: Knob::Reference, caption: "drift against", help: "Where the pitch should be: the nearest note, the notes played into the plugin, the first steady pitch, or one pitch.", above: false }, 206.0),
-    (Field { knob: Knob::Tolerance, caption: "tolerance \u{b1}", help: "How far from the reference is still within. Drag, scroll, or double-click to type.", above: false }, 140.0),
-    (Field { knob: Knob::ReferencePitch, caption: "at", help: "The reference pitch, as a note or in Hz.", above: false }, 104.0),
+    (Field { knob: Knob::Reference, caption: "drift against", help: "Where the pitch should be: the nearest note, the notes played into the plugin, the first steady pitch, or one pitch.", place: Place::After }, 190.0),
+    (Field { knob: Knob::Tolerance, caption: "tolerance \u{b1}", help: "How far from the reference is still within. Drag, scroll, or double-click to type.", place: Place::After }, 118.0),
+    (Field { knob: Knob::ReferencePitch, caption: "at", help: "The reference pitch, as a note or in Hz.", place: Place::After }, 92.0),
 ];
 
 /// How the view is set, and what it drew last.
@@ -123,8 +125,7 @@ impl Drift {
 
     fn rescale(&mut self, shown: &Shown<'_>) {
         let tolerance = f64::from(shown.parameters.check.tolerance.value());
-        let steady = self.picture.columns.iter().filter(|column| column.kind == Kind::Steady);
-        let far = steady.map(|c| f64::from(c.mean.abs())).fold(0.0, f64::max);
+        let far = self.lasting().map(|c| f64::from(c.mean.abs())).fold(0.0, f64::max);
         let need = (TOLERANCES * tolerance).max(1.15 * far);
         self.half = self.calm.update(need, shown.time_s, &CENTS);
     }
@@ -156,7 +157,7 @@ impl Drift {
             }
             let place = Rect::from_min_size(pos2(x, rect.top() + 6.0), vec2(width, 18.0));
             field::field(ui, place, &field, bench);
-            x += width + 26.0;
+            x += width + 14.0;
         }
         let palette = bench.palette;
         let mut right = rect.right() - PAD;
@@ -181,8 +182,21 @@ impl Drift {
 
     /// The drift line's farthest point in the stretch shown.
     fn worst(&self) -> Option<f32> {
-        let steady = self.picture.columns.iter().filter(|column| column.kind == Kind::Steady);
-        steady.map(|column| column.drift).max_by(|a, b| a.abs().total_cmp(&b.abs()))
+        self.lasting().map(|column| column.drift).max_by(|a, b| a.abs().total_cmp(&b.abs()))
+    }
+
+    /// Columns in the stretch shown whose pitch lasts: what passes within an onset says nothing about drift.
+    fn lasting(&self) -> impl Iterator<Item = &Column> {
+        let Picture { columns, start, step_s, .. } = &self.picture;
+        let same = |a: &Column, b: &Column| a.kind == b.kind && a.note == b.note;
+        columns
+            .chunk_by(same)
+            .filter(move |run| {
+                let lasts = (run[run.len() - 1].at - run[0].at) * step_s;
+                run[0].kind == Kind::Steady && lasts >= LASTING_S
+            })
+            .flatten()
+            .filter(move |column| column.at >= *start)
     }
 
     /// Zoom by wheel, scroll by dragging, and both by keys.
@@ -325,7 +339,7 @@ fn times(ui: &Ui, frame: &Frame, ticks: &[Tick], palette: &Palette) {
         ui.painter().vline(x, Rangef::new(bottom + 1.0, bottom + 5.0), Stroke::new(1.0, palette.edge));
         let at = pos2(x, bottom + 15.0);
         let wide = single(tick.text.len() as f64) * 3.5;
-        if x - wide > frame.plot.left() - 40.0 && x + wide < frame.plot.right() + 14.0 {
+        if x - wide > frame.plot.left() - 40.0 && x + wide < frame.plot.right() + 6.0 {
             ink::mark(ui, at, Align2::CENTER_CENTER, &tick.text, mono(SMALL), palette.dim);
         }
     }

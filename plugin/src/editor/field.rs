@@ -8,7 +8,7 @@ use egui::{
 
 use super::ink;
 use super::knob::{Gesture, Handle, Knob};
-use super::theme::{CORNER, Palette, SMALL, VALUE, mono, sans};
+use super::theme::{CORNER, FIGURE, Palette, SMALL, VALUE, mono, sans};
 use crate::parameters::Parameters;
 
 /// Change of the normalised value per point of a drag, and with Shift held.
@@ -33,8 +33,18 @@ pub(crate) struct Field {
     pub(crate) knob: Knob,
     pub(crate) caption: &'static str,
     pub(crate) help: &'static str,
-    /// Caption above the value, or to its left with the value at the right edge.
-    pub(crate) above: bool,
+    pub(crate) place: Place,
+}
+
+/// Where the value stands.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(crate) enum Place {
+    /// Under its caption.
+    Under,
+    /// Right after it.
+    After,
+    /// At the right edge.
+    Edge,
 }
 
 /// The parts that every field draws with.
@@ -61,9 +71,11 @@ pub(crate) fn field(ui: &mut Ui, rect: Rect, field: &Field, bench: &mut Bench<'_
     if type_in(ui, &response, field, at, bench) {
         return response;
     }
-    let align = if field.above { Align2::LEFT_CENTER } else { Align2::RIGHT_CENTER };
-    let font = if field.above { sans(VALUE) } else { mono(super::theme::FIGURE) };
-    let room = if field.above { rect.width() - 4.0 } else { rect.width() * 0.6 };
+    let (align, font, room) = match field.place {
+        Place::Under => (Align2::LEFT_CENTER, sans(VALUE), rect.width() - 4.0),
+        Place::After => (Align2::LEFT_CENTER, sans(FIGURE), rect.right() - at.x),
+        Place::Edge => (Align2::RIGHT_CENTER, mono(FIGURE), rect.width() * 0.6),
+    };
     let mut job = egui::text::LayoutJob::simple_singleline(shown, font, bench.palette.ink);
     job.wrap = egui::text::TextWrapping::truncate_at_width(room);
     let galley = ui.painter().layout_job(job);
@@ -99,14 +111,15 @@ fn frame(ui: &Ui, response: &Response, palette: &Palette) {
 
 /// Draws the caption; says where the value goes.
 fn caption(ui: &Ui, rect: Rect, field: &Field, palette: &Palette) -> Pos2 {
-    if field.above {
-        let at = rect.left_top();
-        ink::mark(ui, at, Align2::LEFT_TOP, field.caption, sans(SMALL), palette.dim);
-        pos2(rect.left(), rect.bottom() - 10.0)
-    } else {
-        let at = rect.left_center();
-        ink::mark(ui, at, Align2::LEFT_CENTER, field.caption, sans(12.0), palette.dim);
-        rect.right_center()
+    let (at, align, size) = match field.place {
+        Place::Under => (rect.left_top(), Align2::LEFT_TOP, SMALL),
+        Place::After | Place::Edge => (rect.left_center(), Align2::LEFT_CENTER, FIGURE),
+    };
+    let drawn = ink::mark(ui, at, align, field.caption, sans(size), palette.dim);
+    match field.place {
+        Place::Under => pos2(rect.left(), rect.bottom() - 10.0),
+        Place::After => pos2(drawn.right() + 7.0, rect.center().y),
+        Place::Edge => rect.right_center(),
     }
 }
 
@@ -132,8 +145,11 @@ fn type_in(
     if *typing != knob {
         return false;
     }
-    let width = if field.above { response.rect.width() } else { 96.0 };
-    let left = if field.above { at.x - 4.0 } else { at.x - width };
+    let (left, width) = match field.place {
+        Place::Under => (at.x - 4.0, response.rect.width()),
+        Place::After => (at.x - 4.0, response.rect.right() - at.x + 4.0),
+        Place::Edge => (at.x - 96.0, 96.0),
+    };
     let place = Rect::from_min_size(pos2(left, at.y - 10.0), vec2(width, 20.0));
     let edit = TextEdit::singleline(text).id(id).font(sans(TEXT_IN)).margin(vec2(3.0, 1.0));
     let entry = ui.put(place, edit);

@@ -15,8 +15,9 @@ pub(crate) fn svg(size: Vec2, theme: Theme, mut draw: impl FnMut(&mut Ui)) -> St
     let area = Rect::from_min_size(Pos2::ZERO, size);
     let input = || RawInput { screen_rect: Some(area), ..RawInput::default() };
     // Fonts are there from the second pass on.
-    let _ = ctx.run_ui(input(), |_| {});
-    let output = ctx.run_ui(input(), |ui| draw(ui));
+    ctx.run_ui(input(), |_| {}).textures_delta.clear();
+    let mut output = ctx.run_ui(input(), |ui| draw(ui));
+    output.textures_delta.clear();
     let mut out = Writer::new(size);
     for ClippedShape { clip_rect, shape, .. } in &output.shapes {
         out.clipped(clip_rect.intersect(area), area, shape);
@@ -162,11 +163,13 @@ fn escaped(text: &str) -> String {
 }
 
 fn paint(fill: Color32, stroke: Stroke) -> String {
-    let mut out = format!(" {}", colour("fill", fill));
     if stroke.width > 0.0 && stroke.color != Color32::TRANSPARENT {
-        let _ = write!(out, " {} stroke-width=\"{}\"", colour("stroke", stroke.color), stroke.width);
+        let width = stroke.width;
+        let (fill, stroke) = (colour("fill", fill), colour("stroke", stroke.color));
+        format!(" {fill} {stroke} stroke-width=\"{width}\"")
+    } else {
+        format!(" {} stroke=\"none\"", colour("fill", fill))
     }
-    out
 }
 
 fn colour(name: &str, colour: Color32) -> String {

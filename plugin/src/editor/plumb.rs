@@ -9,7 +9,7 @@ mod strays;
 use egui::{Align2, Key, Rangef, Rect, Sense, Stroke, Ui, WidgetInfo, Role, pos2, vec2};
 use plumbtone_analysis::{Partial, Reading};
 
-use self::axis::{Axis, CalmCents, CalmRows, RowAxis};
+use self::axis::{Axis, CalmCents, CalmFloor, CalmRows, RowAxis};
 use self::memory::Memory;
 use self::rows::Columns;
 pub(crate) use self::axis::{CENTS, Calm, round_step};
@@ -26,7 +26,7 @@ const FOOT: f32 = 28.0;
 const ROWS: (f32, f32) = (8.0, 128.0);
 /// Widths: partial numbers, lane of the strays, and the figures of Hz and dB.
 const NUMBERS: f32 = 42.0;
-const LANE: f32 = 34.0;
+const LANE: f32 = 48.0;
 const HZ: f32 = 84.0;
 const DB: f32 = 64.0;
 /// Width below which the dB, and below which the Hz are left out.
@@ -34,6 +34,8 @@ const WIDE_FOR_DB: f32 = 520.0;
 const WIDE_FOR_HZ: f32 = 420.0;
 /// Partials whose cents are less sure than this do not stretch the scale.
 const SURE_CENTS: f64 = 10.0;
+/// Room left of the weakest partial's level, in dB.
+const ROOM_DB: f64 = 8.0;
 
 /// What levels are given against.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
@@ -67,12 +69,11 @@ impl Levels {
         .unwrap_or(0.0)
     }
 
-    /// Ends of the scale, in dB.
-    fn scale(self) -> (f64, f64) {
+    /// Upper end of the scale, in dB.
+    fn top_db(self) -> f64 {
         match self {
-            Self::FullScale => (-100.0, 0.0),
-            Self::Strongest => (-90.0, 0.0),
-            Self::First => (-80.0, 20.0),
+            Self::FullScale | Self::Strongest => 0.0,
+            Self::First => 20.0,
         }
     }
 }
@@ -88,6 +89,8 @@ pub(crate) struct Plumb {
     /// The scale and the rows that fitted the last partials there were.
     fitting_cents: (f64, f64),
     fitting_rows: f32,
+    calm_floor: CalmFloor,
+    fitting_floor: f64,
     /// Rows to be seen, when the user zoomed.
     rows: Option<f32>,
     /// Number of the lowest row.
@@ -105,6 +108,8 @@ impl Default for Plumb {
             calm_rows: CalmRows::default(),
             fitting_cents: (-20.0, 20.0),
             fitting_rows: 16.0,
+            calm_floor: CalmFloor::default(),
+            fitting_floor: -80.0,
             rows: None,
             first: 1.0,
             pinned: None,
@@ -146,12 +151,12 @@ impl Plumb {
         let partials: &[Partial] = if held { &reading.partials } else { &[] };
         let columns = self.columns(body, shown, partials);
         self.navigate(ui, body, columns.rows);
-        captions(ui, &columns, self.levels, palette);
-        grid(ui, &columns, palette);
         if held {
+            captions(ui, &columns, self.levels, palette);
+            grid(ui, &columns, palette);
             self.sound(ui, &columns, reading, palette);
         } else {
-            nothing(ui, &columns, shown, palette);
+            nothing(ui, body, shown, palette);
         }
         if let Some(number) = pinned {
             let inset = rect.with_min_y(rect.bottom() - pinned::HEIGHT);
@@ -192,6 +197,7 @@ impl Plumb {
             count,
         };
         let (low, high) = self.scale(shown, partials);
+        self.refit_floor(shown, partials);
         let db = (rect.width() > WIDE_FOR_DB).then_some(rect.right() - PAD);
         let hz = (rect.width() > WIDE_FOR_HZ)
             .then_some(rect.right() - PAD - if db.is_some() { DB } else { 0.0 });
@@ -204,8 +210,8 @@ impl Plumb {
             cents: Axis { x: Rangef::new(left, middle - LANE / 2.0), low, high },
             levels: Axis {
                 x: Rangef::new(middle + LANE / 2.0, figures),
-                low: self.levels.scale().0,
-                high: self.levels.scale().1,
+                low: self.fitting_floor,
+                high: self.levels.top_db(),
             },
             hz,
             db,
@@ -227,6 +233,14 @@ impl Plumb {
             self.fitting_cents = self.calm_cents.update((low * 1.05, high * 1.05), shown.time_s);
         }
         self.fitting_cents
+    }
+
+    fn refit_floor(&mut self, shown: &Shown<'_>, partials: &[Partial]) {
+        let zero = self.levels.zero_dbfs(partials);
+        let below = partials.iter().map(|p| zero - p.level_dbfs).filter(|below| below.is_finite());
+        if let Some(weakest) = below.reduce(f64::max) {
+            self.fitting_floor = self.calm_floor.update(weakest + ROOM_DB, shown.time_s);
+        }
     }
 
     /// Scroll and zoom, by wheel and keys.
@@ -292,8 +306,7 @@ fn captions(ui: &mut Ui, columns: &Columns, levels: Levels, palette: &Palette) {
     };
     let left = columns.whole.left() + 8.0;
     caption(left, Align2::LEFT_CENTER, "partial", "Number of the partial: 1 is the fundamental.");
-    let zero = columns.cents.at(0.0).max(left + 130.0);
-    caption(zero, Align2::CENTER_CENTER, "cents off the harmonic series", "How far each partial lies from its number times the fundamental, with two standard deviations each way. The dashed line is a stiff string's stretch.");
+    caption(columns.cents.x.min, Align2::LEFT_CENTER, "cents off the harmonic series", "How far each partial lies from its number times the fundamental, with two standard deviations each way. The dashed line is a stiff string's stretch.");
     let words = Levels::ALL.iter().find(|(mode, _)| *mode == levels).map_or("level", |(_, words)| words);
     caption(columns.levels.x.min, Align2::LEFT_CENTER, &format!("level, {words}"), "How strong each partial is. Settings has what levels are given against.");
     if let Some(x) = columns.hz {
@@ -325,20 +338,23 @@ fn grid(ui: &Ui, columns: &Columns, palette: &Palette) {
     }
 }
 
-/// What stands where the partials would.
-fn nothing(ui: &mut Ui, columns: &Columns, shown: &Shown<'_>, palette: &Palette) {
+/// What stands where the partials would: the plumb line alone, and why nothing hangs off it.
+fn nothing(ui: &mut Ui, rect: Rect, shown: &Shown<'_>, palette: &Palette) {
     let text = match words::saying(shown.readout, shown.position) {
-        words::Saying::NoPitch("several pitches") => "more than one pitch at once: no single series to hang partials on",
+        words::Saying::NoPitch("several pitches") => {
+            "more than one pitch at once: no single series to hang partials on"
+        }
         words::Saying::NoPitch("unpitched") => "sound without a pitch: no series to hang partials on",
         words::Saying::NoPitch("silent") => "silence",
-        words::Saying::NoPitch("waiting for sound") => "play something",
+        words::Saying::NoPitch("waiting for sound") => "play something, and its partials hang here",
         words::Saying::NoPitch("gap") => "samples are missing here",
         words::Saying::NoPitch(_) | words::Saying::Pitch(_) => "no partials",
     };
-    let middle = pos2(columns.cents.x.min + 24.0, columns.rows.y.center());
-    let width = columns.whole.right() - middle.x - 8.0;
-    let place = (middle, Align2::LEFT_CENTER);
-    let ground = Rect::from_min_size(middle - vec2(8.0, 14.0), vec2(width.min(430.0), 28.0));
-    ui.painter().rect_filled(ground, 4.0, palette.card);
-    ink::text_within(ui, place, (text, width), sans(13.0), palette.dim);
+    let line = Rangef::new(rect.top() + HEAD, rect.center().y - 20.0);
+    ui.painter().vline(rect.center().x, line, Stroke::new(1.5, palette.edge));
+    let bob = pos2(rect.center().x, line.max);
+    let points = vec![bob + vec2(-4.0, 0.0), bob + vec2(4.0, 0.0), bob + vec2(0.0, 9.0)];
+    ui.painter().add(egui::Shape::convex_polygon(points, palette.edge, Stroke::NONE));
+    let place = (rect.center() + vec2(0.0, 8.0), Align2::CENTER_CENTER);
+    ink::text_within(ui, place, (text, rect.width() - 24.0), sans(13.0), palette.dim);
 }

@@ -87,7 +87,7 @@ impl Screen {
 
     /// Draws a frame. Returns what is to be done to the parameters.
     pub fn show(&mut self, ui: &mut Ui, shown: &Shown<'_>) -> Vec<Gesture> {
-        let area = ui.max_rect();
+        let area = ui.ctx().content_rect();
         self.update(shown, area.width());
         let mut gestures = Vec::new();
         let action = self.draw(ui, area, shown, &mut gestures);
@@ -105,8 +105,9 @@ impl Screen {
     #[must_use]
     pub fn svg(&self, size: egui::Vec2, shown: &Shown<'_>) -> String {
         let mut screen = self.clone();
+        screen.update(shown, size.x);
         picture::svg(size, self.theme, |ui| {
-            screen.draw(ui, ui.max_rect(), shown, &mut Vec::new());
+            screen.draw(ui, ui.ctx().content_rect(), shown, &mut Vec::new());
         })
     }
 

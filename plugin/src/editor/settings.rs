@@ -2,7 +2,7 @@
 
 use egui::{Align2, Rect, Sense, Stroke, Ui, WidgetInfo, Role, pos2, vec2};
 
-use super::field::{self, Bench, Field};
+use super::field::{self, Bench, Field, Place};
 use super::ink;
 use super::knob::Knob;
 use super::plumb::{Levels, Plumb};
@@ -24,10 +24,10 @@ const SCALES: [(Option<f64>, &str); 6] = [
 ];
 
 const FIELDS: [Field; 4] = [
-    Field { knob: Knob::Partials, caption: "partials", help: "How many partials are measured, 1 to 128.", above: false },
-    Field { knob: Knob::Lowest, caption: "lowest pitch", help: "Lowest fundamental looked for, as a note or in Hz.", above: false },
-    Field { knob: Knob::Highest, caption: "highest pitch", help: "Highest fundamental looked for, as a note or in Hz.", above: false },
-    Field { knob: Knob::ReferencePitch, caption: "reference pitch", help: "The pitch that drift is measured against when the reference is one pitch.", above: false },
+    Field { knob: Knob::Partials, caption: "partials", help: "How many partials are measured, 1 to 128.", place: Place::Edge },
+    Field { knob: Knob::Lowest, caption: "lowest pitch", help: "Lowest fundamental looked for, as a note or in Hz.", place: Place::Edge },
+    Field { knob: Knob::Highest, caption: "highest pitch", help: "Highest fundamental looked for, as a note or in Hz.", place: Place::Edge },
+    Field { knob: Knob::ReferencePitch, caption: "reference pitch", help: "The pitch that drift is measured against when the reference is one pitch.", place: Place::Edge },
 ];
 
 /// What of the look is set here.

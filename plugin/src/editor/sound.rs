@@ -2,8 +2,9 @@
 
 mod figures;
 
-use egui::{Align2, Rect, Stroke, Ui, pos2, vec2};
+use egui::{Align2, Rect, Sense, Stroke, Ui, pos2, vec2};
 use plumbtone_analysis::Stray;
+use plumbtone_analysis::tuning::ratio;
 
 pub(crate) use self::figures::Figures;
 use super::ink;
@@ -16,17 +17,25 @@ use crate::offset::{Explanation, explain};
 /// Height of a line, and of one in the list of strays.
 const LINE: f32 = 25.0;
 const STRAY_LINE: f32 = 22.0;
+/// Height of a rule and its heading.
+const HEADING: f32 = 38.0;
 /// Room that is kept for the whole track below the strays.
-const TRACK: f32 = 78.0;
+const TRACK: f32 = 98.0;
 
 /// Draws it.
 pub(crate) fn show(ui: &mut Ui, rect: Rect, shown: &Shown<'_>, figures: &Figures, palette: &Palette) {
-    let area = rect.shrink2(vec2(PAD, 0.0));
+    let mut whole = ui.new_child(egui::UiBuilder::new().max_rect(rect));
+    egui::ScrollArea::vertical().id_salt("sound").show(&mut whole, |ui| {
+        let area = Rect::from_min_size(ui.cursor().min, rect.size()).shrink2(vec2(PAD, 0.0));
+        let bottom = all(ui, area, shown, figures, palette);
+        ui.allocate_rect(area.with_max_y(bottom), Sense::hover());
+    });
+}
+
+/// Draws all of it; gives where it ends.
+fn all(ui: &mut Ui, area: Rect, shown: &Shown<'_>, figures: &Figures, palette: &Palette) -> f32 {
     let mut y = area.top() + 10.0;
     for (caption, value, help) in figures.lines() {
-        if y + LINE > area.bottom() {
-            return;
-        }
         let middle = y + LINE / 2.0;
         let left = (pos2(area.left(), middle), Align2::LEFT_CENTER);
         ink::text(ui, left, caption, sans(12.0), palette.dim).on_hover_text(help);
@@ -37,22 +46,21 @@ pub(crate) fn show(ui: &mut Ui, rect: Rect, shown: &Shown<'_>, figures: &Figures
     let held = shown.readout.measured && shown.readout.pitch().is_some();
     if held && !shown.readout.reading.strays.is_empty() {
         let strays = &shown.readout.reading.strays;
-        let lines = area.with_min_y(y).with_max_y(area.bottom() - TRACK);
-        y = self::strays(ui, lines, strays, shown, palette).unwrap_or(y);
+        let track = if shown.readout.offset.is_some() { TRACK } else { 0.0 };
+        let least = y + HEADING + 2.0 * STRAY_LINE;
+        let lines = area.with_min_y(y).with_max_y((area.bottom() - track).max(least));
+        y = self::strays(ui, lines, strays, shown, palette);
     }
-    track(ui, area.with_min_y(y), shown, palette);
+    track(ui, area.with_min_y(y), shown, palette)
 }
 
-/// A rule and a heading; gives the next line's top, if there is room for any.
-fn heading(ui: &mut Ui, area: Rect, text: &str, help: &str, palette: &Palette) -> Option<f32> {
-    if area.height() < 12.0 + 2.0 * STRAY_LINE {
-        return None;
-    }
+/// A rule and a heading; gives the next line's top.
+fn heading(ui: &mut Ui, area: Rect, text: &str, help: &str, palette: &Palette) -> f32 {
     let y = area.top() + 9.0;
     ui.painter().hline(area.x_range(), y, Stroke::new(1.0, palette.edge));
     let at = (pos2(area.left(), y + 17.0), Align2::LEFT_CENTER);
     ink::text(ui, at, text, sans(SMALL), palette.dim).on_hover_text(help);
-    Some(y + 29.0)
+    area.top() + HEADING
 }
 
 fn strays(
@@ -61,9 +69,9 @@ fn strays(
     strays: &[Stray],
     shown: &Shown<'_>,
     palette: &Palette,
-) -> Option<f32> {
+) -> f32 {
     let help = "Peaks that are no partial of this pitch: aliases, mains hum, another sound.";
-    let mut y = heading(ui, area, "belongs to no partial", help, palette)?;
+    let mut y = heading(ui, area, "belongs to no partial", help, palette);
     let strongest = shown.readout.reading.partials.iter().map(|p| p.level_dbfs).fold(f64::NEG_INFINITY, f64::max);
     for (number, stray) in strays.iter().enumerate() {
         let left = strays.len() - number;
@@ -71,7 +79,7 @@ fn strays(
             let more = format!("and {left} weaker");
             let at = (pos2(area.left() + 18.0, y + STRAY_LINE / 2.0), Align2::LEFT_CENTER);
             ink::text(ui, at, &more, sans(12.0), palette.dim);
-            return Some(y + STRAY_LINE);
+            return y + STRAY_LINE;
         }
         let middle = y + STRAY_LINE / 2.0;
         ink::diamond(ui, pos2(area.left() + 5.0, middle), 4.5, palette.stray);
@@ -88,23 +96,25 @@ fn strays(
         ));
         y += STRAY_LINE;
     }
-    Some(y)
+    y
 }
 
-fn track(ui: &mut Ui, area: Rect, shown: &Shown<'_>, palette: &Palette) {
-    let Some(offset) = shown.readout.offset else { return };
+fn track(ui: &mut Ui, area: Rect, shown: &Shown<'_>, palette: &Palette) -> f32 {
+    let Some(offset) = shown.readout.offset else { return area.top() };
     let help = "All notes so far lie this far off: one constant for the whole track, and what it fits.";
-    let Some(mut y) = heading(ui, area, "this whole track", help, palette) else { return };
-    let found = explain(&offset, shown.readout.tuning.concert_pitch_hz());
+    let mut y = heading(ui, area, "this whole track", help, palette);
+    let concert_hz = shown.readout.tuning.concert_pitch_hz();
+    let found = explain(&offset, concert_hz);
     let first = format!("{} \u{b1} {:.1} ct, constant", signed(offset.cents, 1), offset.sd_cents);
-    let lines = std::iter::once(first).chain(found.iter().map(Explanation::to_string));
+    let pitch = format!("as if A4 = {:.1} Hz", concert_hz * ratio(offset.cents));
+    let in_tune = found.contains(&Explanation::InTune);
+    let lines = [Some(first), (!in_tune).then_some(pitch)].into_iter().flatten();
+    let lines = lines.chain(found.iter().map(Explanation::to_string));
     for (number, line) in lines.enumerate() {
-        if y + 20.0 > area.bottom() {
-            return;
-        }
         let at = (pos2(area.left(), y + 9.0), Align2::LEFT_CENTER);
         let colour = if number == 0 { palette.ink } else { palette.dim };
         ink::text_within(ui, at, (&line, area.width()), sans(12.5), colour).on_hover_text(line.clone());
         y += 20.0;
     }
+    y
 }

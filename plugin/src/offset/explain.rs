@@ -37,11 +37,9 @@ pub enum Explanation {
         /// In words.
         name: &'static str,
     },
-    /// Any other constant: a concert pitch of its own, or a tape that runs this much too fast.
-    Other {
-        /// The concert pitch, in Hz.
-        hz: f64,
-        /// How much faster, in percent.
+    /// Any other constant: a tape that runs this much too fast, varispeed.
+    Tape {
+        /// How much faster, in percent; negative is slower.
         faster_percent: f64,
     },
 }
@@ -67,9 +65,7 @@ pub fn explain(offset: &Offset, concert_pitch_hz: f64) -> Vec<Explanation> {
     fits.sort_by(|a, b| a.0.total_cmp(&b.0));
     fits.truncate(2);
     if fits.is_empty() {
-        let by = ratio(offset.cents);
-        let (hz, faster_percent) = (concert_pitch_hz * by, 100.0 * (by - 1.0));
-        return vec![Explanation::Other { hz, faster_percent }];
+        return vec![Explanation::Tape { faster_percent: 100.0 * (ratio(offset.cents) - 1.0) }];
     }
     fits.into_iter().map(|(_, explanation)| explanation).collect()
 }
@@ -78,11 +74,11 @@ impl fmt::Display for Explanation {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
             Self::InTune => write!(f, "in tune with the concert pitch set"),
-            Self::ConcertPitch { hz } => write!(f, "fits concert pitch {hz:.0} Hz"),
+            Self::ConcertPitch { hz } => write!(f, "fits {hz:.0} Hz, a concert pitch in use"),
             Self::Speed { name } => write!(f, "fits {name}"),
-            Self::Other { hz, faster_percent } => {
+            Self::Tape { faster_percent } => {
                 let word = if *faster_percent < 0.0 { "slow" } else { "fast" };
-                write!(f, "concert pitch {hz:.1} Hz, or tape {:.2} % {word}", faster_percent.abs())
+                write!(f, "or tape, varispeed {:.2} % {word}", faster_percent.abs())
             }
         }
     }
@@ -103,17 +99,17 @@ mod tests {
         for (off_cents, concert_pitch_hz, expected) in [
             (0.2, 440.0, "in tune with the concert pitch set"),
             // 442/440 and 432/440.
-            (7.85, 440.0, "fits concert pitch 442 Hz"),
-            (-31.77, 440.0, "fits concert pitch 432 Hz"),
+            (7.85, 440.0, "fits 442 Hz"),
+            (-31.77, 440.0, "fits 432 Hz"),
             // 415/440 is 101.3 cents down, which leaves 1.3 of a semitone.
-            (-1.27, 440.0, "fits concert pitch 415 Hz"),
+            (-1.27, 440.0, "fits 415 Hz"),
             // 48000/44100 is 146.7 cents up.
             (46.71, 440.0, "fits 44.1 kHz played as 48 kHz"),
             (-46.71, 440.0, "fits 48 kHz played as 44.1 kHz"),
             // 25/24 is 70.67 cents up.
             (-29.33, 440.0, "fits 24 frames/s film played at 25"),
-            (20.0, 440.0, "concert pitch 445.1 Hz, or tape 1.16 % fast"),
-            (-20.5, 442.0, "concert pitch 436.8 Hz, or tape 1.18 % slow"),
+            (20.0, 440.0, "varispeed 1.16 % fast"),
+            (-20.5, 442.0, "varispeed 1.18 % slow"),
         ] {
             let found = words(off_cents, concert_pitch_hz);
             assert!(found.contains(expected), "{off_cents} at {concert_pitch_hz}: {found}");

@@ -64,7 +64,7 @@ impl Point {
         if !(f0_hz > 0.0 && f0_hz.is_finite()) {
             return Self::without(Kind::Unpitched);
         }
-        Self::at(1200.0 * (f0_hz / BASE_HZ).log2(), sd_cents, steady)
+        Self::at(Self::cents_of(f0_hz), sd_cents, steady)
     }
 
     /// A reading without a single pitch.
@@ -95,6 +95,12 @@ impl Point {
     #[must_use]
     pub fn cents(self) -> f64 {
         f64::from(self.0 >> 10) / STEPS_A_CENT
+    }
+
+    /// A frequency in the cents that pitches are kept in.
+    #[must_use]
+    pub fn cents_of(hz: f64) -> f64 {
+        1200.0 * (hz / BASE_HZ).log2()
     }
 
     /// Deviation in cents.

@@ -75,7 +75,7 @@ impl Scene {
                 centre: number * HOP,
                 state: if pitch.is_some() { State::Steady } else { State::Silent },
                 pitch,
-                level_dbfs: if pitch.is_some() { -11.2 } else { f64::NEG_INFINITY },
+                level_dbfs: if pitch.is_some() { level(partials) } else { f64::NEG_INFINITY },
                 stretch: pitch.map(|_| Stretch { b: 1.6e-4, b_sd: 2e-6 }),
                 partials: if last { partials.to_vec() } else { Vec::new() },
                 strays: if last { strays.clone() } else { Vec::new() },
@@ -145,6 +145,12 @@ fn drifting(t: f64) -> f64 {
         + bump(27.3, 0.5, 5.6)
 }
 
+/// Level of partials and of noise 30 dB below them.
+fn level(partials: &[Partial]) -> f64 {
+    let power: f64 = partials.iter().map(|p| 10f64.powf(p.level_dbfs / 10.0)).sum();
+    10.0 * (1.001 * power).max(1e-9).log10()
+}
+
 /// Partials of a stiff string at A3 +1.8 ct, falling 6 dB an octave with dents.
 pub(crate) fn string_partials(count: u32) -> Vec<Partial> {
     let f0 = 220.0 * ratio(1.8);
@@ -161,7 +167,7 @@ pub(crate) fn string_partials(count: u32) -> Vec<Partial> {
                 frequency_sd_hz: 0.01 * n,
                 cents_from_harmonic: off + wobble,
                 cents_sd,
-                level_dbfs: -16.2 - 6.1 * n.log2() - 0.3 * n + dent,
+                level_dbfs: -13.2 - 6.1 * n.log2() - 0.3 * n + dent,
                 level_sd_db: 0.1,
                 phase_rad: 0.4 * n % 3.0,
                 snr_db: 60.0 - n,

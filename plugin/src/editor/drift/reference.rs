@@ -21,12 +21,12 @@ impl Target {
     /// The nearest note of a tuning.
     pub(crate) fn nearest(tuning: &Tuning) -> Self {
         let note = |midi| tuning.frequency_hz(NoteName::from_midi(midi));
-        Self::Nearest((NOTES.0..=NOTES.1).map(|midi| trail_cents(note(midi))).collect())
+        Self::Nearest((NOTES.0..=NOTES.1).map(|midi| Point::cents_of(note(midi))).collect())
     }
 
     /// One pitch, in Hz.
     pub(crate) fn fixed(hz: f64) -> Self {
-        Self::Fixed(trail_cents(hz))
+        Self::Fixed(Point::cents_of(hz))
     }
 
     /// Which note a pitch is held against, and the cents off it.
@@ -47,10 +47,6 @@ impl Target {
     }
 }
 
-/// A frequency in the trail's cents.
-fn trail_cents(hz: f64) -> f64 {
-    Point::pitched(hz, 0.0, true).cents()
-}
 
 #[cfg(test)]
 mod tests {
@@ -66,7 +62,7 @@ mod tests {
             for step in 0..500 {
                 let hz = 25.0 * f64::powf(1.0106, f64::from(step));
                 let expected = tuning.nearest(hz).unwrap().cents;
-                let (_, found) = target.off(trail_cents(hz));
+                let (_, found) = target.off(Point::cents_of(hz));
                 // At the middle between two notes either is the nearest.
                 let same = (found - expected).abs() < 0.01 || (found.abs() - expected.abs()).abs() < 0.01;
                 assert!(same, "{temperament} {hz}: {found} {expected}");

@@ -3,7 +3,10 @@
 use egui::{Rangef, lerp};
 
 /// Steps of the scale of cents, and of the number of rows.
-pub(crate) const CENTS: [f64; 10] = [2.0, 5.0, 10.0, 20.0, 50.0, 100.0, 200.0, 500.0, 1_000.0, 2_400.0];
+pub(crate) const CENTS: [f64; 14] = [
+    2.0, 5.0, 10.0, 20.0, 30.0, 50.0, 70.0, 100.0, 150.0, 200.0, 300.0, 500.0, 1_000.0, 2_400.0,
+];
+const FLOORS: [f64; 5] = [40.0, 60.0, 80.0, 100.0, 120.0];
 const ROWS: [f64; 11] = [8.0, 12.0, 16.0, 20.0, 24.0, 32.0, 40.0, 48.0, 64.0, 96.0, 128.0];
 /// A scale shrinks only when less than this share of the next smaller step has been needed for so many seconds.
 const SHRINK_SHARE: f64 = 0.9;
@@ -64,6 +67,17 @@ impl CalmRows {
     /// Takes the highest partial; gives the number of rows.
     pub(crate) fn update(&mut self, highest: u32, now_s: f64) -> f32 {
         crate::convert::single(self.0.update(f64::from(highest), now_s, &ROWS))
+    }
+}
+
+/// The lower end of the scale of levels.
+#[derive(Debug, Clone, Copy, Default)]
+pub(crate) struct CalmFloor(Calm);
+
+impl CalmFloor {
+    /// Takes how far below 0 dB the weakest level lies; gives the scale's lower end.
+    pub(crate) fn update(&mut self, below_db: f64, now_s: f64) -> f64 {
+        -self.0.update(below_db, now_s, &FLOORS)
     }
 }
 
@@ -145,7 +159,7 @@ mod tests {
         let shown: Vec<f64> = [(0.0, 8.0), (0.1, 30.0), (0.2, 8.0), (1.0, 8.0), (3.1, 8.0), (3.3, 8.0)]
             .map(|(now, need)| calm.update(need, now, &CENTS))
             .to_vec();
-        assert_eq!(shown, [10.0, 50.0, 50.0, 50.0, 50.0, 10.0]);
+        assert_eq!(shown, [10.0, 30.0, 30.0, 30.0, 30.0, 10.0]);
     }
 
     #[test]

@@ -1,7 +1,7 @@
 //! Strays in the plumb view: at their true height between the rows, explained in words that never cover each other.
 
 use egui::{Rangef, Rect, Stroke, Ui, pos2, vec2};
-use plumbtone_analysis::{Stray, Stretch};
+use plumbtone_analysis::{Stray, StrayKind, Stretch};
 
 use super::axis::{Axis, RowAxis};
 use super::super::ink;
@@ -13,6 +13,9 @@ use crate::convert::single;
 const LABEL: f32 = 13.0;
 /// Most strays drawn, strongest first.
 const MOST: usize = 64;
+/// Most that are labelled.
+const EXPLAINED_MOST: usize = 10;
+const UNEXPLAINED_MOST: usize = 3;
 /// Thickness of a stray's bar.
 const BAR: f32 = 3.0;
 
@@ -43,8 +46,10 @@ pub(crate) fn show(
         .filter(|(number, _)| lane.rows.shows(*number))
         .map(|(number, stray)| (lane.rows.at(number), stray))
         .collect();
+    let labelled = labelled(&seen);
     let heights: Vec<f32> = seen.iter().map(|(y, _)| *y).collect();
-    let places = spread(&heights, lane.rows.y, LABEL);
+    let wanted = heights.iter().zip(&labelled).map(|(y, on)| if *on { *y } else { f32::NAN });
+    let places = spread(&wanted.collect::<Vec<_>>(), lane.rows.y, LABEL);
     for ((y, stray), place) in seen.into_iter().zip(places) {
         ink::diamond(ui, pos2(lane.diamonds, y), 4.5, palette.stray);
         let end = lane.levels.at(level(stray.level_dbfs)).max(lane.levels.x.min + 2.0);
@@ -57,6 +62,20 @@ pub(crate) fn show(
             label(ui, lane, (stray, end), (y, place), palette);
         }
     }
+}
+
+/// Which are labelled: explained ones before unexplained ones, few of each; the side panel lists the rest.
+fn labelled(seen: &[(f32, &Stray)]) -> Vec<bool> {
+    let (mut explained, mut unexplained) = (0, 0);
+    let on = |(_, stray): &(f32, &Stray)| {
+        let (count, most) = match stray.kind {
+            StrayKind::Unexplained => (&mut unexplained, UNEXPLAINED_MOST),
+            StrayKind::Alias { .. } | StrayKind::Mains { .. } => (&mut explained, EXPLAINED_MOST),
+        };
+        *count += 1;
+        *count <= most
+    };
+    seen.iter().map(on).collect()
 }
 
 fn label(

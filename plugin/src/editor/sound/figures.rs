@@ -112,8 +112,7 @@ fn stretch(stretch: Stretch) -> String {
     let scale = 10f64.powf(size.log10().floor());
     let raised: String = exponent.to_string().chars().map(superscript).collect();
     let sign = if b < 0.0 { "\u{2212}" } else { "" };
-    let figure = format!("{sign}{:.2} \u{b1} {:.2}", b.abs() / scale, b_sd / scale);
-    format!("{figure}\u{b7}10{raised}")
+    format!("({sign}{:.2} \u{b1} {:.2})\u{b7}10{raised}", b.abs() / scale, b_sd / scale)
 }
 
 fn superscript(digit: char) -> char {
@@ -136,10 +135,10 @@ mod tests {
     #[test]
     fn b_is_written_with_one_power_of_ten() {
         for (b, b_sd, expected) in [
-            (1.6e-4, 2e-6, "1.60 \u{b1} 0.02\u{b7}10\u{207b}\u{2074}"),
-            (-3e-6, 2e-6, "\u{2212}3.00 \u{b1} 2.00\u{b7}10\u{207b}\u{2076}"),
+            (1.6e-4, 2e-6, "(1.60 \u{b1} 0.02)\u{b7}10\u{207b}\u{2074}"),
+            (-3e-6, 2e-6, "(\u{2212}3.00 \u{b1} 2.00)\u{b7}10\u{207b}\u{2076}"),
             (0.0, 0.0, "0"),
-            (f64::NAN, 1.0, "NaN \u{b1} 1.00\u{b7}10\u{2070}"),
+            (f64::NAN, 1.0, "(NaN \u{b1} 1.00)\u{b7}10\u{2070}"),
         ] {
             assert_eq!(stretch(Stretch { b, b_sd }), expected);
         }
