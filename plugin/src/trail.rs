@@ -124,8 +124,7 @@ impl Trail {
     /// The cell that holds an index.
     #[must_use]
     pub fn cell(&self, at: u64) -> Option<Cell> {
-        (at < self.next && at >= self.first())
-            .then(|| self.cells[index(at / CELL % CELLS as u64)])
+        (at < self.next && at >= self.first()).then(|| self.cells[index(at / CELL % CELLS as u64)])
     }
 
     /// Readings in a cell.
@@ -161,8 +160,7 @@ impl Trail {
         let elapsed = signed_distance(last.centre, centre);
         let hop = i64::try_from(self.hop).unwrap_or(i64::MAX);
         let cut = last.stream != stream || elapsed <= 0;
-        let missing =
-            if cut { CUT } else { u64::try_from(elapsed / hop - 1).unwrap_or(0) };
+        let missing = if cut { CUT } else { u64::try_from(elapsed / hop - 1).unwrap_or(0) };
         for _ in 0..missing.min(GAP_MAX) {
             self.append(Point::NOTHING);
         }
@@ -244,7 +242,8 @@ mod tests {
         for number in [0, 1, 2, 6, 7] {
             trail.push(1, &reading(number), &SessionPosition::default());
         }
-        let kinds: Vec<Kind> = (0..trail.next()).filter_map(|at| trail.point(at)).map(|p| p.kind()).collect();
+        let kinds: Vec<Kind> =
+            (0..trail.next()).filter_map(|at| trail.point(at)).map(|p| p.kind()).collect();
         let (steady, nothing) = (Kind::Steady, Kind::Nothing);
         assert_eq!(kinds, [steady, steady, steady, nothing, nothing, nothing, steady, steady]);
     }
@@ -252,7 +251,11 @@ mod tests {
     #[test]
     fn session_time_runs_on_until_it_jumps() {
         let mut trail = trail();
-        let at = |seconds| SessionPosition { playing: true, seconds: Some(seconds), ..SessionPosition::default() };
+        let at = |seconds| SessionPosition {
+            playing: true,
+            seconds: Some(seconds),
+            ..SessionPosition::default()
+        };
         for number in 0..100 {
             trail.push(1, &reading(number), &at(10.0 + number as f64 * 0.01));
         }

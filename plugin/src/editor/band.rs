@@ -98,7 +98,13 @@ impl Figures {
 }
 
 /// Draws it.
-pub(crate) fn show(ui: &mut Ui, rect: Rect, shown: &Shown<'_>, figures: &Figures, bench: &mut Bench<'_>) {
+pub(crate) fn show(
+    ui: &mut Ui,
+    rect: Rect,
+    shown: &Shown<'_>,
+    figures: &Figures,
+    bench: &mut Bench<'_>,
+) {
     let palette = bench.palette;
     ui.painter().rect_filled(rect, 0, palette.card);
     let left = rect.left() + 20.0;
@@ -145,8 +151,9 @@ fn pitched(
         sd if sd < LEAST_SD => "\u{b1} < 0.01".to_owned(),
         _ => format!("\u{b1} {}", figures.cents_sd.text(false)),
     };
-    ink::text(ui, lower(x), &sd, sans(TEXT), palette.dim)
-        .on_hover_text("One standard deviation of the cents: two of them hold 95 % of what noise does.");
+    ink::text(ui, lower(x), &sd, sans(TEXT), palette.dim).on_hover_text(
+        "One standard deviation of the cents: two of them hold 95 % of what noise does.",
+    );
     let x = x + 118.0;
     let hz = format!("{} Hz", figures.hz.text(false));
     ink::text(ui, upper(x), &hz, sans(LARGE), palette.ink)
@@ -177,7 +184,8 @@ fn unpitched(ui: &mut Ui, at: egui::Pos2, shown: &Shown<'_>, word: &str, palette
 fn coming(shown: &Shown<'_>) -> Option<String> {
     let live = shown.readout.live?;
     let newer = live.centre > shown.readout.reading.centre;
-    let pitch = live.pitch.filter(|pitch| newer && pitch.confidence >= crate::trail::CONFIDENCE_SHOWN)?;
+    let pitch =
+        live.pitch.filter(|pitch| newer && pitch.confidence >= crate::trail::CONFIDENCE_SHOWN)?;
     let measuring = words::condition(&shown.readout.condition).is_none();
     let nearest = shown.readout.tuning.nearest(pitch.f0_hz).filter(|_| measuring)?;
     Some(format!("{}, about {} ct", nearest.note, steady::signed(nearest.cents, 0)))
@@ -208,8 +216,16 @@ fn since(shown: &Shown<'_>) -> String {
 
 fn controls(ui: &mut Ui, rect: Rect, bench: &mut Bench<'_>) {
     let buttons = [
-        (Knob::Freeze, "Freeze", "Holds the present reading on display. Measuring and the drift check go on."),
-        (Knob::Check, "Check", "Arms the drift check: the pitch is measured even while the editor is closed."),
+        (
+            Knob::Freeze,
+            "Freeze",
+            "Holds the present reading on display. Measuring and the drift check go on.",
+        ),
+        (
+            Knob::Check,
+            "Check",
+            "Arms the drift check: the pitch is measured even while the editor is closed.",
+        ),
     ];
     let mut right = rect.right() - 14.0;
     if rect.width() < NARROW {
@@ -227,7 +243,14 @@ fn controls(ui: &mut Ui, rect: Rect, bench: &mut Bench<'_>) {
     }
     let left = rect.left() + 20.0 + FIGURES;
     let room = right - GAP - left;
-    let count = FIELDS.iter().scan(0.0, |used, _| { *used += FIELD; Some(*used) }).filter(|&used| used <= room).count();
+    let count = FIELDS
+        .iter()
+        .scan(0.0, |used, _| {
+            *used += FIELD;
+            Some(*used)
+        })
+        .filter(|&used| used <= room)
+        .count();
     for (number, field) in FIELDS.iter().take(count).enumerate() {
         let x = left + number as f32 * (room / count as f32).min(124.0);
         let place = Rect::from_min_size(pos2(x, rect.top() + 20.0), vec2(FIELD - 14.0, 38.0));

@@ -35,7 +35,8 @@ pub(crate) fn text(shown: &Shown<'_>) -> String {
         let _ = writeln!(out, "stretch B {:.3e} \u{b1} {:.1e}", stretch.b, stretch.b_sd);
     }
     let _ = writeln!(out, "level {}\n", words::level_dbfs(reading));
-    let _ = writeln!(out, "{:>7} {:>12} {:>9} {:>7} {:>8}", "partial", "Hz", "ct", "\u{b1} ct", "dBFS");
+    let _ =
+        writeln!(out, "{:>7} {:>12} {:>9} {:>7} {:>8}", "partial", "Hz", "ct", "\u{b1} ct", "dBFS");
     for p in &reading.partials {
         let _ = writeln!(
             out,
@@ -56,8 +57,9 @@ pub(crate) fn text(shown: &Shown<'_>) -> String {
 
 /// The figures as CSV: one row per partial and stray, numbers with all their digits, what was not measured left empty.
 pub(crate) fn csv(shown: &Shown<'_>) -> String {
-    let mut out =
-        String::from("kind,number,frequency_hz,frequency_sd_hz,cents_from_harmonic,cents_sd,level_dbfs,level_sd_db,phase_rad,snr_db,explanation\n");
+    let mut out = String::from(
+        "kind,number,frequency_hz,frequency_sd_hz,cents_from_harmonic,cents_sd,level_dbfs,level_sd_db,phase_rad,snr_db,explanation\n",
+    );
     if !shown.readout.measured {
         return out;
     }

@@ -8,8 +8,8 @@ use std::sync::{Mutex, TryLockError};
 
 use egui::epaint::{BandPoint, BandShape};
 use egui::{
-    Align2, Color32, Key, Pos2, Rangef, Rect, Response, Sense, Shape, Stroke, Ui, WidgetInfo,
-    Role, pos2, vec2,
+    Align2, Color32, Key, Pos2, Rangef, Rect, Response, Role, Sense, Shape, Stroke, Ui, WidgetInfo,
+    pos2, vec2,
 };
 
 use self::columns::{Column, columns};
@@ -47,9 +47,33 @@ const LASTING_S: f64 = 0.25;
 const KEY_SHARE: f64 = 0.25;
 
 const FIELDS: [(Field, f32); 3] = [
-    (Field { knob: Knob::Reference, caption: "drift against", help: "Where the pitch should be: the nearest note, the notes played into the plugin, the first steady pitch, or one pitch.", place: Place::After }, 190.0),
-    (Field { knob: Knob::Tolerance, caption: "tolerance \u{b1}", help: "How far from the reference is still within. Drag, scroll, or double-click to type.", place: Place::After }, 118.0),
-    (Field { knob: Knob::ReferencePitch, caption: "at", help: "The reference pitch, as a note or in Hz.", place: Place::After }, 92.0),
+    (
+        Field {
+            knob: Knob::Reference,
+            caption: "drift against",
+            help: "Where the pitch should be: the nearest note, the notes played into the plugin, the first steady pitch, or one pitch.",
+            place: Place::After,
+        },
+        190.0,
+    ),
+    (
+        Field {
+            knob: Knob::Tolerance,
+            caption: "tolerance \u{b1}",
+            help: "How far from the reference is still within. Drag, scroll, or double-click to type.",
+            place: Place::After,
+        },
+        118.0,
+    ),
+    (
+        Field {
+            knob: Knob::ReferencePitch,
+            caption: "at",
+            help: "The reference pitch, as a note or in Hz.",
+            place: Place::After,
+        },
+        92.0,
+    ),
 ];
 
 /// How the view is set, and what it drew last.
@@ -88,6 +112,11 @@ impl Default for Drift {
 }
 
 impl Drift {
+    /// Shows so many seconds.
+    pub(crate) fn span(&mut self, seconds: f64) {
+        self.span_s = seconds.clamp(SPAN_S.0, SPAN_S.1);
+    }
+
     /// Looks at the trail for a picture this many points wide. When the worker holds the trail just now, the last picture
     /// stays for a frame.
     pub(crate) fn update(&mut self, trail: &Mutex<Trail>, width: f32, shown: &Shown<'_>) {
@@ -102,7 +131,9 @@ impl Drift {
             _ => trail.next(),
         } as f64;
         let span = self.span_s / step_s;
-        let end = self.end.map_or(newest, |end| end.clamp(newest.min(trail.first() as f64 + span), newest));
+        let end = self
+            .end
+            .map_or(newest, |end| end.clamp(newest.min(trail.first() as f64 + span), newest));
         if self.end.is_some() {
             self.end = (end < newest).then_some(end);
         }
@@ -131,7 +162,13 @@ impl Drift {
     }
 
     /// Draws it.
-    pub(crate) fn show(&mut self, ui: &mut Ui, rect: Rect, shown: &Shown<'_>, bench: &mut Bench<'_>) {
+    pub(crate) fn show(
+        &mut self,
+        ui: &mut Ui,
+        rect: Rect,
+        shown: &Shown<'_>,
+        bench: &mut Bench<'_>,
+    ) {
         let palette = bench.palette;
         ui.painter().rect_filled(rect, CORNER, palette.card);
         let plot = Rect::from_min_max(
@@ -140,7 +177,12 @@ impl Drift {
         );
         let tolerance = shown.parameters.check.tolerance.value();
         self.navigate(ui, plot);
-        let frame = Frame { plot, start: self.picture.start, end: self.picture.end, half: single(self.half) };
+        let frame = Frame {
+            plot,
+            start: self.picture.start,
+            end: self.picture.end,
+            half: single(self.half),
+        };
         grid(ui, &frame, tolerance, palette);
         times(ui, &frame, &self.picture.ticks, palette);
         trace(ui, &frame, &self.picture.columns, palette);
@@ -148,7 +190,13 @@ impl Drift {
         self.head(ui, rect, (tolerance, shown), bench);
     }
 
-    fn head(&mut self, ui: &mut Ui, rect: Rect, (tolerance, shown): (f32, &Shown<'_>), bench: &mut Bench<'_>) {
+    fn head(
+        &mut self,
+        ui: &mut Ui,
+        rect: Rect,
+        (tolerance, shown): (f32, &Shown<'_>),
+        bench: &mut Bench<'_>,
+    ) {
         let mut x = rect.left() + 12.0;
         let fixed = shown.parameters.check.reference.value() == Reference::Pitch;
         for (field, width) in FIELDS {
@@ -171,7 +219,8 @@ impl Drift {
         }
         let Some(worst) = self.worst() else { return };
         let beyond = worst.abs() > tolerance;
-        let (word, colour) = if beyond { ("outside", palette.stray) } else { ("within", palette.within) };
+        let (word, colour) =
+            if beyond { ("outside", palette.stray) } else { ("within", palette.within) };
         let text = format!("{word}: worst {} ct here", signed(f64::from(worst), 1));
         let at = (pos2(right, rect.top() + 15.0), Align2::RIGHT_CENTER);
         if right - x > 170.0 {
@@ -218,12 +267,14 @@ impl Drift {
                 self.zoom(1.0 / factor, share);
             }
         }
+        field::keep_arrows(ui, &response);
         if response.has_focus() {
             by += self.keys(ui, end - start);
         }
         if by.abs() > 1e-9 {
             let span = self.span_s / step_s.max(1e-6);
-            let target = (self.end.unwrap_or(known.1) + by).max(known.0 + span.min(known.1 - known.0));
+            let target =
+                (self.end.unwrap_or(known.1) + by).max(known.0 + span.min(known.1 - known.0));
             self.end = (target < known.1).then_some(target);
         }
         if response.double_clicked() {
@@ -259,7 +310,11 @@ impl Drift {
             self.end = None;
         }
         let moves = [(Key::ArrowLeft, -1.0), (Key::ArrowRight, 1.0)];
-        moves.into_iter().filter(|(key, _)| pressed(*key)).map(|(_, by)| by * KEY_SHARE * span).sum()
+        moves
+            .into_iter()
+            .filter(|(key, _)| pressed(*key))
+            .map(|(_, by)| by * KEY_SHARE * span)
+            .sum()
     }
 }
 
@@ -336,7 +391,11 @@ fn times(ui: &Ui, frame: &Frame, ticks: &[Tick], palette: &Palette) {
     for tick in ticks {
         let x = frame.x(tick.at);
         let bottom = frame.plot.bottom();
-        ui.painter().vline(x, Rangef::new(bottom + 1.0, bottom + 5.0), Stroke::new(1.0, palette.edge));
+        ui.painter().vline(
+            x,
+            Rangef::new(bottom + 1.0, bottom + 5.0),
+            Stroke::new(1.0, palette.edge),
+        );
         let at = pos2(x, bottom + 15.0);
         let wide = single(tick.text.len() as f64) * 3.5;
         if x - wide > frame.plot.left() - 40.0 && x + wide < frame.plot.right() + 6.0 {
@@ -361,7 +420,12 @@ fn trace(ui: &Ui, frame: &Frame, columns: &[Column], palette: &Palette) {
             let shade = palette.pitch.gamma_multiply(0.22);
             let sd = |c: &Column| (c.low - SHADE_SD * c.sd, c.high + SHADE_SD * c.sd);
             painter.add(ribbon(frame, run, sd, shade));
-            painter.add(ribbon(frame, run, |c| (c.low, c.high), palette.pitch.gamma_multiply(0.55)));
+            painter.add(ribbon(
+                frame,
+                run,
+                |c| (c.low, c.high),
+                palette.pitch.gamma_multiply(0.55),
+            ));
             let line = |value: fn(&Column) -> f32| -> Vec<Pos2> {
                 run.iter().map(|c| pos2(frame.x(c.at), frame.y(value(c)))).collect()
             };
@@ -369,14 +433,22 @@ fn trace(ui: &Ui, frame: &Frame, columns: &[Column], palette: &Palette) {
                 painter.circle_filled(line(|c| c.mean)[0], 1.0, palette.pitch);
             }
             painter.add(Shape::line(line(|c| c.mean), Stroke::new(1.5, palette.pitch)));
-            painter.add(Shape::line(line(|c| c.drift), Stroke::new(1.0, palette.ink.gamma_multiply(0.75))));
+            painter.add(Shape::line(
+                line(|c| c.drift),
+                Stroke::new(1.0, palette.ink.gamma_multiply(0.75)),
+            ));
         }
         start += length;
     }
 }
 
 /// The area between two values of each column.
-fn ribbon(frame: &Frame, run: &[Column], ends: impl Fn(&Column) -> (f32, f32), colour: Color32) -> Shape {
+fn ribbon(
+    frame: &Frame,
+    run: &[Column],
+    ends: impl Fn(&Column) -> (f32, f32),
+    colour: Color32,
+) -> Shape {
     let points = run.iter().map(|column| {
         let (low, high) = ends(column);
         BandPoint::new(frame.x(column.at), Rangef::new(frame.y(high), frame.y(low)))
@@ -421,7 +493,8 @@ fn gap(ui: &Ui, frame: &Frame, (first, last): (&Column, &Column), palette: &Pale
     let stroke = Stroke::new(1.0, palette.edge);
     let mut at = area.left() - area.height();
     while at < area.right() {
-        painter.line_segment([pos2(at, area.bottom()), pos2(at + area.height(), area.top())], stroke);
+        painter
+            .line_segment([pos2(at, area.bottom()), pos2(at + area.height(), area.top())], stroke);
         at += 7.0;
     }
     if area.width() > 40.0 {

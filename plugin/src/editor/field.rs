@@ -2,8 +2,8 @@
 //! right-click or press Delete for its default, arrows for steps. Choices open as a list.
 
 use egui::{
-    Align2, CornerRadius, Key, Popup, PopupCloseBehavior, Pos2, Rect, Response, Sense, Stroke,
-    StrokeKind, TextEdit, Ui, WidgetInfo, Role, pos2, vec2,
+    Align2, CornerRadius, EventFilter, Key, Popup, PopupCloseBehavior, Pos2, Rect, Response, Role,
+    Sense, Stroke, StrokeKind, TextEdit, Ui, WidgetInfo, pos2, vec2,
 };
 
 use super::ink;
@@ -22,9 +22,17 @@ const SCROLL_A_NOTCH: f32 = 40.0;
 /// What is being edited.
 #[derive(Debug, Clone, Default)]
 pub(crate) struct Editing {
-    typing: Option<(Knob, String)>,
+    typing: Option<Typing>,
     /// The normalised value under the pointer, not yet rounded.
     dragging: Option<(Knob, f32)>,
+}
+
+#[derive(Debug, Clone)]
+struct Typing {
+    knob: Knob,
+    text: String,
+    /// Frames drawn since it began.
+    frames: u8,
 }
 
 /// How a field is shown.
@@ -66,6 +74,7 @@ pub(crate) fn field(ui: &mut Ui, rect: Rect, field: &Field, bench: &mut Bench<'_
     let name = format!("{}: {shown}", field.caption);
     let kind = if choices.is_some() { Role::ComboBox } else { Role::SpinButton };
     response.widget_info(|| WidgetInfo::labeled(kind, true, &name));
+    keep_arrows(ui, &response);
     frame(ui, &response, bench.palette);
     let at = caption(ui, rect, field, bench.palette);
     if type_in(ui, &response, field, at, bench) {
@@ -137,12 +146,12 @@ fn type_in(
     let begins = response.double_clicked() || focused_key(ui, response, Key::Enter);
     let id = ui.scope_id().with((knob, "typing"));
     if typed && begins && bench.editing.typing.is_none() {
-        bench.editing.typing = Some((knob, handle.shown(handle.value())));
+        let text = handle.shown(handle.value());
+        bench.editing.typing = Some(Typing { knob, text, frames: 0 });
         ui.memory_mut(|memory| memory.request_focus(id));
-        select_all(ui, id, handle.shown(handle.value()).chars().count());
     }
-    let Some((typing, text)) = &mut bench.editing.typing else { return false };
-    if *typing != knob {
+    let Some(typing) = &mut bench.editing.typing else { return false };
+    if typing.knob != knob {
         return false;
     }
     let (left, width) = match field.place {
@@ -151,12 +160,17 @@ fn type_in(
         Place::Edge => (at.x - 96.0, 96.0),
     };
     let place = Rect::from_min_size(pos2(left, at.y - 10.0), vec2(width, 20.0));
-    let edit = TextEdit::singleline(text).id(id).font(sans(TEXT_IN)).margin(vec2(3.0, 1.0));
-    let entry = ui.put(place, edit);
+    let length = typing.text.chars().count();
+    let edit = TextEdit::singleline(&mut typing.text).id(id).font(sans(TEXT_IN));
+    let entry = ui.put(place, edit.margin(vec2(3.0, 1.0)));
     entry.widget_info(|| WidgetInfo::labeled(Role::TextInput, true, field.caption));
+    typing.frames = typing.frames.saturating_add(1);
+    if typing.frames <= SELECT_FRAMES && !entry.changed() {
+        select_all(ui, id, length);
+    }
     if entry.lost_focus() {
         let done = ui.input(|input| !input.key_pressed(Key::Escape));
-        if let Some((_, text)) = bench.editing.typing.take()
+        if let Some(Typing { text, .. }) = bench.editing.typing.take()
             && done
             && let Some(entered) = handle.entered(&text)
         {
@@ -166,6 +180,8 @@ fn type_in(
     true
 }
 
+/// A text field takes a selection only once it has had the focus for a frame or two.
+const SELECT_FRAMES: u8 = 3;
 /// Size of what is typed.
 const TEXT_IN: f32 = 13.0;
 
@@ -175,6 +191,7 @@ fn select_all(ui: &Ui, id: egui::Id, length: usize) {
     let all = CCursorRange::two(CCursor::new(0), CCursor::new(length));
     state.cursor.set_char_range(Some(all));
     state.store(ui.ctx(), id);
+    ui.ctx().request_repaint();
 }
 
 fn drag(ui: &Ui, response: &Response, knob: Knob, bench: &mut Bench<'_>) {
@@ -200,13 +217,7 @@ fn drag(ui: &Ui, response: &Response, knob: Knob, bench: &mut Bench<'_>) {
 }
 
 /// The wheel over a field, and the arrow keys in it.
-fn step(
-    ui: &Ui,
-    response: &Response,
-    knob: Knob,
-    choices: Option<usize>,
-    bench: &mut Bench<'_>,
-) {
+fn step(ui: &Ui, response: &Response, knob: Knob, choices: Option<usize>, bench: &mut Bench<'_>) {
     let scrolled = if response.hovered() { wheel_notches(ui) } else { 0.0 };
     let arrows = [(Key::ArrowUp, 1.0), (Key::ArrowDown, -1.0)];
     let pressed: f32 =
@@ -266,6 +277,18 @@ fn choose(response: &Response, field: &Field, count: usize, bench: &mut Bench<'_
 /// Rounds a value to what is shown of it, so that a dragged value is the one read.
 fn tidy(handle: &dyn Handle, normalized: f32) -> f32 {
     handle.entered(&handle.shown(normalized)).map_or(normalized, |rounded| handle.snapped(rounded))
+}
+
+/// Arrows pressed in what has the focus belong to it and move no focus.
+pub(crate) fn keep_arrows(ui: &Ui, response: &Response) {
+    if response.has_focus() {
+        let filter = EventFilter {
+            horizontal_arrows: true,
+            vertical_arrows: true,
+            ..EventFilter::default()
+        };
+        ui.memory_mut(|memory| memory.set_focus_lock_filter(response.id, filter));
+    }
 }
 
 fn focused_key(ui: &Ui, response: &Response, key: Key) -> bool {

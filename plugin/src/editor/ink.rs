@@ -1,6 +1,6 @@
 //! Drawing with names: whatever is painted as text is also told to screen readers.
 
-use egui::{Align2, Color32, FontId, Pos2, Rect, Response, Sense, Ui, WidgetInfo, Role, vec2};
+use egui::{Align2, Color32, FontId, Pos2, Rect, Response, Role, Sense, Ui, WidgetInfo, vec2};
 
 /// Paints text at a place and labels it. Text that is wider than `width` is cut with an ellipsis.
 pub(crate) fn text(
@@ -42,7 +42,14 @@ pub(crate) fn label(ui: &mut Ui, rect: Rect, text: &str) -> Response {
 }
 
 /// Paints text that nobody needs to be told of, such as the figures of an axis.
-pub(crate) fn mark(ui: &Ui, at: Pos2, align: Align2, text: &str, font: FontId, colour: Color32) -> Rect {
+pub(crate) fn mark(
+    ui: &Ui,
+    at: Pos2,
+    align: Align2,
+    text: &str,
+    font: FontId,
+    colour: Color32,
+) -> Rect {
     ui.painter().text(at, align, text, font, colour)
 }
 

@@ -26,7 +26,10 @@ pub(crate) fn notices(shown: &Shown<'_>) -> Vec<String> {
         (shown.lost_samples, "lost since this instance was loaded"),
     ] {
         if samples > 0 {
-            out.push(format!("{samples} samples ({:.2} s) {what}.", samples as f64 / rate.max(1.0)));
+            out.push(format!(
+                "{samples} samples ({:.2} s) {what}.",
+                samples as f64 / rate.max(1.0)
+            ));
         }
     }
     if shown.lost_notes > 0 {

@@ -134,7 +134,8 @@ impl Writer {
     fn text(&mut self, shape: &TextShape) {
         for placed in &shape.galley.rows {
             let text: String = placed.row.glyphs.iter().map(|glyph| glyph.chr).collect();
-            let Some((first, last)) = placed.row.glyphs.first().zip(placed.row.glyphs.last()) else {
+            let Some((first, last)) = placed.row.glyphs.first().zip(placed.row.glyphs.last())
+            else {
                 continue;
             };
             let Some(section) = shape.galley.job.sections.first() else { continue };

@@ -6,13 +6,14 @@ mod pinned;
 mod rows;
 mod strays;
 
-use egui::{Align2, Key, Rangef, Rect, Sense, Stroke, Ui, WidgetInfo, Role, pos2, vec2};
+use egui::{Align2, Key, Rangef, Rect, Role, Sense, Stroke, Ui, WidgetInfo, pos2, vec2};
 use plumbtone_analysis::{Partial, Reading};
 
 use self::axis::{Axis, CalmCents, CalmFloor, CalmRows, RowAxis};
+pub(crate) use self::axis::{CENTS, Calm, round_step};
 use self::memory::Memory;
 use self::rows::Columns;
-pub(crate) use self::axis::{CENTS, Calm, round_step};
+use super::field;
 use super::ink;
 use super::screen::Shown;
 use super::steady::signed;
@@ -53,13 +54,14 @@ impl Levels {
     /// All of them, with the words they go by.
     pub const ALL: [(Self, &'static str); 3] = [
         (Self::FullScale, "dBFS"),
-        (Self::Strongest, "dB to the strongest"),
-        (Self::First, "dB to partial 1"),
+        (Self::Strongest, "to strongest"),
+        (Self::First, "to partial 1"),
     ];
 
     /// Level that counts as 0 dB; 0 dBFS where there is nothing to compare with.
     fn zero_dbfs(self, partials: &[Partial]) -> f64 {
-        let strongest = || partials.iter().map(|p| p.level_dbfs).filter(|l| l.is_finite()).reduce(f64::max);
+        let strongest =
+            || partials.iter().map(|p| p.level_dbfs).filter(|l| l.is_finite()).reduce(f64::max);
         let first = || partials.iter().find(|p| p.number == 1).map(|p| p.level_dbfs);
         match self {
             Self::FullScale => None,
@@ -141,11 +143,8 @@ impl Plumb {
         let ui = &mut ui;
         ui.shrink_clip_rect(rect);
         let pinned = self.pinned.filter(|_| rect.height() > 300.0);
-        let body = if pinned.is_some() {
-            rect.with_max_y(rect.bottom() - pinned::HEIGHT)
-        } else {
-            rect
-        };
+        let body =
+            if pinned.is_some() { rect.with_max_y(rect.bottom() - pinned::HEIGHT) } else { rect };
         let reading = &shown.readout.reading;
         let held = shown.readout.measured && shown.readout.pitch().is_some();
         let partials: &[Partial] = if held { &reading.partials } else { &[] };
@@ -197,7 +196,9 @@ impl Plumb {
             count,
         };
         let (low, high) = self.scale(shown, partials);
-        self.refit_floor(shown, partials);
+        if !partials.is_empty() {
+            self.refit_floor(shown);
+        }
         let db = (rect.width() > WIDE_FOR_DB).then_some(rect.right() - PAD);
         let hz = (rect.width() > WIDE_FOR_HZ)
             .then_some(rect.right() - PAD - if db.is_some() { DB } else { 0.0 });
@@ -224,7 +225,9 @@ impl Plumb {
         if let Some(half) = self.fixed_cents {
             return (-half, half);
         }
-        let sure = partials.iter().filter(|p| p.cents_sd < SURE_CENTS && p.cents_from_harmonic.is_finite());
+        let sure = partials
+            .iter()
+            .filter(|p| p.cents_sd < SURE_CENTS && p.cents_from_harmonic.is_finite());
         let (low, high) = sure.fold((0.0f64, 0.0f64), |(low, high), p| {
             let reach = 2.0 * p.cents_sd;
             (low.max(reach - p.cents_from_harmonic), high.max(p.cents_from_harmonic + reach))
@@ -235,9 +238,13 @@ impl Plumb {
         self.fitting_cents
     }
 
-    fn refit_floor(&mut self, shown: &Shown<'_>, partials: &[Partial]) {
+    /// The scale of levels holds all partials, and the strays that are labelled.
+    fn refit_floor(&mut self, shown: &Shown<'_>) {
+        let Reading { partials, strays, .. } = &shown.readout.reading;
         let zero = self.levels.zero_dbfs(partials);
-        let below = partials.iter().map(|p| zero - p.level_dbfs).filter(|below| below.is_finite());
+        let strays = strays.iter().take(strays::LABELLED_MOST).map(|stray| stray.level_dbfs);
+        let levels = partials.iter().map(|p| p.level_dbfs).chain(strays);
+        let below = levels.map(|level| zero - level).filter(|below| below.is_finite());
         if let Some(weakest) = below.reduce(f64::max) {
             self.fitting_floor = self.calm_floor.update(weakest + ROOM_DB, shown.time_s);
         }
@@ -247,15 +254,21 @@ impl Plumb {
     fn navigate(&mut self, ui: &Ui, rect: Rect, axis: RowAxis) {
         let response = ui.interact(rect, ui.scope_id().with("ground"), Sense::click());
         response.widget_info(|| {
-            WidgetInfo::labeled(Role::GenericContainer, true, "Plumb view: partials off the harmonic series")
+            WidgetInfo::labeled(
+                Role::GenericContainer,
+                true,
+                "Plumb view: partials off the harmonic series",
+            )
         });
         if response.double_clicked() {
             self.fit();
         }
         if ui.rect_contains_pointer(rect) {
-            let (scroll, zoom) = ui.input(|input| (input.smooth_scroll_delta().y, input.zoom_delta()));
+            let (scroll, zoom) =
+                ui.input(|input| (input.smooth_scroll_delta().y, input.zoom_delta()));
             if (zoom - 1.0).abs() > 1e-3 {
-                let at = ui.input(|input| input.pointer.hover_pos()).map_or(rect.center().y, |p| p.y);
+                let at =
+                    ui.input(|input| input.pointer.hover_pos()).map_or(rect.center().y, |p| p.y);
                 let number = axis.first - 0.75 + (axis.y.max - at) / axis.row();
                 let count = (axis.count / zoom).clamp(ROWS.0, ROWS.1);
                 self.first = number - (number - axis.first) * count / axis.count;
@@ -265,6 +278,7 @@ impl Plumb {
                 self.first += scroll / axis.row();
             }
         }
+        field::keep_arrows(ui, &response);
         if response.has_focus() {
             self.keys(ui, axis);
         }
@@ -306,14 +320,30 @@ fn captions(ui: &mut Ui, columns: &Columns, levels: Levels, palette: &Palette) {
     };
     let left = columns.whole.left() + 8.0;
     caption(left, Align2::LEFT_CENTER, "partial", "Number of the partial: 1 is the fundamental.");
-    caption(columns.cents.x.min, Align2::LEFT_CENTER, "cents off the harmonic series", "How far each partial lies from its number times the fundamental, with two standard deviations each way. The dashed line is a stiff string's stretch.");
-    let words = Levels::ALL.iter().find(|(mode, _)| *mode == levels).map_or("level", |(_, words)| words);
-    caption(columns.levels.x.min, Align2::LEFT_CENTER, &format!("level, {words}"), "How strong each partial is. Settings has what levels are given against.");
+    caption(
+        columns.cents.x.min,
+        Align2::LEFT_CENTER,
+        "cents off the harmonic series",
+        "How far each partial lies from its number times the fundamental, with two standard deviations each way. The dashed line is a stiff string's stretch.",
+    );
+    let words =
+        Levels::ALL.iter().find(|(mode, _)| *mode == levels).map_or("level", |(_, words)| words);
+    caption(
+        columns.levels.x.min,
+        Align2::LEFT_CENTER,
+        &format!("level, {words}"),
+        "How strong each partial is. Settings has what levels are given against.",
+    );
     if let Some(x) = columns.hz {
         caption(x, Align2::RIGHT_CENTER, "Hz", "Frequency of each partial.");
     }
     if let Some(x) = columns.db {
-        caption(x, Align2::RIGHT_CENTER, "dB", "Level of each partial, against what the level's caption says.");
+        caption(
+            x,
+            Align2::RIGHT_CENTER,
+            "dB",
+            "Level of each partial, against what the level's caption says.",
+        );
     }
 }
 
@@ -344,10 +374,13 @@ fn nothing(ui: &mut Ui, rect: Rect, shown: &Shown<'_>, palette: &Palette) {
         words::Saying::NoPitch("several pitches") => {
             "more than one pitch at once: no single series to hang partials on"
         }
-        words::Saying::NoPitch("unpitched") => "sound without a pitch: no series to hang partials on",
+        words::Saying::NoPitch("unpitched") => {
+            "sound without a pitch: no series to hang partials on"
+        }
         words::Saying::NoPitch("silent") => "silence",
         words::Saying::NoPitch("waiting for sound") => "play something, and its partials hang here",
         words::Saying::NoPitch("gap") => "samples are missing here",
+        words::Saying::NoPitch("no sure pitch") => "too unsure of the pitch to hang partials on it",
         words::Saying::NoPitch(_) | words::Saying::Pitch(_) => "no partials",
     };
     let line = Rangef::new(rect.top() + HEAD, rect.center().y - 20.0);

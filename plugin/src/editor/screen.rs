@@ -8,7 +8,7 @@ use super::band::{self, Figures};
 use super::drift::Drift;
 use super::field::{Bench, Editing};
 use super::knob::Gesture;
-use super::panel::{self, Action, Tab};
+use super::panel::{self, Copy, Tab};
 use super::plumb::Plumb;
 use super::settings::Look;
 use super::theme::{GAP, Theme};
@@ -85,17 +85,22 @@ impl Screen {
         self.plumb.pinned = partial;
     }
 
+    /// Shows so many seconds of drift.
+    pub fn span(&mut self, seconds: f64) {
+        self.drift.span(seconds);
+    }
+
     /// Draws a frame. Returns what is to be done to the parameters.
     pub fn show(&mut self, ui: &mut Ui, shown: &Shown<'_>) -> Vec<Gesture> {
         let area = ui.ctx().content_rect();
         self.update(shown, area.width());
         let mut gestures = Vec::new();
-        let action = self.draw(ui, area, shown, &mut gestures);
-        if let Some(action) = action {
-            ui.ctx().copy_text(match action {
-                Action::CopyText => copy::text(shown),
-                Action::CopyCsv => copy::csv(shown),
-                Action::CopyPicture => self.svg(area.size(), shown),
+        let asked = self.draw(ui, area, shown, &mut gestures);
+        if let Some(copy) = asked {
+            ui.ctx().copy_text(match copy {
+                Copy::Text => copy::text(shown),
+                Copy::Csv => copy::csv(shown),
+                Copy::Picture => self.svg(area.size(), shown),
             });
         }
         gestures
@@ -124,7 +129,7 @@ impl Screen {
         area: Rect,
         shown: &Shown<'_>,
         gestures: &mut Vec<Gesture>,
-    ) -> Option<Action> {
+    ) -> Option<Copy> {
         let palette = self.theme.palette();
         ui.painter().rect_filled(area, 0.0, palette.ground);
         let Self { theme, zoom, tab, figures, sound, plumb, drift, editing } = self;
@@ -144,15 +149,15 @@ impl Screen {
             drift.show(ui, trace, shown, &mut bench);
             body.max.y = trace.top() - GAP;
         }
-        let mut action = None;
+        let mut asked = None;
         if area.width() >= WIDE {
             let split = body.right() - PANEL;
             let side = Rect::from_min_max(pos2(split, body.top()), body.max);
             let mut look = Look { theme, zoom, plumb };
-            action = panel::show(ui, side, (tab, &mut look), (shown, sound), &mut bench);
+            asked = panel::show(ui, side, (tab, &mut look), (shown, sound), &mut bench);
             body.max.x = split - GAP;
         }
         plumb.show(ui, body, shown, palette);
-        action
+        asked
     }
 }

@@ -23,7 +23,13 @@ const HEADING: f32 = 38.0;
 const TRACK: f32 = 98.0;
 
 /// Draws it.
-pub(crate) fn show(ui: &mut Ui, rect: Rect, shown: &Shown<'_>, figures: &Figures, palette: &Palette) {
+pub(crate) fn show(
+    ui: &mut Ui,
+    rect: Rect,
+    shown: &Shown<'_>,
+    figures: &Figures,
+    palette: &Palette,
+) {
     let mut whole = ui.new_child(egui::UiBuilder::new().max_rect(rect));
     egui::ScrollArea::vertical().id_salt("sound").show(&mut whole, |ui| {
         let area = Rect::from_min_size(ui.cursor().min, rect.size()).shrink2(vec2(PAD, 0.0));
@@ -63,16 +69,16 @@ fn heading(ui: &mut Ui, area: Rect, text: &str, help: &str, palette: &Palette) -
     area.top() + HEADING
 }
 
-fn strays(
-    ui: &mut Ui,
-    area: Rect,
-    strays: &[Stray],
-    shown: &Shown<'_>,
-    palette: &Palette,
-) -> f32 {
+fn strays(ui: &mut Ui, area: Rect, strays: &[Stray], shown: &Shown<'_>, palette: &Palette) -> f32 {
     let help = "Peaks that are no partial of this pitch: aliases, mains hum, another sound.";
     let mut y = heading(ui, area, "belongs to no partial", help, palette);
-    let strongest = shown.readout.reading.partials.iter().map(|p| p.level_dbfs).fold(f64::NEG_INFINITY, f64::max);
+    let strongest = shown
+        .readout
+        .reading
+        .partials
+        .iter()
+        .map(|p| p.level_dbfs)
+        .fold(f64::NEG_INFINITY, f64::max);
     for (number, stray) in strays.iter().enumerate() {
         let left = strays.len() - number;
         if y + STRAY_LINE * if left > 1 { 2.0 } else { 1.0 } > area.bottom() + 1.0 {
@@ -101,7 +107,8 @@ fn strays(
 
 fn track(ui: &mut Ui, area: Rect, shown: &Shown<'_>, palette: &Palette) -> f32 {
     let Some(offset) = shown.readout.offset else { return area.top() };
-    let help = "All notes so far lie this far off: one constant for the whole track, and what it fits.";
+    let help =
+        "All notes so far lie this far off: one constant for the whole track, and what it fits.";
     let mut y = heading(ui, area, "this whole track", help, palette);
     let concert_hz = shown.readout.tuning.concert_pitch_hz();
     let found = explain(&offset, concert_hz);
@@ -113,7 +120,8 @@ fn track(ui: &mut Ui, area: Rect, shown: &Shown<'_>, palette: &Palette) -> f32 {
     for (number, line) in lines.enumerate() {
         let at = (pos2(area.left(), y + 9.0), Align2::LEFT_CENTER);
         let colour = if number == 0 { palette.ink } else { palette.dim };
-        ink::text_within(ui, at, (&line, area.width()), sans(12.5), colour).on_hover_text(line.clone());
+        ink::text_within(ui, at, (&line, area.width()), sans(12.5), colour)
+            .on_hover_text(line.clone());
         y += 20.0;
     }
     y

@@ -11,6 +11,9 @@ const DEVIATIONS_A_DIGIT: f64 = 3.0;
 /// How far beyond that limit the deviation must be before a digit comes or goes.
 const DIGIT_HOLD: f64 = 1.6;
 
+/// What stands for a figure that there is none of.
+pub(crate) const NONE: &str = "\u{2013}";
+
 /// A figure on display.
 #[derive(Debug, Clone, Copy, Default, PartialEq)]
 pub(crate) struct Steady {
@@ -51,7 +54,11 @@ impl Steady {
 
     /// The figure.
     pub(crate) fn text(&self, signed: bool) -> String {
-        if signed { self::signed(self.shown, self.decimals) } else { format!("{:.*}", self.decimals, self.shown) }
+        if signed {
+            self::signed(self.shown, self.decimals)
+        } else {
+            format!("{:.*}", self.decimals, self.shown)
+        }
     }
 }
 
@@ -60,8 +67,11 @@ pub(crate) fn decimals(sd: f64, most: usize) -> usize {
     (0..most).find(|&count| sd * DEVIATIONS_A_DIGIT >= 0.1f64.powi(exponent(count))).unwrap_or(most)
 }
 
-/// A figure with its sign, as print has it; zero has none.
+/// A figure with its sign, as print has it; zero has none, and what is no number is a dash.
 pub(crate) fn signed(value: f64, decimals: usize) -> String {
+    if !value.is_finite() {
+        return NONE.to_owned();
+    }
     let text = format!("{:.*}", decimals, value.abs());
     let zero = text.bytes().all(|byte| matches!(byte, b'0' | b'.'));
     match value {
@@ -81,7 +91,8 @@ mod tests {
 
     #[test]
     fn digits_follow_the_deviation() {
-        for (sd, expected) in [(30.0, 0), (0.5, 0), (0.2, 1), (0.03, 2), (0.001, 2), (f64::NAN, 2)] {
+        for (sd, expected) in [(30.0, 0), (0.5, 0), (0.2, 1), (0.03, 2), (0.001, 2), (f64::NAN, 2)]
+        {
             assert_eq!(decimals(sd, 2), expected, "{sd}");
         }
     }

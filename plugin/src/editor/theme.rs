@@ -127,7 +127,7 @@ impl Theme {
     }
 }
 
-/// Installs the lettering: DejaVu Sans, whose digits all have the same width.
+/// Installs the lettering, whose digits all have the same width.
 pub fn install_fonts(ctx: &Context) {
     let mut fonts = FontDefinitions::empty();
     for (name, bytes) in [

@@ -2,7 +2,7 @@
 
 use plumbtone_analysis::{Reading, State, Stray, StrayKind};
 
-use super::steady::signed;
+use super::steady::{NONE, signed};
 use crate::readout::{Condition, Readout};
 
 /// How long a gap is told in the band, in seconds.
@@ -54,9 +54,9 @@ pub(crate) fn condition(condition: &Condition) -> Option<String> {
         Condition::Paused => Some("paused".to_owned()),
         Condition::Ended => Some("stopped by the host".to_owned()),
         Condition::Refused(error) => Some(error.to_string()),
-        Condition::Failed => Some(
-            "a defect of this program; it begins anew when the host restarts it".to_owned(),
-        ),
+        Condition::Failed => {
+            Some("a defect of this program; it begins anew when the host restarts it".to_owned())
+        }
     }
 }
 
@@ -75,7 +75,9 @@ pub(crate) fn stray(stray: &Stray) -> String {
     match stray.kind {
         StrayKind::Alias { partial, .. } => format!("alias of partial {partial}"),
         StrayKind::Mains { base_hz, multiple: 1 } => format!("mains {base_hz:.0} Hz"),
-        StrayKind::Mains { base_hz, multiple } => format!("mains {multiple} \u{d7} {base_hz:.0} Hz"),
+        StrayKind::Mains { base_hz, multiple } => {
+            format!("mains {multiple} \u{d7} {base_hz:.0} Hz")
+        }
         StrayKind::Unexplained => "unexplained".to_owned(),
     }
 }
@@ -92,13 +94,21 @@ pub(crate) fn stray_short(stray: &Stray) -> String {
 /// A level, or silence.
 pub(crate) fn level_dbfs(reading: &Reading) -> String {
     let level = reading.level_dbfs;
-    if level.is_finite() { format!("{} dBFS", signed(level, 1)) } else { "digital silence".to_owned() }
+    if level.is_finite() {
+        format!("{} dBFS", signed(level, 1))
+    } else {
+        "digital silence".to_owned()
+    }
 }
 
 /// A frequency, with thousands set apart.
 pub(crate) fn hertz(hz: f64, decimals: usize) -> String {
+    if !hz.is_finite() {
+        return NONE.to_owned();
+    }
     let text = format!("{hz:.decimals$}");
-    let (whole, rest) = text.split_once('.').map_or((text.as_str(), ""), |(a, _)| (a, &text[a.len()..]));
+    let (whole, rest) =
+        text.split_once('.').map_or((text.as_str(), ""), |(a, _)| (a, &text[a.len()..]));
     if whole.len() > 3 && hz < 1e6 && whole.bytes().all(|byte| byte.is_ascii_digit()) {
         let (thousands, units) = whole.split_at(whole.len() - 3);
         format!("{thousands}\u{202f}{units}{rest}")
@@ -117,7 +127,7 @@ mod tests {
             (220.23, 1, "220.2"),
             (2999.64, 1, "2\u{202f}999.6"),
             (12_000.0, 0, "12\u{202f}000"),
-            (f64::NAN, 1, "NaN"),
+            (f64::NAN, 1, NONE),
         ] {
             assert_eq!(hertz(hz, decimals), expected);
         }

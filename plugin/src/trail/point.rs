@@ -208,6 +208,9 @@ mod tests {
         assert!((cell.mean.cents() - 3_000.0).abs() < 0.01, "another note is left out: {cell:?}");
         assert!((low - 2_990.0).abs() < 0.02 && (high - 3_010.0).abs() < 0.02, "{low} {high}");
         assert_eq!(Cell::of(&[Point::NOTHING]).mean.kind(), Kind::Nothing);
-        assert_eq!(Cell::of(&[Point::NOTHING, Point::without(Kind::Silent)]).mean.kind(), Kind::Silent);
+        assert_eq!(
+            Cell::of(&[Point::NOTHING, Point::without(Kind::Silent)]).mean.kind(),
+            Kind::Silent
+        );
     }
 }

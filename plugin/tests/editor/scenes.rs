@@ -1,6 +1,6 @@
 //! Fixed data for the editor's pictures and tests: what the worker would have said, without a worker.
 
-use std::sync::Mutex;
+use std::sync::{Mutex, PoisonError};
 
 use egui::Vec2;
 use egui_kittest::Harness;
@@ -46,7 +46,7 @@ impl Scene {
     /// A plucked string that holds, with an alias and mains hum beside it, and half a minute of drift behind it.
     pub(crate) fn string(theme: Theme) -> Self {
         let mut scene = Self::empty(theme);
-        scene.play(3_200, |t| Some(drifting(t)), &string_partials(20), strays());
+        scene.play(3_200, |t| Some(drifting(t)), &string_partials(20), &strays());
         scene
     }
 
@@ -56,12 +56,12 @@ impl Scene {
         readings: u64,
         cents: impl Fn(f64) -> Option<f64>,
         partials: &[Partial],
-        strays: Vec<Stray>,
+        strays: &[Stray],
     ) {
         self.readout.condition = Condition::Measuring;
         self.readout.sample_rate_hz = RATE_HZ;
         self.readout.stream = 1;
-        let mut trail = self.trail.lock().unwrap();
+        let mut trail = self.trail.lock().unwrap_or_else(PoisonError::into_inner);
         trail.grid(480, RATE_HZ);
         for number in 0..readings {
             let t = number as f64 * HOP as f64 / RATE_HZ;
@@ -78,13 +78,16 @@ impl Scene {
                 level_dbfs: if pitch.is_some() { level(partials) } else { f64::NEG_INFINITY },
                 stretch: pitch.map(|_| Stretch { b: 1.6e-4, b_sd: 2e-6 }),
                 partials: if last { partials.to_vec() } else { Vec::new() },
-                strays: if last { strays.clone() } else { Vec::new() },
+                strays: if last { strays.to_vec() } else { Vec::new() },
             };
             let session = SessionPosition {
                 playing: true,
                 samples: None,
                 seconds: Some(t),
-                bar_beat: Some(BarBeat { bar: 1 + (t / 2.0).floor() as i64, beat: 1.0 }),
+                bar_beat: Some(BarBeat {
+                    bar: 1 + i64::try_from(number / 200).unwrap_or(0),
+                    beat: 1.0,
+                }),
             };
             trail.push(1, &reading, &session);
             self.readout.take(&reading, session);
@@ -92,6 +95,19 @@ impl Scene {
         }
         self.readout.trail_end = trail.next();
         drop(trail);
+    }
+
+    /// A twentieth of a second goes by: partials fade, each at its own rate, and beat.
+    pub(crate) fn advance(&mut self) {
+        self.time_s += 0.05;
+        let reading = &mut self.readout.reading;
+        reading.centre += 5 * HOP;
+        let t = self.time_s;
+        for partial in &mut reading.partials {
+            let n = f64::from(partial.number);
+            partial.level_dbfs -= 0.006 * n.sqrt() - 0.04 * (0.9 * n + 1.7 * t).cos();
+            partial.cents_from_harmonic += 0.01 * (n + 2.3 * t).cos();
+        }
     }
 
     /// What the editor is shown.
@@ -130,8 +146,8 @@ impl Scene {
         Harness::builder()
             .with_size(size)
             .with_pixels_per_point(pixels_per_point)
+            .with_step_dt(1.0 / 60.0)
             .with_context_setup(install_fonts)
-            .wgpu()
             .build_ui_state(|ui, scene: &mut Self| scene.frame(ui), self)
     }
 }
@@ -140,7 +156,8 @@ impl Scene {
 fn drifting(t: f64) -> f64 {
     let bump = |at: f64, width: f64, by: f64| by * (-((t - at) / width).powi(2)).exp();
     let vibrato = if t > 4.0 && t < 16.0 { 1.5 } else { 0.15 };
-    1.8 + vibrato * (core::f64::consts::TAU * 5.6 * t).sin() + 0.08 * t.min(15.0)
+    1.8 + vibrato * (core::f64::consts::TAU * 5.6 * t).sin()
+        + 0.08 * t.min(15.0)
         + bump(20.0, 1.6, -11.0)
         + bump(27.3, 0.5, 5.6)
 }

@@ -17,13 +17,13 @@ use crate::rig::tone;
 /// Readings before the end of a sound that may depend on what follows it: half a second.
 const LOOK_AHEAD_READINGS: usize = 50;
 
-fn target() -> PathBuf {
+pub(crate) fn target() -> PathBuf {
     std::env::var_os("CARGO_TARGET_DIR")
         .map_or_else(|| Path::new(env!("CARGO_MANIFEST_DIR")).join("../target"), PathBuf::from)
 }
 
 /// The path, if something is there; says what is skipped if not.
-fn there(path: PathBuf, what: &str) -> Option<PathBuf> {
+pub(crate) fn there(path: PathBuf, what: &str) -> Option<PathBuf> {
     if path.exists() {
         return Some(path);
     }

@@ -28,7 +28,12 @@ pub(crate) struct Column {
 }
 
 /// The columns of a stretch of the trail, `step` readings each.
-pub(crate) fn columns(trail: &Trail, (start, end): (u64, u64), step: u64, target: &Target) -> Vec<Column> {
+pub(crate) fn columns(
+    trail: &Trail,
+    (start, end): (u64, u64),
+    step: u64,
+    target: &Target,
+) -> Vec<Column> {
     let step = step.max(1);
     let reach = SMOOTH_S / (trail.step_s() * step as f64);
     // The drift line at the edge knows of what lies beyond it.
@@ -62,7 +67,12 @@ fn column(trail: &Trail, from: u64, step: u64, target: &Target) -> Column {
     if fine {
         for at in from..from + step {
             if let Some(point) = trail.point(at) {
-                sum.add(point.kind(), (point.cents(), point.cents(), point.cents()), point.sd_cents(), target);
+                sum.add(
+                    point.kind(),
+                    (point.cents(), point.cents(), point.cents()),
+                    point.sd_cents(),
+                    target,
+                );
             }
         }
     } else {
@@ -153,8 +163,11 @@ mod tests {
         let mut trail = Trail::default();
         trail.grid(480, 48_000.0);
         for number in 0..readings {
-            let pitch = cents(number as f64 * 0.01)
-                .map(|cents| Pitch { f0_hz: 220.0 * ratio(cents), f0_sd_cents: 0.2, confidence: 1.0 });
+            let pitch = cents(number as f64 * 0.01).map(|cents| Pitch {
+                f0_hz: 220.0 * ratio(cents),
+                f0_sd_cents: 0.2,
+                confidence: 1.0,
+            });
             let state = if pitch.is_some() { State::Steady } else { State::Silent };
             let reading = Reading { centre: number * 480, state, pitch, ..Reading::default() };
             trail.push(1, &reading, &SessionPosition::default());
@@ -171,7 +184,8 @@ mod tests {
         let trail = trail(20_000, |t| Some(3.0 + 8.0 * (core::f64::consts::TAU * 5.5 * t).sin()));
         for step in [1, 4, 16, 50, 200] {
             let columns = columns(&trail, (0, trail.next()), step, &target());
-            let (low, high) = columns.iter().fold((0.0f32, 0.0f32), |(l, h), c| (l.min(c.low), h.max(c.high)));
+            let (low, high) =
+                columns.iter().fold((0.0f32, 0.0f32), |(l, h), c| (l.min(c.low), h.max(c.high)));
             assert!((low + 5.0).abs() < 0.3 && (high - 11.0).abs() < 0.3, "{step}: {low} {high}");
             let inner = &columns[columns.len() / 4..columns.len() * 3 / 4];
             let worst = inner.iter().map(|c| (c.drift - 3.0).abs()).fold(0.0, f32::max);
@@ -186,7 +200,10 @@ mod tests {
         trail.push(1, &far, &SessionPosition::default());
         let columns = columns(&trail, (0, trail.next()), 1, &target());
         let kind = |at: usize| columns[at].kind;
-        assert_eq!((kind(10), kind(70), kind(150), kind(200)), (Kind::Steady, Kind::Silent, Kind::Nothing, Kind::Silent));
+        assert_eq!(
+            (kind(10), kind(70), kind(150), kind(200)),
+            (Kind::Steady, Kind::Silent, Kind::Nothing, Kind::Silent)
+        );
     }
 
     #[test]

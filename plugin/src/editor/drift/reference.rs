@@ -47,7 +47,6 @@ impl Target {
     }
 }
 
-
 #[cfg(test)]
 mod tests {
     use plumbtone_analysis::tuning::Temperament;
@@ -64,7 +63,8 @@ mod tests {
                 let expected = tuning.nearest(hz).unwrap().cents;
                 let (_, found) = target.off(Point::cents_of(hz));
                 // At the middle between two notes either is the nearest.
-                let same = (found - expected).abs() < 0.01 || (found.abs() - expected.abs()).abs() < 0.01;
+                let same =
+                    (found - expected).abs() < 0.01 || (found.abs() - expected.abs()).abs() < 0.01;
                 assert!(same, "{temperament} {hz}: {found} {expected}");
             }
         }

@@ -26,7 +26,8 @@ pub(crate) fn ticks(trail: &Trail, start: f64, end: f64, apart: f64) -> Vec<Tick
 
 fn of_bars(bars: &[(f64, i64)], apart: f64) -> Vec<Tick> {
     let mean = (bars[bars.len() - 1].0 - bars[0].0) / (bars.len() - 1) as f64;
-    let stride = [1, 2, 4, 8, 16, 32, 64, 128].into_iter().find(|&stride| mean * stride as f64 >= apart);
+    let stride =
+        [1, 2, 4, 8, 16, 32, 64, 128].into_iter().find(|&stride| mean * stride as f64 >= apart);
     let stride = stride.unwrap_or(256);
     let mut last = f64::NEG_INFINITY;
     bars.iter()
@@ -117,7 +118,10 @@ mod tests {
         });
         let ticks = ticks(&trail, 0.0, 4_000.0, 350.0);
         let texts: Vec<&str> = ticks.iter().map(|tick| tick.text.as_str()).collect();
-        assert_eq!(texts, ["1|1", "3|1", "5|1", "7|1", "9|1", "11|1", "13|1", "15|1", "17|1", "19|1"]);
+        assert_eq!(
+            texts,
+            ["1|1", "3|1", "5|1", "7|1", "9|1", "11|1", "13|1", "15|1", "17|1", "19|1"]
+        );
         assert!((ticks[1].at - 400.0).abs() < 1.5, "{ticks:?}");
     }
 

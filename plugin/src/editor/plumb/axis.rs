@@ -3,9 +3,8 @@
 use egui::{Rangef, lerp};
 
 /// Steps of the scale of cents, and of the number of rows.
-pub(crate) const CENTS: [f64; 14] = [
-    2.0, 5.0, 10.0, 20.0, 30.0, 50.0, 70.0, 100.0, 150.0, 200.0, 300.0, 500.0, 1_000.0, 2_400.0,
-];
+pub(crate) const CENTS: [f64; 14] =
+    [2.0, 5.0, 10.0, 20.0, 30.0, 50.0, 70.0, 100.0, 150.0, 200.0, 300.0, 500.0, 1_000.0, 2_400.0];
 const FLOORS: [f64; 5] = [40.0, 60.0, 80.0, 100.0, 120.0];
 const ROWS: [f64; 11] = [8.0, 12.0, 16.0, 20.0, 24.0, 32.0, 40.0, 48.0, 64.0, 96.0, 128.0];
 /// A scale shrinks only when less than this share of the next smaller step has been needed for so many seconds.
@@ -156,9 +155,10 @@ mod tests {
     #[test]
     fn a_scale_grows_at_once_and_shrinks_after_a_while() {
         let mut calm = Calm::default();
-        let shown: Vec<f64> = [(0.0, 8.0), (0.1, 30.0), (0.2, 8.0), (1.0, 8.0), (3.1, 8.0), (3.3, 8.0)]
-            .map(|(now, need)| calm.update(need, now, &CENTS))
-            .to_vec();
+        let shown: Vec<f64> =
+            [(0.0, 8.0), (0.1, 30.0), (0.2, 8.0), (1.0, 8.0), (3.1, 8.0), (3.3, 8.0)]
+                .map(|(now, need)| calm.update(need, now, &CENTS))
+                .to_vec();
         assert_eq!(shown, [10.0, 30.0, 30.0, 30.0, 30.0, 10.0]);
     }
 
@@ -196,6 +196,9 @@ mod tests {
         assert_eq!(axis.ticks(60.0), [-10.0, 0.0, 10.0, 20.0, 30.0, 40.0, 50.0]);
         let flat = Axis { low: 1.0, high: 1.0, ..axis };
         assert_eq!((flat.ticks(60.0), flat.at(1.0)), (vec![], 0.0));
-        assert!((axis.at(f64::NAN) - axis.at(-1e9)).abs() < 1e-6, "no number has a place at the end");
+        assert!(
+            (axis.at(f64::NAN) - axis.at(-1e9)).abs() < 1e-6,
+            "no number has a place at the end"
+        );
     }
 }

@@ -1,12 +1,14 @@
 //! The pinned partial: its level and its cents over the last half minute.
 
-use egui::{Align2, Pos2, Rangef, Rect, Response, Sense, Shape, Stroke, Ui, WidgetInfo, Role, pos2, vec2};
+use egui::{
+    Align2, Pos2, Rangef, Rect, Response, Role, Sense, Shape, Stroke, Ui, WidgetInfo, pos2, vec2,
+};
 
-use super::axis::round_step;
-use super::memory::{Memory, Moment};
 use super::super::ink;
 use super::super::steady::signed;
 use super::super::theme::{Palette, SMALL, TEXT, bold, mono, sans};
+use super::axis::round_step;
+use super::memory::{Memory, Moment};
 use crate::convert::single;
 
 /// Height of the inset.
@@ -18,10 +20,22 @@ const LEAST_CENTS: f32 = 2.0;
 const FIGURES: f32 = 44.0;
 
 /// Draws it into a rectangle. The response is that of the button which ends it.
-pub(crate) fn show(ui: &mut Ui, rect: Rect, number: u32, memory: &Memory, palette: &Palette) -> Response {
+pub(crate) fn show(
+    ui: &mut Ui,
+    rect: Rect,
+    number: u32,
+    memory: &Memory,
+    palette: &Palette,
+) -> Response {
     ui.painter().hline(rect.x_range(), rect.top(), Stroke::new(1.0, palette.edge));
     let title = format!("partial {number}");
-    ink::text(ui, (rect.left_top() + vec2(12.0, 8.0), Align2::LEFT_TOP), &title, bold(TEXT), palette.ink);
+    ink::text(
+        ui,
+        (rect.left_top() + vec2(12.0, 8.0), Align2::LEFT_TOP),
+        &title,
+        bold(TEXT),
+        palette.ink,
+    );
     let middle = rect.center().x;
     let graphs = [
         (Rangef::new(rect.left() + 12.0, middle - 10.0), "level, dBFS", LEAST_DB),
@@ -30,7 +44,11 @@ pub(crate) fn show(ui: &mut Ui, rect: Rect, number: u32, memory: &Memory, palett
     let moments: Vec<Option<Moment>> = memory.of(number).collect();
     for (column, (x, caption, least)) in graphs.into_iter().enumerate() {
         let area = Rect::from_x_y_ranges(x, rect.top() + 28.0..=rect.bottom() - 10.0);
-        let caption_at = if column == 0 { pos2(area.left() + 84.0, rect.top() + 9.0) } else { pos2(area.left(), rect.top() + 9.0) };
+        let caption_at = if column == 0 {
+            pos2(area.left() + 84.0, rect.top() + 9.0)
+        } else {
+            pos2(area.left(), rect.top() + 9.0)
+        };
         ink::text(ui, (caption_at, Align2::LEFT_TOP), caption, sans(SMALL), palette.dim);
         let value = |moment: &Moment| if column == 0 { moment.level_dbfs } else { moment.cents };
         graph(ui, area, (&moments, memory.span_s()), (value, least), palette);

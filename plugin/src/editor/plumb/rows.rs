@@ -1,16 +1,16 @@
 //! The rows of the plumb view: each partial's place off the harmonic series with its deviation, its level and figures.
 
 use egui::{
-    Align2, Color32, CornerRadius, Rangef, Rect, Response, Sense, Shape, Stroke, StrokeKind, Ui,
-    WidgetInfo, Role, pos2,
+    Align2, Color32, CornerRadius, Rangef, Rect, Response, Role, Sense, Shape, Stroke, StrokeKind,
+    Ui, WidgetInfo, pos2,
 };
 use plumbtone_analysis::{Partial, Pitch, Stretch};
 
-use super::axis::{Axis, RowAxis};
 use super::super::ink;
 use super::super::steady::signed;
 use super::super::theme::{FIGURE, Palette, mono};
 use super::super::words::hertz;
+use super::axis::{Axis, RowAxis};
 use crate::convert::single;
 
 /// Deviations that a whisker spans each way.
@@ -193,8 +193,9 @@ fn figures(
 /// All figures of a partial.
 fn tell(ui: &mut Ui, partial: &Partial) {
     ui.label(egui::RichText::new(format!("partial {}", partial.number)).strong());
-    let Partial { frequency_hz, frequency_sd_hz, cents_sd, level_dbfs, level_sd_db, snr_db, .. } =
-        *partial;
+    let Partial {
+        frequency_hz, frequency_sd_hz, cents_sd, level_dbfs, level_sd_db, snr_db, ..
+    } = *partial;
     let cents = signed(partial.cents_from_harmonic, 3);
     for line in [
         format!("{frequency_hz:.4} \u{b1} {frequency_sd_hz:.4} Hz"),
@@ -216,11 +217,20 @@ fn faded(palette: &Palette, below_db: f64) -> Color32 {
 
 /// Figures are written for one row of this many.
 fn figures_every(row: f32) -> u32 {
-    [1, 2, 4, 5, 8, 10, 16].into_iter().find(|&every| row * every as f32 >= FIGURE_APART).unwrap_or(20)
+    [1, 2, 4, 5, 8, 10, 16]
+        .into_iter()
+        .find(|&every| row * every as f32 >= FIGURE_APART)
+        .unwrap_or(20)
 }
 
 /// The stretch curve: where a stiff string's partials lie.
-pub(crate) fn curve(ui: &Ui, columns: &Columns, stretch: Option<Stretch>, pitch: &Pitch, palette: &Palette) {
+pub(crate) fn curve(
+    ui: &Ui,
+    columns: &Columns,
+    stretch: Option<Stretch>,
+    pitch: &Pitch,
+    palette: &Palette,
+) {
     let Some(Stretch { b, .. }) = stretch.filter(|stretch| stretch.b.is_finite()) else { return };
     if !(pitch.f0_hz > 0.0) {
         return;

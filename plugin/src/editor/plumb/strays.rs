@@ -3,10 +3,10 @@
 use egui::{Rangef, Rect, Stroke, Ui, pos2, vec2};
 use plumbtone_analysis::{Stray, StrayKind, Stretch};
 
-use super::axis::{Axis, RowAxis};
 use super::super::ink;
 use super::super::theme::{Palette, SMALL, sans};
 use super::super::words;
+use super::axis::{Axis, RowAxis};
 use crate::convert::single;
 
 /// Height of a label, and space between two.
@@ -16,6 +16,7 @@ const MOST: usize = 64;
 /// Most that are labelled.
 const EXPLAINED_MOST: usize = 10;
 const UNEXPLAINED_MOST: usize = 3;
+pub(crate) const LABELLED_MOST: usize = EXPLAINED_MOST + UNEXPLAINED_MOST;
 /// Thickness of a stray's bar.
 const BAR: f32 = 3.0;
 
@@ -53,10 +54,8 @@ pub(crate) fn show(
     for ((y, stray), place) in seen.into_iter().zip(places) {
         ink::diamond(ui, pos2(lane.diamonds, y), 4.5, palette.stray);
         let end = lane.levels.at(level(stray.level_dbfs)).max(lane.levels.x.min + 2.0);
-        let bar = Rect::from_min_max(
-            pos2(lane.levels.x.min, y - BAR / 2.0),
-            pos2(end, y + BAR / 2.0),
-        );
+        let bar =
+            Rect::from_min_max(pos2(lane.levels.x.min, y - BAR / 2.0), pos2(end, y + BAR / 2.0));
         ui.painter().rect_filled(bar, 1.0, palette.stray);
         if let Some(place) = place {
             label(ui, lane, (stray, end), (y, place), palette);

@@ -3,7 +3,7 @@
 use plumbtone_analysis::{Descriptors, Reading, Stretch};
 
 use super::super::screen::Shown;
-use super::super::steady::Steady;
+use super::super::steady::{NONE, Steady};
 
 /// A level known to about this many dB tells the rest beside the partials down to this many dB below them.
 const HNR_MOST_DB: f64 = 25.0;
@@ -19,12 +19,42 @@ struct Line {
 }
 
 const LINES: [Line; 6] = [
-    Line { caption: "tilt", unit: " dB/oct", signed: true, help: "How fast the partials fall: slope of their levels per doubling of the partial number." },
-    Line { caption: "odd \u{2212} even", unit: " dB", signed: true, help: "Power of the odd partials over that of the even ones." },
-    Line { caption: "THD (to fundamental)", unit: " %", signed: false, help: "Total harmonic distortion: partials 2 and up against partial 1." },
-    Line { caption: "harmonic to noise", unit: " dB", signed: true, help: "Power of the partials over everything else. Above 25 dB the difference of two levels tells no more." },
-    Line { caption: "centroid", unit: "", signed: false, help: "Mean partial number, weighted by amplitude: brightness." },
-    Line { caption: "level", unit: " dBFS", signed: true, help: "Root mean square of the sound; 0 dBFS is a full-scale sine." },
+    Line {
+        caption: "tilt",
+        unit: " dB/oct",
+        signed: true,
+        help: "How fast the partials fall: slope of their levels per doubling of the partial number.",
+    },
+    Line {
+        caption: "odd \u{2212} even",
+        unit: " dB",
+        signed: true,
+        help: "Power of the odd partials over that of the even ones.",
+    },
+    Line {
+        caption: "THD (to fundamental)",
+        unit: " %",
+        signed: false,
+        help: "Total harmonic distortion: partials 2 and up against partial 1.",
+    },
+    Line {
+        caption: "harmonic to noise",
+        unit: " dB",
+        signed: true,
+        help: "Power of the partials over everything else. Above 25 dB the difference of two levels tells no more.",
+    },
+    Line {
+        caption: "centroid",
+        unit: "",
+        signed: false,
+        help: "Mean partial number, weighted by amplitude: brightness.",
+    },
+    Line {
+        caption: "level",
+        unit: " dBFS",
+        signed: true,
+        help: "Root mean square of the sound; 0 dBFS is a full-scale sine.",
+    },
 ];
 
 /// The figures on display.
@@ -73,14 +103,16 @@ impl Figures {
 
     /// Caption, value and meaning of each.
     pub(crate) fn lines(&self) -> impl Iterator<Item = (&'static str, String, &'static str)> {
-        let b = self.stretch.map_or_else(|| "\u{2013}".to_owned(), stretch);
+        let b = self.stretch.map_or_else(|| NONE.to_owned(), stretch);
         let help = "Inharmonicity of a stiff string: partial n lies at n f0 \u{221a}(1 + B n\u{b2}). 0 is a harmonic sound.";
         let rest = LINES.iter().zip(&self.values).map(|(line, value)| {
             let text = value.as_ref().map_or_else(
-                || "\u{2013}".to_owned(),
+                || NONE.to_owned(),
                 |value| match (line.caption, value.text(line.signed)) {
                     ("centroid", text) => format!("partial {text}"),
-                    ("harmonic to noise", text) if text.starts_with("+25") => "over 25 dB".to_owned(),
+                    ("harmonic to noise", text) if text.starts_with("+25") => {
+                        "over 25 dB".to_owned()
+                    }
                     (_, text) => format!("{text}{}", line.unit),
                 },
             );
@@ -104,6 +136,9 @@ fn of(reading: &Reading) -> Descriptors {
 /// B with its deviation, both over one power of ten.
 fn stretch(stretch: Stretch) -> String {
     let Stretch { b, b_sd } = stretch;
+    if !(b.is_finite() && b_sd.is_finite()) {
+        return NONE.to_owned();
+    }
     let size = b.abs().max(b_sd);
     if !(size > 0.0 && size.is_finite()) {
         return "0".to_owned();
@@ -138,7 +173,7 @@ mod tests {
             (1.6e-4, 2e-6, "(1.60 \u{b1} 0.02)\u{b7}10\u{207b}\u{2074}"),
             (-3e-6, 2e-6, "(\u{2212}3.00 \u{b1} 2.00)\u{b7}10\u{207b}\u{2076}"),
             (0.0, 0.0, "0"),
-            (f64::NAN, 1.0, "(NaN \u{b1} 1.00)\u{b7}10\u{2070}"),
+            (f64::NAN, 1.0, NONE),
         ] {
             assert_eq!(stretch(Stretch { b, b_sd }), expected);
         }
