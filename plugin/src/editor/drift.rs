@@ -35,6 +35,8 @@ const FIGURES: f32 = 46.0;
 /// Shortest, longest and first span shown, in seconds.
 const SPAN_S: (f64, f64) = (2.0, 2_400.0);
 const SPAN_FIRST_S: f64 = 20.0;
+/// Points that a column is wide.
+const COLUMN_WIDTH: f64 = 1.5;
 /// Points between two labels of time.
 const LABELS_APART: f64 = 76.0;
 /// The scale is at least this many tolerances each way.
@@ -139,7 +141,7 @@ impl Drift {
         }
         let start = end - span;
         let width = f64::from(width.max(1.0));
-        let step = nearest(span / width).max(1);
+        let step = nearest(COLUMN_WIDTH * span / width).max(1);
         let from = nearest(start.max(trail.first() as f64));
         let target = target(shown, &trail);
         self.picture = Picture {
@@ -420,12 +422,10 @@ fn trace(ui: &Ui, frame: &Frame, columns: &[Column], palette: &Palette) {
             let shade = palette.pitch.gamma_multiply(0.22);
             let sd = |c: &Column| (c.low - SHADE_SD * c.sd, c.high + SHADE_SD * c.sd);
             painter.add(ribbon(frame, run, sd, shade));
-            painter.add(ribbon(
-                frame,
-                run,
-                |c| (c.low, c.high),
-                palette.pitch.gamma_multiply(0.55),
-            ));
+            if run.iter().any(|c| c.high > c.low) {
+                let spread = palette.pitch.gamma_multiply(0.55);
+                painter.add(ribbon(frame, run, |c| (c.low, c.high), spread));
+            }
             let line = |value: fn(&Column) -> f32| -> Vec<Pos2> {
                 run.iter().map(|c| pos2(frame.x(c.at), frame.y(value(c)))).collect()
             };

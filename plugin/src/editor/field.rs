@@ -148,7 +148,6 @@ fn type_in(
     if typed && begins && bench.editing.typing.is_none() {
         let text = handle.shown(handle.value());
         bench.editing.typing = Some(Typing { knob, text, frames: 0 });
-        ui.memory_mut(|memory| memory.request_focus(id));
     }
     let Some(typing) = &mut bench.editing.typing else { return false };
     if typing.knob != knob {
@@ -165,10 +164,12 @@ fn type_in(
     let entry = ui.put(place, edit.margin(vec2(3.0, 1.0)));
     entry.widget_info(|| WidgetInfo::labeled(Role::TextInput, true, field.caption));
     typing.frames = typing.frames.saturating_add(1);
-    if typing.frames <= SELECT_FRAMES && !entry.changed() {
-        select_all(ui, id, length);
-    }
-    if entry.lost_focus() {
+    if typing.frames <= SETTLING_FRAMES {
+        entry.request_focus();
+        if !entry.changed() {
+            select_all(ui, id, length);
+        }
+    } else if entry.lost_focus() {
         let done = ui.input(|input| !input.key_pressed(Key::Escape));
         if let Some(Typing { text, .. }) = bench.editing.typing.take()
             && done
@@ -180,8 +181,8 @@ fn type_in(
     true
 }
 
-/// A text field takes a selection only once it has had the focus for a frame or two.
-const SELECT_FRAMES: u8 = 3;
+/// The double click itself takes the focus away again, and a text field takes a selection only once it has had the focus.
+const SETTLING_FRAMES: u8 = 3;
 /// Size of what is typed.
 const TEXT_IN: f32 = 13.0;
 

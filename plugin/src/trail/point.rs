@@ -1,6 +1,8 @@
 //! One reading's pitch in four bytes, and eight readings' in eight.
 
-use crate::convert::nearest;
+use std::sync::LazyLock;
+
+use crate::convert::{index, nearest};
 
 /// The pitch scale starts here, in Hz, and has this many steps per cent of a semitone: 0.0025 cents, far below what any
 /// reading can tell, up to 5.8 kHz.
@@ -15,6 +17,13 @@ const SD_MAX: u32 = 127;
 const SPREAD_STEPS: f64 = 100.0;
 /// Readings further than this from a cell's newest belong to another note and are left out of its mean, in cents.
 const SAME_NOTE: f64 = 80.0;
+
+/// All deviations: looked up, since a picture needs thousands of them.
+static SDS: LazyLock<[f64; 128]> = LazyLock::new(|| {
+    core::array::from_fn(|step| {
+        SD_LOWEST * 10f64.powf(SD_DECADES * step as f64 / f64::from(SD_MAX))
+    })
+});
 
 /// What one reading said.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -106,8 +115,7 @@ impl Point {
     /// Deviation in cents.
     #[must_use]
     pub fn sd_cents(self) -> f64 {
-        let step = f64::from((self.0 >> 3) & SD_MAX) / f64::from(SD_MAX);
-        SD_LOWEST * 10f64.powf(SD_DECADES * step)
+        SDS[index(u64::from((self.0 >> 3) & SD_MAX))]
     }
 
     fn at(cents: f64, sd_cents: f64, steady: bool) -> Self {

@@ -108,6 +108,7 @@ impl Scene {
             partial.level_dbfs -= 0.006 * n.sqrt() - 0.04 * (0.9 * n + 1.7 * t).cos();
             partial.cents_from_harmonic += 0.01 * (n + 2.3 * t).cos();
         }
+        reading.level_dbfs = level(&reading.partials);
     }
 
     /// What the editor is shown.
