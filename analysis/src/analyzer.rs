@@ -13,6 +13,7 @@ use crate::refine::Refiner;
 use crate::segment::Step;
 use crate::settings::{Settings, SettingsError};
 use crate::settle::{self, Instant, NEIGHBOURS};
+use crate::spectrum::TransformRuns;
 use crate::stiff::{self, Point};
 use crate::strays::peaks::STRAYS_MAX;
 use crate::track::{LOOK_AHEAD, Tracker};
@@ -58,7 +59,8 @@ pub struct Analyzer {
     points: Vec<Point>,
     averager: Averager,
     notes: Notes,
-    /// Instants analysed, decided and delivered since the stream began.
+    /// Looks at the newest samples, and instants analysed, decided and delivered since the stream began.
+    looked: usize,
     analysed: usize,
     decided: usize,
     delivered: usize,
@@ -90,6 +92,7 @@ impl Analyzer {
             points: Vec::with_capacity(partials),
             averager: Averager::new(partials, hop_s, settings.integration_s),
             notes: Notes::new(settings, hop),
+            looked: 0,
             analysed: 0,
             decided: 0,
             delivered: 0,
@@ -109,6 +112,11 @@ impl Analyzer {
     #[must_use]
     pub fn hop(&self) -> usize {
         self.hop
+    }
+
+    /// How often each of the engine's transforms has run since it was built, for benches: what it takes at least.
+    pub fn transforms(&self) -> impl Iterator<Item = TransformRuns> {
+        self.evidence.transforms().chain(self.notes.transforms())
     }
 
     /// Takes in samples (full scale 1.0). Any cut of the same samples gives the same output.
@@ -149,6 +157,7 @@ impl Analyzer {
         self.tracker.restart();
         self.averager.restart();
         self.notes.restart();
+        self.looked = 0;
         self.analysed = 0;
         self.decided = 0;
         self.delivered = 0;
@@ -181,20 +190,34 @@ impl Analyzer {
             return;
         }
         self.close_gap(sink);
-        let reach = self.evidence.reach() as u64;
         while !samples.is_empty() {
-            let due = self.centre(self.analysed) + reach;
-            let room = index(due - self.history.end());
+            let next = self.due().min(self.live_due());
+            let room = index(next - self.history.end());
             let (now, later) = samples.split_at(samples.len().min(room));
             self.history.push(now);
             samples = later;
-            if self.history.end() == due {
+            while self.history.end() == self.due() {
                 self.advance(sink);
+            }
+            if self.history.end() == self.live_due() {
+                self.looked += 1;
                 if sink.wants_live() {
                     self.look_at_newest(sink);
                 }
             }
         }
+    }
+
+    /// Where the stream must have come to before the next instant is analysed. The first ones wait until the longest frame
+    /// can be filled.
+    fn due(&self) -> u64 {
+        let reach = self.evidence.reach() as u64;
+        (self.centre(self.analysed) + reach).max(self.history.start() + 2 * reach)
+    }
+
+    /// The same for the next look at the newest samples.
+    fn live_due(&self) -> u64 {
+        self.centre(self.looked) + self.evidence.reach() as u64
     }
 
     /// Analyses the next instant and passes on what it completes.

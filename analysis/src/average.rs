@@ -3,7 +3,7 @@
 use crate::convert::number;
 use crate::reading::Partial;
 use crate::refine::Tone;
-use crate::stiff::{CENTS_PER_NEPER, DB_PER_NEPER};
+use crate::stiff::{CENTS_PER_NEPER, DB_PER_NEPER, log_ratio, quadrature};
 
 /// Share of a frame after which a Hann frame's estimate is nearly independent of the last.
 const FRESH: f64 = 0.6;
@@ -58,6 +58,7 @@ impl Averager {
         for mean in &mut self.means {
             mean.missed += 1;
         }
+        let steady = 1.0 - (-self.hop_s / self.integration_s).exp();
         for tone in tones {
             let Some(mean) = self.means.get_mut(tone.n) else { continue };
             if mean.missed > FORGOTTEN {
@@ -65,9 +66,8 @@ impl Averager {
             }
             mean.missed = 0;
             mean.count += 1;
-            let steady = 1.0 - (-self.hop_s / self.integration_s).exp();
             let share = steady.max(1.0 / mean.count as f64);
-            let log_ratio = (tone.hz / (tone.n as f64 * f0)).ln();
+            let log_ratio = log_ratio(tone.hz / (tone.n as f64 * f0));
             mean.power += share * (tone.amplitude.norm_sqr() - mean.power);
             mean.log_ratio += share * (log_ratio - mean.log_ratio);
             mean.frequency_variance +=
@@ -86,7 +86,7 @@ impl Averager {
                 frequency_hz: harmonic_hz * mean.log_ratio.exp(),
                 frequency_sd_hz: harmonic_hz * sd,
                 cents_from_harmonic: CENTS_PER_NEPER * mean.log_ratio,
-                cents_sd: (CENTS_PER_NEPER * sd).hypot(f0_sd_cents / independent.sqrt()),
+                cents_sd: quadrature(CENTS_PER_NEPER * sd, f0_sd_cents / independent.sqrt()),
                 level_dbfs: 10.0 * mean.power.log10(),
                 level_sd_db: DB_PER_NEPER * (0.5 * mean.noise_to_signal / independent).sqrt(),
                 phase_rad: tone.amplitude.arg(),

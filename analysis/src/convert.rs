@@ -6,8 +6,17 @@
     clippy::cast_sign_loss,
     reason = "saturates by definition of `as`"
 )]
+#[inline(always)]
 pub(crate) fn nearest_index(x: f64) -> usize {
-    x.round() as usize
+    (x + 0.5) as usize
+}
+
+/// Nearest whole number, the even one of two, to a number below `2^51`: without a call into the mathematical library.
+#[inline(always)]
+pub(crate) fn nearest(x: f64) -> f64 {
+    /// `1.5 * 2^52`: added, it leaves no room for a fraction.
+    const WHOLE: f64 = 6_755_399_441_055_744.0;
+    x + WHOLE - WHOLE
 }
 
 /// Largest index not above a number; 0 below zero or for NaN.

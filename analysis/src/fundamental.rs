@@ -10,6 +10,7 @@ pub(crate) mod lag;
 use crate::peaks::{PEAKS_MAX, Peak};
 use comb::{Comb, Weighed};
 use lag::Periodicity;
+use pulp::{Arch, NullaryFnOnce};
 
 /// Periods that the frame which judges a candidate should hold; the longest frame takes what is left.
 const PERIODS: f64 = 7.0;
@@ -17,6 +18,8 @@ const PERIODS: f64 = 7.0;
 const SEEDS: usize = 7;
 /// Highest number that a seed peak is tried as.
 const SEED_NUMBER: usize = 9;
+/// Most guesses of one frame.
+const GUESSES_MAX: usize = SEEDS * SEED_NUMBER + lag::MAXIMA;
 /// Candidates nearer than this ratio are one.
 const SAME: f64 = 1.012;
 /// Cost of an octave lower, and where the octaves are counted from.
@@ -64,9 +67,35 @@ pub(crate) struct View<'a> {
 #[derive(Debug)]
 pub(crate) struct Search {
     range_hz: (f64, f64),
+    /// Peaks of the frame at hand that count.
+    heard: Vec<Peak>,
     seeds: Vec<Peak>,
     guesses: Vec<f64>,
     sums: Vec<(f64, f64)>,
+    fits: Vec<Comb>,
+    arch: Arch,
+}
+
+/// Fits the combs of all guesses.
+struct FitAll<'a> {
+    peaks: &'a Weighed<'a>,
+    guesses: &'a [f64],
+    bin_hz: f64,
+    fits: &'a mut Vec<Comb>,
+}
+
+impl NullaryFnOnce for FitAll<'_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn call(self) {
+        let Self { peaks, guesses, bin_hz, fits } = self;
+        for &hz in guesses {
+            if let Some(comb) = Comb::fit(peaks, hz, bin_hz) {
+                fits.push(comb);
+            }
+        }
+    }
 }
 
 impl Search {
@@ -74,9 +103,12 @@ impl Search {
     pub(crate) fn new(range_hz: (f64, f64)) -> Self {
         Self {
             range_hz,
+            heard: Vec::with_capacity(PEAKS_MAX),
             seeds: Vec::with_capacity(SEEDS + 1),
             sums: Vec::with_capacity(PEAKS_MAX + 1),
-            guesses: Vec::with_capacity(4 * (SEEDS * SEED_NUMBER + lag::MAXIMA)),
+            guesses: Vec::with_capacity(GUESSES_MAX),
+            fits: Vec::with_capacity(GUESSES_MAX),
+            arch: Arch::new(),
         }
     }
 
@@ -88,14 +120,15 @@ impl Search {
             if band.0 >= band.1 {
                 continue;
             }
-            self.collect(view, frame, band);
-            let peaks = Weighed::new(view.peaks[frame], &mut self.sums);
+            self.heard.clear();
+            self.heard.extend(view.peaks[frame].iter().filter(|p| p.weight > 0.0));
+            self.collect(view, band);
+            let peaks = Weighed::new(&self.heard, &mut self.sums);
             let bin_hz = 1.0 / view.frame_s[frame];
-            for &hz in &self.guesses {
-                if view.periodicity.is_some_and(|p| p.at(hz) < APERIODIC) {
-                    continue;
-                }
-                let Some(fit) = Comb::fit(&peaks, hz, bin_hz) else { continue };
+            self.fits.clear();
+            let (guesses, fits) = (self.guesses.as_slice(), &mut self.fits);
+            self.arch.dispatch(FitAll { peaks: &peaks, guesses, bin_hz, fits });
+            for fit in &self.fits {
                 if fit.hz < self.range_hz.0 * 0.98 || fit.hz > self.range_hz.1 * 1.02 {
                     continue;
                 }
@@ -121,9 +154,9 @@ impl Search {
     }
 
     /// Gathers the guesses of a band: submultiples of the strongest peaks, and the maxima in the lag domain.
-    fn collect(&mut self, view: &View<'_>, frame: usize, band: (f64, f64)) {
+    fn collect(&mut self, view: &View<'_>, band: (f64, f64)) {
         self.seeds.clear();
-        for peak in view.peaks[frame].iter().filter(|p| p.weight > 0.0) {
+        for peak in &self.heard {
             let at = self.seeds.partition_point(|s| s.amplitude > peak.amplitude);
             if at < SEEDS {
                 self.seeds.truncate(SEEDS - 1);
@@ -146,6 +179,9 @@ impl Search {
         }
         self.guesses.sort_unstable_by(f64::total_cmp);
         self.guesses.dedup_by(|next, kept| *next < *kept * SAME);
+        if let Some(periodicity) = view.periodicity {
+            self.guesses.retain(|&hz| periodicity.at(hz) >= APERIODIC);
+        }
     }
 }
 

@@ -63,24 +63,47 @@ impl History {
 
     /// Copies `out.len()` samples from a position (which may lie before the stream's start) on.
     pub(crate) fn read(&self, from: i64, out: &mut [f32]) {
-        let held = |p: u64| i64::try_from(p).unwrap_or(i64::MAX);
-        let (low, high) = (held(self.oldest()), held(self.end));
-        let until = from + i64::try_from(out.len()).unwrap_or(i64::MAX);
-        let (a, b) = (from.max(low), until.min(high));
-        if a >= b {
-            out.fill(0.0);
-            return;
+        let (before, early, late) = self.held(from, out.len());
+        let (silence, out) = out.split_at_mut(before);
+        let (first, out) = out.split_at_mut(early.len());
+        let (second, after) = out.split_at_mut(late.len());
+        silence.fill(0.0);
+        first.copy_from_slice(early);
+        second.copy_from_slice(late);
+        after.fill(0.0);
+    }
+
+    /// The same, each sample times its weight.
+    pub(crate) fn read_weighted(&self, from: i64, weights: &[f32], out: &mut [f32]) {
+        let (before, early, late) = self.held(from, out.len());
+        let (silence, out) = out.split_at_mut(before);
+        let (held, after) = out.split_at_mut(early.len() + late.len());
+        silence.fill(0.0);
+        after.fill(0.0);
+        let (first, second) = held.split_at_mut(early.len());
+        let weights = &weights[before..];
+        for (part, samples, weights) in
+            [(first, early, weights), (second, late, &weights[early.len()..])]
+        {
+            for ((out, x), w) in part.iter_mut().zip(samples).zip(weights) {
+                *out = x * w;
+            }
         }
-        let offset = |p: i64| usize::try_from(p - from).unwrap_or(0);
-        out[..offset(a)].fill(0.0);
-        out[offset(b)..].fill(0.0);
-        let target = &mut out[offset(a)..offset(b)];
-        let mask = self.ring.len() - 1;
-        let at = usize::try_from(a).unwrap_or(0) & mask;
-        let first = target.len().min(self.ring.len() - at);
-        let rest = target.len() - first;
-        target[..first].copy_from_slice(&self.ring[at..at + first]);
-        target[first..].copy_from_slice(&self.ring[..rest]);
+    }
+
+    /// Of `count` samples from a position on: how many lie before those held, and those held, in the two parts that the
+    /// ring has them in.
+    fn held(&self, from: i64, count: usize) -> (usize, &[f32], &[f32]) {
+        let position = |p: u64| i64::try_from(p).unwrap_or(i64::MAX);
+        let until = from + i64::try_from(count).unwrap_or(i64::MAX);
+        let (a, b) = (from.max(position(self.oldest())), until.min(position(self.end)));
+        let Some(length) = usize::try_from(b - a).ok().filter(|&l| l > 0) else {
+            return (count, &[], &[]);
+        };
+        let at = usize::try_from(a).unwrap_or(0) & (self.ring.len() - 1);
+        let first = length.min(self.ring.len() - at);
+        let before = usize::try_from(a - from).unwrap_or(0);
+        (before, &self.ring[at..at + first], &self.ring[..length - first])
     }
 }
 

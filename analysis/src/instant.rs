@@ -2,7 +2,7 @@
 
 use realfft::RealFftPlanner;
 
-use crate::convert::{floor_index, nearest_index};
+use crate::convert::{floor_index, nearest, nearest_index};
 use crate::fundamental::lag::{Autocorrelation, Periodicity};
 use crate::fundamental::{Candidate, Search, View};
 use crate::history::History;
@@ -10,7 +10,7 @@ use crate::peaks::{self, NoiseFloor, PEAKS_MAX, Peak};
 use crate::reading::Stray;
 use crate::refine::Refiner;
 use crate::settings::Settings;
-use crate::spectrum::{Frame, Transform};
+use crate::spectrum::{Frame, Transform, TransformRuns};
 use crate::strays;
 
 /// Shortest frame, in seconds, before rounding to a power of two; each further one is twice as long.
@@ -95,8 +95,8 @@ pub(crate) struct Evidence {
     rest: Vec<Peak>,
     second: Vec<Candidate>,
     centre: u64,
-    /// Whether the last instant renewed the longest frame.
-    renewed: bool,
+    /// Instants since the beginning.
+    count: usize,
 }
 
 impl Evidence {
@@ -120,8 +120,14 @@ impl Evidence {
             rest: Vec::with_capacity(PEAKS_MAX),
             second: Vec::with_capacity(crate::fundamental::CANDIDATES + 1),
             centre: 0,
-            renewed: false,
+            count: 0,
         }
+    }
+
+    /// How often each transform has run.
+    pub(crate) fn transforms(&self) -> impl Iterator<Item = TransformRuns> {
+        let lags = [&self.periodicity.short, &self.periodicity.long];
+        self.transforms.iter().map(|t| t.runs).chain(lags.map(|l| l.runs))
     }
 
     /// Samples needed on either side of a centre.
@@ -131,28 +137,29 @@ impl Evidence {
 
     /// Begins anew: the next instant computes everything.
     pub(crate) fn restart(&mut self) {
-        self.renewed = false;
+        self.count = 0;
     }
 
-    /// Analyses the instant around a centre. The longest frame is renewed at every other instant only.
+    /// Analyses the instant around a centre. Of the two longest frames, which change least from instant to instant, one is
+    /// renewed at a time.
     pub(crate) fn run(&mut self, history: &History, centre: u64, out: &mut Vec<Candidate>) {
-        self.renewed = !self.renewed;
         self.centre = centre;
-        for i in 0..LENGTHS {
-            if i < LONGEST || self.renewed {
-                self.transform(i, history);
-            }
+        let first = self.count == 0;
+        let renewed = [true, true, first || self.count % 2 == 1, self.count.is_multiple_of(2)];
+        self.count += 1;
+        for (i, _) in renewed.iter().enumerate().filter(|r| *r.1) {
+            self.transform(i, history);
         }
-        if self.renewed {
+        if renewed[LONGEST] {
             self.noise.estimate(&self.now.frames[LONGEST]);
             self.periodicity.long.run(&self.now.frames[LONGEST]);
         }
-        self.periodicity.short.run(&self.now.frames[2]);
+        if renewed[2] {
+            self.periodicity.short.run(&self.now.frames[2]);
+        }
         self.periodicity.update();
-        for i in 0..LENGTHS {
-            if i < LONGEST || self.renewed {
-                self.now.pick(i, &self.noise);
-            }
+        for (i, _) in renewed.iter().enumerate().filter(|r| *r.1) {
+            self.now.pick(i, &self.noise);
         }
         self.search.run(&self.now.view(Some(&self.periodicity)), out);
     }
@@ -256,7 +263,7 @@ impl Evidence {
 
 /// Whether a peak lies on the comb of a candidate.
 fn on_comb(peak: &Peak, candidate: &Candidate) -> bool {
-    let n = (peak.hz / candidate.hz).round().max(1.0);
+    let n = nearest(peak.hz / candidate.hz).max(1.0);
     let expected = crate::stiff::partial_hz(candidate.hz, candidate.b, n);
     (peak.hz - expected).abs() < (0.02 * expected).min(0.14 * candidate.hz)
 }

@@ -44,6 +44,7 @@ pub use descriptors::Descriptors;
 pub use note::{Note, NotePartial};
 pub use reading::{Gap, GapReason, Partial, Pitch, Reading, State, Stray, StrayKind, Stretch};
 pub use settings::{Settings, SettingsError};
+pub use spectrum::TransformRuns;
 
 /// Version of the engine.
 pub const VERSION: &str = env!("CARGO_PKG_VERSION");

@@ -8,6 +8,7 @@ use crate::onset::{ChangePoint, Direction};
 use crate::refine::Tone;
 use crate::segment::{Event, Segmenter, Step};
 use crate::settings::Settings;
+use crate::spectrum::TransformRuns;
 
 /// Instants around the first and the last of a note among which its onset and end are searched.
 const SEARCH_INSTANTS: u64 = 5;
@@ -26,6 +27,11 @@ pub(crate) struct Notes {
 }
 
 impl Notes {
+    /// How often each transform has run.
+    pub(crate) fn transforms(&self) -> [TransformRuns; 2] {
+        self.assembler.transforms()
+    }
+
     /// Takes all memory needed.
     pub(crate) fn new(settings: &Settings, hop: usize) -> Self {
         let rate = settings.sample_rate_hz;

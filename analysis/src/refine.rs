@@ -4,13 +4,14 @@
 //!
 //! With the phase referred to the frame's centre the Hann kernel is real and every cross term is one division.
 
+use pulp::{Arch, NullaryFnOnce};
 use realfft::num_complex::Complex;
 
 use crate::convert::{nearest_index, number};
 use crate::peaks::NoiseFloor;
 use crate::reading::Partial;
-use crate::spectrum::{Frame, kernel};
-use crate::stiff::{CENTS_PER_NEPER, DB_PER_NEPER, Point, partial_hz};
+use crate::spectrum::{Frame, kernel, sin_pi};
+use crate::stiff::{CENTS_PER_NEPER, DB_PER_NEPER, Point, partial_hz, quadrature};
 
 /// Rounds of relaxation.
 const ROUNDS: usize = 3;
@@ -54,7 +55,7 @@ impl Tone {
             frequency_hz: self.hz,
             frequency_sd_hz: self.sd_hz,
             cents_from_harmonic: CENTS_PER_NEPER * (self.hz / (self.n as f64 * f0)).ln(),
-            cents_sd: cents_sd.hypot(f0_sd_cents),
+            cents_sd: quadrature(cents_sd, f0_sd_cents),
             level_dbfs: 10.0 * self.amplitude.norm_sqr().log10(),
             level_sd_db: DB_PER_NEPER * (0.5 / self.snr).sqrt(),
             phase_rad: self.amplitude.arg(),
@@ -85,12 +86,17 @@ pub(crate) struct Refiner {
     lines: Vec<Line>,
     /// Partials found, by rising number.
     pub(crate) tones: Vec<Tone>,
+    arch: Arch,
 }
 
 impl Refiner {
     /// Room for so many partials.
     pub(crate) fn new(partials: usize) -> Self {
-        Self { lines: Vec::with_capacity(partials), tones: Vec::with_capacity(partials) }
+        Self {
+            lines: Vec::with_capacity(partials),
+            tones: Vec::with_capacity(partials),
+            arch: Arch::new(),
+        }
     }
 
     /// Measures up to `partials` partials of a fundamental in a frame.
@@ -103,11 +109,7 @@ impl Refiner {
         noise: &NoiseFloor,
     ) {
         self.seed(frame, bin_hz, model, partials);
-        for _ in 0..ROUNDS {
-            for i in 0..self.lines.len() {
-                self.relax(frame, i);
-            }
-        }
+        self.arch.dispatch(Relax { lines: &mut self.lines, frame });
         self.deliver(frame, bin_hz, model.0, noise);
     }
 
@@ -131,41 +133,6 @@ impl Refiner {
             let mut line = Line { n, bin, nu, sine: 0.0, a: Complex::default() };
             line.settle(neighbourhood(frame, bin));
             self.lines.push(line);
-        }
-    }
-
-    /// Measures line `i` in what the others leave.
-    fn relax(&mut self, frame: &Frame, i: usize) {
-        let line = self.lines[i];
-        let mut y = neighbourhood(frame, line.bin);
-        let first = line.bin as f64 - 1.0;
-        let centre = line.nu;
-        let mut take = |other: &Line| {
-            for (j, y) in y.iter_mut().enumerate() {
-                let k = first + j as f64;
-                *y -= other.a * other.at(line.bin + j + 1, k - other.nu);
-            }
-        };
-        for other in self.lines[..i].iter().rev().take_while(|o| centre - o.nu < NEAR_BINS) {
-            take(other);
-        }
-        for other in self.lines[i + 1..].iter().take_while(|o| o.nu - centre < NEAR_BINS) {
-            take(other);
-        }
-        for other in self.lines.iter().take_while(|o| o.nu + centre < IMAGE_BINS) {
-            for (j, y) in y.iter_mut().enumerate() {
-                *y -= other.a.conj() * kernel(first + j as f64 + other.nu);
-            }
-        }
-        let line = &mut self.lines[i];
-        let middle = y[1].conj();
-        let [a, b, c] = y.map(|y| (y * middle).re);
-        let sum = a + 2.0 * b + c;
-        let delta = if sum > 0.0 { (2.0 * (c - a) / sum).clamp(-1.0, 1.0) } else { 0.0 };
-        line.nu = line.bin as f64 + delta;
-        line.settle(y);
-        if delta.abs() > 0.6 {
-            line.bin = nearest_index(line.nu).clamp(1, frame.power.len() - 2);
         }
     }
 
@@ -196,8 +163,67 @@ impl Refiner {
     }
 }
 
+/// All rounds of the relaxation.
+struct Relax<'a> {
+    lines: &'a mut [Line],
+    frame: &'a Frame,
+}
+
+impl NullaryFnOnce for Relax<'_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn call(self) {
+        for _ in 0..ROUNDS {
+            for i in 0..self.lines.len() {
+                relax(self.lines, self.frame, i);
+            }
+        }
+    }
+}
+
+/// Measures line `i` in what the others leave.
+#[inline(always)]
+fn relax(lines: &mut [Line], frame: &Frame, i: usize) {
+    let line = lines[i];
+    let mut y = neighbourhood(frame, line.bin);
+    let first = line.bin as f64 - 1.0;
+    let centre = line.nu;
+    for other in lines[..i].iter().rev().take_while(|o| centre - o.nu < NEAR_BINS) {
+        other.take_from(&mut y, line.bin);
+    }
+    for other in lines[i + 1..].iter().take_while(|o| o.nu - centre < NEAR_BINS) {
+        other.take_from(&mut y, line.bin);
+    }
+    for other in lines.iter().take_while(|o| o.nu + centre < IMAGE_BINS) {
+        for (j, y) in y.iter_mut().enumerate() {
+            *y -= other.a.conj() * kernel(first + j as f64 + other.nu);
+        }
+    }
+    let line = &mut lines[i];
+    let middle = y[1].conj();
+    let [a, b, c] = y.map(|y| (y * middle).re);
+    let sum = a + 2.0 * b + c;
+    let delta = if sum > 0.0 { (2.0 * (c - a) / sum).clamp(-1.0, 1.0) } else { 0.0 };
+    line.nu = line.bin as f64 + delta;
+    line.settle(y);
+    if delta.abs() > 0.6 {
+        line.bin = nearest_index(line.nu).clamp(1, frame.power.len() - 2);
+    }
+}
+
 impl Line {
+    /// Takes the line's share away from the three bins around a bin.
+    #[inline(always)]
+    fn take_from(&self, y: &mut [Complex<f64>; 3], bin: usize) {
+        let first = bin as f64 - 1.0 - self.nu;
+        for (j, y) in y.iter_mut().enumerate() {
+            *y -= self.a * self.at(bin + j + 1, first + j as f64);
+        }
+    }
+
     /// The kernel at a whole bin, `d` bins from the line.
+    #[inline(always)]
     fn at(&self, bin_plus_two: usize, d: f64) -> f64 {
         let q = d * (1.0 - d * d);
         if q.abs() < 1e-3 {
@@ -208,8 +234,9 @@ impl Line {
     }
 
     /// Least-squares amplitude of the line in its three bins.
+    #[inline(always)]
     fn settle(&mut self, y: [Complex<f64>; 3]) {
-        self.sine = (core::f64::consts::PI * self.nu).sin() / core::f64::consts::PI;
+        self.sine = sin_pi(self.nu) / core::f64::consts::PI;
         let first = self.bin as f64 - 1.0;
         let (mut sum, mut norm) = (Complex::default(), 0.0);
         for (j, y) in y.into_iter().enumerate() {
@@ -222,6 +249,7 @@ impl Line {
 }
 
 /// The three bins around a bin.
+#[inline(always)]
 fn neighbourhood(frame: &Frame, bin: usize) -> [Complex<f64>; 3] {
     [bin - 1, bin, bin + 1].map(|k| {
         let x = frame.bins[k];

@@ -11,6 +11,8 @@ pub(crate) const NEIGHBOURS: usize = 5;
 /// Second central moment of the kernel by which a Hann frame averages the frequency, in squared frames: a sixth of the
 /// ratio of the window's fourth and second moments, over the frame's square.
 const KERNEL_MOMENT: f64 = 0.01310;
+/// Share of the sharpest bend near by that may be left in the pitch.
+const LEFT_OF_BEND: f64 = 0.2;
 /// Curvature of the pitch, in its own deviations, that is worth correcting.
 const CURVED: f64 = 2.0;
 /// Largest step between instants over which the pitch counts as continuous, in cents.
@@ -171,6 +173,16 @@ impl Run {
         run.net = (ends[1] - ends[0]).abs();
         run
     }
+
+    /// The largest second difference, over so many instants, around any instant of the run.
+    fn sharpest_bend(&self, wide: usize) -> f64 {
+        let differences = (wide..self.logs.len() - wide).filter_map(|at| {
+            let (before, own, after) =
+                (self.logs[at - wide]?, self.logs[at]?, self.logs[at + wide]?);
+            Some((before - 2.0 * own + after).abs())
+        });
+        differences.fold(0.0, f64::max)
+    }
 }
 
 /// Takes back what the frame's averaging does to a pitch that bends: the frame reads the mean of the pitch under its
@@ -186,13 +198,16 @@ fn uncurve(run: &Run, here: &Instant, hop_s: f64) -> (f64, f64) {
     let span = wide as f64 * hop_s;
     let curvature = (before - 2.0 * own + after) / (span * span);
     let curvature_sd = 6.0f64.sqrt() * sd / CENTS_PER_NEPER / (span * span);
-    if curvature.abs() < CURVED * curvature_sd {
-        return (own, sd);
-    }
     let gain = KERNEL_MOMENT * here.frame_s * here.frame_s;
+    // The correction is itself measured over a span, and the next term of the series is left out: that much of the sharpest
+    // bend near by is left.
+    let bend = run.sharpest_bend(wide) / (span * span);
+    let certain = (bend - CURVED * curvature_sd).max(0.0);
+    let left = LEFT_OF_BEND * CENTS_PER_NEPER * gain * certain;
+    if curvature.abs() < CURVED * curvature_sd {
+        return (own, sd.hypot(left));
+    }
     let shift = gain * curvature;
-    // The correction is itself measured over a span, and the next term of the series is left out.
-    let left = 0.15 * CENTS_PER_NEPER * shift.abs();
     (own - shift, sd.hypot(CENTS_PER_NEPER * gain * curvature_sd).hypot(left))
 }
 

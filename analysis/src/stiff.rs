@@ -10,6 +10,8 @@ pub(crate) const CENTS_PER_NEPER: f64 = 1_731.234_049_066_756_1;
 pub(crate) const DB_PER_NEPER: f64 = 8.685_889_638_065_037;
 /// Rounds of reweighting.
 const ROUNDS: usize = 6;
+/// Squared step in deviations, and change of the scatter, below which nothing more is gained.
+const SETTLED: f64 = 1e-4;
 /// Residual, in deviations, beyond which a partial counts less (P. J. Huber's function).
 const HUBER: f64 = 2.5;
 /// Residual, in deviations, beyond which a partial does not count at all.
@@ -62,6 +64,12 @@ pub(crate) fn partial_hz(f0: f64, b: f64, n: f64) -> f64 {
     n * f0 * (1.0 + b * n * n).max(1e-6).sqrt()
 }
 
+/// The (fractional) partial number at a frequency: the inverse of [`partial_hz`].
+pub(crate) fn partial_number(f0: f64, b: f64, hz: f64) -> f64 {
+    let harmonic = (hz / f0) * (hz / f0);
+    (2.0 * harmonic / (1.0 + (1.0 + 4.0 * b * harmonic).max(0.0).sqrt())).sqrt()
+}
+
 /// Fits the model. `None` without a usable partial; with a single one, `B` is 0 with an infinite deviation.
 pub(crate) fn fit(points: &[Point]) -> Option<StiffFit> {
     let first = points
@@ -105,10 +113,15 @@ pub(crate) fn fit(points: &[Point]) -> Option<StiffFit> {
         let free = weight - if lone { 1.0 } else { 2.0 };
         // The residuals of this linearisation after the step.
         let left = (chi - du * m.u - db * m.b).max(0.0);
+        let before = scatter;
         if round >= 1 && free > 0.5 {
             // Moment estimate of a common variance (R. DerSimonian & N. Laird, 1986).
             let excess = (left - free) / linear * weight / free.max(1.0);
             scatter = (scatter * scatter + excess).max(0.0).sqrt();
+        }
+        let still = du * du < SETTLED * cov.0 && db * db < SETTLED * cov.1;
+        if round >= 3 && still && (scatter - before).abs() <= SETTLED * scatter {
+            break;
         }
     }
     Some(StiffFit {
@@ -125,8 +138,18 @@ fn largest_square(points: &[Point]) -> f64 {
     points.iter().fold(1.0, |m: f64, p| m.max(p.n * p.n))
 }
 
+/// Root of the sum of squares, as independent deviations add up.
+#[expect(
+    clippy::imprecise_flops,
+    reason = "nothing here overflows, and the library's `hypot` costs twenty times as much"
+)]
+#[inline(always)]
+pub(crate) fn quadrature(a: f64, b: f64) -> f64 {
+    (a * a + b * b).sqrt()
+}
+
 /// Logarithm; for ratios close to 1, where nearly all calls are, by the series to the last digit.
-fn log_ratio(ratio: f64) -> f64 {
+pub(crate) fn log_ratio(ratio: f64) -> f64 {
     let x = ratio - 1.0;
     if x.abs() > 5e-4 {
         return ratio.ln();
@@ -168,7 +191,8 @@ fn solve(m: &Normal) -> Option<(f64, f64, (f64, f64))> {
 
 /// Size of the middle relative residual, as the deviation of a normal distribution.
 fn middle_residual(points: &[Point], f0: f64, b: f64) -> f64 {
-    let sizes = points.iter().map(|p| ((p.hz / partial_hz(f0, b, p.n)).ln().abs(), deviation(p)));
+    let sizes =
+        points.iter().map(|p| (log_ratio(p.hz / partial_hz(f0, b, p.n)).abs(), deviation(p)));
     1.4826 * middle(sizes).unwrap_or(0.0)
 }
 

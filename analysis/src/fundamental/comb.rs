@@ -23,7 +23,7 @@ const B_MAX: f64 = 0.02;
 /// Exponent of the share of teeth found.
 const PRESENCE: f64 = 0.7;
 
-/// Peaks sorted by frequency, with their weights added up from the lowest on.
+/// Peaks that count, sorted by frequency, with their weights added up from the lowest on.
 #[derive(Debug)]
 pub(crate) struct Weighed<'a> {
     peaks: &'a [Peak],
@@ -46,6 +46,7 @@ impl<'a> Weighed<'a> {
 
     /// Weight of all peaks below a limit, and what of it lies in reach of the comb of a fundamental by chance: weight times
     /// the share of the axis that the reach covers there.
+    #[inline(always)]
     fn below(&self, limit_hz: f64, f0: f64) -> (f64, f64) {
         let end = self.peaks.partition_point(|p| p.hz < limit_hz);
         let turn = self.peaks.partition_point(|p| p.hz < f0 * REACH_OF_F0 / REACH).min(end);
@@ -82,6 +83,7 @@ struct Line {
 }
 
 impl Line {
+    #[inline(always)]
     fn add(&mut self, n: f64, hz: f64, weight: f64) {
         let (x, y) = (n * n, (hz / n) * (hz / n));
         // A partial's frequency error counts 1/n in f_n / n.
@@ -95,6 +97,7 @@ impl Line {
     }
 
     /// Squared fundamental and inharmonicity; harmonic until enough partials are in.
+    #[inline(always)]
     fn solve(&self, fallback: f64) -> (f64, f64) {
         if self.count == 0 {
             return (fallback * fallback, 0.0);
@@ -113,6 +116,7 @@ impl Line {
 
 impl Comb {
     /// Fits the comb of a fundamental to peaks sorted by frequency; `None` when no peak is on it.
+    #[inline(always)]
     pub(crate) fn fit(peaks: &Weighed<'_>, guess_hz: f64, bin_hz: f64) -> Option<Self> {
         let mut line = Line::default();
         let mut teeth = [0.0f64; TEETH];
@@ -155,20 +159,23 @@ impl Comb {
 }
 
 /// The strongest peak within reach of an expectation; `next` is where the last search began.
+#[inline(always)]
 fn strongest_within(peaks: &[Peak], next: &mut usize, expected: f64, reach: f64) -> Option<Peak> {
     while *next < peaks.len() && peaks[*next].hz < expected - reach {
         *next += 1;
     }
-    peaks[*next..]
-        .iter()
-        .take_while(|p| p.hz <= expected + reach)
-        .filter(|p| p.weight > 0.0)
-        .copied()
-        .max_by(|a, b| a.amplitude.total_cmp(&b.amplitude))
+    let mut found: Option<Peak> = None;
+    for peak in peaks[*next..].iter().take_while(|p| p.hz <= expected + reach) {
+        if found.is_none_or(|best| peak.amplitude >= best.amplitude) {
+            found = Some(*peak);
+        }
+    }
+    found
 }
 
 /// Share of the comb that is there: teeth count by their strength, low ones most, and one that is missing as much as the
 /// weaker of its nearest neighbours that are there.
+#[inline(always)]
 fn presence(teeth: &[f64]) -> f64 {
     let (mut there, mut missing) = (0.0, 0.0);
     let (mut below, mut hole) = (f64::INFINITY, 0.0);

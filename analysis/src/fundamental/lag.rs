@@ -11,10 +11,12 @@ use realfft::num_complex::Complex;
 use realfft::{ComplexToReal, RealFftPlanner};
 
 use crate::convert::{floor_index, nearest_index, single};
-use crate::spectrum::Frame;
+use crate::spectrum::{Frame, TransformRuns};
 
 /// Maxima in the lag domain handed to the search.
 pub(crate) const MAXIMA: usize = 6;
+/// Least of them.
+const LEAST: f32 = 0.2;
 /// Longest lag used, as a share of the frame.
 const LONGEST: f64 = 0.36;
 /// Half-width of the search for the maximum around a candidate's period, as a share of the period.
@@ -22,6 +24,8 @@ const SLACK: f64 = 0.012;
 
 /// Autocorrelation of one frame length.
 pub(crate) struct Autocorrelation {
+    /// Runs so far.
+    pub(crate) runs: TransformRuns,
     plan: Arc<dyn ComplexToReal<f32>>,
     spectrum: Vec<Complex<f32>>,
     scratch: Vec<Complex<f32>>,
@@ -53,6 +57,7 @@ impl Autocorrelation {
         let plan = planner.plan_fft_inverse(len);
         let lags = floor_index(LONGEST * len as f64);
         Self {
+            runs: TransformRuns::none(len, true),
             spectrum: plan.make_input_vec(),
             scratch: plan.make_scratch_vec(),
             output: plan.make_output_vec(),
@@ -67,6 +72,7 @@ impl Autocorrelation {
 
     /// Computes the normalised autocorrelation of a frame.
     pub(crate) fn run(&mut self, frame: &Frame) {
+        self.runs.runs += 1;
         for (s, p) in self.spectrum.iter_mut().zip(&frame.power) {
             *s = Complex::new(*p, 0.0);
         }
@@ -95,7 +101,7 @@ impl Autocorrelation {
             return 0.0;
         }
         let r = &self.normalised;
-        let best = (a..=b).max_by(|&i, &j| r[i].total_cmp(&r[j])).unwrap_or(a);
+        let best = (a..=b).fold(a, |best, k| if r[k] >= r[best] { k } else { best });
         if best == 0 || best + 1 == r.len() {
             return 0.0;
         }
@@ -107,20 +113,20 @@ impl Autocorrelation {
 
     /// Adds the strongest maxima between two lags to a list kept in falling order.
     fn collect(&self, lags: (usize, usize), out: &mut Vec<(f32, f64)>) {
-        let r = &self.normalised;
-        for k in lags.0.max(1)..lags.1.min(r.len() - 1) {
-            if r[k] <= r[k - 1] || r[k] < r[k + 1] || r[k] < 0.2 {
+        let (first, end) = (lags.0.max(1), lags.1.min(self.normalised.len() - 1));
+        let Some(around) = self.normalised.get(first - 1..=end) else { return };
+        for (k, around) in (first..).zip(around.windows(3)) {
+            let &[before, here, after] = around else { continue };
+            if here <= before || here < after || here < LEAST {
                 continue;
             }
-            let at = out.partition_point(|m| m.0 > r[k]);
+            let at = out.partition_point(|m| m.0 > here);
             if at < MAXIMA {
                 out.truncate(MAXIMA - 1);
-                let curve = r[k - 1] - 2.0 * r[k] + r[k + 1];
-                let shift = if curve < 0.0 { 0.5 * (r[k - 1] - r[k + 1]) / curve } else { 0.0 };
-                out.insert(
-                    at.min(out.len()),
-                    (r[k], self.sample_rate_hz / (k as f64 + f64::from(shift))),
-                );
+                let curve = before - 2.0 * here + after;
+                let shift = if curve < 0.0 { 0.5 * (before - after) / curve } else { 0.0 };
+                let lag = k as f64 + f64::from(shift);
+                out.insert(at.min(out.len()), (here, self.sample_rate_hz / lag));
             }
         }
     }

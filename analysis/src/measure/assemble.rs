@@ -9,12 +9,11 @@ use crate::history::{History, Span};
 use crate::note::{Note, NotePartial};
 use crate::reading::{StrayKind, Stretch};
 use crate::refine::Tone;
-use crate::stiff::{self, CENTS_PER_NEPER, Point, StiffFit, partial_hz};
+use crate::spectrum::TransformRuns;
+use crate::stiff::{self, CENTS_PER_NEPER, DB_PER_NEPER, Point, StiffFit, partial_hz};
 use crate::strays::aliases::{self, Own};
 use crate::strays::{self, Candidate, mains};
 
-/// Decibels in one neper.
-const DB_PER_NEPER: f64 = 8.685_889_638_065_037;
 /// Distance of a line from a partial within which it is that partial, in resolutions.
 const OWN: f64 = 4.0;
 /// The same for a line that nothing else explains, in cents: strings in pairs and choruses spread a partial.
@@ -58,6 +57,11 @@ pub(crate) struct Assembler {
 }
 
 impl Assembler {
+    /// How often each transform has run.
+    pub(crate) fn transforms(&self) -> [TransformRuns; 2] {
+        self.meter.long.runs
+    }
+
     /// Room for every note.
     pub(crate) fn new(sample_rate_hz: f64, partials: usize, hop: usize) -> Self {
         Self {

@@ -6,13 +6,19 @@
 
 use core::f64::consts::TAU;
 
+use pulp::{Arch, NullaryFnOnce};
 use realfft::num_complex::Complex;
 
-use crate::convert::single;
+use crate::convert::{nearest, single};
 use crate::history::Span;
+use crate::stiff::quadrature;
 
-/// Partials brought down together: the width of the inner loop.
-pub(crate) const LANES: usize = 8;
+/// Oscillators in one vector.
+const LANES: usize = 8;
+/// Vectors of oscillators that run together, so that none waits for its own last product.
+const ABREAST: usize = 2;
+/// Blocks from one exact phase to the next.
+const EXACT_EVERY: usize = 32;
 
 /// The slow signals of a note: row by row, a partial each.
 #[derive(Debug)]
@@ -27,6 +33,7 @@ pub(crate) struct Baseband {
     /// Sums and differences of the samples of one block about its centre.
     pairs: Vec<(f32, f32)>,
     lanes: Vec<Lanes>,
+    arch: Arch,
 }
 
 impl Baseband {
@@ -41,6 +48,7 @@ impl Baseband {
             samples: vec![0.0; block],
             pairs: Vec::with_capacity(block.div_ceil(2)),
             lanes: Vec::with_capacity(rows_max.div_ceil(LANES)),
+            arch: Arch::new(),
         }
     }
 
@@ -74,13 +82,23 @@ impl Baseband {
         for m in 0..self.blocks {
             sound.read(m * self.block, &mut self.samples);
             pair(&self.samples, &mut self.pairs);
-            for (group, lanes) in self.lanes.iter_mut().enumerate() {
-                if let Some(factor) = bend.get(m) {
-                    lanes.turn_by(*factor, self.block);
-                }
-                let sums = lanes.block(&self.pairs, self.block);
-                for (lane, sum) in sums.into_iter().enumerate() {
-                    self.data[(group * LANES + lane) * self.blocks_max + m] = sum;
+            if let Some(factor) = bend.get(m) {
+                self.lanes.iter_mut().for_each(|lanes| lanes.turn_by(*factor, self.block));
+            }
+            let (abreast, rest) = self.lanes.as_chunks_mut::<ABREAST>();
+            for lanes in abreast {
+                self.arch.dispatch(Turn { lanes, pairs: &self.pairs });
+            }
+            for lanes in rest {
+                self.arch
+                    .dispatch(Turn { lanes: core::array::from_mut(lanes), pairs: &self.pairs });
+            }
+            for (lanes, rows) in
+                self.lanes.iter_mut().zip(self.data.chunks_mut(LANES * self.blocks_max))
+            {
+                let sums = lanes.end_block(self.block);
+                for (sum, row) in sums.into_iter().zip(rows.chunks_mut(self.blocks_max)) {
+                    row[m] = sum;
                 }
             }
         }
@@ -108,11 +126,18 @@ struct Lanes {
     bent: [f64; LANES],
     /// At the first sample of the block to come.
     phases: [f64; LANES],
+    /// What brings the block's sum to its true phase, what takes that from block to block, and for how many blocks it has.
+    turned: [Complex<f64>; LANES],
+    onward: [Complex<f64>; LANES],
+    age: usize,
     step_re: [f32; LANES],
     step_im: [f32; LANES],
     /// The oscillator at the first pair.
     start_re: [f32; LANES],
     start_im: [f32; LANES],
+    /// Sums of the last block.
+    sum_re: [f32; LANES],
+    sum_im: [f32; LANES],
     /// The scale, with what the rounding of the steps does to it undone.
     scale: [f64; LANES],
 }
@@ -127,34 +152,72 @@ impl Lanes {
             self.bent[i] = step;
             (self.step_re[i], self.step_im[i]) = rounded(step);
             (self.start_re[i], self.start_im[i]) = rounded(step * distance);
-            let grows = f64::from(self.step_re[i]).hypot(f64::from(self.step_im[i])) - 1.0;
+            let (re, im) = (f64::from(self.step_re[i]), f64::from(self.step_im[i]));
+            let grows = quadrature(re, im) - 1.0;
             let length = block as f64;
             self.scale[i] = 2.0 / length * (1.0 - 0.25 * length * grows);
         }
+        self.age = 0;
     }
 
-    /// Sums of one block, and on to the next.
-    fn block(&mut self, pairs: &[(f32, f32)], block: usize) -> [Complex<f32>; LANES] {
-        let (s_re, s_im) = (self.step_re, self.step_im);
-        let (mut c_re, mut c_im) = (self.start_re, self.start_im);
-        let (mut a_re, mut a_im) = ([0.0f32; LANES], [0.0f32; LANES]);
-        for &(sum, difference) in pairs {
-            for i in 0..LANES {
-                a_re[i] += sum * c_re[i];
-                a_im[i] -= difference * c_im[i];
-                let re = c_re[i] * s_re[i] - c_im[i] * s_im[i];
-                c_im[i] = c_re[i] * s_im[i] + c_im[i] * s_re[i];
-                c_re[i] = re;
+    /// The block's sums at true phase and scale, and on to the next block.
+    fn end_block(&mut self, block: usize) -> [Complex<f32>; LANES] {
+        let length = block as f64;
+        for i in 0..LANES {
+            match self.age {
+                0 => {
+                    let centre = self.phases[i] + 0.5 * (length - 1.0) * self.bent[i];
+                    self.turned[i] = Complex::cis(-centre);
+                }
+                1 => self.onward[i] = Complex::cis(-length * self.bent[i]),
+                _ => {}
+            }
+            if self.age > 0 {
+                self.turned[i] *= self.onward[i];
             }
         }
-        let centre = 0.5 * (block - 1) as f64;
+        self.age = (self.age + 1) % EXACT_EVERY;
         core::array::from_fn(|i| {
-            let turned = Complex::cis(-(self.phases[i] + centre * self.bent[i]));
-            let sum = Complex::new(f64::from(a_re[i]), f64::from(a_im[i]));
-            let sum = sum * turned * self.scale[i];
-            self.phases[i] = (self.phases[i] + self.bent[i] * block as f64) % TAU;
+            let sum = Complex::new(f64::from(self.sum_re[i]), f64::from(self.sum_im[i]));
+            let sum = sum * self.turned[i] * self.scale[i];
+            let phase = self.phases[i] + self.bent[i] * length;
+            self.phases[i] = phase - TAU * nearest(phase / TAU);
             Complex::new(single(sum.re), single(sum.im))
         })
+    }
+}
+
+/// Sums of the samples of one block under some vectors of oscillators.
+struct Turn<'a, const N: usize> {
+    lanes: &'a mut [Lanes; N],
+    pairs: &'a [(f32, f32)],
+}
+
+impl<const N: usize> NullaryFnOnce for Turn<'_, N> {
+    type Output = ();
+
+    #[inline(always)]
+    fn call(self) {
+        let Self { lanes, pairs } = self;
+        let (s_re, s_im) =
+            (lanes.each_ref().map(|l| l.step_re), lanes.each_ref().map(|l| l.step_im));
+        let mut c_re = lanes.each_ref().map(|l| l.start_re);
+        let mut c_im = lanes.each_ref().map(|l| l.start_im);
+        let (mut a_re, mut a_im) = ([[0.0f32; LANES]; N], [[0.0f32; LANES]; N]);
+        for &(sum, difference) in pairs {
+            for v in 0..N {
+                for i in 0..LANES {
+                    a_re[v][i] += sum * c_re[v][i];
+                    a_im[v][i] -= difference * c_im[v][i];
+                    let re = c_re[v][i] * s_re[v][i] - c_im[v][i] * s_im[v][i];
+                    c_im[v][i] = c_re[v][i] * s_im[v][i] + c_im[v][i] * s_re[v][i];
+                    c_re[v][i] = re;
+                }
+            }
+        }
+        for (v, lanes) in lanes.iter_mut().enumerate() {
+            (lanes.sum_re, lanes.sum_im) = (a_re[v], a_im[v]);
+        }
     }
 }
 

@@ -4,6 +4,7 @@
 
 use core::f64::consts::TAU;
 
+use pulp::{Arch, NullaryFnOnce};
 use realfft::num_complex::Complex;
 
 use super::damped::{Damped, Times};
@@ -120,8 +121,29 @@ impl Sums {
     }
 
     fn add(&mut self, z: &[Complex<f32>]) {
-        let ((t_re, t_im), (mut e_re, mut e_im)) = (self.turn, self.e);
-        let (mut s_re, mut s_im) = self.sum;
+        Arch::new().dispatch(Add { sums: self, z });
+    }
+
+    fn powers(&self, count: usize) -> [f32; LANES] {
+        let scale = 1.0 / count as f32;
+        core::array::from_fn(|i| (self.sum.0[i].powi(2) + self.sum.1[i].powi(2)) * scale)
+    }
+}
+
+/// Adds a piece of the signal to the sums.
+struct Add<'a> {
+    sums: &'a mut Sums,
+    z: &'a [Complex<f32>],
+}
+
+impl NullaryFnOnce for Add<'_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn call(self) {
+        let Self { sums, z } = self;
+        let ((t_re, t_im), (mut e_re, mut e_im)) = (sums.turn, sums.e);
+        let (mut s_re, mut s_im) = sums.sum;
         for z in z {
             for i in 0..LANES {
                 s_re[i] += z.re * e_re[i] - z.im * e_im[i];
@@ -131,12 +153,7 @@ impl Sums {
                 e_re[i] = re;
             }
         }
-        self.e = (e_re, e_im);
-        self.sum = (s_re, s_im);
-    }
-
-    fn powers(&self, count: usize) -> [f32; LANES] {
-        let scale = 1.0 / count as f32;
-        core::array::from_fn(|i| (self.sum.0[i].powi(2) + self.sum.1[i].powi(2)) * scale)
+        sums.e = (e_re, e_im);
+        sums.sum = (s_re, s_im);
     }
 }

@@ -7,6 +7,7 @@
 
 use core::f64::consts::TAU;
 
+use pulp::{Arch, NullaryFnOnce};
 use realfft::num_complex::Complex;
 
 /// Most rounds of Gauss-Newton, those that have to step back included.
@@ -180,47 +181,64 @@ fn describe(z: &[Complex<f64>], times: Times, g: Complex<f64>, sums: &Sums) -> D
 
 /// One pass over the signal.
 fn pass(z: &[Complex<f64>], times: Times, g: Complex<f64>) -> Sums {
-    let step = (g * times.step_s).exp();
-    let mut e = (g * times.first_s).exp();
-    let (mut e_re, mut e_im) = ([0.0; LANES], [0.0; LANES]);
-    for i in 0..LANES {
-        (e_re[i], e_im[i]) = (e.re, e.im);
-        e *= step;
-    }
-    let far = step * step * step * step;
-    let mut t: [f64; LANES] = core::array::from_fn(|i| times.first_s + i as f64 * times.step_s);
-    let hop = LANES as f64 * times.step_s;
-    let (mut s0, mut s1, mut s2) = ([0.0; LANES], [0.0; LANES], [0.0; LANES]);
-    let (mut b0_re, mut b0_im) = ([0.0; LANES], [0.0; LANES]);
-    let (mut b1_re, mut b1_im) = ([0.0; LANES], [0.0; LANES]);
-    let mut take = |i: usize, z: Complex<f64>| {
-        let power = e_re[i] * e_re[i] + e_im[i] * e_im[i];
-        let re = e_re[i] * z.re + e_im[i] * z.im;
-        let im = e_re[i] * z.im - e_im[i] * z.re;
-        s0[i] += power;
-        s1[i] += power * t[i];
-        s2[i] += power * t[i] * t[i];
-        b0_re[i] += re;
-        b0_im[i] += im;
-        b1_re[i] += re * t[i];
-        b1_im[i] += im * t[i];
-        let turned = e_re[i] * far.re - e_im[i] * far.im;
-        e_im[i] = e_re[i] * far.im + e_im[i] * far.re;
-        e_re[i] = turned;
-        t[i] += hop;
-    };
-    let (whole, rest) = z.as_chunks::<LANES>();
-    for z in whole {
-        z.iter().enumerate().for_each(|(i, z)| take(i, *z));
-    }
-    rest.iter().enumerate().for_each(|(i, z)| take(i, *z));
-    let sum = |x: [f64; LANES]| x.iter().sum::<f64>();
-    Sums {
-        s0: sum(s0),
-        s1: sum(s1),
-        s2: sum(s2),
-        b0: Complex::new(sum(b0_re), sum(b0_im)),
-        b1: Complex::new(sum(b1_re), sum(b1_im)),
+    Arch::new().dispatch(Pass { z, times, g })
+}
+
+/// See [`pass`].
+struct Pass<'a> {
+    z: &'a [Complex<f64>],
+    times: Times,
+    g: Complex<f64>,
+}
+
+impl NullaryFnOnce for Pass<'_> {
+    type Output = Sums;
+
+    #[inline(always)]
+    fn call(self) -> Sums {
+        let Self { z, times, g } = self;
+        let step = (g * times.step_s).exp();
+        let mut e = (g * times.first_s).exp();
+        let (mut e_re, mut e_im) = ([0.0; LANES], [0.0; LANES]);
+        for i in 0..LANES {
+            (e_re[i], e_im[i]) = (e.re, e.im);
+            e *= step;
+        }
+        let far = step * step * step * step;
+        let mut t: [f64; LANES] = core::array::from_fn(|i| times.first_s + i as f64 * times.step_s);
+        let hop = LANES as f64 * times.step_s;
+        let (mut s0, mut s1, mut s2) = ([0.0; LANES], [0.0; LANES], [0.0; LANES]);
+        let (mut b0_re, mut b0_im) = ([0.0; LANES], [0.0; LANES]);
+        let (mut b1_re, mut b1_im) = ([0.0; LANES], [0.0; LANES]);
+        let mut take = |i: usize, z: Complex<f64>| {
+            let power = e_re[i] * e_re[i] + e_im[i] * e_im[i];
+            let re = e_re[i] * z.re + e_im[i] * z.im;
+            let im = e_re[i] * z.im - e_im[i] * z.re;
+            s0[i] += power;
+            s1[i] += power * t[i];
+            s2[i] += power * t[i] * t[i];
+            b0_re[i] += re;
+            b0_im[i] += im;
+            b1_re[i] += re * t[i];
+            b1_im[i] += im * t[i];
+            let turned = e_re[i] * far.re - e_im[i] * far.im;
+            e_im[i] = e_re[i] * far.im + e_im[i] * far.re;
+            e_re[i] = turned;
+            t[i] += hop;
+        };
+        let (whole, rest) = z.as_chunks::<LANES>();
+        for z in whole {
+            z.iter().enumerate().for_each(|(i, z)| take(i, *z));
+        }
+        rest.iter().enumerate().for_each(|(i, z)| take(i, *z));
+        let sum = |x: [f64; LANES]| x.iter().sum::<f64>();
+        Sums {
+            s0: sum(s0),
+            s1: sum(s1),
+            s2: sum(s2),
+            b0: Complex::new(sum(b0_re), sum(b0_im)),
+            b1: Complex::new(sum(b1_re), sum(b1_im)),
+        }
     }
 }
 

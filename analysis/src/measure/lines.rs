@@ -12,6 +12,8 @@ use realfft::{RealFftPlanner, RealToComplex};
 
 use crate::convert::{nearest_index, single};
 use crate::history::Span;
+use crate::peaks::largest;
+use crate::spectrum::TransformRuns;
 use crate::window::CosineSum;
 
 /// Lengths of the transforms, in seconds before rounding to a power of two.
@@ -43,6 +45,8 @@ pub(crate) struct Line {
 /// Long transforms and their scratch.
 pub(crate) struct LongSpectrum {
     plans: [Arc<dyn RealToComplex<f32>>; 2],
+    /// Runs of each so far.
+    pub(crate) runs: [TransformRuns; 2],
     /// Samples under the window, then the power of the bins.
     input: Vec<f32>,
     bins: Vec<Complex<f32>>,
@@ -72,6 +76,7 @@ impl LongSpectrum {
             .map(|s| planner.plan_fft_forward(1 << nearest_index((s * sample_rate_hz).log2())));
         let longest = &plans[1];
         Self {
+            runs: plans.each_ref().map(|plan| TransformRuns::none(plan.len(), false)),
             input: longest.make_input_vec(),
             bins: longest.make_output_vec(),
             scratch: longest.make_scratch_vec(),
@@ -87,7 +92,9 @@ impl LongSpectrum {
 
     /// Finds the lines of a note from its samples, as many of them as the longest transform takes.
     pub(crate) fn run(&mut self, sound: Span<'_>) {
-        let plan = &self.plans[usize::from(sound.length > self.plans[0].len())];
+        let which = usize::from(sound.length > self.plans[0].len());
+        let plan = &self.plans[which];
+        self.runs[which].runs += 1;
         let len = plan.len();
         let used = sound.length.min(len);
         let scale = 2.0 / (used as f64 * CosineSum::BLACKMAN_HARRIS.coherent_gain());
@@ -123,7 +130,7 @@ impl LongSpectrum {
         self.bin_hz = bin_hz;
         let wide = nearest_index(PROMINENCE_BINS as f64 * self.resolution_hz / bin_hz);
         let p = &self.input[..count];
-        let strongest = p.iter().fold(0.0f32, |a, &b| a.max(b));
+        let strongest = largest(p);
         // The window's side lobes, at -92 dB, are lines of nothing.
         let least = strongest * 1e-9;
         let mut faintest = 0.0;

@@ -2,7 +2,7 @@
 
 use core::f64::consts::TAU;
 
-use super::baseband::{Baseband, LANES};
+use super::baseband::Baseband;
 use super::damped::Times;
 use super::lines::LongSpectrum;
 use super::path::{self, PathPoint};
@@ -21,6 +21,8 @@ pub(crate) const SPARE: usize = 3;
 /// Nearest to the Nyquist frequency at which a partial can be told from its own image, in resolutions.
 const CLEAR_OF_IMAGE: f64 = 4.0;
 
+/// Partials by which it is decided whether the pitch moves.
+const STRONGEST: usize = 8;
 /// A moving pitch must leave less of the strongest partials than a held one by this much, in nepers of power each on
 /// average: the pitch of the instants may waver where the tone does not.
 const BENT_LEAVES_LESS: f64 = 0.1;
@@ -146,7 +148,7 @@ impl Meter {
     /// How badly the strongest partials are explained by a pitch that holds, or that follows `bend`.
     fn misfit(&mut self, sound: Span<'_>, (f0, b): (f64, f64), times: Times, bent: bool) -> f64 {
         self.place(f0, b);
-        self.rows.keep_strongest(LANES);
+        self.rows.keep_strongest(STRONGEST);
         self.lay_out();
         self.baseband.run(sound, &self.steps, if bent { &self.bend } else { &[] });
         self.rows.misfit(&self.baseband, times, f0)

@@ -139,35 +139,41 @@ impl Rows {
         if !relaxed {
             return;
         }
+        let mut settled = false;
         for rounds in ROUNDS_BETWEEN {
-            self.settle(baseband, times, rounds);
-            self.look_again(baseband, times, f0, relaxed);
+            settled = settled || self.settle(baseband, times, rounds);
+            settled &= !self.look_again(baseband, times, f0, relaxed);
         }
-        self.settle(baseband, times, ROUNDS);
-        self.drop_strayed();
-        self.settle(baseband, times, ROUNDS_LAST);
+        settled = settled || self.settle(baseband, times, ROUNDS);
+        settled &= !self.drop_strayed();
+        if !settled {
+            self.settle(baseband, times, ROUNDS_LAST);
+        }
     }
 
-    /// Fits in what the others leave until nothing moves, or for so many rounds.
-    fn settle(&mut self, baseband: &Baseband, times: Times, rounds: usize) {
+    /// Fits in what the others leave until nothing moves, or for so many rounds; says whether nothing moves.
+    fn settle(&mut self, baseband: &Baseband, times: Times, rounds: usize) -> bool {
         for _ in 0..rounds {
             let mut moved = 0.0f64;
             for k in 0..self.order.len() {
                 moved = moved.max(self.relax(baseband, times, self.order[k]));
             }
             if moved < SETTLED {
-                break;
+                return true;
             }
         }
+        false
     }
 
-    /// Takes out for good what is no partial: it may have taken a partial's share with it.
-    fn drop_strayed(&mut self) {
+    /// Takes out for good what is no partial: it may have taken a partial's share with it. Says whether there was any.
+    fn drop_strayed(&mut self) -> bool {
+        let before = self.order.len();
         for (i, row) in self.rows.iter().enumerate().filter(|(_, r)| !r.there(self.limits)) {
             self.shares.set(i, row.expected_hz, None);
         }
         let rows = &self.rows;
         self.order.retain(|&i| rows[i].there(self.limits));
+        self.order.len() < before
     }
 
     fn begin(&mut self, baseband: &Baseband, times: Times, f0: f64) {
@@ -236,12 +242,13 @@ impl Rows {
     }
 
     /// Searches the weak partials again, close to where the strong ones let expect them: a wide search finds something in
-    /// noise alone, and a false partial far up turns the whole model.
-    fn look_again(&mut self, baseband: &Baseband, times: Times, f0: f64, relaxed: bool) {
+    /// noise alone, and a false partial far up turns the whole model. Says whether there was any.
+    fn look_again(&mut self, baseband: &Baseband, times: Times, f0: f64, relaxed: bool) -> bool {
         let limits = self.limits;
         self.points.clear();
         self.points.extend(self.rows.iter().filter(|r| r.certain(limits)).map(point));
-        let Some(model) = stiff::fit(&self.points) else { return };
+        let Some(model) = stiff::fit(&self.points) else { return false };
+        let mut searched = false;
         let sd = model.f0_sd_cents.hypot(model.scatter_cents) / CENTS_PER_NEPER;
         for k in 0..self.order.len() {
             let i = self.order[k];
@@ -249,6 +256,7 @@ impl Rows {
             if row.certain(self.limits) {
                 continue;
             }
+            searched = true;
             let n = row.n as f64;
             let hz = partial_hz(model.f0, model.b, n);
             let bend = if model.b_sd.is_finite() { 0.5 * n * n * model.b_sd } else { 0.0 };
@@ -258,6 +266,7 @@ impl Rows {
             self.enter(i, relaxed);
             self.rows[i].reach_hz += around.abs();
         }
+        searched
     }
 }
 

@@ -7,10 +7,12 @@
 
 use core::f64::consts::{PI, TAU};
 
+use pulp::{Arch, NullaryFnOnce};
 use realfft::num_complex::Complex;
 
 use super::damped::{Damped, Times};
-use crate::convert::single;
+use crate::convert::{nearest, single};
+use crate::stiff::quadrature;
 
 /// Share of another partial that is worth taking away, against the noise of the whole stretch.
 const WORTH: f64 = 0.05;
@@ -23,8 +25,8 @@ struct Source {
     /// Amplitude at time 0, free of the block's own response; 0 for none.
     a: Complex<f64>,
     /// `exp(g block / 2)` and `exp(g / (2 fs))` of its rate.
-    half_block: Complex<f64>,
-    half_sample: Complex<f64>,
+    half_block: Turn,
+    half_sample: Turn,
 }
 
 /// The exponentials of a stretch's partials.
@@ -39,6 +41,7 @@ pub(crate) struct Shares {
     im: Vec<f32>,
     sum_re: Vec<f32>,
     sum_im: Vec<f32>,
+    arch: Arch,
 }
 
 impl Shares {
@@ -54,6 +57,7 @@ impl Shares {
             im: vec![0.0; rows_max * blocks_max],
             sum_re: vec![0.0; blocks_max],
             sum_im: vec![0.0; blocks_max],
+            arch: Arch::new(),
         }
     }
 
@@ -77,8 +81,8 @@ impl Shares {
             hz,
             sigma: fit.sigma,
             a: fit.a / block_response(fit.delta_hz, fit.sigma, block_s),
-            half_block: (g * (0.5 * block_s)).exp(),
-            half_sample: (g * (0.5 / self.rate_hz)).exp(),
+            half_block: Turn::new(g * (0.5 * block_s)),
+            half_sample: Turn::new(g * (0.5 / self.rate_hz)),
         };
         let mut e = (g * self.times.first_s).exp();
         let turn = (g * block_s).exp();
@@ -110,9 +114,8 @@ impl Shares {
             if source.a.norm_sqr() <= 0.0 {
                 continue;
             }
-            let response = |half_block: Complex<f64>, half_sample: Complex<f64>| {
-                let slow = sinh_of(half_sample * own_sample.conj());
-                sinh_of(half_block * own_block.conj()) / (slow * block)
+            let response = |half_block: Turn, half_sample: Turn| {
+                half_block.sinh_against(own_block) / (half_sample.sinh_against(own_sample) * block)
             };
             let direct = if k == row {
                 Complex::default()
@@ -121,8 +124,9 @@ impl Shares {
             };
             let image =
                 source.a.conj() * response(source.half_block.conj(), source.half_sample.conj());
-            let shows = direct.norm() * self.summed(&source, source.hz - own_hz, reach_hz)
-                + image.norm() * self.summed(&source, source.hz + own_hz, reach_hz);
+            let shows = direct.norm_sqr().sqrt()
+                * self.summed(&source, source.hz - own_hz, reach_hz)
+                + image.norm_sqr().sqrt() * self.summed(&source, source.hz + own_hz, reach_hz);
             if shows > worth {
                 self.add(k, direct, image);
             }
@@ -138,21 +142,41 @@ impl Shares {
     /// How much of an exponential off by `off_hz` is left, at most, in the mean over the stretch at a frequency in reach.
     fn summed(&self, source: &Source, off_hz: f64, reach_hz: f64) -> f64 {
         let turns = off_hz * self.times.step_s;
-        let alias_hz = (turns - turns.round()) / self.times.step_s;
+        let alias_hz = (turns - nearest(turns)) / self.times.step_s;
         let span = self.times.duration(self.blocks);
         let long = 1.0 / span + source.sigma.max(0.0);
-        1.0 / (span * long.hypot(PI * (alias_hz.abs() - reach_hz).max(0.0)))
+        let away = PI * (alias_hz.abs() - reach_hz).max(0.0);
+        1.0 / (span * quadrature(long, away))
     }
 
     /// Adds `direct E + image conj(E)` of a partial to the sums.
     fn add(&mut self, k: usize, direct: Complex<f64>, image: Complex<f64>) {
         let from = k * self.blocks_max;
         let (sum, difference) = (direct + image, direct - image);
-        let (p, q) = (single(sum.re), single(-difference.im));
-        let (r, s) = (single(sum.im), single(difference.re));
-        let e = self.re[from..].iter().zip(&self.im[from..]);
-        let sums = self.sum_re[..self.blocks].iter_mut().zip(&mut self.sum_im);
-        for ((sum_re, sum_im), (re, im)) in sums.zip(e) {
+        self.arch.dispatch(Add {
+            e: (&self.re[from..][..self.blocks], &self.im[from..][..self.blocks]),
+            sums: (&mut self.sum_re[..self.blocks], &mut self.sum_im[..self.blocks]),
+            by: [sum.re, -difference.im, sum.im, difference.re].map(single),
+        });
+    }
+}
+
+/// Adds to the real sums the first two factors times real and imaginary part of an exponential, to the imaginary ones the
+/// other two.
+struct Add<'a> {
+    e: (&'a [f32], &'a [f32]),
+    sums: (&'a mut [f32], &'a mut [f32]),
+    by: [f32; 4],
+}
+
+impl NullaryFnOnce for Add<'_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn call(self) {
+        let [p, q, r, s] = self.by;
+        let e = self.e.0.iter().zip(self.e.1);
+        for ((sum_re, sum_im), (re, im)) in self.sums.0.iter_mut().zip(self.sums.1).zip(e) {
             *sum_re += p * re + q * im;
             *sum_im += r * re + s * im;
         }
@@ -169,7 +193,24 @@ pub(crate) fn block_response(delta_hz: f64, sigma: f64, block_s: f64) -> f64 {
     sinc * sinhc
 }
 
-/// Hyperbolic sine from the exponential.
-fn sinh_of(e: Complex<f64>) -> Complex<f64> {
-    (e - e.inv()) * 0.5
+/// An exponential and its inverse.
+#[derive(Debug, Clone, Copy, Default)]
+struct Turn {
+    e: Complex<f64>,
+    inverse: Complex<f64>,
+}
+
+impl Turn {
+    fn new(exponent: Complex<f64>) -> Self {
+        Self { e: exponent.exp(), inverse: (-exponent).exp() }
+    }
+
+    fn conj(self) -> Self {
+        Self { e: self.e.conj(), inverse: self.inverse.conj() }
+    }
+
+    /// Hyperbolic sine of the exponent less that of a pure rotation.
+    fn sinh_against(self, own: Complex<f64>) -> Complex<f64> {
+        (self.e * own.conj() - self.inverse * own) * 0.5
+    }
 }

@@ -7,7 +7,7 @@
 //! none is when they are no more than chance would bring.
 
 use super::Candidate;
-use crate::convert::{floor_index, number};
+use crate::convert::{floor_index, nearest, number};
 use crate::measure::lines::Line;
 use crate::reading::StrayKind;
 use crate::stiff::partial_hz;
@@ -86,14 +86,9 @@ struct Trace {
     tests: [(f64, f64); TESTED.len()],
 }
 
-/// Frequency at which a partial appears after sampling.
-pub(super) fn folded_hz(hz: f64, sample_rate_hz: f64) -> f64 {
-    turned_hz(hz, sample_rate_hz).abs()
-}
-
-/// The same, negative where it moves down as the partial moves up.
+/// Frequency at which a partial appears after sampling, negative where it moves down as the partial moves up.
 fn turned_hz(hz: f64, sample_rate_hz: f64) -> f64 {
-    hz - sample_rate_hz * (hz / sample_rate_hz).round()
+    hz - sample_rate_hz * nearest(hz / sample_rate_hz)
 }
 
 /// Names the aliases among lines sorted by frequency, and drops those that turn out to be partials in their place.
@@ -276,7 +271,7 @@ mod tests {
             Own { n, hz: n as f64 * f0, sd_hz: 1e-4, amplitude }
         });
         let line = |n: usize| {
-            let hz = folded_hz(n as f64 * f0, RATE);
+            let hz = turned_hz(n as f64 * f0, RATE).abs();
             Candidate::new(Line { hz, amplitude: 0.3 / n as f64, snr: 1e5 })
         };
         let mut lines: Vec<_> = (first..=last).map(line).collect();
@@ -299,7 +294,7 @@ mod tests {
     #[test]
     fn published_examples_fold_where_they_should() {
         for (n, hz) in [(7.0, 19_460.0), (13.0, 1_660.0)] {
-            let found = folded_hz(n * 3520.0, RATE);
+            let found = turned_hz(n * 3520.0, RATE).abs();
             assert!((found - hz).abs() < 1e-9, "partial {n} of 3520 Hz: {found}");
         }
     }

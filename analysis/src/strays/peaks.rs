@@ -2,10 +2,10 @@
 //!
 //! At a frame's resolution a high alias would be named by chance, so only partials that folded once or twice are tried.
 
-use crate::convert::{floor_index, number};
+use crate::convert::{floor_index, nearest, number};
 use crate::peaks::Peak;
 use crate::reading::{Stray, StrayKind};
-use crate::stiff::partial_hz;
+use crate::stiff::{partial_hz, partial_number};
 
 /// Most strays of a reading.
 pub(crate) const STRAYS_MAX: usize = 32;
@@ -37,52 +37,44 @@ pub(crate) fn list(
         if is_partial(peak.hz, model, bin_hz) {
             continue;
         }
-        let level_dbfs = 20.0 * peak.amplitude.log10();
+        // The amplitude takes the level's place until the strongest are known.
+        let Peak { hz: frequency_hz, amplitude: level_dbfs, .. } = *peak;
         let at = out.partition_point(|s| s.level_dbfs >= level_dbfs);
         if at < STRAYS_MAX {
             out.truncate(STRAYS_MAX - 1);
-            let kind = explain(peak.hz, model, sample_rate_hz);
-            out.insert(at, Stray { frequency_hz: peak.hz, level_dbfs, kind });
+            out.insert(at, Stray { frequency_hz, level_dbfs, kind: StrayKind::Unexplained });
         }
+    }
+    for stray in out {
+        stray.level_dbfs = 20.0 * stray.level_dbfs.log10();
+        stray.kind = explain(stray.frequency_hz, model, sample_rate_hz);
     }
 }
 
 fn is_partial(hz: f64, (f0, b): (f64, f64), bin_hz: f64) -> bool {
     let wide = hz * OWN_CENTS / crate::stiff::CENTS_PER_NEPER;
     let own = OWN_BINS * bin_hz + wide.min(OWN_OF_F0 * f0);
-    let guess = (hz / f0).round();
-    // Stretch puts a partial of lower number where the harmonic series has this one.
-    let low = (hz / f0 / (1.0 + b * guess * guess).max(0.1).sqrt()).floor() - 1.0;
-    let mut n = low.max(1.0);
-    while n <= guess + 1.0 {
-        if (partial_hz(f0, b, n) - hz).abs() < own {
-            return true;
-        }
-        n += 1.0;
-    }
-    false
+    let below = partial_number(f0, b, hz).floor().max(1.0);
+    [below, below + 1.0].into_iter().any(|n| (partial_hz(f0, b, n) - hz).abs() < own)
 }
 
 fn explain(hz: f64, (f0, b): (f64, f64), sample_rate_hz: f64) -> StrayKind {
     for base_hz in [50.0, 60.0] {
-        let multiple = (hz / base_hz).round().max(1.0);
+        let multiple = nearest(hz / base_hz).max(1.0);
         if multiple <= MAINS_MULTIPLES && (hz - multiple * base_hz).abs() < MATCH_HZ {
             return StrayKind::Mains { base_hz, multiple: number(floor_index(multiple)) };
         }
     }
-    let mut n = (0.5 * sample_rate_hz / f0 / (1.0 + b * 1e4).sqrt()).floor().max(1.0);
-    loop {
+    for unfolded_hz in [sample_rate_hz - hz, sample_rate_hz + hz] {
+        let n = nearest(partial_number(f0, b, unfolded_hz)).max(1.0);
         let partial = partial_hz(f0, b, n);
-        if partial > FOLDED_TO * sample_rate_hz {
-            return StrayKind::Unexplained;
-        }
-        let lies = super::aliases::folded_hz(partial, sample_rate_hz);
-        if partial > 0.5 * sample_rate_hz && (lies - hz).abs() < MATCH_HZ {
+        let folded = partial > 0.5 * sample_rate_hz && partial <= FOLDED_TO * sample_rate_hz;
+        if folded && (partial - unfolded_hz).abs() < MATCH_HZ {
             let folds = number(floor_index(2.0 * partial / sample_rate_hz));
             return StrayKind::Alias { partial: number(floor_index(n)), folds };
         }
-        n += 1.0;
     }
+    StrayKind::Unexplained
 }
 
 #[cfg(test)]

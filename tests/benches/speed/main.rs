@@ -30,13 +30,13 @@ fn main() -> Result<(), Box<dyn Error>> {
     against_sample_rate()
 }
 
-fn engine(samples: &[f32], settings: &Settings) -> Result<(), Box<dyn Error>> {
+fn engine(samples: &[f32], settings: &Settings) -> Result<Analyzer, Box<dyn Error>> {
     let mut analyzer = Analyzer::new(settings)?;
     for block in samples.chunks(BLOCK) {
         analyzer.push(block, &mut Ignore);
     }
     analyzer.finish(&mut Ignore);
-    Ok(())
+    Ok(analyzer)
 }
 
 fn against_transforms_and_others() -> Result<(), Box<dyn Error>> {
@@ -45,7 +45,7 @@ fn against_transforms_and_others() -> Result<(), Box<dyn Error>> {
     let wide = sound::notes(rate, 10.0);
     let samples = plumbtone_analysis::signals::narrow(&wide);
     let seconds = samples.len() as f64 / rate;
-    let mut bare = transforms::Bare::new(rate);
+    let mut bare = transforms::Bare::new(engine(&samples, &settings)?.transforms());
     let names = [
         "the whole engine, 40 partials",
         "its bare transforms",
@@ -53,8 +53,8 @@ fn against_transforms_and_others() -> Result<(), Box<dyn Error>> {
         "crate pyin",
     ];
     let tasks: [Task<'_>; 4] = [
-        Box::new(|| engine(&samples, &settings)),
-        Box::new(|| bare.run(seconds)),
+        Box::new(|| engine(&samples, &settings).map(drop)),
+        Box::new(|| bare.run()),
         Box::new(|| {
             std::hint::black_box(mcleod(&wide, 48_000));
             Ok(())
@@ -83,7 +83,7 @@ fn against_partials() -> Result<(), Box<dyn Error>> {
     let counts = [8, 16, 32, 40, 64, 128];
     let settings = counts.map(|partials| Settings { partials, ..Settings::new(rate) });
     let tasks = settings.each_ref().map(|settings| {
-        let task: Task<'_> = Box::new(|| engine(&samples, settings));
+        let task: Task<'_> = Box::new(|| engine(&samples, settings).map(drop));
         task
     });
     let times = shortest_times(tasks, ROUNDS)?;
@@ -100,7 +100,7 @@ fn against_sample_rate() -> Result<(), Box<dyn Error>> {
     let settings = rates.map(Settings::new);
     let mut tasks: Vec<Task<'_>> = Vec::new();
     for (samples, settings) in sounds.iter().zip(&settings) {
-        tasks.push(Box::new(|| engine(samples, settings)));
+        tasks.push(Box::new(|| engine(samples, settings).map(drop)));
     }
     let times = shortest_times(tasks, ROUNDS)?;
     println!(
