@@ -159,7 +159,6 @@ impl Delivery {
 
     /// A reading came: silence goes on looking like silence, but for its time.
     fn show_reading(&mut self, reading: &Reading) {
-        self.changed = true;
         let same = reading.state == State::Silent && self.readout.reading.state == State::Silent;
         self.silent_readings = if same { self.silent_readings + 1 } else { 0 };
         self.visible |= self.silent_readings.is_multiple_of(SILENT_READINGS);
@@ -206,10 +205,11 @@ impl Sink for Delivery {
             trail.next()
         });
         self.readout.weigh(reading);
-        self.show_reading(reading);
+        self.changed = true;
         if self.frozen && self.readout.measured {
             return;
         }
+        self.show_reading(reading);
         self.readout.take(reading, session);
         self.readout.trail_end = trail_end;
     }

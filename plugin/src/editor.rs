@@ -123,6 +123,8 @@ impl NiceEguiApp for Window {
             unsound: &unsound,
             time_s: since.elapsed().as_secs_f64(),
         };
+        // The toolkit's own shortcuts zoom too.
+        screen.set_zoom(ui.ctx().zoom_factor());
         let (theme, zoom) = (screen.theme(), screen.zoom());
         for gesture in screen.show(ui, &shown) {
             gesture.apply(&self.parameters, &context.param_setter());

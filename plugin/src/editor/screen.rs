@@ -80,6 +80,11 @@ impl Screen {
         self.zoom
     }
 
+    /// Takes a zoom that was set elsewhere.
+    pub fn set_zoom(&mut self, zoom: f32) {
+        self.zoom = zoom;
+    }
+
     /// Pins a partial by its number, or none.
     pub fn pin(&mut self, partial: Option<u32>) {
         self.plumb.pinned = partial;

@@ -111,25 +111,21 @@ impl Scene {
         reading.level_dbfs = level(&reading.partials);
     }
 
-    /// What the editor is shown.
+    /// Draws a frame.
     pub(crate) fn frame(&mut self, ui: &mut egui::Ui) {
-        let shown = Shown {
-            readout: &self.readout,
-            trail: &self.trail,
-            parameters: &self.parameters,
-            position: self.readout.reading.centre + 4_800,
-            lost_samples: self.lost_samples,
-            lost_notes: 0,
-            unsound: &self.unsound,
-            time_s: self.time_s,
-        };
-        let gestures = self.screen.show(ui, &shown);
+        let mut screen = core::mem::take(&mut self.screen);
+        let gestures = screen.show(ui, &self.shown());
+        self.screen = screen;
         self.gestures.extend(gestures);
     }
 
     /// The picture as SVG.
     pub(crate) fn svg(&self, size: Vec2) -> String {
-        let shown = Shown {
+        self.screen.svg(size, &self.shown())
+    }
+
+    fn shown(&self) -> Shown<'_> {
+        Shown {
             readout: &self.readout,
             trail: &self.trail,
             parameters: &self.parameters,
@@ -138,8 +134,7 @@ impl Scene {
             lost_notes: 0,
             unsound: &self.unsound,
             time_s: self.time_s,
-        };
-        self.screen.svg(size, &shown)
+        }
     }
 
     /// An editor of this size in points that shows the scene.
