@@ -12,6 +12,7 @@ use std::time::Instant;
 
 use egui::{Context, Pos2, RawInput, Rect, Vec2, vec2};
 use egui_kittest::Harness;
+use egui_kittest::kittest::Queryable as _;
 use plumbtone_analysis::{Analyzer, Reading, Settings, Sink, State};
 use plumbtone_plugin::editor::{Theme, install_fonts};
 use plumbtone_plugin::readout::Condition;
@@ -68,6 +69,11 @@ fn fixed(folder: &Path) -> Done {
         harness.step();
     }
     keep(&mut harness, &folder.join("pinned.png"))?;
+    let mut settings = dark().open(SIZE, 1.0);
+    settings.run_steps(2);
+    settings.get_by_label("Settings").click();
+    settings.run_steps(3);
+    keep(&mut settings, &folder.join("settings.png"))?;
     for (state, name) in
         [(State::Several, "several"), (State::Unpitched, "unpitched"), (State::Silent, "silent")]
     {

@@ -133,7 +133,7 @@ fn pitched(
     figures: &Figures,
     palette: &Palette,
 ) {
-    let note = nearest.note.to_string().replace('#', "\u{266f}");
+    let note = words::note(nearest.note);
     let place = (pos2(at.x, at.y + HEIGHT / 2.0), Align2::LEFT_CENTER);
     let response = ink::text(ui, place, &note, bold(NOTE), palette.ink);
     let played = shown.readout.played.map(|key| format!(" Played: {key}.")).unwrap_or_default();
@@ -146,6 +146,7 @@ fn pitched(
     let lower = |x| (pos2(x, at.y + LOWER), Align2::LEFT_CENTER);
     let cents = format!("{} ct", figures.cents.text(true));
     let cents = ink::text(ui, upper(x), &cents, bold(LARGE), palette.pitch);
+    let cents_right = cents.rect.right();
     cents.on_hover_text("Cents off that note: a hundredth of a semitone each.");
     let sd = match pitch.f0_sd_cents {
         sd if sd < LEAST_SD => "\u{b1} < 0.01".to_owned(),
@@ -154,7 +155,7 @@ fn pitched(
     ink::text(ui, lower(x), &sd, sans(TEXT), palette.dim).on_hover_text(
         "One standard deviation of the cents: two of them hold 95 % of what noise does.",
     );
-    let x = x + 118.0;
+    let x = (x + 118.0).max(cents_right + 16.0);
     let hz = format!("{} Hz", figures.hz.text(false));
     ink::text(ui, upper(x), &hz, sans(LARGE), palette.ink)
         .on_hover_text(format!("Fundamental, {:.4} Hz in this reading.", pitch.f0_hz));
@@ -188,7 +189,7 @@ fn coming(shown: &Shown<'_>) -> Option<String> {
         live.pitch.filter(|pitch| newer && pitch.confidence >= crate::trail::CONFIDENCE_SHOWN)?;
     let measuring = words::condition(&shown.readout.condition).is_none();
     let nearest = shown.readout.tuning.nearest(pitch.f0_hz).filter(|_| measuring)?;
-    Some(format!("{}, about {} ct", nearest.note, steady::signed(nearest.cents, 0)))
+    Some(format!("{}, about {} ct", words::note(nearest.note), steady::signed(nearest.cents, 0)))
 }
 
 fn state_line(

@@ -170,7 +170,8 @@ impl Plumb {
         let zero = self.levels.zero_dbfs(&reading.partials);
         let level = |dbfs: f64| dbfs - zero;
         let done = rows::show(ui, columns, (&reading.partials, self.pinned), level, palette);
-        rows::curve(ui, columns, reading.stretch, pitch, palette);
+        let highest = reading.partials.iter().map(|p| p.number).max().unwrap_or(0);
+        rows::curve(ui, columns, reading.stretch, highest, palette);
         let lane = strays::Lane {
             rows: columns.rows,
             diamonds: columns.levels.x.min - LANE / 2.0,

@@ -1,5 +1,6 @@
 //! What the editor says in words.
 
+use plumbtone_analysis::tuning::NoteName;
 use plumbtone_analysis::{Reading, State, Stray, StrayKind};
 
 use super::steady::{NONE, signed};
@@ -70,6 +71,13 @@ pub(crate) fn lasting(seconds: f64) -> String {
     }
 }
 
+/// A note with its accidental as print has it.
+pub(crate) fn note(note: NoteName) -> String {
+    let name = note.to_string();
+    let (letter, rest) = name.split_at(1);
+    format!("{letter}{}", rest.replace('#', "\u{266f}").replace('b', "\u{266d}"))
+}
+
 /// A stray's explanation.
 pub(crate) fn stray(stray: &Stray) -> String {
     match stray.kind {
@@ -120,6 +128,12 @@ pub(crate) fn hertz(hz: f64, decimals: usize) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn accidentals_are_those_of_print() {
+        let names = [57, 58, 61, 71].map(|midi| note(NoteName::from_midi(midi)));
+        assert_eq!(names, ["A3", "B\u{266d}3", "C\u{266f}4", "B4"]);
+    }
 
     #[test]
     fn frequencies_and_times_read_well() {

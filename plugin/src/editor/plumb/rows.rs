@@ -4,7 +4,7 @@ use egui::{
     Align2, Color32, CornerRadius, Rangef, Rect, Response, Role, Sense, Shape, Stroke, StrokeKind,
     Ui, WidgetInfo, pos2,
 };
-use plumbtone_analysis::{Partial, Pitch, Stretch};
+use plumbtone_analysis::{Partial, Stretch};
 
 use super::super::ink;
 use super::super::steady::signed;
@@ -223,18 +223,15 @@ fn figures_every(row: f32) -> u32 {
         .unwrap_or(20)
 }
 
-/// The stretch curve: where a stiff string's partials lie.
+/// The stretch curve: where a stiff string's partials lie, up to a little above the highest one found.
 pub(crate) fn curve(
     ui: &Ui,
     columns: &Columns,
     stretch: Option<Stretch>,
-    pitch: &Pitch,
+    highest: u32,
     palette: &Palette,
 ) {
     let Some(Stretch { b, .. }) = stretch.filter(|stretch| stretch.b.is_finite()) else { return };
-    if !(pitch.f0_hz > 0.0) {
-        return;
-    }
     let axis = &columns.rows;
     let rows = columns.whole.with_min_y(axis.y.min).with_max_y(axis.y.max);
     let mut y = axis.y.max;
@@ -242,7 +239,7 @@ pub(crate) fn curve(
     while y >= axis.y.min {
         let n = f64::from(axis.first - 0.75 + (axis.y.max - y) / axis.row());
         let cents = 600.0 * (1.0 + b * n * n).max(1e-9).log2();
-        if n >= 0.0 && columns.cents.holds(cents) {
+        if n >= 0.0 && n <= f64::from(highest) + 0.7 && columns.cents.holds(cents) {
             points.push(pos2(columns.cents.at(cents), y));
         }
         y -= CURVE_STEP;
