@@ -53,3 +53,13 @@ pub(crate) fn number(n: usize) -> u32 {
 pub(crate) fn index(position: u64) -> usize {
     usize::try_from(position).unwrap_or(usize::MAX)
 }
+
+/// Nearest sample position to a non-negative number; saturates, 0 for NaN.
+#[expect(
+    clippy::cast_possible_truncation,
+    clippy::cast_sign_loss,
+    reason = "saturates by definition of `as`"
+)]
+pub(crate) fn nearest_position(x: f64) -> u64 {
+    x.round() as u64
+}

@@ -15,17 +15,22 @@
 
 mod analyzer;
 mod average;
+pub mod check;
+pub mod compare;
 mod convert;
 mod descriptors;
 mod fundamental;
 mod history;
 mod instant;
+pub mod keys;
+pub mod masking;
 mod measure;
 mod note;
 mod notes;
 mod onset;
 mod peaks;
 mod reading;
+pub mod recipe;
 mod refine;
 mod segment;
 mod settings;
@@ -37,11 +42,12 @@ mod stiff;
 mod strays;
 mod track;
 pub mod tuning;
+pub mod waveform;
 pub mod window;
 
 pub use analyzer::{Analyzer, Sink};
 pub use descriptors::Descriptors;
-pub use note::{Note, NotePartial};
+pub use note::{Cluster, Note, NotePartial};
 pub use reading::{Gap, GapReason, Partial, Pitch, Reading, State, Stray, StrayKind, Stretch};
 pub use settings::{Settings, SettingsError};
 pub use spectrum::TransformRuns;

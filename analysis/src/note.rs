@@ -3,6 +3,17 @@
 use crate::descriptors::Descriptors;
 use crate::reading::{Stray, Stretch};
 
+/// The lines that a partial is made of, when there are several.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Cluster {
+    /// How many, from 26 dB under the strongest on.
+    pub lines: u32,
+    /// From the lowest to the highest, in cents.
+    pub spread_cents: f64,
+    /// Rate at which the two strongest beat, in Hz.
+    pub beat_hz: f64,
+}
+
 /// One partial of a note.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct NotePartial {
@@ -32,6 +43,8 @@ pub struct NotePartial {
     pub decay_sd: f64,
     /// Mean power over the noise within a bandwidth of 1 Hz (an observation of one second), in dB.
     pub snr_db: f64,
+    /// What it is made of, when it is no single line: the figures above then stand for all of it together.
+    pub cluster: Option<Cluster>,
 }
 
 /// One sounding note.

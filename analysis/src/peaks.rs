@@ -8,6 +8,7 @@ use core::ops::Range;
 use pulp::{Arch, NullaryFnOnce};
 
 use crate::convert::nearest_index;
+use crate::masking::bark;
 use crate::spectrum::{Frame, near_kernel};
 use crate::stiff::DB_PER_NEPER;
 
@@ -244,9 +245,4 @@ pub(crate) fn weigh(peaks: &mut [Peak]) {
         }
         mask.0 = mask.0.max(level - MASK_DB);
     }
-}
-
-/// Critical-band rate (H. Traunmueller, JASA 88(1):97-100, 1990).
-fn bark(hz: f64) -> f64 {
-    26.81 * hz / (1960.0 + hz) - 0.53
 }

@@ -1,5 +1,13 @@
 //! What the user can say on the command line.
 
+mod drift;
+mod keys;
+mod recipe;
+
+pub(crate) use drift::{Drift, Limits, ReferenceChoice};
+pub(crate) use keys::Keys;
+pub(crate) use recipe::Recipe;
+
 use crate::input::Channel;
 use clap::builder::{PossibleValuesParser, TypedValueParser};
 use clap::{Args as ClapArgs, Parser, Subcommand};
@@ -8,9 +16,11 @@ use std::path::PathBuf;
 
 const EXIT_STATUS: &str = "\
 Exit status:
-  0  every file was measured
+  0  every file was measured (drift: and is within its tolerance)
+  1  drift only: at least one file is outside its tolerance
   2  bad usage, a file that cannot be read, or one without a measurable pitch;
-     the other files are measured all the same";
+     the other files are measured all the same
+  130  interrupted";
 
 const MEASURE_DETAILS: &str = "\
 Reads WAV (8, 16, 24, 32 bit, float, RF64), AIFF, AIFF-C and FLAC, at sample rates from 8 to 384 kHz.
@@ -42,6 +52,12 @@ pub(crate) struct Args {
 pub(crate) enum Command {
     /// Measure the notes of sound files: fundamental, partials, stretch, strays
     Measure(Measure),
+    /// Check whether the pitch of sound files holds: within a tolerance of a reference, and where not
+    Drift(Drift),
+    /// Write down what a sound is made of at one instant: as a list, as a single cycle, as sound
+    Recipe(Recipe),
+    /// Measure note by note how an instrument or a patch behaves over its keys
+    Keys(Keys),
 }
 
 #[derive(Debug, ClapArgs)]
@@ -84,6 +100,9 @@ pub(crate) struct What {
     /// Temperament that names the notes; A has the concert pitch in each
     #[arg(long, value_name = "NAME", default_value = "equal", value_parser = temperament_names())]
     pub(crate) temperament: Temperament,
+    /// Time over which the partials of a reading are averaged, where a command wants another than the engine's.
+    #[arg(skip)]
+    pub(crate) integration_s: Option<f64>,
 }
 
 /// Where the figures go.

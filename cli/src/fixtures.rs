@@ -7,7 +7,7 @@ use plumbtone_analysis::{
     Descriptors, Note, NotePartial, Partial, Pitch, Reading, State, Stray, StrayKind, Stretch,
 };
 
-pub(crate) const TIMEBASE: Timebase = Timebase { offset: 0, sample_rate_hz: 48_000.0 };
+pub(crate) const TIMEBASE: Timebase = Timebase { offset: 0, sample_rate_hz: 48_000.0, hop: 480 };
 
 /// A stiff string a little above A3 with that many partials, and strays.
 pub(crate) fn note(partials: u32, strays: Vec<Stray>) -> Note {
@@ -125,5 +125,6 @@ fn partial(number: u32, f0_hz: f64, b: f64) -> NotePartial {
         decay_db_per_s: 3.0 + n,
         decay_sd: 0.05,
         snr_db: 70.0 - n,
+        cluster: None,
     }
 }

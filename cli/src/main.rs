@@ -8,13 +8,18 @@
 
 mod args;
 mod convert;
+mod drift;
+mod files;
 #[cfg(test)]
 mod fixtures;
 mod input;
+mod keys;
 mod measure;
+mod measure_job;
 mod names;
 mod output;
 mod picture;
+mod recipe;
 mod run;
 
 use clap::Parser as _;
@@ -23,6 +28,9 @@ use std::process::ExitCode;
 fn main() -> ExitCode {
     let args = args::Args::parse();
     match args.command {
-        args::Command::Measure(measure) => run::measure_files(&measure),
+        args::Command::Measure(measure) => measure_job::measure_files(&measure),
+        args::Command::Drift(drift) => drift::check_files(drift),
+        args::Command::Recipe(recipe) => recipe::write_recipes(recipe),
+        args::Command::Keys(keys) => keys::write_sheet(keys),
     }
 }

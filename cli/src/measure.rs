@@ -2,7 +2,9 @@
 
 use crate::args::What;
 use crate::convert;
+use crate::drift::record::DriftRecord;
 use crate::input::{Block, Input};
+use crate::keys::record::KeyRecord;
 use crate::output::Report;
 use crate::output::records::NoteRecord;
 use crate::output::spool::Spool;
@@ -19,6 +21,8 @@ pub(crate) struct Timebase {
     pub(crate) offset: u64,
     /// Sample rate in Hz.
     pub(crate) sample_rate_hz: f64,
+    /// Samples between two readings.
+    pub(crate) hop: usize,
 }
 
 impl Timebase {
@@ -51,8 +55,10 @@ pub(crate) struct Measured {
     pub(crate) remarks: Vec<String>,
     /// What was asked for and could not be had.
     pub(crate) unmet: Vec<String>,
-    /// Whether a pitch was found anywhere.
-    pub(crate) pitched: bool,
+    /// What a drift check came to, where one was made.
+    pub(crate) checked: Option<DriftRecord>,
+    /// The rows of a key sheet.
+    pub(crate) keys: Vec<KeyRecord>,
 }
 
 /// Measures a file into the reports. `progress` hears from time to time which share of the file has been read.
@@ -73,7 +79,7 @@ pub(crate) fn measure(
     if end <= start {
         bail!("has nothing between the start and end asked for");
     }
-    let timebase = Timebase { offset: start, sample_rate_hz };
+    let timebase = Timebase { offset: start, sample_rate_hz, hop: analyzer.hop() };
     let mut fan =
         Fan::new(reports(timebase)?, timebase, Tuning::new(what.concert_pitch, what.temperament)?);
 
@@ -110,9 +116,7 @@ pub(crate) fn measure(
     };
     let mut remarks = input.remarks(read_to_end);
     remarks.extend(fan.remarks());
-    let pitched = fan.pitched || fan.notes > 0;
-    let (text, unmet) = fan.finish(&facts)?;
-    Ok(Measured { text, remarks, unmet, pitched })
+    fan.finish(&facts, remarks)
 }
 
 fn settings(what: &What, sample_rate_hz: f64) -> Settings {
@@ -121,6 +125,7 @@ fn settings(what: &What, sample_rate_hz: f64) -> Settings {
         lowest_hz: what.lowest,
         highest_hz: what.highest.unwrap_or(defaults.highest_hz),
         partials: usize::from(what.partials),
+        integration_s: what.integration_s.unwrap_or(defaults.integration_s),
         ..defaults
     }
 }
@@ -143,7 +148,9 @@ fn feed(
     let to = span.end.clamp(from, position);
     match block {
         Block::Samples => {
-            analyzer.push(&samples[convert::index(from - start)..convert::index(to - start)], sink);
+            let samples = &samples[convert::index(from - start)..convert::index(to - start)];
+            sink.samples(from - span.start, samples);
+            analyzer.push(samples, sink);
         }
         Block::Lost(_) if to > from => analyzer.skip(to - from, sink),
         Block::Lost(_) => {}
@@ -165,7 +172,7 @@ struct Fan {
     notes: u64,
     strays_left_out: usize,
     non_finite: u64,
-    /// Whether a pitch was claimed at any instant.
+    /// Whether a pitch was claimed at any instant, or a note found.
     pitched: bool,
 }
 
@@ -190,6 +197,10 @@ impl Fan {
         }
     }
 
+    fn samples(&mut self, from: u64, samples: &[f32]) {
+        self.reports.iter_mut().for_each(|report| report.samples(from, samples));
+    }
+
     fn failure(&mut self) -> Result<()> {
         std::mem::replace(&mut self.failed, Ok(()))
     }
@@ -210,15 +221,21 @@ impl Fan {
         remarks
     }
 
-    fn finish(self, facts: &FileFacts) -> Result<(Option<Spool>, Vec<String>)> {
-        let mut text = None;
-        let mut unmet = Vec::new();
+    fn finish(self, facts: &FileFacts, remarks: Vec<String>) -> Result<Measured> {
+        let mut measured =
+            Measured { text: None, remarks, unmet: Vec::new(), checked: None, keys: Vec::new() };
         for report in self.reports {
             let ending = report.finish(facts)?;
-            text = ending.text.or(text);
-            unmet.extend(ending.unmet);
+            measured.text = ending.text.or(measured.text);
+            measured.unmet.extend(ending.unmet);
+            measured.checked = ending.checked.or(measured.checked);
+            measured.keys.extend(ending.keys);
         }
-        Ok((text, unmet))
+        // A check says itself why it came to no verdict.
+        if measured.checked.is_none() && !self.pitched {
+            measured.unmet.push("nothing measurable: no single pitch was found".to_owned());
+        }
+        Ok(measured)
     }
 }
 
@@ -230,7 +247,9 @@ impl Sink for Fan {
 
     fn note(&mut self, note: &Note) {
         self.notes += 1;
+        self.pitched = true;
         self.strays_left_out += note.strays_left_out;
+        self.reports.iter_mut().for_each(|report| report.engine_note(note));
         let record = NoteRecord::new(note, self.timebase, &self.tuning);
         self.each(|report| report.note(&record));
     }

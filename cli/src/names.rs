@@ -1,7 +1,21 @@
 //! Names for the files written beside each other, one per input.
 
 use std::collections::HashSet;
-use std::path::Path;
+use std::path::{Path, PathBuf};
+
+/// Where the picture of the input with an index goes: to the name given for one input; with the input's name in it for
+/// several.
+pub(crate) fn picture_place(picture: &Path, names: &[String], index: usize) -> PathBuf {
+    if names.len() == 1 {
+        return picture.to_owned();
+    }
+    let mut name = picture.file_stem().unwrap_or_default().to_owned();
+    name.push("-");
+    name.push(&names[index]);
+    name.push(".");
+    name.push(picture.extension().unwrap_or_default());
+    picture.with_file_name(name)
+}
 
 /// A name for each input: its stem, with a number where an earlier input has that name already. Names that differ only
 /// in case count as the same, for file systems that think so.

@@ -7,11 +7,13 @@ pub(crate) mod spool;
 pub(crate) mod table;
 pub(crate) mod words;
 
+use crate::drift::record::DriftRecord;
+use crate::keys::record::KeyRecord;
 use crate::measure::FileFacts;
 use anyhow::{Context as _, Result};
-use plumbtone_analysis::{Gap, Reading};
+use plumbtone_analysis::{Gap, Note, Reading};
 use records::NoteRecord;
-use spool::Spool;
+pub(crate) use spool::Spool;
 use std::path::Path;
 use tempfile::NamedTempFile;
 
@@ -24,6 +26,12 @@ pub(crate) trait Report {
     fn reading(&mut self, _reading: &Reading) -> Result<()> {
         Ok(())
     }
+
+    /// Takes in samples on their way to the engine, from a position of its stream on, before what they lead to.
+    fn samples(&mut self, _from: u64, _samples: &[f32]) {}
+
+    /// Takes in the next note as the engine delivers it.
+    fn engine_note(&mut self, _note: &Note) {}
 
     /// Takes in the next note.
     fn note(&mut self, _note: &NoteRecord) -> Result<()> {
@@ -46,15 +54,19 @@ pub(crate) struct Ending {
     pub(crate) text: Option<Spool>,
     /// What was asked for and could not be had.
     pub(crate) unmet: Option<String>,
+    /// What a drift check came to.
+    pub(crate) checked: Option<DriftRecord>,
+    /// The rows of a key sheet.
+    pub(crate) keys: Vec<KeyRecord>,
 }
 
 impl Ending {
     pub(crate) fn print(text: Spool) -> Self {
-        Self { text: Some(text), unmet: None }
+        Self { text: Some(text), ..Self::default() }
     }
 
     pub(crate) fn unmet(what: String) -> Self {
-        Self { text: None, unmet: Some(what) }
+        Self { unmet: Some(what), ..Self::default() }
     }
 }
 

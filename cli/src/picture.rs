@@ -3,6 +3,7 @@
 
 mod axis;
 mod canvas;
+pub(crate) mod drift;
 mod head;
 mod history;
 mod levels;
@@ -151,7 +152,7 @@ mod tests {
         check_texts("many digits in the head", &picture(&high, &long));
     }
 
-    fn check_texts(what: &str, svg: &str) {
+    pub(super) fn check_texts(what: &str, svg: &str) {
         // Texts are laid out with the fonts brought along; without one they would be missing here.
         let tree = raster::tree(svg).unwrap();
         let mut texts = Vec::new();

@@ -1,14 +1,9 @@
 //! Many files over all processor cores, printed in the order given.
 
-use crate::args::{Measure, Outputs};
+use crate::args::What;
 use crate::convert;
 use crate::measure::{Measured, Timebase, measure};
-use crate::names::distinct_names;
 use crate::output::Report;
-use crate::output::csv::CsvReport;
-use crate::output::json::JsonReport;
-use crate::output::table::TableReport;
-use crate::picture::PictureReport;
 use anyhow::{Context as _, Result, anyhow, bail};
 use indicatif::{ProgressBar, ProgressStyle};
 use plumbtone_analysis::Settings;
@@ -17,43 +12,61 @@ use std::collections::BTreeMap;
 use std::io::ErrorKind;
 use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::path::{Path, PathBuf};
-use std::process::ExitCode;
-use std::sync::{Condvar, Mutex, MutexGuard, PoisonError, mpsc};
+use std::sync::{Arc, Condvar, Mutex, MutexGuard, PoisonError, mpsc};
 use std::thread;
 
 /// Exit status for bad input, bad usage or nothing measurable; the argument parser has the same.
-const EXIT_BAD: u8 = 2;
+pub(crate) const EXIT_BAD: u8 = 2;
+/// Exit status after an interrupt, as shells count it.
+pub(crate) const EXIT_INTERRUPTED: u8 = 130;
 /// How far measuring runs ahead of printing, in files, since results wait in memory and open temporary files.
 const AHEAD_FILES: usize = 64;
 
-/// Measures every file and prints what comes of it.
-pub(crate) fn measure_files(job: &Measure) -> ExitCode {
-    match try_measure_files(job) {
-        Ok(true) => ExitCode::SUCCESS,
-        Ok(false) => ExitCode::from(EXIT_BAD),
-        Err(error) => {
-            eprintln!("plumbtone: {error:#}");
-            ExitCode::from(EXIT_BAD)
-        }
-    }
+/// What is to be done with many files.
+pub(crate) trait Job: Sync {
+    /// The files, in the order of printing.
+    fn files(&self) -> &[PathBuf];
+
+    /// What is measured, and how.
+    fn what(&self) -> &What;
+
+    /// The reports that take in what the engine says of the file with an index.
+    fn reports(&self, index: usize, timebase: Timebase) -> Result<Vec<Box<dyn Report>>>;
 }
 
-/// True when every file was measured and had a pitch somewhere.
-fn try_measure_files(job: &Measure) -> Result<bool> {
-    check(job)?;
-    let outputs = FileOutputs::new(job)?;
-    let bar = progress_bar(&job.files);
-    let queue = Queue::default();
-    let workers = thread::available_parallelism().map_or(1, usize::from).min(job.files.len());
+/// How a batch ended.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(crate) enum Ended {
+    /// All that was asked for is there.
+    Whole,
+    /// Something of some file could not be had.
+    Lacking,
+    /// The user stopped it.
+    Interrupted,
+}
+
+/// Runs every file through the engine and prints what comes of it; `done` hears of each as it is printed.
+///
+/// # Errors
+/// What concerns no single file.
+pub(crate) fn run(
+    job: &impl Job,
+    mut done: impl FnMut(&Path, &Result<Measured>) + Send,
+) -> Result<Ended> {
+    check(job.what())?;
+    let bar = progress_bar(job.files());
+    let queue = Arc::new(Queue::default());
+    stop_on_interrupt(&queue)?;
+    let workers = thread::available_parallelism().map_or(1, usize::from).min(job.files().len());
     thread::scope(|scope| {
         let (sender, results) = mpsc::channel();
         for worker in 0..workers {
-            let (sender, queue, outputs, bar) = (sender.clone(), &queue, &outputs, &bar);
+            let (sender, queue, bar) = (sender.clone(), &*queue, &bar);
             thread::Builder::new()
                 .name(format!("measure {worker}"))
                 .spawn_scoped(scope, move || {
-                    while let Some(index) = queue.take(job.files.len()) {
-                        let result = measure_one(job, index, outputs, queue, bar);
+                    while let Some(index) = queue.take(job.files().len()) {
+                        let result = measure_one(job, index, queue, bar);
                         if sender.send((index, result)).is_err() {
                             break;
                         }
@@ -63,33 +76,38 @@ fn try_measure_files(job: &Measure) -> Result<bool> {
                 .inspect_err(|_| queue.stop())?;
         }
         drop(sender);
-        let all_good = print_in_order(job, &results, &queue, &bar);
+        let all_good = print_in_order(job, &results, &queue, &bar, &mut done);
+        let interrupted = queue.stopped();
         queue.stop();
         bar.finish_and_clear();
-        all_good
+        Ok(match all_good? {
+            _ if interrupted => Ended::Interrupted,
+            true => Ended::Whole,
+            false => Ended::Lacking,
+        })
     })
 }
 
+/// Lets an interrupt (Ctrl-C) end the work instead of the process, so that no half-written file stays behind.
+fn stop_on_interrupt(queue: &Arc<Queue>) -> Result<()> {
+    let queue = Arc::clone(queue);
+    ctrlc::set_handler(move || queue.stop()).context("cannot listen for interrupts")
+}
+
 /// Checks what does not depend on any file, so that it is said once.
-fn check(job: &Measure) -> Result<()> {
-    Tuning::new(job.what.concert_pitch, job.what.temperament)?;
+fn check(what: &What) -> Result<()> {
+    Tuning::new(what.concert_pitch, what.temperament)?;
     let any_rate = Settings::new(48_000.0);
-    let highest_hz = job.what.highest.unwrap_or(any_rate.highest_hz);
-    Settings { lowest_hz: job.what.lowest, highest_hz, ..any_rate }.validate()?;
-    if job.what.end.is_some_and(|end| end <= job.what.start) {
+    let highest_hz = what.highest.unwrap_or(any_rate.highest_hz);
+    Settings { lowest_hz: what.lowest, highest_hz, ..any_rate }.validate()?;
+    if what.end.is_some_and(|end| end <= what.start) {
         bail!("--end must lie after --start");
     }
     Ok(())
 }
 
-fn measure_one(
-    job: &Measure,
-    index: usize,
-    outputs: &FileOutputs<'_>,
-    queue: &Queue,
-    bar: &ProgressBar,
-) -> Result<Measured> {
-    let path = &job.files[index];
+fn measure_one(job: &impl Job, index: usize, queue: &Queue, bar: &ProgressBar) -> Result<Measured> {
+    let path = &job.files()[index];
     let bytes = size_of(path);
     let mut shown = 0;
     let progress = |share: f64| {
@@ -100,7 +118,7 @@ fn measure_one(
     };
     // A decoder or the engine that panics on one file must not take the others along.
     let result = catch_unwind(AssertUnwindSafe(|| {
-        measure(path, &job.what, |timebase| outputs.reports(index, timebase), progress)
+        measure(path, job.what(), |timebase| job.reports(index, timebase), progress)
     }));
     bar.inc(bytes - shown);
     result.unwrap_or_else(|_| {
@@ -110,10 +128,11 @@ fn measure_one(
 
 /// Prints results as soon as their turn has come. False when a file failed or had nothing measurable.
 fn print_in_order(
-    job: &Measure,
+    job: &impl Job,
     results: &mpsc::Receiver<(usize, Result<Measured>)>,
     queue: &Queue,
     bar: &ProgressBar,
+    done: &mut impl FnMut(&Path, &Result<Measured>),
 ) -> Result<bool> {
     let mut waiting = BTreeMap::new();
     let mut all_good = true;
@@ -121,7 +140,9 @@ fn print_in_order(
     for (index, result) in results {
         waiting.insert(index, result);
         while let Some(result) = waiting.remove(&printed) {
-            match bar.suspend(|| print(&job.files[printed], result)) {
+            let path = &job.files()[printed];
+            done(path, &result);
+            match bar.suspend(|| print(path, result)) {
                 Ok(good) => all_good &= good,
                 // Whoever reads the output has had enough.
                 Err(error) if error.kind() == ErrorKind::BrokenPipe => return Ok(all_good),
@@ -129,7 +150,7 @@ fn print_in_order(
             }
             printed += 1;
             queue.advance(printed);
-            bar.set_message(format!("{printed} of {} files", job.files.len()));
+            bar.set_message(format!("{printed} of {} files", job.files().len()));
         }
     }
     Ok(all_good)
@@ -149,56 +170,7 @@ fn print(path: &Path, result: Result<Measured>) -> std::io::Result<bool> {
         text.print(&mut std::io::stdout().lock())?;
     }
     measured.remarks.iter().chain(&measured.unmet).for_each(|remark| say(remark));
-    if !measured.pitched {
-        say(&"nothing measurable: no single pitch was found");
-    }
-    Ok(measured.pitched && measured.unmet.is_empty())
-}
-
-/// Where the figures of each file go.
-struct FileOutputs<'a> {
-    to: &'a Outputs,
-    names: Vec<String>,
-}
-
-impl<'a> FileOutputs<'a> {
-    fn new(job: &'a Measure) -> Result<Self> {
-        if let Some(folder) = &job.to.csv {
-            std::fs::create_dir_all(folder)
-                .with_context(|| format!("cannot make the folder {}", folder.display()))?;
-        }
-        Ok(Self { to: &job.to, names: distinct_names(&job.files) })
-    }
-
-    fn reports(&self, index: usize, timebase: Timebase) -> Result<Vec<Box<dyn Report>>> {
-        let mut reports: Vec<Box<dyn Report>> = Vec::new();
-        if self.to.json {
-            reports.push(Box::new(JsonReport::new(timebase)));
-        } else {
-            reports.push(Box::new(TableReport::new()));
-        }
-        if let Some(folder) = &self.to.csv {
-            reports.push(Box::new(CsvReport::new(folder, &self.names[index], timebase)?));
-        }
-        if let Some(picture) = &self.to.picture {
-            let place = self.picture_place(picture, index);
-            reports.push(Box::new(PictureReport::new(place, self.to.note, timebase)));
-        }
-        Ok(reports)
-    }
-
-    /// The picture's own name for one input; with the input's name in it for several.
-    fn picture_place(&self, picture: &Path, index: usize) -> PathBuf {
-        if self.names.len() == 1 {
-            return picture.to_owned();
-        }
-        let mut name = picture.file_stem().unwrap_or_default().to_owned();
-        name.push("-");
-        name.push(&self.names[index]);
-        name.push(".");
-        name.push(picture.extension().unwrap_or_default());
-        picture.with_file_name(name)
-    }
+    Ok(measured.unmet.is_empty())
 }
 
 /// Which file is next, and how far printing has come.

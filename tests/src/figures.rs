@@ -6,22 +6,26 @@ mod calibration;
 mod case;
 mod claims;
 mod decays;
+mod drift;
 mod errors;
 mod exact;
 mod hum;
 mod live;
 mod moving;
+mod vibrato;
 
 pub use aliases::{AliasFigures, aliases};
 pub use calibration::Calibration;
 pub use case::Case;
 pub use claims::{ClaimFigures, claims};
 pub use decays::{DecayFigures, decays};
+pub use drift::{DriftFigures, drifts};
 pub use errors::{Errors, Tally};
 pub use exact::{ExactFigures, exact};
 pub use hum::hum;
 pub use live::{LiveFigure, live};
 pub use moving::{MovingFigures, moving};
+pub use vibrato::recorded_vibrato;
 
 /// Which random cases are drawn.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]

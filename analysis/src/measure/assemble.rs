@@ -1,16 +1,19 @@
 //! A note from its stretches: the figures of each put together, the strays named, the descriptors drawn up.
 
+use super::clusters;
 use super::lines::LINES_MAX;
 use super::note::{Meter, SPARE, STRETCH_S};
 use super::rows::Row;
 use crate::convert::{index, nearest_index, number};
 use crate::descriptors::Descriptors;
 use crate::history::{History, Span};
-use crate::note::{Note, NotePartial};
+use crate::note::{Cluster, Note, NotePartial};
 use crate::reading::{StrayKind, Stretch};
 use crate::refine::Tone;
 use crate::spectrum::TransformRuns;
-use crate::stiff::{self, CENTS_PER_NEPER, DB_PER_NEPER, Point, StiffFit, partial_hz};
+use crate::stiff::{
+    self, CENTS_PER_NEPER, DB_PER_NEPER, Point, StiffFit, partial_hz, partial_number,
+};
 use crate::strays::aliases::{self, Own};
 use crate::strays::{self, Candidate, mains};
 
@@ -35,6 +38,8 @@ struct Sums {
     energy: f64,
     /// Noise in 1 Hz, as squared amplitude times seconds.
     noise: f64,
+    /// What lines it is made of in the first stretch, where the pitch holds.
+    cluster: Option<Cluster>,
 }
 
 /// Builds notes. Owns all memory for it.
@@ -195,6 +200,7 @@ impl Assembler {
                 decay_db_per_s: DB_PER_NEPER * s.decay.1 / s.decay.0,
                 decay_sd: DB_PER_NEPER / s.decay.0.sqrt(),
                 snr_db: 10.0 * (s.energy / s.noise.max(f64::MIN_POSITIVE)).log10(),
+                cluster: s.cluster,
             });
         }
         Some(fit)
@@ -217,6 +223,12 @@ impl Assembler {
         let own = OWN * long.resolution_hz;
         let sweep = self.meter.sweep;
         let last = self.meter.rows.rows.last().map_or(0, |r| r.n);
+        let still = sweep <= 0.0;
+        for row in
+            self.meter.rows.rows.iter().filter(|r| still && r.present && r.n <= self.partials)
+        {
+            self.sums[row.n].cluster = clusters::cluster(&long.lines, row.hz(), fit.f0);
+        }
         for line in &long.lines {
             let n = nearest_number(line.hz, fit);
             let near = |n: usize| {
@@ -274,10 +286,7 @@ impl Assembler {
 
 /// Number of the partial of the model nearest to a frequency.
 fn nearest_number(hz: f64, fit: &StiffFit) -> usize {
-    let x = hz / fit.f0;
-    // n^2 (1 + B n^2) = x^2, solved for n^2 without loss for a small B.
-    let q = 4.0 * fit.b.max(0.0) * x * x;
-    nearest_index((2.0 * x * x / (1.0 + (1.0 + q).sqrt())).sqrt()).max(1)
+    nearest_index(partial_number(fit.f0, fit.b.max(0.0), hz)).max(1)
 }
 
 /// Mean square of the samples from `start` to `end`.

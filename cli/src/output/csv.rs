@@ -10,7 +10,7 @@ use std::path::{Path, PathBuf};
 use tempfile::NamedTempFile;
 
 /// A column: its name and how it is filled from the note's number and what is listed. What was not measured is left empty.
-type Column<T> = (&'static str, fn(u64, &T) -> String);
+pub(crate) type Column<T> = (&'static str, fn(u64, &T) -> String);
 
 const FRAMES: &[Column<FrameRecord>] = &[
     ("time_s", |_, frame| frame.time_s.to_string()),
@@ -41,6 +41,8 @@ const NOTES: &[Column<NoteRecord>] = &[
     ("tristimulus_3", |_, note| figure(note.tristimulus.map(|three| three[2]))),
     ("centroid_partial", |_, note| figure(note.centroid_partial)),
     ("strays_left_out", |_, note| note.strays_left_out.to_string()),
+    ("waveform", |_, note| note.waveform.as_ref().map(|w| w.name.to_owned()).unwrap_or_default()),
+    ("pulse_width", |_, note| figure(note.waveform.as_ref().and_then(|w| w.width))),
 ];
 
 const PARTIALS: &[Column<PartialRecord>] = &[
@@ -58,6 +60,9 @@ const PARTIALS: &[Column<PartialRecord>] = &[
     ("decay_db_per_s", |_, partial| figure(partial.decay_db_per_s)),
     ("decay_sd", |_, partial| figure(partial.decay_sd)),
     ("snr_db", |_, partial| figure(partial.snr_db)),
+    ("lines", |_, partial| partial.cluster.as_ref().map_or(1, |c| c.lines).to_string()),
+    ("spread_cents", |_, partial| figure(partial.cluster.as_ref().and_then(|c| c.spread_cents))),
+    ("beat_hz", |_, partial| figure(partial.cluster.as_ref().and_then(|c| c.beat_hz))),
 ];
 
 const STRAYS: &[Column<StrayRecord>] = &[
@@ -67,6 +72,9 @@ const STRAYS: &[Column<StrayRecord>] = &[
     ("kind", |_, stray| stray.kind.to_owned()),
     ("partial", |_, stray| stray.partial.map(|partial| partial.to_string()).unwrap_or_default()),
     ("explanation", |_, stray| words::explanation(stray.explanation)),
+    ("folds", |_, stray| stray.folds.map(|folds| folds.to_string()).unwrap_or_default()),
+    ("relative_db", |_, stray| figure(stray.relative_db)),
+    ("over_mask_db", |_, stray| figure(stray.over_mask_db)),
 ];
 
 /// The CSV files of one input in the making.
@@ -117,14 +125,27 @@ impl Report for CsvReport {
     }
 }
 
+/// Makes the folder for CSV files, if there is to be one.
+///
+/// # Errors
+/// It cannot be made.
+pub(crate) fn folder_for(folder: Option<&Path>) -> Result<()> {
+    folder.map_or(Ok(()), |folder| {
+        std::fs::create_dir_all(folder)
+            .with_context(|| format!("cannot make the folder {}", folder.display()))
+    })
+}
+
 /// One CSV file, not yet in its place.
-struct Sheet {
+pub(crate) struct Sheet {
     rows: csv::Writer<BufWriter<NamedTempFile>>,
     place: PathBuf,
 }
 
 impl Sheet {
-    fn new<T>(folder: &Path, name: &str, columns: &[Column<T>]) -> Result<Self> {
+    /// # Errors
+    /// The folder cannot be written to.
+    pub(crate) fn new<T>(folder: &Path, name: &str, columns: &[Column<T>]) -> Result<Self> {
         let place = folder.join(name);
         let file = super::new_file_for(&place)?;
         let mut rows = csv::Writer::from_writer(BufWriter::new(file));
@@ -132,13 +153,22 @@ impl Sheet {
         Ok(Self { rows, place })
     }
 
-    fn row<T>(&mut self, columns: &[Column<T>], note_number: u64, row: &T) -> Result<()> {
+    /// # Errors
+    /// The file cannot be written.
+    pub(crate) fn row<T>(
+        &mut self,
+        columns: &[Column<T>],
+        note_number: u64,
+        row: &T,
+    ) -> Result<()> {
         self.rows
             .write_record(columns.iter().map(|(_, fill)| fill(note_number, row)))
             .with_context(|| format!("cannot write {}", self.place.display()))
     }
 
-    fn publish(self) -> Result<()> {
+    /// # Errors
+    /// The file cannot be written.
+    pub(crate) fn publish(self) -> Result<()> {
         let broken = || format!("cannot write {}", self.place.display());
         let buffer =
             self.rows.into_inner().map_err(csv::IntoInnerError::into_error).with_context(broken)?;
@@ -150,6 +180,7 @@ impl Sheet {
     }
 }
 
-fn figure(value: Option<f64>) -> String {
+/// A figure, or nothing.
+pub(crate) fn figure(value: Option<f64>) -> String {
     value.map(|value| value.to_string()).unwrap_or_default()
 }

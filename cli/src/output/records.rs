@@ -2,7 +2,9 @@
 //! promises, so that the engine's can change without breaking anybody's script.
 
 use crate::measure::Timebase;
+use plumbtone_analysis::masking::masked_below_dbfs;
 use plumbtone_analysis::tuning::Tuning;
+use plumbtone_analysis::waveform::{Waveform, waveform};
 use plumbtone_analysis::{Gap, GapReason, Note, NotePartial, Reading, State, Stray, StrayKind};
 use serde::Serialize;
 use std::ops::Range;
@@ -47,6 +49,7 @@ pub(crate) struct NoteRecord {
     pub(crate) tristimulus: Option<[f64; 3]>,
     pub(crate) centroid_partial: Option<f64>,
     pub(crate) strays_left_out: usize,
+    pub(crate) waveform: Option<WaveformRecord>,
     /// First sample and the one after the last, from where the engine started.
     #[serde(skip)]
     pub(crate) span: Range<u64>,
@@ -68,6 +71,26 @@ pub(crate) struct PartialRecord {
     pub(crate) decay_db_per_s: Option<f64>,
     pub(crate) decay_sd: Option<f64>,
     pub(crate) snr_db: Option<f64>,
+    pub(crate) cluster: Option<ClusterRecord>,
+}
+
+/// The lines of a partial that is several.
+#[derive(Debug, Clone, Serialize)]
+pub(crate) struct ClusterRecord {
+    pub(crate) lines: u32,
+    pub(crate) spread_cents: Option<f64>,
+    pub(crate) beat_hz: Option<f64>,
+}
+
+/// The textbook wave that the partials make.
+#[derive(Debug, Clone, Serialize)]
+pub(crate) struct WaveformRecord {
+    pub(crate) name: &'static str,
+    /// Of a pulse: the share of the period that it is high.
+    pub(crate) width: Option<f64>,
+    pub(crate) level_rms_db: f64,
+    pub(crate) phase_rms_rad: f64,
+    pub(crate) partials: usize,
 }
 
 /// One stray of a note.
@@ -77,6 +100,11 @@ pub(crate) struct StrayRecord {
     pub(crate) level_dbfs: Option<f64>,
     pub(crate) kind: &'static str,
     pub(crate) partial: Option<u32>,
+    /// How often an alias folded.
+    pub(crate) folds: Option<u32>,
+    /// Level against the strongest partial, and over what the partials mask there.
+    pub(crate) relative_db: Option<f64>,
+    pub(crate) over_mask_db: Option<f64>,
     /// The explanation in full, for tables and pictures.
     #[serde(skip)]
     pub(crate) explanation: StrayKind,
@@ -120,6 +148,9 @@ impl NoteRecord {
         let about = &note.descriptors;
         let nearest = tuning.nearest(note.f0_hz);
         let stretch = note.stretch;
+        let waves: Vec<_> = (note.partials.iter())
+            .map(|p| (p.number, 10_f64.powf(p.level_dbfs / 20.0), p.phase_rad))
+            .collect();
         Self {
             start_s: timebase.seconds(note.start),
             end_s: timebase.seconds(note.end),
@@ -130,7 +161,7 @@ impl NoteRecord {
             inharmonicity_b: stretch.and_then(|stretch| measured(stretch.b)),
             inharmonicity_sd: stretch.and_then(|stretch| measured(stretch.b_sd)),
             partials: note.partials.iter().map(PartialRecord::new).collect(),
-            strays: note.strays.iter().map(StrayRecord::new).collect(),
+            strays: note.strays.iter().map(|stray| StrayRecord::new(stray, note)).collect(),
             odd_even_db: about.odd_even_db.and_then(measured),
             tilt_db_per_octave: about.tilt_db_per_octave.and_then(measured),
             thd_f_percent: about.thd_f_percent.and_then(measured),
@@ -139,6 +170,7 @@ impl NoteRecord {
             tristimulus: about.tristimulus,
             centroid_partial: about.centroid_partial.and_then(measured),
             strays_left_out: note.strays_left_out,
+            waveform: WaveformRecord::of(&waves),
             span: note.start..note.end,
         }
     }
@@ -165,22 +197,66 @@ impl PartialRecord {
             decay_db_per_s: measured(partial.decay_db_per_s),
             decay_sd: measured(partial.decay_sd),
             snr_db: measured(partial.snr_db),
+            cluster: partial.cluster.map(|cluster| ClusterRecord {
+                lines: cluster.lines,
+                spread_cents: measured(cluster.spread_cents),
+                beat_hz: measured(cluster.beat_hz),
+            }),
         }
     }
 }
 
-impl StrayRecord {
-    fn new(stray: &Stray) -> Self {
-        let (kind, partial) = match stray.kind {
-            StrayKind::Alias { partial, .. } => ("alias", Some(partial)),
-            StrayKind::Mains { .. } => ("mains", None),
-            StrayKind::Unexplained => ("unexplained", None),
+impl WaveformRecord {
+    /// Of partials as number, amplitude and phase, all at one instant.
+    pub(crate) fn of(partials: &[(u32, f64, f64)]) -> Option<Self> {
+        // What lies above the last partial found cannot be told from what the band or the count left out.
+        let looked_for = partials.last()?.0;
+        let fit = waveform(partials, looked_for)?;
+        let (name, width) = match fit.waveform {
+            Waveform::Sine => ("sine", None),
+            Waveform::Saw => ("saw", None),
+            Waveform::Square => ("square", None),
+            Waveform::Triangle => ("triangle", None),
+            Waveform::Pulse { width } => ("pulse", Some(width)),
+            Waveform::HalfRectifiedSine => ("half-rectified sine", None),
         };
+        Some(Self {
+            name,
+            width,
+            level_rms_db: fit.level_rms_db,
+            phase_rms_rad: fit.phase_rms_rad,
+            partials: fit.partials,
+        })
+    }
+
+    /// A line for reading.
+    pub(crate) fn text(&self) -> String {
+        let width = self.width.map_or_else(String::new, |width| format!(" of width {width:.3}"));
+        format!(
+            "  waveform {}{width}: {} partials within {:.2} dB and {:.3} rad (root mean square)\n",
+            self.name, self.partials, self.level_rms_db, self.phase_rms_rad
+        )
+    }
+}
+
+impl StrayRecord {
+    fn new(stray: &Stray, note: &Note) -> Self {
+        let (kind, partial, folds) = match stray.kind {
+            StrayKind::Alias { partial, folds } => ("alias", Some(partial), Some(folds)),
+            StrayKind::Mains { .. } => ("mains", None, None),
+            StrayKind::Unexplained => ("unexplained", None, None),
+        };
+        let partials = || note.partials.iter().map(|p| (p.frequency_hz, p.level_mean_dbfs));
+        let strongest = partials().map(|p| p.1).fold(f64::NEG_INFINITY, f64::max);
+        let mask = masked_below_dbfs(stray.frequency_hz, partials());
         Self {
             frequency_hz: measured(stray.frequency_hz),
             level_dbfs: measured(stray.level_dbfs),
             kind,
             partial,
+            folds,
+            relative_db: measured(stray.level_dbfs - strongest),
+            over_mask_db: measured(stray.level_dbfs - mask),
             explanation: stray.kind,
         }
     }

@@ -1,6 +1,6 @@
 //! The table a person reads: per note a head line, what the partials say together, the partials, and the strays.
 
-use super::records::{NoteRecord, PartialRecord, StrayRecord};
+use super::records::{NoteRecord, PartialRecord, StrayRecord, WaveformRecord};
 use super::spool::write;
 use super::words::{
     deviation_hz, explanation, inharmonicity, plain, signed, with_deviation, with_unit,
@@ -66,6 +66,8 @@ fn note_text(number: u64, note: &NoteRecord) -> String {
         note.start_s, note.end_s
     );
     text += &descriptors_text(note);
+    text += &note.waveform.as_ref().map(WaveformRecord::text).unwrap_or_default();
+    text += &clusters_text(note);
     if !note.partials.is_empty() {
         text += &format!("{}\n", partials_table(&note.partials));
     }
@@ -99,6 +101,23 @@ fn descriptors_text(note: &NoteRecord) -> String {
         ("tristimulus", tristimulus),
         ("centroid at partial", plain(note.centroid_partial, 2)),
     ])
+}
+
+/// Which partials are several lines.
+fn clusters_text(note: &NoteRecord) -> String {
+    let clusters: Vec<_> =
+        note.partials.iter().filter_map(|p| Some((p.number, p.cluster.as_ref()?))).collect();
+    let Some(first) = clusters.first() else { return String::new() };
+    let spreads = clusters.iter().filter_map(|c| c.1.spread_cents);
+    let (low, high) =
+        spreads.fold((f64::INFINITY, 0.0), |s, x| (f64::min(s.0, x), f64::max(s.1, x)));
+    let most = clusters.iter().map(|c| c.1.lines).max().unwrap_or(0);
+    format!(
+        "  {} partials are clusters of up to {most} lines, {low:.1} to {high:.1} cents wide; partial {} beats at {} Hz\n",
+        clusters.len(),
+        first.0,
+        plain(first.1.beat_hz, 2),
+    )
 }
 
 fn partials_table(partials: &[PartialRecord]) -> Table {
@@ -150,5 +169,12 @@ fn strays_text(note: &NoteRecord) -> String {
 fn stray_line(stray: &StrayRecord) -> String {
     let frequency = plain(stray.frequency_hz, 2);
     let level = with_unit(&plain(stray.level_dbfs, 1), "dBFS");
-    format!("  {frequency:>11} Hz  {level:>12}  {}\n", explanation(stray.explanation))
+    let audible = match (stray.kind, stray.over_mask_db) {
+        ("alias", Some(over)) if over > 0.0 => {
+            format!(", {over:.0} dB over what the partials mask")
+        }
+        ("alias", Some(_)) => ", masked by the partials".to_owned(),
+        _ => String::new(),
+    };
+    format!("  {frequency:>11} Hz  {level:>12}  {}{audible}\n", explanation(stray.explanation))
 }

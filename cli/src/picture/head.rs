@@ -61,12 +61,13 @@ fn pair(canvas: &Canvas<'_>, left: f64, figure: &str, unit: &str, set: Type) -> 
     }
 }
 
-fn file_name(facts: &FileFacts) -> String {
+/// The file's name without its folders.
+pub(super) fn file_name(facts: &FileFacts) -> String {
     facts.path.file_name().unwrap_or(facts.path.as_os_str()).to_string_lossy().into_owned()
 }
 
 /// A text cut in the middle to so many characters.
-fn shortened(text: &str, room: f64) -> String {
+pub(super) fn shortened(text: &str, room: f64) -> String {
     let letters: Vec<char> = text.chars().collect();
     let room = crate::convert::index(crate::convert::samples_in(room, 1.0)).max(8);
     if letters.len() <= room {

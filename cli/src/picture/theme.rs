@@ -32,3 +32,6 @@ pub(super) const PLUMB_RIGHT: f64 = 880.0;
 pub(super) const SOUND_LEFT: f64 = 892.0;
 /// Height of the panel of levels over time.
 pub(super) const LEVELS_HEIGHT: f64 = 210.0;
+/// Heights of the panels of a drift check: the pitch over time, and what it comes to.
+pub(super) const DRIFT_HEIGHT: f64 = 380.0;
+pub(super) const SPANS_HEIGHT: f64 = 210.0;

@@ -4,8 +4,12 @@
 
 mod bad_input;
 mod batch;
+mod drift;
+mod drift_batch;
+mod drift_expected;
 mod formats;
 mod outputs;
+mod patch;
 mod sounds;
 
 use serde_json::Value;
@@ -22,8 +26,17 @@ struct Run {
 
 /// Runs `plumbtone measure` in a folder.
 fn measure(folder: &Path, arguments: &[&str]) -> Run {
+    plumbtone(folder, "measure", arguments)
+}
+
+/// Runs `plumbtone drift` in a folder.
+fn drift(folder: &Path, arguments: &[&str]) -> Run {
+    plumbtone(folder, "drift", arguments)
+}
+
+fn plumbtone(folder: &Path, command: &str, arguments: &[&str]) -> Run {
     let Output { status, stdout, stderr } = Command::new(env!("CARGO_BIN_EXE_plumbtone"))
-        .arg("measure")
+        .arg(command)
         .args(arguments)
         .current_dir(folder)
         .output()

@@ -20,11 +20,18 @@ pub(crate) fn tone(seconds: f64) -> Channel {
 }
 
 pub(crate) fn tone_at(f0_hz: f64, seconds: f64) -> Channel {
+    moving_tone(|_| f0_hz, seconds)
+}
+
+/// The same with a fundamental in Hz that moves over time in seconds.
+pub(crate) fn moving_tone(f0_hz: impl Fn(f64) -> f64, seconds: f64) -> Channel {
+    let mut turns = 0.0;
     (0..frames(seconds))
         .map(|frame| {
-            let time = f64::from(frame) / f64::from(RATE_HZ);
-            let partial = |n: f64| AMPLITUDE / n * (TAU * n * f0_hz * time + n).cos();
-            (1..=6).map(f64::from).map(partial).sum::<f64>() + noise(frame)
+            let partial = |n: f64| AMPLITUDE / n * (TAU * n * turns + n).cos();
+            let sample = (1..=6).map(f64::from).map(partial).sum::<f64>() + noise(frame);
+            turns += f0_hz((f64::from(frame) + 0.5) / f64::from(RATE_HZ)) / f64::from(RATE_HZ);
+            sample
         })
         .collect()
 }

@@ -14,4 +14,5 @@ mod rig;
 mod session;
 mod state;
 mod text_entry;
+mod the_program;
 mod whole_readings;

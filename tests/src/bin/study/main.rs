@@ -1,10 +1,11 @@
 //! Prints what the engine reaches, beside the figures to reach.
 //!
 //! `study [SECTION...] [--count N] [--seed N] [--worst N]`; the sections are `exact`, `decays`, `aliases`, `hum`, `claims`,
-//! `moving`, `recorded` and `live`, all of them when none is named. Each draws `count` sounds from `seed` on and prints the
+//! `moving`, `drift`, `recorded` and `live`, all of them when none is named. Each draws `count` sounds from `seed` on and prints the
 //! `worst` cases of each figure.
 #![expect(clippy::print_stdout, reason = "printing is the program's purpose")]
 
+mod drift;
 mod moving;
 mod recorded;
 mod table;
@@ -15,8 +16,8 @@ use std::error::Error;
 use plumbtone_tests::figures::Draw;
 
 /// The sections in the order of printing.
-const SECTIONS: [&str; 8] =
-    ["exact", "decays", "aliases", "hum", "claims", "moving", "recorded", "live"];
+const SECTIONS: [&str; 9] =
+    ["exact", "decays", "aliases", "hum", "claims", "moving", "drift", "recorded", "live"];
 
 /// What was asked for.
 struct Options {
@@ -44,6 +45,7 @@ fn print(section: &str, options: &Options) -> Result<(), Box<dyn Error>> {
         "hum" => tones::hum(draw, worst)?,
         "claims" => tones::claims(draw, worst)?,
         "moving" => moving::moving(draw, worst)?,
+        "drift" => drift::drift(draw, worst)?,
         "recorded" => recorded::print(worst)?,
         _ => moving::live()?,
     }

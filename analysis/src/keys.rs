@@ -1,0 +1,201 @@
+//! One row per note: how an instrument or a patch behaves over the keyboard.
+
+use crate::masking;
+use crate::note::Note;
+use crate::reading::{Reading, StrayKind};
+use crate::stiff::CENTS_PER_NEPER;
+use crate::tuning::{NoteName, Tuning};
+
+/// Distance from the note's pitch within which it has settled, in cents, and in deviations of the reading.
+const SETTLED_CENTS: f64 = 3.0;
+const SETTLED_SD: f64 = 3.0;
+/// Readings of a note kept to judge how it settles: of more, the later ones are left out (40 s at 10 ms).
+const COURSE_MAX: usize = 4096;
+
+/// One note of a key sheet.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct KeyRow {
+    /// The key: the one played, or the note of the tuning nearest to the pitch.
+    pub key: NoteName,
+    /// Whether it was told (by a host's note, or by a file's name) rather than found.
+    pub told: bool,
+    /// Sample positions of the note's onset and end.
+    pub start: u64,
+    /// See above.
+    pub end: u64,
+    /// Fundamental of the stiff-string model, in Hz.
+    pub f0_hz: f64,
+    /// Distance from the key's frequency in the tuning, in cents.
+    pub cents: f64,
+    /// Standard deviation of both.
+    pub f0_sd_cents: f64,
+    /// Inharmonicity and its standard deviation.
+    pub stretch: Option<(f64, f64)>,
+    /// Slope of the partials' levels, in dB per octave.
+    pub tilt_db_per_octave: Option<f64>,
+    /// Mean level of the partials together, in dBFS.
+    pub level_dbfs: f64,
+    /// The alias that stands out most.
+    pub alias: Option<WorstAlias>,
+    /// Time from the onset until the pitch stays within 3 cents (or 3 of its deviations) of the note's, in seconds; `None` when
+    /// it never does.
+    pub settling_s: Option<f64>,
+}
+
+/// The alias that stands out most among the partials.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct WorstAlias {
+    /// Frequency in Hz.
+    pub frequency_hz: f64,
+    /// Number of the partial that folded.
+    pub partial: u32,
+    /// How often it folded.
+    pub folds: u32,
+    /// Level against the strongest partial, in dB.
+    pub relative_db: f64,
+    /// Level over the masking threshold of the partials there, in dB: positive where it may be heard.
+    pub over_mask_db: f64,
+}
+
+/// The alias of a note that lies highest over the masking threshold, if there is any.
+#[must_use]
+pub fn worst_alias(note: &Note) -> Option<WorstAlias> {
+    let partials = || note.partials.iter().map(|p| (p.frequency_hz, p.level_mean_dbfs));
+    let strongest = partials().map(|p| p.1).fold(f64::NEG_INFINITY, f64::max);
+    let aliases = note.strays.iter().filter_map(|stray| match stray.kind {
+        StrayKind::Alias { partial, folds } => Some(WorstAlias {
+            frequency_hz: stray.frequency_hz,
+            partial,
+            folds,
+            relative_db: stray.level_dbfs - strongest,
+            over_mask_db: stray.level_dbfs
+                - masking::masked_below_dbfs(stray.frequency_hz, partials()),
+        }),
+        StrayKind::Mains { .. } | StrayKind::Unexplained => None,
+    });
+    aliases.max_by(|a, b| a.over_mask_db.total_cmp(&b.over_mask_db))
+}
+
+/// Makes rows of notes, from the readings within them.
+#[derive(Debug)]
+pub struct KeySheet {
+    tuning: Tuning,
+    sample_rate_hz: f64,
+    /// Position, logarithm of the fundamental, and its deviation in cents, of the readings since the last note.
+    course: Vec<(u64, f64, f64)>,
+}
+
+impl KeySheet {
+    /// A sheet of notes as a tuning names them.
+    #[must_use]
+    pub fn new(tuning: Tuning, sample_rate_hz: f64) -> Self {
+        Self { tuning, sample_rate_hz, course: Vec::with_capacity(COURSE_MAX) }
+    }
+
+    /// Takes in the next reading.
+    pub fn reading(&mut self, reading: &Reading) {
+        if let Some(pitch) = reading.pitch
+            && self.course.len() < COURSE_MAX
+        {
+            self.course.push((reading.centre, pitch.f0_hz.ln(), pitch.f0_sd_cents));
+        }
+    }
+
+    /// The row of a note that has ended; `told` is its key where that is known. `None` when no key is told and none is near.
+    pub fn note(&mut self, note: &Note, told: Option<NoteName>) -> Option<KeyRow> {
+        let key = told.or_else(|| self.tuning.nearest(note.f0_hz).map(|nearest| nearest.note))?;
+        let cents = CENTS_PER_NEPER * (note.f0_hz / self.tuning.frequency_hz(key)).ln();
+        let power: f64 = note.partials.iter().map(|p| 10f64.powf(p.level_mean_dbfs / 10.0)).sum();
+        let row = KeyRow {
+            key,
+            told: told.is_some(),
+            start: note.start,
+            end: note.end,
+            f0_hz: note.f0_hz,
+            cents,
+            f0_sd_cents: note.f0_sd_cents,
+            stretch: note.stretch.map(|s| (s.b, s.b_sd)),
+            tilt_db_per_octave: note.descriptors.tilt_db_per_octave,
+            level_dbfs: 10.0 * power.log10(),
+            alias: worst_alias(note),
+            settling_s: self.settling_s(note),
+        };
+        self.course.clear();
+        Some(row)
+    }
+
+    /// Time from the onset to the first reading from which on the pitch stays.
+    fn settling_s(&self, note: &Note) -> Option<f64> {
+        let within = |&&(at, _, _): &&(u64, f64, f64)| at >= note.start && at < note.end;
+        let readings = self.course.iter().filter(within);
+        let log_f0 = note.f0_hz.ln();
+        let near = |&&(_, log, sd): &&(u64, f64, f64)| {
+            CENTS_PER_NEPER * (log - log_f0).abs() < SETTLED_CENTS.max(SETTLED_SD * sd)
+        };
+        let first = readings.rev().take_while(near).last()?;
+        Some((first.0 - note.start) as f64 / self.sample_rate_hz)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::note::NotePartial;
+    use crate::reading::{Pitch, Stray};
+
+    fn note() -> Note {
+        let partial = NotePartial {
+            number: 1,
+            frequency_hz: 440.5,
+            frequency_sd_hz: 0.01,
+            cents_from_harmonic: 0.0,
+            cents_sd: 0.0,
+            level_dbfs: -6.0,
+            level_sd_db: 0.0,
+            level_relative_db: 0.0,
+            level_mean_dbfs: -10.0,
+            phase_rad: 0.0,
+            decay_db_per_s: 0.0,
+            decay_sd: 0.0,
+            snr_db: 60.0,
+            cluster: None,
+        };
+        let stray = |frequency_hz, level_dbfs, kind| Stray { frequency_hz, level_dbfs, kind };
+        let alias = |partial| StrayKind::Alias { partial, folds: 1 };
+        Note {
+            start: 1000,
+            end: 101_000,
+            f0_hz: 440.5,
+            f0_sd_cents: 0.02,
+            partials: vec![partial],
+            strays: vec![
+                stray(100.0, -20.0, StrayKind::Mains { base_hz: 50.0, multiple: 2 }),
+                stray(460.0, -40.0, alias(60)),
+                stray(9000.0, -60.0, alias(70)),
+            ],
+            ..Note::default()
+        }
+    }
+
+    #[test]
+    fn the_alias_that_is_heard_most_is_not_the_strongest() {
+        let worst = worst_alias(&note()).expect("there are two");
+        assert_eq!(worst.partial, 70, "the one beside the partial is masked: {worst:?}");
+        assert!((worst.relative_db + 50.0).abs() < 1e-9 && worst.over_mask_db > 0.0, "{worst:?}");
+    }
+
+    #[test]
+    fn a_row_says_key_distance_and_when_the_pitch_settled() {
+        let mut sheet = KeySheet::new(Tuning::default(), 48_000.0);
+        for (at, hz) in [(1200, 430.0), (5800, 436.0), (10_600, 440.4), (15_400, 440.5)] {
+            let pitch = Some(Pitch { f0_hz: hz, f0_sd_cents: 0.1, confidence: 0.9 });
+            sheet.reading(&Reading { centre: at, pitch, ..Reading::default() });
+        }
+        let row = sheet.note(&note(), None).expect("A4 is near");
+        assert_eq!((row.key.to_string(), row.told), ("A4".to_owned(), false), "{row:?}");
+        assert!((row.cents - 1.966_2).abs() < 1e-3, "{row:?}");
+        assert_eq!(row.settling_s, Some(0.2), "{row:?}");
+        let told = sheet.note(&note(), Some(NoteName::from_midi(70))).expect("told");
+        assert!((told.cents + 98.034).abs() < 1e-3 && told.settling_s.is_none(), "{told:?}");
+    }
+}

@@ -1,0 +1,68 @@
+//! The command `measure`: the notes of many files into tables, JSON, CSV and pictures.
+
+use crate::args::{Measure, What};
+use crate::measure::Timebase;
+use crate::names::{distinct_names, picture_place};
+use crate::output::Report;
+use crate::output::csv::{CsvReport, folder_for};
+use crate::output::json::JsonReport;
+use crate::output::table::TableReport;
+use crate::picture::PictureReport;
+use crate::run::{self, Ended, Job};
+use anyhow::Result;
+use std::path::PathBuf;
+use std::process::ExitCode;
+
+/// Measures every file and prints what comes of it.
+pub(crate) fn measure_files(command: &Measure) -> ExitCode {
+    let ended = MeasureJob::new(command).and_then(|job| run::run(&job, |_, _| {}));
+    match ended {
+        Ok(Ended::Whole) => ExitCode::SUCCESS,
+        Ok(Ended::Lacking) => ExitCode::from(run::EXIT_BAD),
+        Ok(Ended::Interrupted) => ExitCode::from(run::EXIT_INTERRUPTED),
+        Err(error) => {
+            eprintln!("plumbtone: {error:#}");
+            ExitCode::from(run::EXIT_BAD)
+        }
+    }
+}
+
+struct MeasureJob<'a> {
+    command: &'a Measure,
+    names: Vec<String>,
+}
+
+impl<'a> MeasureJob<'a> {
+    fn new(command: &'a Measure) -> Result<Self> {
+        folder_for(command.to.csv.as_deref())?;
+        Ok(Self { command, names: distinct_names(&command.files) })
+    }
+}
+
+impl Job for MeasureJob<'_> {
+    fn files(&self) -> &[PathBuf] {
+        &self.command.files
+    }
+
+    fn what(&self) -> &What {
+        &self.command.what
+    }
+
+    fn reports(&self, index: usize, timebase: Timebase) -> Result<Vec<Box<dyn Report>>> {
+        let to = &self.command.to;
+        let mut reports: Vec<Box<dyn Report>> = Vec::new();
+        if to.json {
+            reports.push(Box::new(JsonReport::new(timebase)));
+        } else {
+            reports.push(Box::new(TableReport::new()));
+        }
+        if let Some(folder) = &to.csv {
+            reports.push(Box::new(CsvReport::new(folder, &self.names[index], timebase)?));
+        }
+        if let Some(picture) = &to.picture {
+            let place = picture_place(picture, &self.names, index);
+            reports.push(Box::new(PictureReport::new(place, to.note, timebase)));
+        }
+        Ok(reports)
+    }
+}
