@@ -164,7 +164,7 @@ impl Analysis {
     fn control(&mut self, controls: Controls) {
         let rate = self.delivery.readout.sample_rate_hz;
         let before = core::mem::replace(&mut self.controls, controls);
-        self.delivery.readout.tuning = controls.tuning();
+        self.delivery.tune(controls.tuning());
         self.delivery.freeze(controls.freeze);
         if controls.channel != before.channel {
             // Another signal from here on: nothing before belongs to it.
@@ -208,6 +208,7 @@ impl Analysis {
         let settings = self.controls.settings(self.delivery.readout.sample_rate_hz);
         self.engine = match (self.build)(&settings) {
             Ok(mut engine) => {
+                self.delivery.begin(engine.hop());
                 // Its positions go on where the stream is.
                 engine.skip(self.position, &mut self.delivery);
                 Engine::Running(Box::new(engine))

@@ -1,18 +1,22 @@
 //! Where an instance's engine delivers: the readout for the editor, and the log if one is wanted.
 
 use std::collections::VecDeque;
-use std::sync::Arc;
+use std::sync::{Arc, Mutex, PoisonError};
 
 use nice_plug_egui::RepaintNotifier;
-use plumbtone_analysis::tuning::NoteName;
-use plumbtone_analysis::{Gap, GapReason, Reading, Sink};
+use plumbtone_analysis::tuning::{NoteName, Tuning};
+use plumbtone_analysis::{Gap, GapReason, Reading, Sink, State};
 use triple_buffer::Input;
 
 use crate::marks::Cause;
 use crate::readings_log::{Line, ReadingsLog};
-use crate::readout::{Condition, Gaps, Live, Readout, copy_reading};
+use crate::readout::{Condition, Gaps, Live, Missing, Readout};
 use crate::session::{Anchor, SessionPosition, Transport};
 use crate::status::Status;
+use crate::trail::Trail;
+
+/// In silence the editor draws anew once in this many readings only.
+const SILENT_READINGS: u32 = 100;
 
 /// The worker's end of an instance's results.
 #[derive(Debug)]
@@ -20,11 +24,18 @@ pub(crate) struct Delivery {
     /// What is published next.
     pub(crate) readout: Readout,
     changed: bool,
+    /// Whether the change is worth drawing.
+    visible: bool,
+    silent_readings: u32,
     frozen: bool,
+    /// Whether the gap told next is one that somebody would have listened to.
+    heard: bool,
     /// Where the transport was told, oldest first; one at or before the last reading's centre, and all later ones.
     anchors: VecDeque<Anchor>,
     /// Keys held, in the order they went down.
     held: Vec<u8>,
+    /// The pitch over time; the editor looks at it without waiting.
+    trail: Arc<Mutex<Trail>>,
     output: Input<Readout>,
     repaint: RepaintNotifier,
     log: Option<ReadingsLog>,
@@ -41,7 +52,11 @@ impl Delivery {
         Self {
             readout: Readout::default(),
             changed: false,
+            visible: false,
+            silent_readings: 0,
             frozen: false,
+            heard: true,
+            trail: Arc::default(),
             anchors: VecDeque::new(),
             held: Vec::new(),
             output,
@@ -51,12 +66,33 @@ impl Delivery {
         }
     }
 
+    /// The pitch over time, for the editor.
+    pub(crate) fn trail(&self) -> Arc<Mutex<Trail>> {
+        Arc::clone(&self.trail)
+    }
+
+    /// An engine begins, whose readings lie this many samples apart.
+    pub(crate) fn begin(&self, hop: usize) {
+        self.with_trail(|trail| trail.grid(hop, self.readout.sample_rate_hz));
+    }
+
+    /// Notes are called otherwise from here on.
+    pub(crate) fn tune(&mut self, tuning: Tuning) {
+        if self.readout.tuning != tuning {
+            self.readout.tuning = tuning;
+            self.readout.forget_offset();
+            self.show();
+        }
+    }
+
     /// A new stream begins.
     pub(crate) fn start(&mut self) {
         self.readout.stream += 1;
         self.readout.measured = false;
         self.readout.live = None;
         self.readout.gaps = Gaps::default();
+        self.readout.last_gap = None;
+        self.readout.forget_offset();
         self.readout.played = None;
         self.held.clear();
         self.anchors.clear();
@@ -64,8 +100,10 @@ impl Delivery {
     }
 
     pub(crate) fn stand(&mut self, condition: Condition) {
-        self.changed |= self.readout.condition != condition;
-        self.readout.condition = condition;
+        if self.readout.condition != condition {
+            self.readout.condition = condition;
+            self.show();
+        }
     }
 
     /// Sound is coming in.
@@ -87,7 +125,7 @@ impl Delivery {
             self.held.push(key);
         }
         self.readout.played = self.held.last().map(|&key| NoteName::from_midi(i16::from(key)));
-        self.changed = true;
+        self.show();
     }
 
     pub(crate) fn miss(&mut self, samples: u64, cause: Cause) {
@@ -95,7 +133,8 @@ impl Delivery {
             Cause::Overrun => self.readout.gaps.overrun += samples,
             Cause::Unwatched => self.readout.gaps.unwatched += samples,
         }
-        self.changed = true;
+        self.heard = cause == Cause::Overrun;
+        self.show();
     }
 
     /// Hands the readout over, if anything in it changed.
@@ -106,10 +145,27 @@ impl Delivery {
         self.changed = false;
         self.output.input_buffer_mut().copy(&self.readout);
         self.output.publish();
-        self.repaint.request_repaint();
+        self.repaint.request_repaint_with(core::mem::take(&mut self.visible));
         if self.log.as_mut().is_some_and(|log| log.flush().is_err()) {
             self.log = None;
         }
+    }
+
+    /// What changed is to be drawn.
+    fn show(&mut self) {
+        self.changed = true;
+        self.visible = true;
+    }
+
+    /// A reading came: silence goes on looking like silence, but for its time.
+    fn show_reading(&mut self, reading: &Reading) {
+        let same = reading.state == State::Silent && self.readout.reading.state == State::Silent;
+        self.silent_readings = if same { self.silent_readings + 1 } else { 0 };
+        self.visible |= self.silent_readings.is_multiple_of(SILENT_READINGS);
+    }
+
+    fn with_trail<R>(&self, f: impl FnOnce(&mut Trail) -> R) -> R {
+        f(&mut self.trail.lock().unwrap_or_else(PoisonError::into_inner))
     }
 
     fn session(&mut self, centre: u64) -> SessionPosition {
@@ -131,6 +187,7 @@ impl Sink for Delivery {
             let Reading { centre, pitch, level_dbfs, .. } = *reading;
             self.readout.live = Some(Live { centre, pitch, level_dbfs });
             self.changed = true;
+            self.visible |= pitch.is_some();
         }
     }
 
@@ -142,20 +199,29 @@ impl Sink for Delivery {
                 self.log = None;
             }
         }
+        let stream = self.readout.stream;
+        let trail_end = self.with_trail(|trail| {
+            trail.push(stream, reading, &session);
+            trail.next()
+        });
+        self.readout.weigh(reading);
         self.changed = true;
         if self.frozen && self.readout.measured {
             return;
         }
-        copy_reading(&mut self.readout.reading, reading);
-        self.readout.session = session;
-        self.readout.measured = true;
+        self.show_reading(reading);
+        self.readout.take(reading, session);
+        self.readout.trail_end = trail_end;
     }
 
     fn gap(&mut self, gap: &Gap) {
         // What was lost on the way is counted where it is told, with its cause.
         if gap.reason == GapReason::NonFinite {
             self.readout.gaps.non_finite += gap.end - gap.start;
-            self.changed = true;
         }
+        if gap.reason == GapReason::NonFinite || self.heard {
+            self.readout.last_gap = Some(Missing { samples: gap.end - gap.start, end: gap.end });
+        }
+        self.show();
     }
 }

@@ -1,12 +1,28 @@
-//! The editor's window: shows the newest readout and never waits for the worker.
+//! The editor: shows what the worker said last, and never waits for it. Each view is a function of plain data.
 
-mod readout_view;
+mod band;
+mod copy;
+mod drift;
+mod field;
+mod ink;
+mod knob;
+mod notices;
+mod panel;
+mod picture;
+mod plumb;
+mod screen;
+mod settings;
+mod sound;
+mod steady;
+mod theme;
+mod words;
 
-use std::sync::Arc;
-use std::time::Duration;
+use std::sync::{Arc, Mutex};
+use std::time::Instant;
 
 use nice_plug::context::gui::GuiContext;
 use nice_plug::editor::dpi::LogicalSize;
+use nice_plug::editor::{ResizeHint, SizeConstraints};
 use nice_plug_egui::baseview::HandlerError;
 use nice_plug_egui::{
     EguiEditor, EguiEditorState, EguiNiceSettings, Frame, NiceEguiApp, RepaintNotifier,
@@ -14,16 +30,21 @@ use nice_plug_egui::{
 };
 use triple_buffer::Output;
 
+pub use knob::{Gesture, Knob};
+pub use plumb::Levels;
+pub use screen::{Screen, Shown};
+pub use theme::{Theme, install_fonts};
+
+use crate::convert::single;
 use crate::parameters::Parameters;
 use crate::pool::Bell;
 use crate::readout::Readout;
 use crate::status::Status;
-use readout_view::Shown;
+use crate::trail::Trail;
 
-/// Size of the window, in points.
-const SIZE: LogicalSize<f32> = LogicalSize::new(560.0, 640.0);
-/// How often the age of a reading is drawn anew when nothing else happens.
-const AGE_REFRESH: Duration = Duration::from_millis(250);
+/// Size of the window when it is first opened, and its smallest one, in points.
+const SIZE: LogicalSize<f32> = LogicalSize::new(1120.0, 760.0);
+const SMALLEST: LogicalSize<f32> = LogicalSize::new(480.0, 320.0);
 
 /// The editor of one instance; lives as long as that and is shown now and then.
 #[derive(Debug)]
@@ -32,11 +53,28 @@ pub struct Window {
     status: Arc<Status>,
     bell: Bell,
     readout: Output<Readout>,
+    trail: Arc<Mutex<Trail>>,
+    open: Option<Open>,
+}
+
+/// What there is only while the window is open.
+struct Open {
+    screen: Screen,
+    context: GuiContext,
+    since: Instant,
+}
+
+impl core::fmt::Debug for Open {
+    fn fmt(&self, f: &mut core::fmt::Formatter<'_>) -> core::fmt::Result {
+        f.debug_struct("Open").field("screen", &self.screen).finish_non_exhaustive()
+    }
 }
 
 /// Makes the editor that the host opens and closes.
 pub(crate) fn create(window: Window, repaint: RepaintNotifier) -> Option<EguiEditor<Window>> {
-    let settings = EguiNiceSettings::new().with_tile("Plumbtone");
+    let constraints = SizeConstraints::Logical { min_size: Some(SMALLEST), max_size: None };
+    let hint = ResizeHint { size_constraints: constraints, ..ResizeHint::RESIZABLE };
+    let settings = EguiNiceSettings::new().with_tile("Plumbtone").with_resize_hint(hint);
     create_egui_editor(EguiEditorState::from_size(SIZE, 1.0), repaint, settings, window)
 }
 
@@ -46,8 +84,9 @@ impl Window {
         status: Arc<Status>,
         bell: Bell,
         readout: Output<Readout>,
+        trail: Arc<Mutex<Trail>>,
     ) -> Self {
-        Self { parameters, status, bell, readout }
+        Self { parameters, status, bell, readout, trail, open: None }
     }
 }
 
@@ -55,27 +94,49 @@ impl NiceEguiApp for Window {
     fn build(
         &mut self,
         egui_ctx: egui::Context,
-        _nice_gui_ctx: GuiContext,
+        nice_gui_ctx: GuiContext,
         _frame: &mut Frame,
     ) -> Result<(), HandlerError> {
-        egui_ctx.set_zoom_factor(crate::convert::single(self.parameters.kept.zoom()));
+        let zoom = single(self.parameters.kept.zoom());
+        let theme = self.parameters.kept.theme();
+        install_fonts(&egui_ctx);
+        theme.apply(&egui_ctx);
+        egui_ctx.set_zoom_factor(zoom);
+        let screen = Screen::new(theme, zoom);
+        self.open = Some(Open { screen, context: nice_gui_ctx, since: Instant::now() });
         self.status.watch(true);
         self.bell.ring();
         Ok(())
     }
 
     fn ui(&mut self, ui: &mut egui::Ui, _frame: &mut Frame) {
+        let Some(Open { screen, context, since }) = &mut self.open else { return };
         self.readout.update();
         let unsound = self.parameters.unsound.findings();
         let shown = Shown {
             readout: self.readout.output_buffer(),
+            trail: &self.trail,
+            parameters: &self.parameters,
             position: self.status.position(),
             lost_samples: self.status.lost_samples(),
             lost_notes: self.status.lost_notes(),
             unsound: &unsound,
+            time_s: since.elapsed().as_secs_f64(),
         };
-        egui::CentralPanel::default().show(ui, |ui| readout_view::show(ui, &shown));
-        ui.ctx().request_repaint_after(AGE_REFRESH);
+        // The toolkit's own shortcuts zoom too.
+        screen.set_zoom(ui.ctx().zoom_factor());
+        let (theme, zoom) = (screen.theme(), screen.zoom());
+        for gesture in screen.show(ui, &shown) {
+            gesture.apply(&self.parameters, &context.param_setter());
+        }
+        if screen.theme() != theme {
+            screen.theme().apply(ui.ctx());
+            self.parameters.kept.set_theme(screen.theme());
+            ui.ctx().request_repaint();
+        }
+        if (screen.zoom() - zoom).abs() > f32::EPSILON {
+            ui.ctx().set_zoom_factor(screen.zoom());
+        }
     }
 
     fn zoom_factor_changed(&mut self, zoom_factor: f32) {
@@ -83,6 +144,7 @@ impl NiceEguiApp for Window {
     }
 
     fn editor_closed(&mut self) {
+        self.open = None;
         self.status.watch(false);
     }
 }

@@ -10,8 +10,9 @@ mod analysis;
 mod controls;
 mod convert;
 mod delivery;
-mod editor;
+pub mod editor;
 mod marks;
+pub mod offset;
 pub mod parameters;
 mod plumbtone;
 mod pool;
@@ -21,6 +22,7 @@ pub mod session;
 mod state;
 mod status;
 mod tap;
+pub mod trail;
 
 pub use plumbtone::Plumbtone;
 

@@ -1,7 +1,7 @@
 //! The plugin itself: what it tells the host, and which part of it runs when.
 
 use std::num::NonZeroU32;
-use std::sync::Arc;
+use std::sync::{Arc, Mutex};
 
 use nice_plug::prelude::*;
 use nice_plug_egui::{EguiEditor, RepaintNotifier};
@@ -21,6 +21,7 @@ use crate::session::Transport;
 use crate::state;
 use crate::status::Status;
 use crate::tap::{Format, Note, Patience, Tap};
+use crate::trail::Trail;
 
 /// An instance of the plugin. It belongs to the audio thread while that runs.
 #[derive(Debug)]
@@ -31,6 +32,7 @@ pub struct Plumbtone {
     tap: Option<Tap>,
     /// For the editor, until the host asks for it.
     readout: Option<Output<Readout>>,
+    trail: Arc<Mutex<Trail>>,
     repaint: RepaintNotifier,
 }
 
@@ -41,9 +43,11 @@ impl Default for Plumbtone {
         let log = ReadingsLog::open();
         let status = Arc::new(Status::new(log.is_some()));
         let delivery = Delivery::new(Arc::clone(&status), input, repaint.clone(), log);
+        let trail = delivery.trail();
         Self {
             parameters: Arc::default(),
             status,
+            trail,
             place: Place::take(Analysis::new(Analyzer::new, delivery)),
             tap: None,
             readout: Some(output),
@@ -117,6 +121,7 @@ impl Plugin for Plumbtone {
             Arc::clone(&self.status),
             self.place.bell(),
             self.readout.take()?,
+            Arc::clone(&self.trail),
         );
         editor::create(window, self.repaint.clone())
     }

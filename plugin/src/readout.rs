@@ -1,9 +1,11 @@
 //! What the worker publishes for the editor: plain data in engineering units, complete in itself.
 
 use plumbtone_analysis::tuning::{NoteName, Tuning};
-use plumbtone_analysis::{Pitch, Reading, SettingsError};
+use plumbtone_analysis::{Pitch, Reading, SettingsError, State};
 
+use crate::offset::{Offset, Offsets};
 use crate::session::SessionPosition;
+use crate::trail::CONFIDENCE_SHOWN;
 
 /// The newest reading of an instance, and how its analysis stands.
 #[derive(Debug, Clone, Default)]
@@ -18,6 +20,12 @@ pub struct Readout {
     pub measured: bool,
     /// The newest reading.
     pub reading: Reading,
+    /// Centre of the first reading of those that said the same as [`reading`](Self::reading): its state, and its note.
+    pub since: u64,
+    /// How far the track so far lies off the notes.
+    pub offset: Option<Offset>,
+    /// Index in the trail after [`reading`](Self::reading).
+    pub trail_end: u64,
     /// The newest provisional reading, quicker and less sure; only while an editor is open.
     pub live: Option<Live>,
     /// Where in the session the centre of [`reading`](Self::reading) lies.
@@ -28,6 +36,18 @@ pub struct Readout {
     pub played: Option<NoteName>,
     /// What did not reach the engine in this stream.
     pub gaps: Gaps,
+    /// The last stretch of this stream that did not reach the engine though somebody listened.
+    pub last_gap: Option<Missing>,
+    offsets: Offsets,
+}
+
+/// Samples that did not reach the engine.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct Missing {
+    /// How many.
+    pub samples: u64,
+    /// First sample position present again.
+    pub end: u64,
 }
 
 /// What a provisional reading says.
@@ -73,6 +93,45 @@ pub struct Gaps {
 }
 
 impl Readout {
+    /// Takes a reading, and what follows from it over time.
+    pub fn take(&mut self, reading: &Reading, session: SessionPosition) {
+        if !self.measured || !self.goes_on(reading) {
+            self.since = reading.centre;
+        }
+        copy_reading(&mut self.reading, reading);
+        self.session = session;
+        self.measured = true;
+    }
+
+    /// Counts a reading towards the track's offset.
+    pub fn weigh(&mut self, reading: &Reading) {
+        if reading.state == State::Steady
+            && let Some(pitch) = reading.pitch
+            && let Some(nearest) = self.tuning.nearest(pitch.f0_hz)
+        {
+            self.offsets.add(nearest.cents, pitch.confidence);
+            self.offset = self.offsets.offset();
+        }
+    }
+
+    /// Forgets the track's offset: other notes apply from here on.
+    pub fn forget_offset(&mut self) {
+        self.offsets = Offsets::default();
+        self.offset = None;
+    }
+
+    /// The pitch, when one is claimed surely enough to be shown.
+    #[must_use]
+    pub fn pitch(&self) -> Option<Pitch> {
+        self.reading.pitch.filter(|pitch| pitch.confidence >= CONFIDENCE_SHOWN)
+    }
+
+    /// Whether a reading says the same as the one before: the same state, and the same note if there is one.
+    fn goes_on(&self, reading: &Reading) -> bool {
+        let note = |pitch: Option<Pitch>| Some(self.tuning.nearest(pitch?.f0_hz)?.note);
+        self.reading.state == reading.state && note(self.reading.pitch) == note(reading.pitch)
+    }
+
     /// Copies another one into this one, keeping the memory of its lists.
     pub(crate) fn copy(&mut self, from: &Self) {
         let Self {
@@ -81,11 +140,16 @@ impl Readout {
             stream,
             measured,
             reading,
+            since,
+            offset,
+            trail_end,
             live,
             session,
             tuning,
             played,
             gaps,
+            last_gap,
+            offsets,
         } = from;
         copy_reading(&mut self.reading, reading);
         self.condition = *condition;
@@ -97,6 +161,11 @@ impl Readout {
         self.tuning = *tuning;
         self.played = *played;
         self.gaps = *gaps;
+        self.since = *since;
+        self.offset = *offset;
+        self.trail_end = *trail_end;
+        self.last_gap = *last_gap;
+        self.offsets = *offsets;
     }
 }
 

@@ -10,6 +10,7 @@ use nice_plug::prelude::*;
 use serde::{Deserialize, Serialize};
 use serde_json::Value;
 
+use crate::editor::Theme;
 use crate::parameters::Parameters;
 
 /// Version of the part that is no parameter. A newer one is read as far as it is understood.
@@ -30,6 +31,8 @@ pub struct KeptFields {
     format: u64,
     /// Zoom of the editor.
     zoom: f64,
+    /// Name of its theme.
+    theme: String,
 }
 
 /// What of the last loaded state was unsound, in words; never stored.
@@ -43,7 +46,7 @@ pub struct Findings(Vec<String>);
 
 impl Default for KeptFields {
     fn default() -> Self {
-        Self { format: FORMAT, zoom: 1.0 }
+        Self { format: FORMAT, zoom: 1.0, theme: Theme::default().name().to_owned() }
     }
 }
 
@@ -56,6 +59,18 @@ impl Kept {
     /// Keeps the zoom of the editor.
     pub fn set_zoom(&self, zoom: f64) {
         lock(&self.0).zoom = zoom.clamp(ZOOM.0, ZOOM.1);
+    }
+}
+
+impl Kept {
+    /// Theme of the editor.
+    pub fn theme(&self) -> Theme {
+        Theme::named(&lock(&self.0).theme).unwrap_or_default()
+    }
+
+    /// Keeps the theme of the editor.
+    pub fn set_theme(&self, theme: Theme) {
+        theme.name().clone_into(&mut lock(&self.0).theme);
     }
 }
 
@@ -132,6 +147,11 @@ fn kept_from(stored: Option<&str>, findings: &mut Vec<String>) -> KeptFields {
         Some(Some(zoom)) if zoom >= ZOOM.0 && zoom <= ZOOM.1 => kept.zoom = zoom,
         None => {}
         Some(_) => findings.push("the stored zoom cannot be used".to_owned()),
+    }
+    match fields.get("theme").map(|theme| theme.as_str().and_then(Theme::named)) {
+        Some(Some(theme)) => theme.name().clone_into(&mut kept.theme),
+        None => {}
+        Some(None) => findings.push("the stored theme cannot be used".to_owned()),
     }
     kept
 }
@@ -241,12 +261,12 @@ mod tests {
     fn a_sound_state_passes_unchanged() {
         let mut state = stored(
             &[("concert_pitch", ParamValue::F32(415.0)), ("partials", ParamValue::I32(8))],
-            Some(r#"{"format":1,"zoom":1.5}"#),
+            Some(r#"{"format":1,"zoom":1.5,"theme":"light"}"#),
         );
         filter(&mut state);
         assert!(matches!(state.params["concert_pitch"], ParamValue::F32(415.0)), "{state:?}");
         assert!(matches!(state.params["partials"], ParamValue::I32(8)), "{state:?}");
-        assert_eq!(state.fields[KEPT], r#"{"format":1,"zoom":1.5}"#, "{state:?}");
+        assert_eq!(state.fields[KEPT], r#"{"format":1,"zoom":1.5,"theme":"light"}"#, "{state:?}");
         assert_eq!(findings(&state), Vec::<String>::new(), "{state:?}");
     }
 
@@ -282,6 +302,7 @@ mod tests {
             "[1]",
             r#"{"format":1,"zoom":"large"}"#,
             r#"{"format":1,"zoom":9}"#,
+            r#"{"format":1,"theme":"plaid"}"#,
             r#"{"zoom":1}"#,
             r#"{"format":7,"zoom":1}"#,
         ] {

@@ -12,6 +12,7 @@ mod command;
 mod count;
 mod demo;
 mod demo_host;
+mod pictures;
 mod sound_bank;
 mod test;
 mod tidy;
@@ -28,6 +29,7 @@ cargo xtask bundle [ARGUMENT...] build the VST3 and CLAP bundles under target/bu
 cargo xtask bench                print how fast the engine is, as ratios measured in one run
 cargo xtask count                count the instructions of the plugin's own process(), beside a bare copy (needs valgrind)
 cargo xtask demo                 synthesise the demo sound, measure it, play it through the plugin, say where the pictures are
+cargo xtask pictures [WAV...]    render the editor from fixed data, or of recorded sounds, into target/pictures (needs Vulkan)
 cargo xtask tidy                 check the rules of the source tree that no lint knows";
 
 fn main() -> ExitCode {
@@ -50,6 +52,7 @@ fn run() -> Result<()> {
         "bundle" => bundle::run(rest),
         "count" => count::run(),
         "demo" => demo::run().and_then(|()| demo_host::run()),
+        "pictures" => pictures::run(rest),
         "tidy" => tidy::run(),
         _ => bail!("no command {command}\n{USAGE}"),
     }

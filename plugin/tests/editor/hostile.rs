@@ -1,0 +1,125 @@
+//! Data that should never come, in windows that nobody would open: everything is drawn, nothing breaks.
+
+use egui::{Vec2, vec2};
+use plumbtone_analysis::{Partial, Pitch, Stray, StrayKind, Stretch};
+use plumbtone_plugin::editor::Theme;
+
+use crate::scenes::{Scene, strays, string_partials};
+
+const SIZES: [Vec2; 5] = [
+    vec2(60.0, 40.0),
+    vec2(480.0, 320.0),
+    vec2(700.0, 900.0),
+    vec2(1120.0, 760.0),
+    vec2(3840.0, 2160.0),
+];
+
+/// Draws a scene in windows of all sizes, and as a picture.
+fn draw(what: &str, scene: impl Fn() -> Scene) {
+    for size in SIZES {
+        let mut harness = scene().open(size, 1.0);
+        harness.run_steps(3);
+        let shapes = harness.output().shapes.len();
+        assert!(shapes > 3, "{what} at {size}: {shapes} shapes");
+        let svg = harness.state().svg(size);
+        assert!(svg.ends_with("</svg>\n") && !svg.contains("NaN"), "{what} at {size}");
+    }
+}
+
+fn with(change: impl Fn(&mut Scene)) -> impl Fn() -> Scene {
+    move || {
+        let mut scene = Scene::string(Theme::Dark);
+        change(&mut scene);
+        scene
+    }
+}
+
+#[test]
+fn nothing_at_all() {
+    draw("nothing heard", || Scene::empty(Theme::Light));
+    draw("no partials", with(|scene| scene.readout.reading.partials.clear()));
+}
+
+#[test]
+fn partials_of_all_kinds() {
+    draw("128 partials", with(|scene| scene.readout.reading.partials = string_partials(128)));
+    for value in [f64::NAN, f64::INFINITY, f64::NEG_INFINITY, 1e300, -1e300, 0.0] {
+        draw(
+            &format!("partials of {value}"),
+            with(move |scene| {
+                let change = |p: &mut Partial| {
+                    p.cents_from_harmonic = value;
+                    p.cents_sd = value;
+                    p.level_dbfs = value;
+                    p.frequency_hz = value;
+                };
+                scene.readout.reading.partials.iter_mut().skip(3).for_each(change);
+            }),
+        );
+    }
+    let number = |number| with(move |scene| scene.readout.reading.partials[0].number = number);
+    draw("partial 0", number(0));
+    draw("partial 4 billion", number(u32::MAX));
+}
+
+#[test]
+fn figures_that_are_no_numbers() {
+    for value in [f64::NAN, f64::INFINITY, -1.0, 0.0] {
+        draw(
+            &format!("a reading of {value}"),
+            with(move |scene| {
+                let reading = &mut scene.readout.reading;
+                reading.pitch = Some(Pitch { f0_hz: 220.0, f0_sd_cents: value, confidence: 1.0 });
+                reading.stretch = Some(Stretch { b: value, b_sd: value });
+                reading.level_dbfs = value;
+            }),
+        );
+        draw(
+            &format!("a pitch of {value} Hz"),
+            with(move |scene| {
+                let pitch = Pitch { f0_hz: value, f0_sd_cents: 0.1, confidence: 1.0 };
+                scene.readout.reading.pitch = Some(pitch);
+            }),
+        );
+    }
+    draw("no sample rate", with(|scene| scene.readout.sample_rate_hz = 0.0));
+}
+
+#[test]
+fn strays_by_the_hundred() {
+    let stray = |k: u32| Stray {
+        frequency_hz: 30.0 + 17.3 * f64::from(k),
+        level_dbfs: -40.0 - f64::from(k) / 4.0,
+        kind: StrayKind::Alias { partial: k, folds: 1 },
+    };
+    draw(
+        "200 strays",
+        with(move |scene| scene.readout.reading.strays = (0..200).map(stray).collect()),
+    );
+    draw(
+        "strays of no frequency",
+        with(|scene| {
+            for value in [f64::NAN, 0.0, -5.0, f64::INFINITY] {
+                let mut more = strays();
+                more.iter_mut().for_each(|stray| stray.frequency_hz = value);
+                more.iter_mut().for_each(|stray| stray.level_dbfs = value);
+                scene.readout.reading.strays.extend(more);
+            }
+        }),
+    );
+}
+
+#[test]
+fn histories_of_all_kinds() {
+    let played = |readings, cents: fn(f64) -> Option<f64>| {
+        move || {
+            let mut scene = Scene::empty(Theme::Dark);
+            scene.play(readings, cents, &string_partials(40), &strays());
+            scene
+        }
+    };
+    draw("one reading", played(1, |_| Some(0.0)));
+    draw("silence", played(500, |_| None));
+    draw("leaps", played(500, |t| Some(2_000.0 * (t * 31.0).sin())));
+    draw("half an hour", played(200_000, |t| Some(5.0 * t.sin())));
+}

@@ -1,0 +1,47 @@
+//! Pictures of every view from fixed data, compared with those under `tests/snapshots`: a software rasteriser draws them,
+//! and a few pixels may differ between its versions. `UPDATE_SNAPSHOTS=1 cargo test` makes them anew: look at each.
+
+use egui::{Vec2, vec2};
+use egui_kittest::SnapshotOptions;
+use plumbtone_analysis::State;
+use plumbtone_plugin::editor::Theme;
+
+use crate::SIZE;
+use crate::scenes::Scene;
+
+/// Largest difference of a pixel that is none, and most pixels that may differ more: lettering and slanted edges.
+const PIXEL: f32 = 2.0;
+const PIXELS: usize = 1_500;
+
+fn picture(name: &str, scene: Scene, size: Vec2) {
+    let mut harness = scene.open(size, 1.0);
+    harness.run_steps(4);
+    let options = SnapshotOptions::new()
+        .threshold(PIXEL)
+        .max_failed_pixels(PIXELS)
+        .output_path(concat!(env!("CARGO_MANIFEST_DIR"), "/tests/snapshots"));
+    harness.snapshot_options(name, &options);
+}
+
+#[test]
+fn whole_editor_dark() {
+    picture("editor-dark", Scene::string(Theme::Dark), SIZE);
+}
+
+#[test]
+fn whole_editor_light() {
+    picture("editor-light", Scene::string(Theme::Light), SIZE);
+}
+
+#[test]
+fn smallest_window() {
+    picture("smallest", Scene::string(Theme::Dark), vec2(480.0, 320.0));
+}
+
+#[test]
+fn no_single_pitch() {
+    let mut scene = Scene::string(Theme::Dark);
+    scene.readout.reading.state = State::Several;
+    scene.readout.reading.pitch = None;
+    picture("several-pitches", scene, vec2(800.0, 560.0));
+}
