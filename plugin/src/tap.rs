@@ -138,7 +138,7 @@ impl Tap {
     /// Ends the stream: the worker delivers what is still to come.
     pub(crate) fn end(&mut self) {
         if self.listening && (self.has_room(0) || self.wait_for_room(0)) {
-            self.mark(0, Event::End);
+            self.mark(0, Event::End { bounce: self.may_wait() });
             self.listening = false;
         }
     }

@@ -1,0 +1,267 @@
+//! The results of an instance and what is set about them: kept in the session, shared by worker and editor.
+//!
+//! The lock is held for as long as a list takes to change or to be copied, never over a file; the audio thread never
+//! takes it.
+
+use std::sync::{Arc, Mutex, MutexGuard, PoisonError, TryLockError};
+use std::thread::JoinHandle;
+
+use nice_plug::params::persist::PersistentField;
+use serde::{Deserialize, Serialize};
+
+use super::report::{self, Job};
+use super::result::{COMMENT_MAX, CheckResult, VerdictWord};
+
+/// Version of the stored form. A newer one is read as far as it is understood.
+pub(super) const FORMAT: u64 = 1;
+/// Most results kept, and most spans of all of them together: the oldest go first.
+pub(super) const RESULTS_MAX: usize = 256;
+const SPANS_IN_ALL_MAX: usize = 4096;
+/// Most characters of a setting.
+pub(super) const TEXT_MAX: usize = 4096;
+
+/// Results and their settings, shared: clones are the same one.
+#[derive(Debug, Clone, Default)]
+pub struct Results(Arc<Mutex<Book>>);
+
+#[derive(Debug, Default)]
+struct Book {
+    stored: Stored,
+    revision: u64,
+    running: Option<RunningCheck>,
+    /// Reports being written.
+    writing: Vec<JoinHandle<()>>,
+    told: Arc<Mutex<Option<Told>>>,
+}
+
+impl Drop for Book {
+    fn drop(&mut self) {
+        // A report that was begun is finished, whatever the host does with the instance.
+        for thread in self.writing.drain(..) {
+            // A writer that panicked has told nothing, and there is nothing to add.
+            let _ = thread.join();
+        }
+    }
+}
+
+/// What a session keeps of the checks.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Stored {
+    pub(super) format: u64,
+    /// Whether a pass over a stretch that was checked before is kept beside that.
+    pub every_pass: bool,
+    /// How reports are written.
+    pub reports: Reports,
+    /// Results that had to go for newer ones.
+    pub left_out: u64,
+    /// The results, oldest first.
+    pub results: Vec<CheckResult>,
+}
+
+/// How reports are written.
+#[derive(Debug, Clone, PartialEq, Eq, Default, Serialize, Deserialize)]
+pub struct Reports {
+    /// Whether a bounce ends with one.
+    pub automatic: bool,
+    /// The folder.
+    pub folder: String,
+    /// What their names begin with.
+    pub name: String,
+}
+
+/// How the check that is on stands.
+#[derive(Debug, Clone, PartialEq)]
+pub struct RunningCheck {
+    /// The verdict so far.
+    pub verdict: VerdictWord,
+    /// The heard pitch farthest from the reference so far, in cents.
+    pub worst_cents: Option<f64>,
+    /// Largest distance that is within, in cents: set when the check began.
+    pub tolerance_cents: f64,
+    /// What it compares with.
+    pub reference: String,
+    /// Index in the trail of its first reading.
+    pub from: f64,
+}
+
+/// What came of a report.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub enum Told {
+    /// It is there: its files without their endings.
+    Written(String),
+    /// It could not be written: why.
+    Failed(String),
+}
+
+/// All of it as it stands at one time.
+#[derive(Debug, Clone, Default)]
+pub struct Snapshot {
+    revision: Option<u64>,
+    /// Results and settings.
+    pub stored: Stored,
+    /// The check that is on.
+    pub running: Option<RunningCheck>,
+    /// What came of the last report.
+    pub told: Option<Told>,
+    /// Whether a report is being written.
+    pub writing: bool,
+}
+
+impl Default for Stored {
+    fn default() -> Self {
+        Self {
+            format: FORMAT,
+            every_pass: false,
+            reports: Reports::default(),
+            left_out: 0,
+            results: Vec::new(),
+        }
+    }
+}
+
+impl Results {
+    /// Brings a snapshot up to date, unless somebody else is at it just now.
+    pub fn look(&self, snapshot: &mut Snapshot) {
+        let book = match self.0.try_lock() {
+            Ok(book) => book,
+            Err(TryLockError::Poisoned(poisoned)) => poisoned.into_inner(),
+            Err(TryLockError::WouldBlock) => return,
+        };
+        snapshot.running.clone_from(&book.running);
+        snapshot.writing = book.writing.iter().any(|thread| !thread.is_finished());
+        if let Ok(told) = book.told.try_lock() {
+            snapshot.told.clone_from(&told);
+        }
+        if snapshot.revision != Some(book.revision) {
+            snapshot.revision = Some(book.revision);
+            snapshot.stored.clone_from(&book.stored);
+        }
+    }
+
+    /// Forgets all results.
+    pub fn clear(&self) {
+        self.change(|stored| {
+            stored.results.clear();
+            stored.left_out = 0;
+        });
+    }
+
+    /// Forgets one.
+    pub fn remove(&self, number: u64) {
+        self.change(|stored| stored.results.retain(|result| result.number != number));
+    }
+
+    /// Writes a comment to a result.
+    pub fn comment(&self, number: u64, text: &str) {
+        self.change(|stored| {
+            if let Some(result) = stored.results.iter_mut().find(|r| r.number == number) {
+                result.comment = text.chars().take(COMMENT_MAX).collect();
+            }
+        });
+    }
+
+    /// Sets whether every pass is kept.
+    pub fn keep_every_pass(&self, every: bool) {
+        self.change(|stored| stored.every_pass = every);
+    }
+
+    /// Sets how reports are written.
+    pub fn set_reports(&self, reports: Reports) {
+        let fits = |text: &String| text.chars().count() <= TEXT_MAX;
+        if fits(&reports.folder) && fits(&reports.name) {
+            self.change(|stored| stored.reports = reports);
+        }
+    }
+
+    /// Writes a report of all results, on a thread of its own.
+    pub fn report(&self) {
+        self.report_of(|_| true);
+    }
+
+    /// A bounce has ended in which these results came.
+    pub(super) fn bounced(&self, numbers: &[u64]) {
+        if !numbers.is_empty() && self.lock().stored.reports.automatic {
+            self.report_of(|result| numbers.contains(&result.number));
+        }
+    }
+
+    /// Adds a result; gives the number it got. It replaces those it covers, unless every pass is kept.
+    pub fn add(&self, mut result: CheckResult) -> u64 {
+        self.change(|stored| {
+            result.number = stored.results.iter().map(|r| r.number).max().unwrap_or(0) + 1;
+            if !stored.every_pass {
+                stored.results.retain(|old| !old.is_covered_by(&result));
+            }
+            let number = result.number;
+            stored.results.push(result);
+            stored.shorten();
+            number
+        })
+    }
+
+    /// Says how the check that is on stands.
+    pub fn run(&self, running: Option<RunningCheck>) {
+        self.lock().running = running;
+    }
+
+    fn report_of(&self, wanted: impl Fn(&CheckResult) -> bool) {
+        let mut book = self.lock();
+        book.writing.retain(|thread| !thread.is_finished());
+        let Stored { reports, results, .. } = &book.stored;
+        let results: Vec<CheckResult> = results.iter().filter(|r| wanted(r)).cloned().collect();
+        let job = Job::new(reports.clone(), results);
+        let told = Arc::clone(&book.told);
+        let thread = std::thread::Builder::new().name("plumbtone-report".to_owned());
+        let spawned = thread.spawn(move || tell(&told, report::write(&job)));
+        match spawned {
+            Ok(thread) => book.writing.push(thread),
+            Err(error) => tell(&book.told, Err(error.to_string())),
+        }
+    }
+
+    fn change<R>(&self, f: impl FnOnce(&mut Stored) -> R) -> R {
+        let mut book = self.lock();
+        book.revision += 1;
+        f(&mut book.stored)
+    }
+
+    fn lock(&self) -> MutexGuard<'_, Book> {
+        self.0.lock().unwrap_or_else(PoisonError::into_inner)
+    }
+}
+
+impl Stored {
+    /// Lets the oldest results go until what is left is small enough.
+    pub(super) fn shorten(&mut self) {
+        let mut spans: usize = self.results.iter().map(|result| result.spans.len()).sum();
+        let mut surplus = 0;
+        for result in &self.results {
+            let left = self.results.len() - surplus;
+            if left <= RESULTS_MAX && (spans <= SPANS_IN_ALL_MAX || left == 1) {
+                break;
+            }
+            spans -= result.spans.len();
+            surplus += 1;
+        }
+        self.results.drain(..surplus);
+        self.left_out += surplus as u64;
+    }
+}
+
+fn tell(to: &Mutex<Option<Told>>, came: Result<String, String>) {
+    let told = match came {
+        Ok(place) => Told::Written(place),
+        Err(why) => Told::Failed(why),
+    };
+    *to.lock().unwrap_or_else(PoisonError::into_inner) = Some(told);
+}
+
+impl<'a> PersistentField<'a, Stored> for Results {
+    fn set(&self, new_value: Stored) {
+        self.change(|stored| *stored = new_value);
+    }
+
+    fn map<F: Fn(&Stored) -> R, R>(&self, f: F) -> R {
+        f(&self.lock().stored)
+    }
+}
