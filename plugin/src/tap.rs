@@ -414,9 +414,9 @@ mod tests {
         block(&mut tap, &controls, 1.0, 64);
         let order: Vec<Mark> = events(&mut intake)
             .into_iter()
-            .filter(|mark| matches!(mark.event, Event::Start | Event::End))
+            .filter(|mark| matches!(mark.event, Event::Start | Event::End { .. }))
             .collect();
-        let expected = [(0, Event::Start), (64, Event::End), (64, Event::Start)]
+        let expected = [(0, Event::Start), (64, Event::End { bounce: false }), (64, Event::Start)]
             .map(|(after, event)| Mark { after, event });
         assert_eq!(order, expected, "start, end, start");
     }
