@@ -19,6 +19,7 @@ use plumbtone_analysis::check::{Check, CheckSettings, Reference, Verdict};
 use plumbtone_analysis::tuning::Tuning;
 use plumbtone_analysis::{Gap, Reading, VERSION};
 
+pub(crate) use self::report::CAUTION;
 pub use self::result::{CheckResult, Extent, InTrail, OutsideSpan, VerdictWord};
 pub use self::results::{Reports, Results, RunningCheck, Snapshot, Stored, Told};
 pub(crate) use self::stored::read;

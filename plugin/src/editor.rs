@@ -1,6 +1,7 @@
 //! The editor: shows what the worker said last, and never waits for it. Each view is a function of plain data.
 
 mod band;
+mod checks;
 mod copy;
 mod drift;
 mod field;
