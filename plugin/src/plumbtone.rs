@@ -72,6 +72,8 @@ impl Plumbtone {
 impl Drop for Plumbtone {
     fn drop(&mut self) {
         self.end();
+        // A report that was begun is finished, whatever the host does next.
+        self.parameters.results.finish_reports();
     }
 }
 

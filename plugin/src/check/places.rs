@@ -61,16 +61,28 @@ impl Places {
         }
     }
 
+    /// Bar and beat, rounded to a thousandth: hosts' own rounding differs from block to block.
     fn bar_beat(&self, at: u64) -> Option<BarBeat> {
         let oldest = self.anchors.get(1).map_or(u64::MAX, |anchor| anchor.at);
-        let known = !self.forgotten || at >= oldest;
-        self.of(at).bar_beat.filter(|found| known && found.beat.is_finite())
+        if self.forgotten && at < oldest {
+            return None;
+        }
+        let BarBeat { bar, beat } = self.of(at).bar_beat.filter(|found| found.beat.is_finite())?;
+        let beat = (1000.0 * beat).round() / 1000.0;
+        let (beats, _) = self.anchor(at)?.transport.signature?;
+        let next = beat >= f64::from(beats) + 1.0;
+        Some(if next { BarBeat { bar: bar + 1, beat: 1.0 } } else { BarBeat { bar, beat } })
     }
 
     fn of(&self, at: u64) -> SessionPosition {
-        let after = self.anchors.partition_point(|anchor| anchor.at <= at);
-        let anchor = self.anchors.get(after.saturating_sub(1));
+        let anchor = self.anchor(at);
         anchor.map_or_else(SessionPosition::default, |a| a.position(at, self.sample_rate_hz))
+    }
+
+    /// The newest word of the transport at a position; the first one before that.
+    fn anchor(&self, at: u64) -> Option<&Anchor> {
+        let after = self.anchors.partition_point(|anchor| anchor.at <= at);
+        self.anchors.get(after.saturating_sub(1))
     }
 }
 
@@ -99,6 +111,8 @@ mod tests {
         let mut places = Places::new(Some(anchor(1_000, 0, 120.0, 0.0)), RATE_HZ);
         places.add(anchor(193_000, 192_000, 480.0, 8.0));
         let extent = places.extent(97_000, 241_000);
+        // Just before a bar is the bar, by rounding.
+        assert_eq!(places.extent(96_998, 97_000).start_bar, Some(2), "two samples early");
         assert_eq!((extent.start_sample, extent.end_sample), (96_000, 240_000), "{extent:?}");
         assert_eq!((extent.start_bar, extent.end_bar), (Some(2), Some(5)), "{extent:?}");
         assert_eq!((extent.start_beat, extent.end_beat), (Some(1.0), Some(1.0)), "{extent:?}");

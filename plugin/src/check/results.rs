@@ -34,20 +34,11 @@ struct Book {
     told: Arc<Mutex<Option<Told>>>,
 }
 
-impl Drop for Book {
-    fn drop(&mut self) {
-        // A report that was begun is finished, whatever the host does with the instance.
-        for thread in self.writing.drain(..) {
-            // A writer that panicked has told nothing, and there is nothing to add.
-            let _ = thread.join();
-        }
-    }
-}
-
 /// What a session keeps of the checks.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Stored {
-    pub(super) format: u64,
+    /// Version of this form.
+    pub format: u64,
     /// Whether a pass over a stretch that was checked before is kept beside that.
     pub every_pass: bool,
     /// How reports are written.
@@ -176,6 +167,15 @@ impl Results {
     /// Writes a report of all results, on a thread of its own.
     pub fn report(&self) {
         self.report_of(|_| true);
+    }
+
+    /// Waits for the reports that are being written.
+    pub(crate) fn finish_reports(&self) {
+        let writing = core::mem::take(&mut self.lock().writing);
+        for thread in writing {
+            // A writer that panicked has told nothing, and there is nothing to add.
+            let _ = thread.join();
+        }
     }
 
     /// A bounce has ended in which these results came.

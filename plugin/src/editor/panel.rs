@@ -19,13 +19,13 @@ const ACTIONS: f32 = 34.0;
 pub(crate) enum Tab {
     #[default]
     Sound,
-    Check,
+    Checks,
     Settings,
 }
 
 impl Tab {
     const ALL: [(Self, &'static str); 3] =
-        [(Self::Sound, "Sound"), (Self::Check, "Check"), (Self::Settings, "Settings")];
+        [(Self::Sound, "Sound"), (Self::Checks, "Checks"), (Self::Settings, "Settings")];
 }
 
 /// What is asked to be copied.
@@ -63,7 +63,7 @@ pub(crate) fn show(
     let body = rect.with_min_y(rect.top() + TABS).with_max_y(rect.bottom() - ACTIONS);
     match tab {
         Tab::Sound => sound::show(ui, body, shown, figures, palette),
-        Tab::Check => checks::show(ui, body, checks, shown, palette),
+        Tab::Checks => checks::show(ui, body, checks, shown, palette),
         Tab::Settings => settings::show(ui, body, look, bench),
     }
     copies(ui, rect.with_min_y(rect.bottom() - ACTIONS), palette)
