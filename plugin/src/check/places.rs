@@ -9,6 +9,10 @@ use crate::session::{Anchor, BarBeat, SessionPosition};
 /// Most words of the transport that one check remembers: a tempo that never stands still gives one with every block.
 const ANCHORS_MAX: usize = 4096;
 
+/// What lies this much below the middle between two thousandths of a beat is rounded up with it: the middle itself is a
+/// common place, and hosts tell it a little more or less.
+const MIDDLE: f64 = 1e-4;
+
 /// Where the transport was over one check: it never jumped, but its tempo may have changed.
 #[derive(Debug)]
 pub(super) struct Places {
@@ -68,7 +72,7 @@ impl Places {
             return None;
         }
         let BarBeat { bar, beat } = self.of(at).bar_beat.filter(|found| found.beat.is_finite())?;
-        let beat = (1000.0 * beat).round() / 1000.0;
+        let beat = (1000.0 * beat + 0.5 + MIDDLE).floor() / 1000.0;
         let (beats, _) = self.anchor(at)?.transport.signature?;
         let next = beat >= f64::from(beats) + 1.0;
         Some(if next { BarBeat { bar: bar + 1, beat: 1.0 } } else { BarBeat { bar, beat } })
