@@ -29,6 +29,8 @@ struct Book {
     stored: Stored,
     revision: u64,
     running: Option<RunningCheck>,
+    /// What the host calls the track; empty while it does not tell.
+    track: String,
     /// Reports being written.
     writing: Vec<JoinHandle<()>>,
     told: Arc<Mutex<Option<Told>>>,
@@ -56,7 +58,7 @@ pub struct Reports {
     pub automatic: bool,
     /// The folder.
     pub folder: String,
-    /// What their names begin with.
+    /// What their names begin with; without it the track's name as the host tells it.
     pub name: String,
 }
 
@@ -164,6 +166,11 @@ impl Results {
         }
     }
 
+    /// The host calls the track this: reports are named by it when no other name is set.
+    pub(crate) fn set_track(&self, name: &str) {
+        name.clone_into(&mut self.lock().track);
+    }
+
     /// Writes a report of all results, on a thread of its own.
     pub fn report(&self) {
         self.report_of(|_| true);
@@ -209,7 +216,11 @@ impl Results {
         book.writing.retain(|thread| !thread.is_finished());
         let Stored { reports, results, .. } = &book.stored;
         let results: Vec<CheckResult> = results.iter().filter(|r| wanted(r)).cloned().collect();
-        let job = Job::new(reports.clone(), results);
+        let mut reports = reports.clone();
+        if reports.name.trim().is_empty() {
+            reports.name.clone_from(&book.track);
+        }
+        let job = Job::new(reports, results);
         let told = Arc::clone(&book.told);
         let thread = std::thread::Builder::new().name("plumbtone-report".to_owned());
         let spawned = thread.spawn(move || tell(&told, report::write(&job)));
@@ -263,5 +274,59 @@ impl<'a> PersistentField<'a, Stored> for Results {
 
     fn map<F: Fn(&Stored) -> R, R>(&self, f: F) -> R {
         f(&self.lock().stored)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use std::fs;
+
+    use super::super::fixtures::result;
+    use super::*;
+
+    fn starts(results: &Results) -> Vec<f64> {
+        let mut snapshot = Snapshot::default();
+        results.look(&mut snapshot);
+        snapshot.stored.results.iter().map(|result| result.extent.start_s).collect()
+    }
+
+    #[test]
+    fn a_pass_replaces_what_it_covers_and_nothing_else() {
+        let results = Results::default();
+        let stream = |start_s| CheckResult { in_session: false, ..result(start_s, start_s + 1.0) };
+        for added in [result(0.0, 4.0), result(4.0, 8.0), result(6.0, 12.0), stream(20.0)] {
+            results.add(added);
+        }
+        results.add(result(4.02, 9.0));
+        assert_eq!(starts(&results), [0.0, 6.0, 20.0, 4.02], "the second one is covered");
+        results.add(stream(20.0));
+        results.add(result(0.0, 30.0));
+        assert_eq!(starts(&results), [20.0, 20.0, 0.0], "no session tells that these are the same");
+        results.keep_every_pass(true);
+        results.add(result(0.0, 30.0));
+        assert_eq!(starts(&results), [20.0, 20.0, 0.0, 0.0], "every pass is kept");
+    }
+
+    #[test]
+    fn a_report_is_named_by_the_track_unless_a_name_is_set() {
+        for (set, name) in [("", "Lead vocal"), ("Take", "Take")] {
+            let folder = tempfile::tempdir().unwrap();
+            let results = Results::default();
+            results.add(result(0.0, 3.0));
+            results.set_track("Lead vocal");
+            results.set_reports(Reports {
+                automatic: false,
+                folder: folder.path().display().to_string(),
+                name: set.to_owned(),
+            });
+            results.report();
+            results.finish_reports();
+            let names: Vec<String> = fs::read_dir(folder.path())
+                .unwrap()
+                .map(|entry| entry.unwrap().file_name().to_string_lossy().into_owned())
+                .collect();
+            assert_eq!(names.len(), 3, "{names:?}");
+            assert!(names.iter().all(|file| file.starts_with(name)), "{names:?}, not {name}");
+        }
     }
 }
