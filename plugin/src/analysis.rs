@@ -9,6 +9,7 @@ use crate::convert::{index, nearest, position};
 use crate::delivery::Delivery;
 use crate::marks::{Event, Mark};
 use crate::readout::Condition;
+use crate::session::Anchor;
 use crate::tap::{Intake, Patience};
 
 /// Most samples taken in one turn of an instance in real time, which may have fallen behind, and of one whose host waits:
@@ -135,7 +136,13 @@ impl Analysis {
         match event {
             Event::Start => self.start(),
             Event::Controls(controls) => self.control(controls),
-            Event::Transport(transport) => self.delivery.anchor(self.position, transport),
+            Event::Transport(transport) => {
+                let anchor = Anchor { at: self.position, transport };
+                if self.delivery.checks.is_ended_by(&anchor) {
+                    self.finish();
+                }
+                self.delivery.anchor(anchor);
+            }
             Event::Jump => self.finish(),
             Event::Missed { samples, cause } => {
                 self.delivery.miss(samples, cause);
@@ -145,8 +152,11 @@ impl Analysis {
                 self.position += samples;
             }
             Event::Pause => self.rest(Condition::Paused),
-            Event::Note { key, down } => self.delivery.key(key, down),
-            Event::End => self.rest(Condition::Ended),
+            Event::Note { key, down } => self.delivery.key(self.position, key, down),
+            Event::End { bounce } => {
+                self.rest(Condition::Ended);
+                self.delivery.checks.close(bounce);
+            }
         }
     }
 
@@ -166,8 +176,8 @@ impl Analysis {
         let before = core::mem::replace(&mut self.controls, controls);
         self.delivery.tune(controls.tuning());
         self.delivery.freeze(controls.freeze);
-        if controls.channel != before.channel {
-            // Another signal from here on: nothing before belongs to it.
+        if controls.channel != before.channel || (before.check && !controls.check) {
+            // Another signal from here on, or the end of what is checked: nothing before belongs to what follows.
             self.finish();
         }
         if controls.settings(rate) == before.settings(rate) {
@@ -185,18 +195,31 @@ impl Analysis {
         while !samples.is_empty() {
             if self.settle_at.is_some_and(|at| at <= self.position) {
                 self.settle_at = None;
-                self.finish();
+                self.flush();
                 self.engine = Engine::Absent;
             }
             let due = self.settle_at.map_or(usize::MAX, |at| index(at - self.position));
             let (now, later) = samples.split_at(samples.len().min(due));
-            self.ready();
+            self.arm();
             self.position += position(now.len());
             if let Engine::Running(engine) = &mut self.engine {
                 self.delivery.hear();
                 engine.push(now, &mut self.delivery);
             }
             samples = later;
+        }
+    }
+
+    /// Has the engine ready, and a check on if it should be.
+    fn arm(&mut self) {
+        let begins = self.controls.check && !self.delivery.checks.is_on();
+        if begins {
+            self.flush();
+        }
+        self.ready();
+        if begins && let Engine::Running(engine) = &self.engine {
+            let rate = self.delivery.readout.sample_rate_hz;
+            self.delivery.checks.begin(self.position, &self.controls, rate, engine.hop());
         }
     }
 
@@ -228,7 +251,14 @@ impl Analysis {
         }
     }
 
+    /// Ends what is measured, and with it the check that is on.
     fn finish(&mut self) {
+        self.flush();
+        self.delivery.checks.end(self.position);
+    }
+
+    /// Delivers what is still to come.
+    fn flush(&mut self) {
         if let Engine::Running(engine) = &mut self.engine {
             engine.finish(&mut self.delivery);
         }

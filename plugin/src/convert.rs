@@ -35,6 +35,11 @@ pub(crate) fn single(x: f64) -> f32 {
     x as f32
 }
 
+/// The decimal number that a single-precision one stands for, such as 7.3, in double precision.
+pub(crate) fn decimal(x: f32) -> f64 {
+    x.to_string().parse().unwrap_or_else(|_| f64::from(x))
+}
+
 /// How far one stream position lies after another (negative: before), in samples; saturates.
 pub(crate) fn signed_distance(from: u64, to: u64) -> i64 {
     if to >= from {

@@ -1,4 +1,4 @@
-//! Where an instance's engine delivers: the readout for the editor, and the log if one is wanted.
+//! Where an instance's engine delivers: the readout for the editor, the checks, and the log if one is wanted.
 
 use std::collections::VecDeque;
 use std::sync::{Arc, Mutex, PoisonError};
@@ -8,10 +8,11 @@ use plumbtone_analysis::tuning::{NoteName, Tuning};
 use plumbtone_analysis::{Gap, GapReason, Reading, Sink, State};
 use triple_buffer::Input;
 
+use crate::check::Checks;
 use crate::marks::Cause;
 use crate::readings_log::{Line, ReadingsLog};
 use crate::readout::{Condition, Gaps, Live, Missing, Readout};
-use crate::session::{Anchor, SessionPosition, Transport};
+use crate::session::{Anchor, SessionPosition};
 use crate::status::Status;
 use crate::trail::Trail;
 
@@ -23,6 +24,8 @@ const SILENT_READINGS: u32 = 100;
 pub(crate) struct Delivery {
     /// What is published next.
     pub(crate) readout: Readout,
+    /// What is checked.
+    pub(crate) checks: Checks,
     changed: bool,
     /// Whether the change is worth drawing.
     visible: bool,
@@ -48,9 +51,11 @@ impl Delivery {
         output: Input<Readout>,
         repaint: RepaintNotifier,
         log: Option<ReadingsLog>,
+        checks: Checks,
     ) -> Self {
         Self {
             readout: Readout::default(),
+            checks,
             changed: false,
             visible: false,
             silent_readings: 0,
@@ -96,6 +101,7 @@ impl Delivery {
         self.readout.played = None;
         self.held.clear();
         self.anchors.clear();
+        self.checks.start();
         self.stand(Condition::Waiting);
     }
 
@@ -115,16 +121,19 @@ impl Delivery {
         self.frozen = frozen;
     }
 
-    pub(crate) fn anchor(&mut self, at: u64, transport: Transport) {
-        self.anchors.push_back(Anchor { at, transport });
+    pub(crate) fn anchor(&mut self, anchor: Anchor) {
+        self.anchors.push_back(anchor);
+        self.checks.anchor(anchor);
     }
 
-    pub(crate) fn key(&mut self, key: u8, down: bool) {
+    /// A key goes down or up at a position.
+    pub(crate) fn key(&mut self, at: u64, key: u8, down: bool) {
         self.held.retain(|&held| held != key);
         if down {
             self.held.push(key);
         }
         self.readout.played = self.held.last().map(|&key| NoteName::from_midi(i16::from(key)));
+        self.checks.key(at, self.readout.played.map(|note| self.readout.tuning.frequency_hz(note)));
         self.show();
     }
 
@@ -204,6 +213,7 @@ impl Sink for Delivery {
             trail.push(stream, reading, &session);
             trail.next()
         });
+        self.checks.reading(reading, trail_end.saturating_sub(1), self.status.shown());
         self.readout.weigh(reading);
         self.changed = true;
         if self.frozen && self.readout.measured {
@@ -215,6 +225,7 @@ impl Sink for Delivery {
     }
 
     fn gap(&mut self, gap: &Gap) {
+        self.checks.gap(gap);
         // What was lost on the way is counted where it is told, with its cause.
         if gap.reason == GapReason::NonFinite {
             self.readout.gaps.non_finite += gap.end - gap.start;

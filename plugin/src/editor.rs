@@ -1,6 +1,7 @@
 //! The editor: shows what the worker said last, and never waits for it. Each view is a function of plain data.
 
 mod band;
+mod checks;
 mod copy;
 mod drift;
 mod field;
@@ -23,6 +24,7 @@ use std::time::Instant;
 use nice_plug::context::gui::GuiContext;
 use nice_plug::editor::dpi::LogicalSize;
 use nice_plug::editor::{ResizeHint, SizeConstraints};
+use nice_plug::plugin::TrackInfo;
 use nice_plug_egui::baseview::HandlerError;
 use nice_plug_egui::{
     EguiEditor, EguiEditorState, EguiNiceSettings, Frame, NiceEguiApp, RepaintNotifier,
@@ -141,6 +143,10 @@ impl NiceEguiApp for Window {
 
     fn zoom_factor_changed(&mut self, zoom_factor: f32) {
         self.parameters.kept.set_zoom(f64::from(zoom_factor));
+    }
+
+    fn track_info_changed(&mut self, info: TrackInfo) {
+        self.parameters.results.set_track(info.name());
     }
 
     fn editor_closed(&mut self) {

@@ -29,7 +29,10 @@ pub(crate) enum Event {
     /// A key of the note input went down or up.
     Note { key: u8, down: bool },
     /// The stream ends here.
-    End,
+    End {
+        /// Whether it was rendered offline.
+        bounce: bool,
+    },
 }
 
 /// Why samples did not come through.

@@ -11,6 +11,7 @@ use nice_plug::prelude::*;
 
 pub use choices::{Channel, Reference, TemperamentChoice};
 
+use crate::check::Results;
 use crate::state::{Kept, Unsound};
 
 /// All parameters, and what a session keeps beside them.
@@ -28,6 +29,9 @@ pub struct Parameters {
     /// The part of the state that is no parameter.
     #[persist = "kept"]
     pub kept: Kept,
+    /// The results of drift checks.
+    #[persist = "checks"]
+    pub results: Results,
     /// What of the last loaded state was unsound.
     #[persist = "unsound"]
     pub unsound: Unsound,
@@ -92,6 +96,7 @@ impl Default for Parameters {
             analysis: AnalysisParameters::new(&concert_pitch_hz),
             check: CheckParameters::new(&concert_pitch_hz),
             kept: Kept::default(),
+            results: Results::default(),
             unsound: Unsound::default(),
         }
     }

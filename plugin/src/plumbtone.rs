@@ -9,6 +9,7 @@ use plumbtone_analysis::Analyzer;
 use triple_buffer::{Output, triple_buffer};
 
 use crate::analysis::Analysis;
+use crate::check::Checks;
 use crate::controls::Controls;
 use crate::convert::index;
 use crate::delivery::Delivery;
@@ -42,10 +43,12 @@ impl Default for Plumbtone {
         let repaint = RepaintNotifier::new();
         let log = ReadingsLog::open();
         let status = Arc::new(Status::new(log.is_some()));
-        let delivery = Delivery::new(Arc::clone(&status), input, repaint.clone(), log);
+        let parameters = Arc::<Parameters>::default();
+        let checks = Checks::new(parameters.results.clone());
+        let delivery = Delivery::new(Arc::clone(&status), input, repaint.clone(), log, checks);
         let trail = delivery.trail();
         Self {
-            parameters: Arc::default(),
+            parameters,
             status,
             trail,
             place: Place::take(Analysis::new(Analyzer::new, delivery)),
@@ -69,6 +72,8 @@ impl Plumbtone {
 impl Drop for Plumbtone {
     fn drop(&mut self) {
         self.end();
+        // A report that was begun is finished, whatever the host does next.
+        self.parameters.results.finish_reports();
     }
 }
 

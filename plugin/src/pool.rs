@@ -213,6 +213,7 @@ mod tests {
 
     use super::*;
     use crate::analysis::Build;
+    use crate::check::{Checks, Results};
     use crate::controls::Controls;
     use crate::delivery::Delivery;
     use crate::readout::{Condition, Readout};
@@ -225,7 +226,13 @@ mod tests {
 
     fn place(build: Build) -> (Place, Tap, Output<Readout>) {
         let (input, output) = triple_buffer(&Readout::default());
-        let delivery = Delivery::new(Arc::default(), input, RepaintNotifier::new(), None);
+        let delivery = Delivery::new(
+            Arc::default(),
+            input,
+            RepaintNotifier::new(),
+            None,
+            Checks::new(Results::default()),
+        );
         let place = Place::take(Analysis::new(build, delivery));
         let status = Arc::new(Status::default());
         status.watch(true);

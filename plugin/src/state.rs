@@ -10,6 +10,7 @@ use nice_plug::prelude::*;
 use serde::{Deserialize, Serialize};
 use serde_json::Value;
 
+use crate::check;
 use crate::editor::Theme;
 use crate::parameters::Parameters;
 
@@ -17,8 +18,9 @@ use crate::parameters::Parameters;
 const FORMAT: u64 = 1;
 /// Smallest and largest zoom of the editor.
 const ZOOM: (f64, f64) = (0.5, 3.0);
-/// Keys of the two persistent fields.
+/// Keys of the persistent fields.
 const KEPT: &str = "kept";
+const CHECKS: &str = "checks";
 const UNSOUND: &str = "unsound";
 
 /// The part of the state that is no parameter.
@@ -122,6 +124,10 @@ pub(crate) fn filter(state: &mut PluginState) {
     let kept = kept_from(state.fields.get(KEPT).map(String::as_str), &mut findings);
     if let Ok(kept) = serde_json::to_string(&kept) {
         state.fields.insert(KEPT.to_owned(), kept);
+    }
+    let checks = check::read(state.fields.get(CHECKS).map(String::as_str), &mut findings);
+    if let Ok(checks) = serde_json::to_string(&checks) {
+        state.fields.insert(CHECKS.to_owned(), checks);
     }
     if let Ok(findings) = serde_json::to_string(&Findings(findings)) {
         state.fields.insert(UNSOUND.to_owned(), findings);

@@ -88,6 +88,8 @@ pub(crate) struct Tap {
     overrun: u64,
     unwatched: u64,
     listening: bool,
+    /// Whether the worker knows of a stream whose end it has not been told.
+    open: bool,
     /// When the stream's first block came.
     begun: Option<Instant>,
 }
@@ -113,6 +115,7 @@ impl Tap {
             overrun: 0,
             unwatched: 0,
             listening: false,
+            open: false,
             begun: None,
         };
         (tap, Intake { samples: samples_out, marks: marks_out, format })
@@ -137,9 +140,9 @@ impl Tap {
 
     /// Ends the stream: the worker delivers what is still to come.
     pub(crate) fn end(&mut self) {
-        if self.listening && (self.has_room(0) || self.wait_for_room(0)) {
-            self.mark(0, Event::End);
-            self.listening = false;
+        if self.open && (self.has_room(0) || self.wait_for_room(0)) {
+            self.mark(0, Event::End { bounce: self.may_wait() });
+            (self.listening, self.open) = (false, false);
         }
     }
 
@@ -234,7 +237,7 @@ impl Tap {
 
     /// Marks all that is new since the last block that got through; at most [`MARKS_A_BLOCK`] marks.
     fn mark_changes(&mut self, controls: &Controls, transport: &Transport) {
-        self.listening = true;
+        (self.listening, self.open) = (true, true);
         if self.starting {
             self.starting = false;
             self.begun = Some(Instant::now());
@@ -414,9 +417,9 @@ mod tests {
         block(&mut tap, &controls, 1.0, 64);
         let order: Vec<Mark> = events(&mut intake)
             .into_iter()
-            .filter(|mark| matches!(mark.event, Event::Start | Event::End))
+            .filter(|mark| matches!(mark.event, Event::Start | Event::End { .. }))
             .collect();
-        let expected = [(0, Event::Start), (64, Event::End), (64, Event::Start)]
+        let expected = [(0, Event::Start), (64, Event::End { bounce: false }), (64, Event::Start)]
             .map(|(after, event)| Mark { after, event });
         assert_eq!(order, expected, "start, end, start");
     }

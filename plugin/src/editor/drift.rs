@@ -3,23 +3,26 @@
 mod columns;
 mod paint;
 mod reference;
+mod spans;
 mod ticks;
 
 use std::sync::{Mutex, TryLockError};
 
-use egui::{Align2, Key, Rect, Response, Role, Sense, Ui, WidgetInfo, pos2, vec2};
+use egui::{Align2, Key, Pos2, Rect, Response, Role, Sense, Ui, WidgetInfo, pos2, vec2};
 
 use self::columns::{Column, columns};
 use self::paint::{Frame, grid, outside, times, trace};
 use self::reference::Target;
+use self::spans::spans;
 use self::ticks::{Tick, ticks};
+use super::checks::{Checks, colour};
 use super::field::{self, Bench, Field, Place};
 use super::ink;
 use super::knob::Knob;
 use super::plumb::{CENTS, Calm};
 use super::screen::Shown;
 use super::steady::signed;
-use super::theme::{CORNER, PAD, bold};
+use super::theme::{CORNER, PAD, Palette, bold};
 use crate::convert::{index, nearest, single};
 use crate::parameters::Reference;
 use crate::readout::Condition;
@@ -41,6 +44,9 @@ const LABELS_APART: f64 = 76.0;
 const TOLERANCES: f64 = 1.6;
 /// A pitch that holds for less than this many seconds is passed over when the scale and the worst are found.
 const LASTING_S: f64 = 0.25;
+/// A stretch that is jumped to is shown with this many times its length, and at least so many seconds.
+const JUMP_ROOM: f64 = 1.25;
+const JUMP_LEAST_S: f64 = 4.0;
 /// Share of the span that an arrow key moves by.
 const KEY_SHARE: f64 = 0.25;
 
@@ -115,6 +121,13 @@ impl Drift {
         self.span_s = seconds.clamp(SPAN_S.0, SPAN_S.1);
     }
 
+    /// Shows a stretch, given by indices of the trail, with some room around it.
+    pub(crate) fn jump(&mut self, (from, to): (f64, f64)) {
+        let step_s = self.picture.step_s.max(1e-6);
+        self.span(((to - from) * step_s * JUMP_ROOM).max(JUMP_LEAST_S));
+        self.end = Some(0.5 * (from + to) + 0.5 * self.span_s / step_s);
+    }
+
     /// Looks at the trail for a picture this many points wide. When the worker holds the trail just now, the last picture
     /// stays for a frame.
     pub(crate) fn update(&mut self, trail: &Mutex<Trail>, width: f32, shown: &Shown<'_>) {
@@ -164,7 +177,7 @@ impl Drift {
         &mut self,
         ui: &mut Ui,
         rect: Rect,
-        shown: &Shown<'_>,
+        (shown, checks): (&Shown<'_>, &Checks),
         bench: &mut Bench<'_>,
     ) {
         let palette = bench.palette;
@@ -185,14 +198,15 @@ impl Drift {
         times(ui, &frame, &self.picture.ticks, palette);
         trace(ui, &frame, &self.picture.columns, palette);
         outside(ui, &frame, &self.picture.columns, tolerance, palette);
-        self.head(ui, rect, (tolerance, shown), bench);
+        spans(ui, &frame, checks.snapshot(), palette);
+        self.head(ui, rect, (shown, checks), bench);
     }
 
     fn head(
         &mut self,
         ui: &mut Ui,
         rect: Rect,
-        (tolerance, shown): (f32, &Shown<'_>),
+        (shown, checks): (&Shown<'_>, &Checks),
         bench: &mut Bench<'_>,
     ) {
         let mut x = rect.left() + 12.0;
@@ -215,16 +229,31 @@ impl Drift {
             }
             right -= 64.0;
         }
+        if right - x > 170.0 {
+            self.verdict(ui, pos2(right, rect.top() + 15.0), (shown, checks), palette);
+        }
+    }
+
+    /// What a check says of the stretch shown; without one, what is seen in it.
+    fn verdict(
+        &self,
+        ui: &mut Ui,
+        at: Pos2,
+        (shown, checks): (&Shown<'_>, &Checks),
+        palette: &Palette,
+    ) {
+        let at = (at, Align2::RIGHT_CENTER);
+        if let Some((verdict, text)) = checks.verdict((self.picture.start, self.picture.end)) {
+            ink::text(ui, at, &text, bold(12.0), colour(verdict, palette));
+            return;
+        }
         let Some(worst) = self.worst() else { return };
-        let beyond = worst.abs() > tolerance;
+        let beyond = worst.abs() > shown.parameters.check.tolerance.value();
         let (word, colour) =
             if beyond { ("outside", palette.stray) } else { ("within", palette.within) };
         let text = format!("{word}: worst {} ct here", signed(f64::from(worst), 1));
-        let at = (pos2(right, rect.top() + 15.0), Align2::RIGHT_CENTER);
-        if right - x > 170.0 {
-            ink::text(ui, at, &text, bold(12.0), colour)
-                .on_hover_text("The drift line's largest distance from the reference in the stretch shown, vibrato left aside.");
-        }
+        ink::text(ui, at, &text, bold(12.0), colour)
+            .on_hover_text("The drift line's largest distance from the reference in the stretch shown, vibrato left aside.");
     }
 
     /// The drift line's farthest point in the stretch shown.

@@ -2,6 +2,7 @@
 
 use egui::{Align2, Rect, Response, Role, Sense, Stroke, Ui, WidgetInfo, pos2, vec2};
 
+use super::checks::{self, Checks};
 use super::field::Bench;
 use super::ink;
 use super::screen::Shown;
@@ -18,11 +19,13 @@ const ACTIONS: f32 = 34.0;
 pub(crate) enum Tab {
     #[default]
     Sound,
+    Checks,
     Settings,
 }
 
 impl Tab {
-    const ALL: [(Self, &'static str); 2] = [(Self::Sound, "Sound"), (Self::Settings, "Settings")];
+    const ALL: [(Self, &'static str); 3] =
+        [(Self::Sound, "Sound"), (Self::Checks, "Checks"), (Self::Settings, "Settings")];
 }
 
 /// What is asked to be copied.
@@ -47,7 +50,7 @@ const COPIES: [(Copy, &str, &str); 3] = [
 pub(crate) fn show(
     ui: &mut Ui,
     rect: Rect,
-    (tab, look): (&mut Tab, &mut Look<'_>),
+    (tab, look, checks): (&mut Tab, &mut Look<'_>, &mut Checks),
     (shown, figures): (&Shown<'_>, &Figures),
     bench: &mut Bench<'_>,
 ) -> Option<Copy> {
@@ -60,6 +63,7 @@ pub(crate) fn show(
     let body = rect.with_min_y(rect.top() + TABS).with_max_y(rect.bottom() - ACTIONS);
     match tab {
         Tab::Sound => sound::show(ui, body, shown, figures, palette),
+        Tab::Checks => checks::show(ui, body, checks, shown, palette),
         Tab::Settings => settings::show(ui, body, look, bench),
     }
     copies(ui, rect.with_min_y(rect.bottom() - ACTIONS), palette)

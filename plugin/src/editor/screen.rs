@@ -5,6 +5,7 @@ use std::sync::Mutex;
 use egui::{Rect, Ui, pos2};
 
 use super::band::{self, Figures};
+use super::checks::Checks;
 use super::drift::Drift;
 use super::field::{Bench, Editing};
 use super::knob::Gesture;
@@ -58,6 +59,7 @@ pub struct Screen {
     sound: sound::Figures,
     plumb: Plumb,
     drift: Drift,
+    checks: Checks,
     editing: Editing,
 }
 
@@ -125,6 +127,7 @@ impl Screen {
         self.figures.update(shown);
         self.sound.update(shown);
         self.plumb.update(shown);
+        self.checks.update(&shown.parameters.results);
         self.drift.update(shown.trail, width - 2.0 * MARGIN, shown);
     }
 
@@ -137,7 +140,7 @@ impl Screen {
     ) -> Option<Copy> {
         let palette = self.theme.palette();
         ui.painter().rect_filled(area, 0.0, palette.ground);
-        let Self { theme, zoom, tab, figures, sound, plumb, drift, editing } = self;
+        let Self { theme, zoom, tab, figures, sound, plumb, drift, checks, editing } = self;
         let mut bench = Bench { parameters: shown.parameters, palette, editing, gestures };
         let top = area.top() + band::HEIGHT;
         band::show(ui, area.with_max_y(top), shown, figures, &mut bench);
@@ -151,7 +154,7 @@ impl Screen {
         if area.height() >= TALL {
             let height = (area.height() * TRACE_SHARE).clamp(TRACE.0, TRACE.1);
             let trace = body.with_min_y(body.bottom() - height);
-            drift.show(ui, trace, shown, &mut bench);
+            drift.show(ui, trace, (shown, checks), &mut bench);
             body.max.y = trace.top() - GAP;
         }
         let mut asked = None;
@@ -159,10 +162,14 @@ impl Screen {
             let split = body.right() - PANEL;
             let side = Rect::from_min_max(pos2(split, body.top()), body.max);
             let mut look = Look { theme, zoom, plumb };
-            asked = panel::show(ui, side, (tab, &mut look), (shown, sound), &mut bench);
+            asked = panel::show(ui, side, (tab, &mut look, checks), (shown, sound), &mut bench);
             body.max.x = split - GAP;
         }
         plumb.show(ui, body, shown, palette);
+        if let Some(stretch) = checks.jump.take() {
+            drift.jump(stretch);
+            ui.ctx().request_repaint();
+        }
         asked
     }
 }

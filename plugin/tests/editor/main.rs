@@ -1,5 +1,6 @@
 //! The editor without a host or a window: what is shown, what is done to the parameters, and its pictures.
 
+mod checks;
 mod controls;
 mod hostile;
 mod pictures;

@@ -2,7 +2,8 @@
 //! and a few pixels may differ between its versions. `UPDATE_SNAPSHOTS=1 cargo test` makes them anew: look at each.
 
 use egui::{Vec2, vec2};
-use egui_kittest::SnapshotOptions;
+use egui_kittest::kittest::Queryable as _;
+use egui_kittest::{Harness, SnapshotOptions};
 use plumbtone_analysis::State;
 use plumbtone_plugin::editor::Theme;
 
@@ -16,6 +17,10 @@ const PIXELS: usize = 1_500;
 fn picture(name: &str, scene: Scene, size: Vec2) {
     let mut harness = scene.open(size, 1.0);
     harness.run_steps(4);
+    compare(name, &mut harness);
+}
+
+fn compare(name: &str, harness: &mut Harness<'_, Scene>) {
     let options = SnapshotOptions::new()
         .threshold(PIXEL)
         .max_failed_pixels(PIXELS)
@@ -44,4 +49,17 @@ fn no_single_pitch() {
     scene.readout.reading.state = State::Several;
     scene.readout.reading.pitch = None;
     picture("several-pitches", scene, vec2(800.0, 560.0));
+}
+
+#[test]
+fn checks() {
+    for (name, theme) in [("checks-dark", Theme::Dark), ("checks-light", Theme::Light)] {
+        let mut harness = Scene::checked(theme).open(SIZE, 1.0);
+        harness.run_steps(3);
+        harness.get_by_label("Checks").click();
+        harness.run_steps(3);
+        harness.get_by_label_contains("check 2: outside, 9|1.00").click();
+        harness.run_steps(4);
+        compare(name, &mut harness);
+    }
 }

@@ -6,6 +6,7 @@ use egui::Vec2;
 use egui_kittest::Harness;
 use plumbtone_analysis::tuning::ratio;
 use plumbtone_analysis::{Partial, Pitch, Reading, State, Stray, StrayKind, Stretch};
+use plumbtone_plugin::check::{CheckResult, InTrail};
 use plumbtone_plugin::editor::{Gesture, Screen, Shown, Theme, install_fonts};
 use plumbtone_plugin::parameters::Parameters;
 use plumbtone_plugin::readout::{Condition, Readout};
@@ -47,6 +48,19 @@ impl Scene {
     pub(crate) fn string(theme: Theme) -> Self {
         let mut scene = Self::empty(theme);
         scene.play(3_200, |t| Some(drifting(t)), &string_partials(20), &strays());
+        scene
+    }
+
+    /// The same with three checks: one within, one outside, one that heard no single pitch.
+    pub(crate) fn checked(theme: Theme) -> Self {
+        let scene = Self::string(theme);
+        for (verdict, start_s, end_s, outside) in [
+            ("within", 2.0, 8.0, None),
+            ("outside", 16.0, 22.0, Some((18.6, 21.4))),
+            ("unmeasured", 24.0, 28.0, None),
+        ] {
+            scene.parameters.results.add(check(verdict, (start_s, end_s), outside));
+        }
         scene
     }
 
@@ -146,6 +160,42 @@ impl Scene {
             .with_context_setup(install_fonts)
             .build_ui_state(|ui, scene: &mut Self| scene.frame(ui), self)
     }
+}
+
+/// A check over a stretch of the session, in seconds; bars last two of them.
+fn check(verdict: &str, ends: (f64, f64), outside: Option<(f64, f64)>) -> CheckResult {
+    let extent = |(start_s, end_s): (f64, f64)| {
+        let place =
+            |s: f64| ((s * RATE_HZ).round(), (s / 2.0).floor() + 1.0, 1.0 + (s % 2.0) * 2.0);
+        let ((start, start_bar, start_beat), (end, end_bar, end_beat)) =
+            (place(start_s), place(end_s));
+        format!(
+            r#""start_s":{start_s},"end_s":{end_s},"start_sample":{start},"end_sample":{end},
+            "start_bar":{start_bar},"start_beat":{start_beat:?},"end_bar":{end_bar},"end_beat":{end_beat:?}"#
+        )
+    };
+    let reason = if verdict == "unmeasured" { "\"no single pitch was found\"" } else { "null" };
+    let (worst, mean) = match verdict {
+        "within" => ("2.1", "1.9"),
+        "outside" => ("-9.2", "-3.4"),
+        _ => ("null", "null"),
+    };
+    let spans = outside.map_or_else(String::new, |ends| {
+        format!(r#"{{{},"worst_cents":-9.2,"mean_cents":-7.1}}"#, extent(ends))
+    });
+    let text = format!(
+        r#"{{"number":0,{},"in_session":true,"verdict":"{verdict}","reason":{reason},
+        "reference":"nearest note","reference_kind":"nearest","tolerance_cents":5.0,
+        "worst_cents":{worst},"mean_cents":{mean},"drift_cents_per_s":0.08,"drift_sd":0.02,
+        "measured_s":6.0,"measured_share":0.98,"outside_s":0.0,"spans":[{spans}],"spans_left_out":0,
+        "lost_samples":0,"sample_rate_hz":48000.0,"concert_pitch_hz":440.0,"temperament":"equal",
+        "engine_version":"0","comment":""}}"#,
+        extent(ends)
+    );
+    let mut result: CheckResult = serde_json::from_str(&text).unwrap();
+    result.in_trail =
+        Some(InTrail { start: 100.0 * ends.0, end: 100.0 * ends.1, readings_per_s: 100.0 });
+    result
 }
 
 /// Cents over time: a slow rise, a vibrato, a dip below the tolerance, a bump above it.

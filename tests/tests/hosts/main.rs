@@ -5,6 +5,7 @@
 mod allocations;
 mod automation;
 mod bundles;
+mod checks;
 mod editor;
 mod lifecycle;
 mod live;

@@ -13,9 +13,9 @@ const RATE: f64 = 48_000.0;
 /// Tempo in quarter notes a minute; the session is in 3/4.
 const TEMPO: f64 = 90.0;
 /// The session's time when the render begins, in seconds.
-const START_S: f64 = 4.0;
+pub(crate) const START_S: f64 = 4.0;
 
-fn transport(session_s: f64) -> TransportEvent {
+pub(crate) fn transport(session_s: f64) -> TransportEvent {
     let beats = session_s * TEMPO / 60.0;
     let bar = (beats / 3.0).floor();
     TransportEvent {

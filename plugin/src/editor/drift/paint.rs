@@ -27,7 +27,8 @@ pub(crate) struct Frame {
 }
 
 impl Frame {
-    fn x(&self, at: f64) -> f32 {
+    /// Where an index lies.
+    pub(crate) fn x(&self, at: f64) -> f32 {
         let share = (at - self.start) / (self.end - self.start).max(1e-9);
         self.plot.left() + single(share) * self.plot.width()
     }

@@ -1,0 +1,47 @@
+//! Where reports go, when they are written, and what came of the last one.
+
+use egui::{RichText, Role, TextEdit, Ui, WidgetInfo};
+
+use super::super::theme::{FIGURE, Palette, SMALL, sans};
+use super::{Checks, act, say, tick};
+use crate::check::{CAUTION, Results, Told};
+
+/// Draws it.
+pub(super) fn show(ui: &mut Ui, checks: &mut Checks, results: &Results, palette: &Palette) {
+    ui.add_space(6.0);
+    ui.separator();
+    let mut reports = checks.snapshot.stored.reports.clone();
+    let mut changed =
+        entry(ui, &mut reports.folder, ("reports into the folder", "whole path"), palette);
+    changed |= entry(ui, &mut reports.name, ("named", "Plumbtone"), palette);
+    let help = "When the host has rendered offline, what was checked in that render is written.";
+    changed |= tick(ui, &mut reports.automatic, "a report after each bounce", help);
+    if changed {
+        checks.snapshot.stored.reports.clone_from(&reports);
+        results.set_reports(reports);
+    }
+    if act(ui, "write report", palette) {
+        results.report();
+        checks.snapshot.writing = true;
+    }
+    match &checks.snapshot.told {
+        Some(Told::Written(place)) => {
+            say(ui, &format!("written: {place}.csv, .json, .svg"), palette);
+        }
+        Some(Told::Failed(why)) => {
+            let text = format!("! No report was written: {why}. The results are still here.");
+            ui.label(RichText::new(text).size(SMALL).color(palette.stray));
+        }
+        None => {}
+    }
+    say(ui, CAUTION, palette);
+}
+
+/// A line of text; true when it changed.
+fn entry(ui: &mut Ui, text: &mut String, (caption, hint): (&str, &str), palette: &Palette) -> bool {
+    say(ui, caption, palette);
+    let edit = TextEdit::singleline(text).hint_text(hint).desired_width(f32::INFINITY);
+    let response = ui.add(edit.font(sans(FIGURE)));
+    response.widget_info(|| WidgetInfo::labeled(Role::TextInput, true, caption));
+    response.changed()
+}
