@@ -64,7 +64,11 @@ pub(crate) fn show(
 ) {
     let area = rect.shrink2(vec2(PAD, 0.0));
     let mut whole = ui.new_child(egui::UiBuilder::new().max_rect(area));
-    ScrollArea::vertical().id_salt("checks").show(&mut whole, |ui| {
+    // A fade in the toolkit's colour would not be the card's.
+    whole.spacing_mut().scroll.fade.strength = 0.0;
+    whole.visuals_mut().widgets.inactive.bg_stroke = Stroke::new(1.0, palette.edge);
+    let list = ScrollArea::vertical().id_salt("checks").auto_shrink(false);
+    list.show(&mut whole, |ui| {
         ui.set_width(area.width() - BAR);
         ui.spacing_mut().item_spacing = vec2(6.0, 5.0);
         ui.add_space(8.0);
