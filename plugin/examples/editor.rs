@@ -74,6 +74,11 @@ fn fixed(folder: &Path) -> Done {
     settings.get_by_label("Settings").click();
     settings.run_steps(3);
     keep(&mut settings, &folder.join("settings.png"))?;
+    let mut checks = Scene::checked(Theme::Dark).open(SIZE, 1.0);
+    checks.run_steps(2);
+    checks.get_by_label("Checks").click();
+    checks.run_steps(3);
+    keep(&mut checks, &folder.join("checks.png"))?;
     for (state, name) in
         [(State::Several, "several"), (State::Unpitched, "unpitched"), (State::Silent, "silent")]
     {

@@ -13,6 +13,9 @@ use crate::check::{CheckResult, Results, Snapshot, VerdictWord};
 /// What is told where there is nothing yet.
 const NOTHING: &str = "Switch Check on, or automate it: each stretch over which it is on ends in a verdict here, kept with the session.";
 
+/// Room for the bar that the list scrolls by.
+const BAR: f32 = 14.0;
+
 /// The results as the editor saw them last, and what is opened of them.
 #[derive(Debug, Clone, Default)]
 pub(crate) struct Checks {
@@ -61,8 +64,12 @@ pub(crate) fn show(
 ) {
     let area = rect.shrink2(vec2(PAD, 0.0));
     let mut whole = ui.new_child(egui::UiBuilder::new().max_rect(area));
-    ScrollArea::vertical().id_salt("checks").show(&mut whole, |ui| {
-        ui.set_width(area.width() - 8.0);
+    // A fade in the toolkit's colour would not be the card's.
+    whole.spacing_mut().scroll.fade.strength = 0.0;
+    whole.visuals_mut().widgets.inactive.bg_stroke = Stroke::new(1.0, palette.edge);
+    let list = ScrollArea::vertical().id_salt("checks").auto_shrink(false);
+    list.show(&mut whole, |ui| {
+        ui.set_width(area.width() - BAR);
         ui.spacing_mut().item_spacing = vec2(6.0, 5.0);
         ui.add_space(8.0);
         let results = &shown.parameters.results;

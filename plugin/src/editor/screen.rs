@@ -139,6 +139,7 @@ impl Screen {
         gestures: &mut Vec<Gesture>,
     ) -> Option<Copy> {
         let palette = self.theme.palette();
+        *ui.visuals_mut() = self.theme.visuals();
         ui.painter().rect_filled(area, 0.0, palette.ground);
         let Self { theme, zoom, tab, figures, sound, plumb, drift, checks, editing } = self;
         let mut bench = Bench { parameters: shown.parameters, palette, editing, gestures };

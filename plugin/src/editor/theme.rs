@@ -108,8 +108,13 @@ impl Theme {
         [Self::Dark, Self::Light].into_iter().find(|theme| theme.name() == name)
     }
 
-    /// Gives the toolkit's own parts (popups, text fields) the same look.
+    /// Gives the toolkit's own windows (popups) the same look.
     pub(crate) fn apply(self, ctx: &Context) {
+        ctx.set_visuals(self.visuals());
+    }
+
+    /// The same look for the toolkit's own parts (text fields, buttons).
+    pub(crate) fn visuals(self) -> Visuals {
         let palette = self.palette();
         let mut visuals = match self {
             Self::Dark => Visuals::dark(),
@@ -123,7 +128,7 @@ impl Theme {
         visuals.selection.bg_fill = palette.pitch.gamma_multiply(0.35);
         visuals.selection.stroke = Stroke::new(1.0, palette.pitch);
         visuals.menu_corner_radius = CornerRadius::same(6);
-        ctx.set_visuals(visuals);
+        visuals
     }
 }
 

@@ -3,6 +3,7 @@
 
 use std::fs;
 use std::path::Path;
+use std::process::Command;
 
 use clack_host::events::event_types::NoteOnEvent;
 use clack_host::prelude::*;
@@ -18,8 +19,10 @@ use plumbtone_tests::take::Take;
 use serde_json::Value;
 use tempfile::TempDir;
 
+use crate::bundles::{target, there};
 use crate::rig::{Log, instance, set};
 use crate::session::{START_S, transport};
+use crate::the_program::write_stereo;
 
 const RATE: f64 = 48_000.0;
 const LENGTH_S: f64 = 9.0;
@@ -41,11 +44,27 @@ fn sound() -> Vec<f32> {
     narrow(&sound)
 }
 
+/// What a render plays.
+#[derive(Clone, Copy)]
+struct Played<'a> {
+    sound: &'a [f32],
+    /// Where Check goes on and off, in samples.
+    lane: &'a [(usize, usize)],
+    /// Keys that go down, with their samples.
+    keys: &'a [(usize, u16)],
+}
+
+impl<'a> Played<'a> {
+    fn new(sound: &'a [f32], lane: &'a [(usize, usize)]) -> Self {
+        Self { sound, lane, keys: &[] }
+    }
+}
+
 /// Renders a sound offline with Check on over some stretches, and keys going down; the session's time is given for each
 /// sample.
 fn bounce(
     instance: &mut Instance,
-    (sound, lane, keys): (&[f32], &[(usize, usize)], &[(usize, u16)]),
+    Played { sound, lane, keys }: Played<'_>,
     block: usize,
     session_s: impl Fn(usize) -> f64,
 ) {
@@ -100,7 +119,7 @@ fn load(instance: &mut Instance, state: &Value) {
 
 fn rendered(block: usize) -> Vec<CheckResult> {
     let mut instance = instance();
-    bounce(&mut instance, (&sound(), &LANE, &[]), block, |at| START_S + at as f64 / RATE);
+    bounce(&mut instance, Played::new(&sound(), &LANE), block, |at| START_S + at as f64 / RATE);
     kept(&mut instance).results
 }
 
@@ -160,6 +179,36 @@ fn an_automated_lane_ends_in_the_verdicts_of_its_stretches() {
 }
 
 #[test]
+fn a_bounce_and_its_file_have_the_same_spans() {
+    let what = "the comparison of a bounce with its file";
+    let program = target().join("debug/plumbtone").with_extension(std::env::consts::EXE_EXTENSION);
+    let Some(program) = there(program, what) else { return };
+    let folder = TempDir::new().expect("a temporary folder");
+    let file = folder.path().join("bounce.wav");
+    let sound = sound();
+    write_stereo(&file, &[sound.clone(), sound.clone()]);
+    let arguments = ["drift", "--json", "--tolerance", "5"];
+    let output = Command::new(program).args(arguments).arg(&file).output().expect("it runs");
+    let said: Value = serde_json::from_slice(&output.stdout).expect("JSON");
+    let mut instance = instance();
+    // Check is never switched off: the end of the bounce ends it.
+    let lane = [(0, usize::MAX)];
+    bounce(&mut instance, Played::new(&sound, &lane), 512, |at| at as f64 / RATE);
+    let results = kept(&mut instance).results;
+    assert_eq!(results.len(), 1, "{results:#?}");
+    let found = serde_json::to_value(&results[0]).expect("JSON");
+    let figures = ["verdict", "worst_cents", "mean_cents", "drift_cents_per_s", "measured_share"];
+    for field in figures {
+        assert_eq!(found[field], said[field], "{field}");
+    }
+    let spans = |of: &Value| of["spans"].as_array().map_or(0, Vec::len);
+    assert_eq!((spans(&found), spans(&said)), (1, 1), "{found} {said}");
+    for field in ["start_s", "end_s", "worst_cents", "mean_cents"] {
+        assert_eq!(found["spans"][0][field], said["spans"][0][field], "{field} of the span");
+    }
+}
+
+#[test]
 fn blocks_and_repetition_change_nothing() {
     let first = rendered(512);
     for block in [64, 480, 4096, 512, 512] {
@@ -181,7 +230,9 @@ fn the_played_note_is_the_reference_from_its_sample_on() {
         load(&mut instance, &state);
         assert_eq!(instance.shown("Reference").expect("a text"), "Played notes");
         let keys = [(24_000, 57), (72_000, key)];
-        bounce(&mut instance, (&sound, &lane, &keys), 480, |at| START_S + at as f64 / RATE);
+        bounce(&mut instance, Played { keys: &keys, ..Played::new(&sound, &lane) }, 480, |at| {
+            START_S + at as f64 / RATE
+        });
         let results = kept(&mut instance).results;
         assert_eq!(results.len(), 1, "{results:#?}");
         assert_eq!(results[0].verdict, verdict, "key {key}: {results:#?}");
@@ -195,7 +246,7 @@ fn the_played_note_is_the_reference_from_its_sample_on() {
 #[test]
 fn a_new_pass_replaces_the_old_one_unless_both_are_kept() {
     let sound = sound();
-    let part = (&sound[..144_000], &[(0, 143_999)][..], &[][..]);
+    let part = Played::new(&sound[..144_000], &[(0, 143_999)]);
     // A loop of one second, from the second second of the session on, three times.
     let looped = |at: usize| START_S + (at % 48_000) as f64 / RATE;
     for (every_pass, expected) in [(false, 1), (true, 3)] {
@@ -214,7 +265,7 @@ fn a_new_pass_replaces_the_old_one_unless_both_are_kept() {
 #[test]
 fn results_survive_a_reload_and_damage_costs_what_is_damaged() {
     let mut first = instance();
-    bounce(&mut first, (&sound(), &LANE, &[]), 512, |at| START_S + at as f64 / RATE);
+    bounce(&mut first, Played::new(&sound(), &LANE), 512, |at| START_S + at as f64 / RATE);
     let saved = first.save().expect("a state");
     let before = kept(&mut first);
     let mut second = instance();
@@ -241,7 +292,9 @@ fn a_bounce_writes_one_report_and_the_same_again() {
         let mut instance = instance();
         let stored = Stored { reports: reports(folder.path()), ..Stored::default() };
         keep(&mut instance, &stored);
-        bounce(&mut instance, (&sound, &LANE, &[]), 512 * pass, |at| START_S + at as f64 / RATE);
+        bounce(&mut instance, Played::new(&sound, &LANE), 512 * pass, |at| {
+            START_S + at as f64 / RATE
+        });
         // An instance waits for its reports when it goes.
         drop(instance);
         assert_eq!(texts(folder.path()).len(), 3 * pass, "three files for each of {pass}");
@@ -253,7 +306,7 @@ fn a_bounce_writes_one_report_and_the_same_again() {
     let mut lost = instance();
     let gone = folder.path().join("gone");
     keep(&mut lost, &Stored { reports: reports(&gone), ..Stored::default() });
-    bounce(&mut lost, (&sound, &LANE, &[]), 512, |at| START_S + at as f64 / RATE);
+    bounce(&mut lost, Played::new(&sound, &LANE), 512, |at| START_S + at as f64 / RATE);
     assert_eq!(kept(&mut lost).results.len(), 3, "without a folder the results stay");
     assert!(!gone.exists(), "no folder is made up");
 }

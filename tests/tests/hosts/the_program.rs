@@ -1,5 +1,6 @@
 //! The plugin and the program `plumbtone` say the same of the same samples, bit for bit.
 
+use std::path::Path;
 use std::process::Command;
 
 use plumbtone_tests::readings::Logged;
@@ -48,18 +49,7 @@ fn the_middle_of_a_stereo_file_measures_alike() {
     let sides = [tone(61, 196.0, 1.3, rate), tone(62, 196.4, 1.3, rate)];
     let folder = TempDir::new().expect("a temporary folder");
     let file = folder.path().join("stereo.wav");
-    let format = hound::WavSpec {
-        channels: 2,
-        sample_rate: RATE_HZ,
-        bits_per_sample: 32,
-        sample_format: hound::SampleFormat::Float,
-    };
-    let mut writer = hound::WavWriter::create(&file, format).expect("a file");
-    for (left, right) in sides[0].iter().zip(&sides[1]) {
-        writer.write_sample(*left).expect("it is written");
-        writer.write_sample(*right).expect("it is written");
-    }
-    writer.finalize().expect("it is closed");
+    write_stereo(&file, &sides);
     let output =
         Command::new(program).args(["measure", "--json"]).arg(&file).output().expect("it runs");
     assert!(output.status.success(), "{}", String::from_utf8_lossy(&output.stderr));
@@ -70,4 +60,20 @@ fn the_middle_of_a_stereo_file_measures_alike() {
     for (frame, logged) in said.frames.iter().zip(&logged) {
         assert!(frame.is(logged), "{} s: {logged:?}", frame.time_s);
     }
+}
+
+/// A file of floating-point samples.
+pub(crate) fn write_stereo(file: &Path, sides: &[Vec<f32>; 2]) {
+    let format = hound::WavSpec {
+        channels: 2,
+        sample_rate: RATE_HZ,
+        bits_per_sample: 32,
+        sample_format: hound::SampleFormat::Float,
+    };
+    let mut writer = hound::WavWriter::create(file, format).expect("a file");
+    for (left, right) in sides[0].iter().zip(&sides[1]) {
+        writer.write_sample(*left).expect("it is written");
+        writer.write_sample(*right).expect("it is written");
+    }
+    writer.finalize().expect("it is closed");
 }

@@ -111,7 +111,7 @@ fn lane(page: &mut Page, results: &[CheckResult]) {
 }
 
 /// Left edges of what a line says.
-const AT: [f64; 7] = [MARGIN, 122.0, 270.0, 330.0, 390.0, 490.0, 590.0];
+const AT: [f64; 7] = [MARGIN, 122.0, 262.0, 320.0, 378.0, 446.0, 606.0];
 
 fn columns(page: &mut Page) -> f64 {
     let names = ["verdict", "from, to", "worst ct", "mean ct", "drift ct/s", "against", "outside"];
