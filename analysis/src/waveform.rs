@@ -212,13 +212,13 @@ mod tests {
 
     /// Partials 1 to 20 of a wave given by its samples over one period, by the defining sum; the period starts `shift` in.
     fn series(wave: impl Fn(f64) -> f64, shift: f64) -> Vec<(u32, f64, f64)> {
-        let samples = 1 << 16;
-        let at = |i: usize| (i as f64 + 0.5) / f64::from(samples);
+        let samples = 1_u32 << 16;
+        let at = |i: u32| (f64::from(i) + 0.5) / f64::from(samples);
         (1..=20u32)
             .map(|n| {
                 let turn = |t: f64| TAU * f64::from(n) * t;
                 let (mut re, mut im) = (0.0, 0.0);
-                for i in 0..samples as usize {
+                for i in 0..samples {
                     let x = wave((at(i) + shift).rem_euclid(1.0)) * 2.0 / f64::from(samples);
                     re += x * turn(at(i)).cos();
                     im -= x * turn(at(i)).sin();
@@ -229,7 +229,10 @@ mod tests {
             .collect()
     }
 
-    fn waves() -> Vec<(Waveform, Box<dyn Fn(f64) -> f64>)> {
+    /// One period, by place in it.
+    type Period = Box<dyn Fn(f64) -> f64>;
+
+    fn waves() -> Vec<(Waveform, Period)> {
         let pulse = |width: f64| move |t: f64| if t < width { 1.0 } else { 0.0 };
         vec![
             (Waveform::Sine, Box::new(|t: f64| (TAU * t).sin())),
@@ -265,7 +268,8 @@ mod tests {
         let saw = series(|t| 2.0 * t - 1.0, 0.2);
         let scrambled: Vec<_> = saw.iter().map(|&(n, a, p)| (n, a, p + f64::from(n * n))).collect();
         assert_eq!(waveform(&scrambled, 20), None, "a saw's levels with other phases");
-        let dull: Vec<_> = saw.iter().map(|&(n, a, p)| (n, a * 0.8f64.powi(n as i32), p)).collect();
+        let dull: Vec<_> =
+            saw.iter().map(|&(n, a, p)| (n, a * 0.8f64.powf(f64::from(n)), p)).collect();
         assert_eq!(waveform(&dull, 20), None, "a saw through a filter");
         let missing: Vec<_> = saw.iter().copied().filter(|p| p.0 != 3).collect();
         assert_eq!(waveform(&missing, 20), None, "a saw without partial 3");

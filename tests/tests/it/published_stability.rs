@@ -5,10 +5,11 @@ use core::f64::consts::{PI, TAU};
 
 use plumbtone_analysis::check::OverlappingAllan;
 
+#[expect(clippy::expect_used, reason = "a test's helper fails it as it should")]
 fn deviation(m: usize, values: impl IntoIterator<Item = f64>) -> f64 {
     let mut allan = OverlappingAllan::new(m);
     values.into_iter().for_each(|value| allan.push(value));
-    allan.deviation().unwrap()
+    allan.deviation().expect("enough values")
 }
 
 /// The 1000 points of the handbook's generator.
