@@ -55,7 +55,7 @@ impl History {
         let first = samples.len().min(self.ring.len() - at);
         self.ring[at..at + first].copy_from_slice(&samples[..first]);
         self.ring[..samples.len() - first].copy_from_slice(&samples[first..]);
-        if let Some(last) = samples.iter().rposition(|x| x.abs() > QUIET) {
+        if let Some(last) = last_loud(samples) {
             self.loud_until = self.end + last as u64 + 1;
         }
         self.end += samples.len() as u64;
@@ -107,6 +107,21 @@ impl History {
     }
 }
 
+/// Where the last sample that is not quiet lies. Whole pieces are judged side by side, for silence is looked through to its
+/// beginning.
+fn last_loud(samples: &[f32]) -> Option<usize> {
+    let loud = |x: &f32| x.abs() > QUIET;
+    let mut end = samples.len();
+    for piece in samples.rchunks(64) {
+        let start = end - piece.len();
+        if piece.iter().fold(false, |any, x| any | loud(x)) {
+            return piece.iter().rposition(loud).map(|last| start + last);
+        }
+        end = start;
+    }
+    None
+}
+
 /// A span of samples that are to be read piece by piece.
 #[derive(Debug, Clone, Copy)]
 pub(crate) struct Span<'a> {
@@ -123,5 +138,23 @@ impl Span<'_> {
     pub(crate) fn read(&self, first: usize, out: &mut [f32]) {
         let from = self.start + first as u64;
         self.history.read(i64::try_from(from).unwrap_or(i64::MAX), out);
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_last_loud_sample_is_found_wherever_it_lies() {
+        for length in [0, 1, 63, 64, 65, 200] {
+            assert_eq!(last_loud(&vec![0.0; length]), None, "{length} samples of silence");
+            for at in 0..length {
+                let mut samples = vec![QUIET; length];
+                samples[at] = -0.1;
+                samples[0] = 0.1;
+                assert_eq!(last_loud(&samples), Some(at), "sample {at} of {length}");
+            }
+        }
     }
 }
