@@ -91,7 +91,7 @@ pub(crate) fn fit(points: &[Point]) -> Option<StiffFit> {
             let variance = relative_variance(p, scatter);
             let r = log_ratio(p.hz / partial_hz(f0, b, p.n));
             let judged = outvoted || round >= 2;
-            let huber = if judged { robust_weight(r / variance.sqrt()) } else { 1.0 };
+            let huber = if judged { robust_weight(r * r / variance) } else { 1.0 };
             let w = huber / variance;
             let slope = 0.5 * p.n * p.n / (1.0 + b * p.n * p.n);
             m.uu += w;
@@ -163,13 +163,12 @@ fn relative_variance(p: &Point, scatter: f64) -> f64 {
     own * own + scatter * scatter
 }
 
-/// Weight of a residual given in deviations.
-fn robust_weight(z: f64) -> f64 {
-    let z = z.abs();
-    if z <= HUBER {
+/// Weight of a residual given as its square over its variance.
+fn robust_weight(z_squared: f64) -> f64 {
+    if z_squared <= HUBER * HUBER {
         1.0
-    } else if z < REJECT {
-        HUBER / z
+    } else if z_squared < REJECT * REJECT {
+        HUBER / z_squared.sqrt()
     } else {
         0.0
     }

@@ -20,6 +20,8 @@ const REACH_OF_F0: f64 = 0.14;
 const REACH_BINS: f64 = 0.6;
 /// Largest inharmonicity that the comb follows.
 const B_MAX: f64 = 0.02;
+/// Share of the peaks that a comb must explain: with less it never wins.
+const LEAST: f64 = 0.04;
 /// Exponent of the share of teeth found.
 const PRESENCE: f64 = 0.7;
 
@@ -153,6 +155,9 @@ impl Comb {
         let (explained, chance) = (explained / total, chance / total);
         // What a comb of such reach explains of peaks anywhere at all is no merit.
         let explained = ((explained - chance) / (1.0 - chance)).clamp(0.0, 1.0);
+        if explained < LEAST {
+            return None;
+        }
         let score = explained * presence(&teeth[..last]).powf(PRESENCE);
         Some(Self { hz: base.sqrt(), b, score, explained, partials: line.count })
     }
