@@ -14,7 +14,7 @@ use crate::segment::Step;
 use crate::settings::{Settings, SettingsError};
 use crate::settle::{self, Instant, NEIGHBOURS};
 use crate::spectrum::TransformRuns;
-use crate::stiff::{self, Point};
+use crate::stiff::{self, CENTS_PER_NEPER, Point};
 use crate::strays::peaks::STRAYS_MAX;
 use crate::track::{LOOK_AHEAD, Tracker};
 
@@ -22,6 +22,9 @@ use crate::track::{LOOK_AHEAD, Tracker};
 const SILENCE_DBFS: f64 = -92.0;
 /// Instants kept: those being decided, and those being settled with their neighbours.
 const KEPT: usize = LOOK_AHEAD + 2 * NEIGHBOURS + 2;
+/// Distance of the partials' fit from the pitch decided for, in cents, that says that they were not its partials: a pitch that
+/// swings faster than the frame can follow leaves lines beside its own.
+const ASTRAY_CENTS: f64 = 100.0;
 /// Score of a candidate in the newest samples from which it is shown before anything is decided.
 const LIVE_SCORE: f64 = 0.45;
 
@@ -328,7 +331,8 @@ impl Analyzer {
             }
             self.points.clear();
             self.points.extend(instant.tones.iter().map(Point::from));
-            match stiff::fit(&self.points) {
+            let near = |f0: f64| CENTS_PER_NEPER * (f0 / chosen.hz).ln().abs() < ASTRAY_CENTS;
+            match stiff::fit(&self.points).filter(|fit| near(fit.f0)) {
                 Some(fit) => {
                     instant.f0 = fit.f0;
                     instant.f0_sd_cents = fit.f0_sd_cents;
