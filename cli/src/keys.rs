@@ -18,26 +18,20 @@ use std::process::ExitCode;
 
 /// Measures the notes of every file and prints the sheet.
 pub(crate) fn write_sheet(command: Keys) -> ExitCode {
-    match try_write_sheet(command) {
-        Ok(code) => code,
-        Err(error) => {
-            eprintln!("plumbtone: {error:#}");
-            ExitCode::from(run::EXIT_BAD)
-        }
-    }
+    run::exit_code(try_write_sheet(command))
 }
 
-fn try_write_sheet(command: Keys) -> Result<ExitCode> {
+fn try_write_sheet(command: Keys) -> Result<Ended> {
     let job = KeysJob::new(command)?;
     let mut rows = Vec::new();
     let ended = run::run(&job, |_, result| {
         rows.extend(result.iter().flat_map(|measured| measured.keys.iter().cloned()));
     })?;
-    if ended == Ended::Interrupted {
-        return Ok(ExitCode::from(run::EXIT_INTERRUPTED));
+    // An interrupted sheet is none.
+    if ended != Ended::Interrupted {
+        sheet::write(rows, &job.command)?;
     }
-    sheet::write(rows, &job.command)?;
-    Ok(if ended == Ended::Whole { ExitCode::SUCCESS } else { ExitCode::from(run::EXIT_BAD) })
+    Ok(ended)
 }
 
 struct KeysJob {

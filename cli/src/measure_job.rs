@@ -8,7 +8,7 @@ use crate::output::csv::{CsvReport, folder_for};
 use crate::output::json::JsonReport;
 use crate::output::table::TableReport;
 use crate::picture::PictureReport;
-use crate::run::{self, Ended, Job};
+use crate::run::{self, Job};
 use anyhow::Result;
 use std::path::PathBuf;
 use std::process::ExitCode;
@@ -16,15 +16,7 @@ use std::process::ExitCode;
 /// Measures every file and prints what comes of it.
 pub(crate) fn measure_files(command: &Measure) -> ExitCode {
     let ended = MeasureJob::new(command).and_then(|job| run::run(&job, |_, _| {}));
-    match ended {
-        Ok(Ended::Whole) => ExitCode::SUCCESS,
-        Ok(Ended::Lacking) => ExitCode::from(run::EXIT_BAD),
-        Ok(Ended::Interrupted) => ExitCode::from(run::EXIT_INTERRUPTED),
-        Err(error) => {
-            eprintln!("plumbtone: {error:#}");
-            ExitCode::from(run::EXIT_BAD)
-        }
-    }
+    run::exit_code(ended)
 }
 
 struct MeasureJob<'a> {

@@ -10,7 +10,7 @@ use crate::measure::Timebase;
 use crate::names::{distinct_names, picture_place};
 use crate::output::Report;
 use crate::output::csv::folder_for;
-use crate::run::{self, Ended, Job};
+use crate::run::{self, Job};
 use anyhow::Result;
 use plumbtone_analysis::tuning::Tuning;
 use report::{Places, RecipeReport};
@@ -23,15 +23,7 @@ const INTEGRATION_S: f64 = 0.02;
 /// Writes down the recipe of every file.
 pub(crate) fn write_recipes(command: Recipe) -> ExitCode {
     let ended = RecipeJob::new(command).and_then(|job| run::run(&job, |_, _| {}));
-    match ended {
-        Ok(Ended::Whole) => ExitCode::SUCCESS,
-        Ok(Ended::Lacking) => ExitCode::from(run::EXIT_BAD),
-        Ok(Ended::Interrupted) => ExitCode::from(run::EXIT_INTERRUPTED),
-        Err(error) => {
-            eprintln!("plumbtone: {error:#}");
-            ExitCode::from(run::EXIT_BAD)
-        }
-    }
+    run::exit_code(ended)
 }
 
 struct RecipeJob {

@@ -12,6 +12,7 @@ use std::collections::BTreeMap;
 use std::io::ErrorKind;
 use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::path::{Path, PathBuf};
+use std::process::ExitCode;
 use std::sync::{Arc, Condvar, Mutex, MutexGuard, PoisonError, mpsc};
 use std::thread;
 
@@ -43,6 +44,19 @@ pub(crate) enum Ended {
     Lacking,
     /// The user stopped it.
     Interrupted,
+}
+
+/// What the program ends with, where a command has no status of its own; says what went wrong.
+pub(crate) fn exit_code(ended: Result<Ended>) -> ExitCode {
+    match ended {
+        Ok(Ended::Whole) => ExitCode::SUCCESS,
+        Ok(Ended::Lacking) => ExitCode::from(EXIT_BAD),
+        Ok(Ended::Interrupted) => ExitCode::from(EXIT_INTERRUPTED),
+        Err(error) => {
+            eprintln!("plumbtone: {error:#}");
+            ExitCode::from(EXIT_BAD)
+        }
+    }
 }
 
 /// Runs every file through the engine and prints what comes of it; `done` hears of each as it is printed.
