@@ -250,11 +250,11 @@ mod tests {
     const RATE_HZ: f64 = 48_000.0;
     const HOP: u64 = 480;
 
-    /// Readings of a course of cents above 440 Hz, from a position on; `None` for silence.
-    fn readings(start: u64, course: impl Fn(f64) -> Option<f64>, seconds: u64) -> Vec<Reading> {
+    /// Readings of cents above 440 Hz over time, from a position on; `None` for silence.
+    fn readings(start: u64, cents_at: impl Fn(f64) -> Option<f64>, seconds: u64) -> Vec<Reading> {
         (0..seconds * 100)
             .map(|index| {
-                let pitch = course(index as f64 / 100.0).map(|cents| Pitch {
+                let pitch = cents_at(index as f64 / 100.0).map(|cents| Pitch {
                     f0_hz: 440.0 * crate::tuning::ratio(cents),
                     f0_sd_cents: 0.2,
                     confidence: 0.9,
@@ -301,11 +301,11 @@ mod tests {
 
     #[test]
     fn a_step_stays_sharp_under_a_vibrato() {
-        let course = |t: f64| {
+        let cents_at = |t: f64| {
             let step = if (1.0..2.5).contains(&t) { 20.0 } else { 0.0 };
             Some(step + 15.0 * (core::f64::consts::TAU * 6.0 * t).sin())
         };
-        let outcome = outcome(8.0, &readings(0, course, 4));
+        let outcome = outcome(8.0, &readings(0, cents_at, 4));
         let spans = seconds(&outcome.spans);
         let near = matches!(spans[..], [(from, to)] if (from - 1.0).abs() < 0.03 && (to - 2.5).abs() < 0.03);
         assert!(near, "{spans:?}");
@@ -314,10 +314,10 @@ mod tests {
 
     #[test]
     fn spans_mirror_and_shift_with_the_sound() {
-        let course = |t: f64| Some(if t < 1.0 { 3.0 } else { 4.0 * t });
-        let up = outcome(9.0, &readings(0, course, 5));
-        let down = outcome(9.0, &readings(0, |t| course(t).map(|c| -c), 5));
-        let late = outcome(9.0, &readings(480_000, course, 5));
+        let cents_at = |t: f64| Some(if t < 1.0 { 3.0 } else { 4.0 * t });
+        let up = outcome(9.0, &readings(0, cents_at, 5));
+        let down = outcome(9.0, &readings(0, |t| cents_at(t).map(|c| -c), 5));
+        let late = outcome(9.0, &readings(480_000, cents_at, 5));
         assert_eq!(up.verdict, Verdict::Outside, "{up:?}");
         let near = |a: f64, b: f64| (a - b).abs() < 1e-6;
         for (other, sign, shift) in [(&down, -1.0, 0), (&late, 1.0, 480_000)] {

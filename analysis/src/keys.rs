@@ -10,7 +10,7 @@ use crate::tuning::{NoteName, Tuning};
 const SETTLED_CENTS: f64 = 3.0;
 const SETTLED_SD: f64 = 3.0;
 /// Readings of a note kept to judge how it settles: of more, the later ones are left out (40 s at 10 ms).
-const COURSE_MAX: usize = 4096;
+const READINGS_MAX: usize = 4096;
 
 /// One note of a key sheet.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -82,22 +82,22 @@ pub struct KeySheet {
     tuning: Tuning,
     sample_rate_hz: f64,
     /// Position, logarithm of the fundamental, and its deviation in cents, of the readings since the last note.
-    course: Vec<(u64, f64, f64)>,
+    readings: Vec<(u64, f64, f64)>,
 }
 
 impl KeySheet {
     /// A sheet of notes as a tuning names them.
     #[must_use]
     pub fn new(tuning: Tuning, sample_rate_hz: f64) -> Self {
-        Self { tuning, sample_rate_hz, course: Vec::with_capacity(COURSE_MAX) }
+        Self { tuning, sample_rate_hz, readings: Vec::with_capacity(READINGS_MAX) }
     }
 
     /// Takes in the next reading.
     pub fn reading(&mut self, reading: &Reading) {
         if let Some(pitch) = reading.pitch
-            && self.course.len() < COURSE_MAX
+            && self.readings.len() < READINGS_MAX
         {
-            self.course.push((reading.centre, pitch.f0_hz.ln(), pitch.f0_sd_cents));
+            self.readings.push((reading.centre, pitch.f0_hz.ln(), pitch.f0_sd_cents));
         }
     }
 
@@ -120,14 +120,14 @@ impl KeySheet {
             alias: worst_alias(note),
             settling_s: self.settling_s(note),
         };
-        self.course.clear();
+        self.readings.clear();
         Some(row)
     }
 
     /// Time from the onset to the first reading from which on the pitch stays.
     fn settling_s(&self, note: &Note) -> Option<f64> {
         let within = |&&(at, _, _): &&(u64, f64, f64)| at >= note.start && at < note.end;
-        let readings = self.course.iter().filter(within);
+        let readings = self.readings.iter().filter(within);
         let log_f0 = note.f0_hz.ln();
         let near = |&&(_, log, sd): &&(u64, f64, f64)| {
             CENTS_PER_NEPER * (log - log_f0).abs() < SETTLED_CENTS.max(SETTLED_SD * sd)

@@ -192,8 +192,8 @@ mod tests {
             let mut square = 0.0;
             for _ in 0..trials {
                 let noise: Vec<f64> = (0..600 + smooth).map(|_| uniform()).collect();
-                let course = noise.windows(smooth).map(|w| w.iter().sum::<f64>());
-                let slope = of(course.take(600).enumerate().map(|(i, y)| (0.01 * i as f64, y)));
+                let smoothed = noise.windows(smooth).map(|w| w.iter().sum::<f64>());
+                let slope = of(smoothed.take(600).enumerate().map(|(i, y)| (0.01 * i as f64, y)));
                 let (cents_per_s, sd) = slope.line().unwrap();
                 square += (cents_per_s / sd).powi(2) / f64::from(trials);
             }

@@ -24,7 +24,7 @@ pub struct Span {
     pub mean_cents: f64,
 }
 
-/// Finds the spans in a course of heard pitches.
+/// Finds the spans in heard pitches.
 #[derive(Debug)]
 pub(super) struct Spans {
     tolerance: f64,

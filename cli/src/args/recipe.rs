@@ -18,7 +18,7 @@ Examples:
   plumbtone recipe --at 1.25 --json --cycle cycle.wav --sound pad-again.wav pad.wav
       the recipe as JSON, one period of 2048 samples, and two seconds of its sound
   plumbtone recipe --table sweep.wav --cycles 64 sweep-note.wav
-      64 periods over the course of the file, one after the other in one WAV file";
+      64 periods from the file's start to its end, one after the other in one WAV file";
 
 /// Write down what a sound is made of, to make it again.
 #[derive(Debug, ClapArgs)]
@@ -50,7 +50,7 @@ pub(crate) struct RecipeOutputs {
     /// each, and so for the others
     #[arg(long, value_name = "CYCLE.wav", value_parser = wav_path)]
     pub(crate) cycle: Option<PathBuf>,
-    /// Also write periods over the course of the file, one after the other, as WAV
+    /// Also write periods from the file's start to its end, one after the other, as WAV
     #[arg(long, value_name = "TABLE.wav", value_parser = wav_path)]
     pub(crate) table: Option<PathBuf>,
     /// How many periods the table has

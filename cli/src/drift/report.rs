@@ -57,13 +57,13 @@ pub(super) struct DriftReport {
     timebase: Timebase,
     json: bool,
     picture: Option<PathBuf>,
-    course: Course,
+    written: Written,
     gaps: Vec<GapRecord>,
     gaps_left_out: u64,
 }
 
 /// What is written and kept while the check runs.
-struct Course {
+struct Written {
     timebase: Timebase,
     tolerance_cents: f64,
     sheets: Option<(Sheet, Sheet)>,
@@ -86,7 +86,7 @@ impl DriftReport {
             let spans = Sheet::new(folder, &format!("{name}.spans.csv"), SPANS)?;
             anyhow::Ok((drift, spans))
         });
-        let course = Course {
+        let written = Written {
             timebase,
             tolerance_cents: settings.tolerance_cents,
             sheets: sheets.transpose()?,
@@ -101,14 +101,14 @@ impl DriftReport {
             timebase,
             json,
             picture,
-            course,
+            written,
             gaps: Vec::new(),
             gaps_left_out: 0,
         })
     }
 }
 
-impl CheckSink for Course {
+impl CheckSink for Written {
     fn heard(&mut self, heard: &Heard) {
         if let Some(trace) = &mut self.trace {
             trace.push(heard);
@@ -132,34 +132,34 @@ impl CheckSink for Course {
 
 impl Report for DriftReport {
     fn reading(&mut self, reading: &Reading) -> Result<()> {
-        self.check.reading(reading, &mut self.course);
-        std::mem::replace(&mut self.course.failed, Ok(()))
+        self.check.reading(reading, &mut self.written);
+        std::mem::replace(&mut self.written.failed, Ok(()))
     }
 
     fn gap(&mut self, gap: &Gap) -> Result<()> {
-        self.check.gap(gap, &mut self.course);
+        self.check.gap(gap, &mut self.written);
         if self.gaps.len() < GAPS_MAX {
             self.gaps.push(GapRecord::new(gap, self.timebase));
         } else {
             self.gaps_left_out += 1;
         }
-        std::mem::replace(&mut self.course.failed, Ok(()))
+        std::mem::replace(&mut self.written.failed, Ok(()))
     }
 
     fn finish(mut self: Box<Self>, facts: &FileFacts) -> Result<Ending> {
-        self.check.finish(&mut self.course);
-        std::mem::replace(&mut self.course.failed, Ok(()))?;
+        self.check.finish(&mut self.written);
+        std::mem::replace(&mut self.written.failed, Ok(()))?;
         let outcome = self.check.outcome();
         let record = DriftRecord {
             gaps: self.gaps,
             gaps_left_out: self.gaps_left_out,
             ..DriftRecord::new(&outcome, &self.settings, &self.words, facts, self.timebase)
         };
-        if let Some((drift, spans)) = self.course.sheets {
+        if let Some((drift, spans)) = self.written.sheets {
             drift.publish()?;
             spans.publish()?;
         }
-        if let (Some(place), Some(trace)) = (&self.picture, &self.course.trace) {
+        if let (Some(place), Some(trace)) = (&self.picture, &self.written.trace) {
             let drawn = DriftPicture { facts, record: &record, trace, timebase: self.timebase };
             picture::write(place, &drawn)?;
         }

@@ -1,10 +1,10 @@
-//! The course of the pitch, in bounded memory however long the file.
+//! The pitch over time, in bounded memory however long the file.
 
 use plumbtone_analysis::check::Heard;
 
 /// Columns kept at most: more than a picture is wide. When full, neighbours are joined.
 const COLUMNS_MAX: usize = 4096;
-/// Readings apart from which a course is interrupted, as multiples of the least distance met.
+/// Readings apart from which the trace is interrupted, as multiples of the least distance met.
 const APART: u64 = 10;
 
 /// Pitches over time.
@@ -18,7 +18,7 @@ pub(crate) struct Trace {
     hop: u64,
 }
 
-/// A stretch of the course.
+/// A stretch of the trace.
 #[derive(Debug, Clone, Copy)]
 pub(crate) struct Column {
     /// Sample positions of its first and last reading.
@@ -30,7 +30,7 @@ pub(crate) struct Column {
     pub(crate) extremes: (f64, f64),
     /// Lowest and highest reading, in cents.
     pub(crate) raw: (f64, f64),
-    /// Whether the course is interrupted before it.
+    /// Whether the trace is interrupted before it.
     pub(crate) interrupted: bool,
 }
 
@@ -106,7 +106,7 @@ mod tests {
     use super::*;
 
     #[test]
-    fn a_long_course_stays_bounded_and_keeps_its_extremes() {
+    fn a_long_trace_stays_bounded_and_keeps_its_extremes() {
         let mut trace = Trace::default();
         for index in 0..1_000_000_u32 {
             let cents = if index == 777_777 { 40.0 } else { 1.0 };

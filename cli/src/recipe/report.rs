@@ -23,8 +23,8 @@ const RESIDUAL_S: f64 = 0.08;
 const RESIDUAL_PERIODS: f64 = 8.0;
 /// Confidence from which an instant is taken unasked.
 const CONFIDENT: f64 = 0.8;
-/// Recipes of a course kept; when they are more, every other one is dropped.
-const COURSE_MAX: usize = 4096;
+/// Recipes of a file kept; when they are more, every other one is dropped.
+const RECIPES_MAX: usize = 4096;
 
 /// Where the recipe of a file goes.
 pub(super) struct Places {
@@ -47,7 +47,7 @@ pub(super) struct RecipeReport {
     places: Places,
     tail: Tail,
     best: Option<Found>,
-    course: Course,
+    over_time: Recipes,
 }
 
 /// The best instant so far.
@@ -88,19 +88,19 @@ impl Tail {
     }
 }
 
-/// Recipes over the course of the file, evenly spaced.
+/// Recipes from the file's start to its end, evenly spaced.
 #[derive(Default)]
-struct Course {
+struct Recipes {
     recipes: Vec<Recipe>,
     every: usize,
     seen: usize,
 }
 
-impl Course {
+impl Recipes {
     fn push(&mut self, recipe: &Recipe) {
         self.every = self.every.max(1);
         if self.seen.is_multiple_of(self.every) {
-            if self.recipes.len() == COURSE_MAX {
+            if self.recipes.len() == RECIPES_MAX {
                 let mut place = 0;
                 self.recipes.retain(|_| {
                     place += 1;
@@ -136,8 +136,8 @@ impl RecipeReport {
         tuning: Tuning,
         places: Places,
     ) -> Self {
-        let (tail, course) = (Tail::default(), Course::default());
-        Self { at_s, timebase, tuning, places, tail, best: None, course }
+        let (tail, over_time) = (Tail::default(), Recipes::default());
+        Self { at_s, timebase, tuning, places, tail, best: None, over_time }
     }
 
     /// How good an instant is: near to the one asked for, or loud, steady and sure.
@@ -163,7 +163,7 @@ impl RecipeReport {
             wav::write(place, &cycle, facts.sample_rate_hz)?;
         }
         if let Some((place, count)) = &self.places.table {
-            let mut cycles = self.course.cycles(*count);
+            let mut cycles = self.over_time.cycles(*count);
             table_gain_db = Some(wav::scale_up(&mut cycles));
             wav::write(place, &cycles, facts.sample_rate_hz)?;
         }
@@ -187,7 +187,7 @@ impl Report for RecipeReport {
     fn reading(&mut self, reading: &Reading) -> Result<()> {
         let Some(recipe) = Recipe::of(reading) else { return Ok(()) };
         if self.places.table.is_some() {
-            self.course.push(&recipe);
+            self.over_time.push(&recipe);
         }
         let rank = self.rank(reading);
         if self.best.as_ref().is_none_or(|best| rank > best.rank) {

@@ -147,7 +147,7 @@ fn references_are_notes_frequencies_first_or_nearest() {
 }
 
 #[test]
-fn csv_files_hold_the_course_and_the_spans() {
+fn csv_files_hold_the_pitch_and_the_spans() {
     let folder = folder_with([("step.wav", wav(&[a3(step, 3.0)], Coding::S16))]);
     let arguments = ["--reference", "A3", "--tolerance", "5", "--csv", "out", "step.wav"];
     let found = object(folder.path(), &arguments);
