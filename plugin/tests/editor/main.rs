@@ -1,4 +1,5 @@
 //! The editor without a host or a window: what is shown, what is done to the parameters, and its pictures.
+#![expect(clippy::print_stdout, reason = "what is skipped has to be said")]
 
 mod checks;
 mod controls;
