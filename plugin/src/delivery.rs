@@ -8,6 +8,7 @@ use plumbtone_analysis::tuning::{NoteName, Tuning};
 use plumbtone_analysis::{Gap, GapReason, Reading, Sink, State};
 use triple_buffer::Input;
 
+use crate::captures::Press;
 use crate::check::Checks;
 use crate::marks::Cause;
 use crate::readings_log::{Line, ReadingsLog};
@@ -26,6 +27,8 @@ pub(crate) struct Delivery {
     pub(crate) readout: Readout,
     /// What is checked.
     pub(crate) checks: Checks,
+    /// What is captured.
+    pub(crate) press: Press,
     changed: bool,
     /// Whether the change is worth drawing.
     visible: bool,
@@ -51,11 +54,12 @@ impl Delivery {
         output: Input<Readout>,
         repaint: RepaintNotifier,
         log: Option<ReadingsLog>,
-        checks: Checks,
+        (checks, press): (Checks, Press),
     ) -> Self {
         Self {
             readout: Readout::default(),
             checks,
+            press,
             changed: false,
             visible: false,
             silent_readings: 0,
@@ -102,6 +106,7 @@ impl Delivery {
         self.held.clear();
         self.anchors.clear();
         self.checks.start();
+        self.press.start();
         self.stand(Condition::Waiting);
     }
 
@@ -119,6 +124,23 @@ impl Delivery {
 
     pub(crate) fn freeze(&mut self, frozen: bool) {
         self.frozen = frozen;
+    }
+
+    /// The reading at a position, or the one on display while that is held, is to be captured.
+    pub(crate) fn capture(&mut self, at: u64) {
+        if self.frozen && self.readout.measured {
+            self.press.take(&self.readout);
+            self.show();
+        } else {
+            self.press.press(at);
+        }
+    }
+
+    /// No more readings come for now.
+    pub(crate) fn close(&mut self) {
+        if self.press.close(&self.readout) {
+            self.show();
+        }
     }
 
     pub(crate) fn anchor(&mut self, anchor: Anchor) {
@@ -222,6 +244,7 @@ impl Sink for Delivery {
         self.show_reading(reading);
         self.readout.take(reading, session);
         self.readout.trail_end = trail_end;
+        self.visible |= self.press.reading(&self.readout);
     }
 
     fn gap(&mut self, gap: &Gap) {

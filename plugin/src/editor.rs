@@ -1,14 +1,19 @@
 //! The editor: shows what the worker said last, and never waits for it. Each view is a function of plain data.
 
+mod alias;
 mod band;
+mod captures;
 mod checks;
 mod copy;
+mod difference;
 mod drift;
 mod field;
 mod ink;
 mod knob;
+mod mark;
 mod notices;
 mod panel;
+mod parts;
 mod picture;
 mod plumb;
 mod screen;

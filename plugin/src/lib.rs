@@ -7,6 +7,7 @@
 #![forbid(unsafe_code)]
 
 mod analysis;
+pub mod captures;
 pub mod check;
 mod controls;
 mod convert;

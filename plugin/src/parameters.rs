@@ -11,6 +11,7 @@ use nice_plug::prelude::*;
 
 pub use choices::{Channel, Reference, TemperamentChoice};
 
+use crate::captures::Captures;
 use crate::check::Results;
 use crate::state::{Kept, Unsound};
 
@@ -32,6 +33,9 @@ pub struct Parameters {
     /// The results of drift checks.
     #[persist = "checks"]
     pub results: Results,
+    /// The captures.
+    #[persist = "captures"]
+    pub captures: Captures,
     /// What of the last loaded state was unsound.
     #[persist = "unsound"]
     pub unsound: Unsound,
@@ -69,6 +73,9 @@ pub struct AnalysisParameters {
     /// Keeps the present reading on display.
     #[id = "freeze"]
     pub freeze: BoolParam,
+    /// Keeps a capture each time it is switched on.
+    #[id = "capture"]
+    pub capture: BoolParam,
 }
 
 /// The drift check.
@@ -97,6 +104,7 @@ impl Default for Parameters {
             check: CheckParameters::new(&concert_pitch_hz),
             kept: Kept::default(),
             results: Results::default(),
+            captures: Captures::default(),
             unsound: Unsound::default(),
         }
     }
@@ -146,6 +154,7 @@ impl AnalysisParameters {
             .with_string_to_value(Arc::new(text::milliseconds)),
             partials: IntParam::new("Partials", 40, IntRange::Linear { min: 1, max: 128 }),
             freeze: BoolParam::new("Freeze", false),
+            capture: BoolParam::new("Capture", false),
         }
     }
 }
@@ -198,6 +207,7 @@ mod tests {
             "integration",
             "partials",
             "freeze",
+            "capture",
             "check",
             "tolerance",
             "reference",
@@ -253,6 +263,7 @@ mod tests {
             "integration" => f(&analysis.integration),
             "partials" => f(&analysis.partials),
             "freeze" => f(&analysis.freeze),
+            "capture" => f(&analysis.capture),
             "check" => f(&check.check),
             "tolerance" => f(&check.tolerance),
             "reference" => f(&check.reference),

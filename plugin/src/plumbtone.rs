@@ -9,6 +9,7 @@ use plumbtone_analysis::Analyzer;
 use triple_buffer::{Output, triple_buffer};
 
 use crate::analysis::Analysis;
+use crate::captures::Press;
 use crate::check::Checks;
 use crate::controls::Controls;
 use crate::convert::index;
@@ -45,7 +46,9 @@ impl Default for Plumbtone {
         let status = Arc::new(Status::new(log.is_some()));
         let parameters = Arc::<Parameters>::default();
         let checks = Checks::new(parameters.results.clone());
-        let delivery = Delivery::new(Arc::clone(&status), input, repaint.clone(), log, checks);
+        let press = Press::new(parameters.captures.clone());
+        let delivery =
+            Delivery::new(Arc::clone(&status), input, repaint.clone(), log, (checks, press));
         let trail = delivery.trail();
         Self {
             parameters,
@@ -74,6 +77,7 @@ impl Drop for Plumbtone {
         self.end();
         // A report that was begun is finished, whatever the host does next.
         self.parameters.results.finish_reports();
+        self.parameters.captures.finish_errands();
     }
 }
 
@@ -209,6 +213,9 @@ impl ClapPlugin for Plumbtone {
                 page.add_param(&tuning.concert_pitch);
                 page.add_param(&tuning.temperament);
                 page.add_param(&analysis.freeze);
+            });
+            section.add_page("Captures", |page| {
+                page.add_param(&analysis.capture);
             });
             section.add_page("Check", |page| {
                 page.add_param(&check.check);

@@ -175,6 +175,7 @@ pub(crate) fn copy_reading(to: &mut Reading, from: &Reading) {
     to.state = from.state;
     to.pitch = from.pitch;
     to.level_dbfs = from.level_dbfs;
+    to.noise_dbfs = from.noise_dbfs;
     to.stretch = from.stretch;
     to.partials.clone_from(&from.partials);
     to.strays.clone_from(&from.strays);

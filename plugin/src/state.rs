@@ -10,9 +10,9 @@ use nice_plug::prelude::*;
 use serde::{Deserialize, Serialize};
 use serde_json::Value;
 
-use crate::check;
 use crate::editor::Theme;
 use crate::parameters::Parameters;
+use crate::{captures, check};
 
 /// Version of the part that is no parameter. A newer one is read as far as it is understood.
 const FORMAT: u64 = 1;
@@ -21,6 +21,7 @@ const ZOOM: (f64, f64) = (0.5, 3.0);
 /// Keys of the persistent fields.
 const KEPT: &str = "kept";
 const CHECKS: &str = "checks";
+const CAPTURES: &str = "captures";
 const UNSOUND: &str = "unsound";
 
 /// The part of the state that is no parameter.
@@ -129,6 +130,10 @@ pub(crate) fn filter(state: &mut PluginState) {
     if let Ok(checks) = serde_json::to_string(&checks) {
         state.fields.insert(CHECKS.to_owned(), checks);
     }
+    let captures = captures::read(state.fields.get(CAPTURES).map(String::as_str), &mut findings);
+    if let Ok(captures) = serde_json::to_string(&captures) {
+        state.fields.insert(CAPTURES.to_owned(), captures);
+    }
     if let Ok(findings) = serde_json::to_string(&Findings(findings)) {
         state.fields.insert(UNSOUND.to_owned(), findings);
     }
@@ -200,6 +205,7 @@ fn known(parameters: &Parameters) -> Vec<Known> {
         float("integration", &analysis.integration),
         int("partials", &analysis.partials),
         boolean("freeze", &analysis.freeze),
+        boolean("capture", &analysis.capture),
         boolean("check", &check.check),
         float("tolerance", &check.tolerance),
         choice("reference", &check.reference),

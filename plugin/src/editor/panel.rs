@@ -2,6 +2,7 @@
 
 use egui::{Align2, Rect, Response, Role, Sense, Stroke, Ui, WidgetInfo, pos2, vec2};
 
+use super::captures::{self, Captures};
 use super::checks::{self, Checks};
 use super::field::Bench;
 use super::ink;
@@ -19,13 +20,18 @@ const ACTIONS: f32 = 34.0;
 pub(crate) enum Tab {
     #[default]
     Sound,
+    Captures,
     Checks,
     Settings,
 }
 
 impl Tab {
-    const ALL: [(Self, &'static str); 3] =
-        [(Self::Sound, "Sound"), (Self::Checks, "Checks"), (Self::Settings, "Settings")];
+    const ALL: [(Self, &'static str); 4] = [
+        (Self::Sound, "Sound"),
+        (Self::Captures, "Captures"),
+        (Self::Checks, "Checks"),
+        (Self::Settings, "Settings"),
+    ];
 }
 
 /// What is asked to be copied.
@@ -46,11 +52,19 @@ const COPIES: [(Copy, &str, &str); 3] = [
     ),
 ];
 
+/// What the tabs show and change.
+pub(crate) struct Views<'a, 'b> {
+    pub(crate) tab: &'a mut Tab,
+    pub(crate) look: &'a mut Look<'b>,
+    pub(crate) captures: &'a mut Captures,
+    pub(crate) checks: &'a mut Checks,
+}
+
 /// Draws it. Says what is asked for.
 pub(crate) fn show(
     ui: &mut Ui,
     rect: Rect,
-    (tab, look, checks): (&mut Tab, &mut Look<'_>, &mut Checks),
+    Views { tab, look, captures, checks }: Views<'_, '_>,
     (shown, figures): (&Shown<'_>, &Figures),
     bench: &mut Bench<'_>,
 ) -> Option<Copy> {
@@ -63,6 +77,7 @@ pub(crate) fn show(
     let body = rect.with_min_y(rect.top() + TABS).with_max_y(rect.bottom() - ACTIONS);
     match tab {
         Tab::Sound => sound::show(ui, body, shown, figures, palette),
+        Tab::Captures => captures::show(ui, body, captures, shown, palette),
         Tab::Checks => checks::show(ui, body, checks, shown, palette),
         Tab::Settings => settings::show(ui, body, look, bench),
     }

@@ -20,7 +20,7 @@ use serde_json::Value;
 use tempfile::TempDir;
 
 use crate::bundles::{target, there};
-use crate::rig::{Log, instance, set};
+use crate::rig::{Log, instance, json, set};
 use crate::session::{START_S, transport};
 use crate::the_program::write_stereo;
 
@@ -97,11 +97,6 @@ fn kept(instance: &mut Instance) -> Stored {
     let state = json(&instance.save().expect("a state"));
     let text = state["fields"]["checks"].as_str().expect("the checks are kept");
     serde_json::from_str(text).expect("in their form")
-}
-
-fn json(state: &[u8]) -> Value {
-    let start = state.iter().position(|&byte| byte == b'{').expect("the state is JSON");
-    serde_json::from_slice(&state[start..]).expect("the state is JSON")
 }
 
 /// Changes what the instance keeps of its checks, by way of its state.

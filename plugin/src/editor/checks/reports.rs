@@ -1,9 +1,10 @@
 //! Where reports go, when they are written, and what came of the last one.
 
-use egui::{RichText, Role, TextEdit, Ui, WidgetInfo};
+use egui::{Role, TextEdit, Ui, WidgetInfo};
 
-use super::super::theme::{FIGURE, Palette, SMALL, sans};
-use super::{Checks, act, say, tick};
+use super::super::parts::{act, say, tick, warn};
+use super::super::theme::{FIGURE, Palette, sans};
+use super::Checks;
 use crate::check::{CAUTION, Results, Told};
 
 /// Draws it.
@@ -29,8 +30,8 @@ pub(super) fn show(ui: &mut Ui, checks: &mut Checks, results: &Results, palette:
             say(ui, &format!("written: {place}.csv, .json, .svg"), palette);
         }
         Some(Told::Failed(why)) => {
-            let text = format!("! No report was written: {why}. The results are still here.");
-            ui.label(RichText::new(text).size(SMALL).color(palette.stray));
+            let text = format!("No report was written: {why}. The results are still here.");
+            warn(ui, &text, palette);
         }
         None => {}
     }

@@ -14,7 +14,7 @@ use super::axis::{Axis, RowAxis};
 use crate::convert::single;
 
 /// Deviations that a whisker spans each way.
-const WHISKER_SD: f64 = 2.0;
+pub(crate) const WHISKER_SD: f64 = 2.0;
 /// Radius of a dot: of the strongest partial, and of one this many dB below it and weaker.
 const DOT: (f32, f32) = (5.5, 2.5);
 const DOT_RANGE_DB: f64 = 60.0;
@@ -216,7 +216,7 @@ fn faded(palette: &Palette, below_db: f64) -> Color32 {
 }
 
 /// Figures are written for one row of this many.
-fn figures_every(row: f32) -> u32 {
+pub(crate) fn figures_every(row: f32) -> u32 {
     [1, 2, 4, 5, 8, 10, 16]
         .into_iter()
         .find(|&every| row * every as f32 >= FIGURE_APART)
@@ -237,7 +237,7 @@ pub(crate) fn curve(
     let mut y = axis.y.max;
     let mut points = Vec::new();
     while y >= axis.y.min {
-        let n = f64::from(axis.first - 0.75 + (axis.y.max - y) / axis.row());
+        let n = f64::from(axis.number(y));
         let cents = 600.0 * (1.0 + b * n * n).max(1e-9).log2();
         if n >= 0.0 && n <= f64::from(highest) + 0.7 && columns.cents.holds(cents) {
             points.push(pos2(columns.cents.at(cents), y));
