@@ -79,6 +79,7 @@ fn fixed(folder: &Path) -> Done {
     checks.get_by_label("Checks").click();
     checks.run_steps(3);
     keep(&mut checks, &folder.join("checks.png"))?;
+    save(Scene::detuned(Theme::Light), SIZE, 1.0, &folder.join("detuned.png"))?;
     let mut compared = Scene::captured(Theme::Dark);
     compared.screen.compare(Some(1), None);
     let mut captures = compared.open(SIZE, 1.0);

@@ -5,7 +5,7 @@ use std::sync::{Arc, Mutex, PoisonError};
 
 use nice_plug_egui::RepaintNotifier;
 use plumbtone_analysis::tuning::{NoteName, Tuning};
-use plumbtone_analysis::{Gap, GapReason, Reading, Sink, State};
+use plumbtone_analysis::{Gap, GapReason, Note, Reading, Sink, State};
 use triple_buffer::Input;
 
 use crate::captures::Press;
@@ -16,6 +16,7 @@ use crate::readout::{Condition, Gaps, Live, Missing, Readout};
 use crate::session::{Anchor, SessionPosition};
 use crate::status::Status;
 use crate::trail::Trail;
+use crate::voices::Voices;
 
 /// In silence the editor draws anew once in this many readings only.
 const SILENT_READINGS: u32 = 100;
@@ -103,6 +104,7 @@ impl Delivery {
         self.readout.last_gap = None;
         self.readout.forget_offset();
         self.readout.played = None;
+        self.readout.voices = Voices::default();
         self.held.clear();
         self.anchors.clear();
         self.checks.start();
@@ -245,6 +247,11 @@ impl Sink for Delivery {
         self.readout.take(reading, session);
         self.readout.trail_end = trail_end;
         self.visible |= self.press.reading(&self.readout);
+    }
+
+    fn note(&mut self, note: &Note) {
+        self.readout.voices.take(note);
+        self.show();
     }
 
     fn gap(&mut self, gap: &Gap) {

@@ -25,6 +25,7 @@ mod state;
 mod status;
 mod tap;
 pub mod trail;
+pub mod voices;
 
 pub use plumbtone::Plumbtone;
 

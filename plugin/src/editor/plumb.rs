@@ -21,6 +21,7 @@ use super::screen::Shown;
 use super::steady::signed;
 use super::theme::{CORNER, PAD, Palette, SMALL, mono, sans};
 use super::words;
+use crate::voices::Voices;
 
 /// Height of the captions above the rows and of the scale below them.
 const HEAD: f32 = 28.0;
@@ -147,7 +148,7 @@ impl Plumb {
         if held {
             captions(ui, &columns, self.levels, palette);
             grid(ui, &columns, palette);
-            self.sound(ui, &columns, reading, palette);
+            self.sound(ui, &columns, reading, &shown.readout.voices, palette);
         } else {
             nothing(ui, body, shown, palette);
         }
@@ -159,11 +160,20 @@ impl Plumb {
         }
     }
 
-    fn sound(&mut self, ui: &mut Ui, columns: &Columns, reading: &Reading, palette: &Palette) {
+    fn sound(
+        &mut self,
+        ui: &mut Ui,
+        columns: &Columns,
+        reading: &Reading,
+        voices: &Voices,
+        palette: &Palette,
+    ) {
         let Some(pitch) = &reading.pitch else { return };
         let zero = self.levels.zero_dbfs(&reading.partials);
         let level = |dbfs: f64| dbfs - zero;
-        let done = rows::show(ui, columns, (&reading.partials, self.pinned), level, palette);
+        let cluster = |number| voices.of(number, pitch.f0_hz);
+        let partials = (&reading.partials[..], self.pinned);
+        let done = rows::show(ui, columns, partials, (level, cluster), palette);
         let highest = reading.partials.iter().map(|p| p.number).max().unwrap_or(0);
         rows::curve(ui, columns, reading.stretch, highest, palette);
         let lane = strays::Lane {

@@ -63,6 +63,11 @@ fn no_single_pitch() {
 }
 
 #[test]
+fn detuned_voices() {
+    picture("detuned", Scene::detuned(Theme::Dark), SIZE);
+}
+
+#[test]
 fn difference_dark() {
     difference("difference-dark", Theme::Dark, (1, None));
 }

@@ -5,7 +5,7 @@ use std::sync::{Mutex, PoisonError};
 use egui::Vec2;
 use egui_kittest::Harness;
 use plumbtone_analysis::tuning::ratio;
-use plumbtone_analysis::{Partial, Pitch, Reading, State, Stray, StrayKind, Stretch};
+use plumbtone_analysis::{Cluster, Partial, Pitch, Reading, State, Stray, StrayKind, Stretch};
 use plumbtone_plugin::captures::Capture;
 use plumbtone_plugin::check::{CheckResult, InTrail};
 use plumbtone_plugin::editor::{Gesture, Screen, Shown, Theme, install_fonts};
@@ -13,6 +13,7 @@ use plumbtone_plugin::parameters::Parameters;
 use plumbtone_plugin::readout::{Condition, Readout};
 use plumbtone_plugin::session::{BarBeat, SessionPosition};
 use plumbtone_plugin::trail::Trail;
+use plumbtone_plugin::voices::Voices;
 
 const RATE_HZ: f64 = 48_000.0;
 const HOP: u64 = 480;
@@ -64,6 +65,22 @@ impl Scene {
                 scene.parameters.results.add(result);
             }
         }
+        scene
+    }
+
+    /// The same after a note that two voices played, 7 cents apart.
+    pub(crate) fn detuned(theme: Theme) -> Self {
+        let mut scene = Self::string(theme);
+        let cluster = |number: u32| Cluster {
+            lines: if number.is_multiple_of(5) { 3 } else { 2 },
+            spread_cents: 7.0 + 0.05 * f64::from(number % 3),
+            beat_hz: 0.89 * f64::from(number),
+        };
+        scene.readout.voices = Voices {
+            f0_hz: 220.2,
+            partials: 20,
+            clusters: (2..=18).map(|number| (number, cluster(number))).collect(),
+        };
         scene
     }
 
