@@ -22,7 +22,7 @@ const HEAD: f32 = 24.0;
 const FOOT: f32 = 28.0;
 /// Widths: partial numbers, a column's gap, the dials, and a figure with its deviation.
 const NUMBERS: f32 = 42.0;
-const BETWEEN: f32 = 26.0;
+const BETWEEN: f32 = 44.0;
 const DIAL: f32 = 36.0;
 const FIGURE: f32 = 92.0;
 /// Width below which the figures are left out.
