@@ -11,6 +11,13 @@ const SETTLED_CENTS: f64 = 3.0;
 const SETTLED_SD: f64 = 3.0;
 /// Readings of a note kept to judge how it settles: of more, the later ones are left out (40 s at 10 ms).
 const READINGS_MAX: usize = 4096;
+/// A stretch is told from none when it is this many of its deviations.
+const SURE_SD: f64 = 2.0;
+/// A note that lies this many times as far off as four of five others, and farther than so many cents, is out of order.
+const ASTRAY: f64 = 8.0;
+const ASTRAY_CENTS: f64 = 40.0;
+/// Readings without a pitch after which no note is under way: more than a note bridges.
+const NOTHING_UNDER_WAY: usize = 16;
 
 /// One note of a key sheet.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -76,6 +83,53 @@ pub fn worst_alias(note: &Note) -> Option<WorstAlias> {
     aliases.max_by(|a, b| a.over_mask_db.total_cmp(&b.over_mask_db))
 }
 
+/// What an inharmonicity and its deviation come to.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum StretchFound {
+    /// It can be told from none.
+    Measured {
+        /// Inharmonicity.
+        b: f64,
+        /// Its standard deviation.
+        b_sd: f64,
+    },
+    /// It cannot; it is below this.
+    Below(f64),
+}
+
+impl StretchFound {
+    /// What these figures come to; `None` when they say nothing.
+    #[must_use]
+    pub fn of(b: f64, b_sd: f64) -> Option<Self> {
+        if !(b.is_finite() && b_sd >= 0.0 && b_sd.is_finite()) {
+            return None;
+        }
+        if b > SURE_SD * b_sd {
+            return Some(Self::Measured { b, b_sd });
+        }
+        Some(b.max(0.0) + SURE_SD * b_sd).filter(|&below| below > 0.0).map(Self::Below)
+    }
+}
+
+/// The distance from their keys, in cents, within which notes are in order among others that lie so far off; a note beyond
+/// is better marked than shown to scale.
+#[must_use]
+pub fn in_order_cents(off: impl Iterator<Item = f64>) -> f64 {
+    let mut off: Vec<f64> = off.map(f64::abs).filter(|cents| cents.is_finite()).collect();
+    off.sort_by(f64::total_cmp);
+    // Four of five lie nearer than this.
+    let usual = off.len().checked_sub(1).map_or(0.0, |last| off[last * 4 / 5]);
+    (ASTRAY * usual).max(ASTRAY_CENTS)
+}
+
+/// The keys between the lowest and the highest of some that are not among them, from low to high.
+#[must_use]
+pub fn missing(keys: &[NoteName]) -> Vec<NoteName> {
+    let Some((first, last)) = keys.iter().min().zip(keys.iter().max()) else { return Vec::new() };
+    let between = (first.midi()..=last.midi()).map(NoteName::from_midi);
+    between.filter(|key| !keys.contains(key)).collect()
+}
+
 /// Makes rows of notes, from the readings within them.
 #[derive(Debug)]
 pub struct KeySheet {
@@ -83,20 +137,33 @@ pub struct KeySheet {
     sample_rate_hz: f64,
     /// Position, logarithm of the fundamental, and its deviation in cents, of the readings since the last note.
     readings: Vec<(u64, f64, f64)>,
+    /// Readings without a pitch in a row.
+    unpitched: usize,
 }
 
 impl KeySheet {
     /// A sheet of notes as a tuning names them.
     #[must_use]
     pub fn new(tuning: Tuning, sample_rate_hz: f64) -> Self {
-        Self { tuning, sample_rate_hz, readings: Vec::with_capacity(READINGS_MAX) }
+        Self { tuning, sample_rate_hz, readings: Vec::with_capacity(READINGS_MAX), unpitched: 0 }
+    }
+
+    /// Names notes by another tuning from here on.
+    pub fn tune(&mut self, tuning: Tuning) {
+        self.tuning = tuning;
     }
 
     /// Takes in the next reading.
     pub fn reading(&mut self, reading: &Reading) {
-        if let Some(pitch) = reading.pitch
-            && self.readings.len() < READINGS_MAX
-        {
+        let Some(pitch) = reading.pitch else {
+            self.unpitched += 1;
+            if self.unpitched == NOTHING_UNDER_WAY {
+                self.readings.clear();
+            }
+            return;
+        };
+        self.unpitched = 0;
+        if self.readings.len() < READINGS_MAX {
             self.readings.push((reading.centre, pitch.f0_hz.ln(), pitch.f0_sd_cents));
         }
     }
@@ -142,6 +209,7 @@ mod tests {
     use super::*;
     use crate::note::NotePartial;
     use crate::reading::{Pitch, Stray};
+    use crate::tuning::Temperament;
 
     fn note() -> Note {
         let partial = NotePartial {
@@ -197,5 +265,59 @@ mod tests {
         assert_eq!(row.settling_s, Some(0.2), "{row:?}");
         let told = sheet.note(&note(), Some(NoteName::from_midi(70))).expect("told");
         assert!((told.cents + 98.034).abs() < 1e-3 && told.settling_s.is_none(), "{told:?}");
+        sheet.tune(Tuning::new(450.0, Temperament::Equal).expect("in range"));
+        let row = sheet.note(&note(), None).expect("A4 is near");
+        assert!((row.cents + 36.943).abs() < 1e-3, "{row:?}");
+    }
+
+    #[test]
+    fn what_was_no_note_is_forgotten() {
+        let mut sheet = KeySheet::new(Tuning::default(), 48_000.0);
+        let pitch = |f0_hz| Some(Pitch { f0_hz, f0_sd_cents: 0.1, confidence: 0.9 });
+        // A pitch now and then for an hour, and then the note.
+        for k in 0..360_000 {
+            let pitch = if k % 64 == 0 { pitch(300.0) } else { None };
+            sheet.reading(&Reading { centre: 0, pitch, ..Reading::default() });
+        }
+        sheet.reading(&Reading { centre: 1480, pitch: pitch(440.5), ..Reading::default() });
+        let row = sheet.note(&note(), None).expect("A4 is near");
+        assert_eq!(row.settling_s, Some(0.01), "{row:?}");
+    }
+
+    #[test]
+    fn a_stretch_is_measured_only_where_it_is_more_than_noise() {
+        let measured = StretchFound::Measured { b: 1e-4, b_sd: 1e-6 };
+        for (b, b_sd, expected) in [
+            (1e-4, 1e-6, Some(measured)),
+            (1e-6, 1e-6, Some(StretchFound::Below(3e-6))),
+            (-4e-6, 1e-6, Some(StretchFound::Below(2e-6))),
+            (0.0, 0.0, None),
+            (f64::NAN, 1e-6, None),
+            (-1e-4, 0.0, None),
+            (1e-4, f64::NAN, None),
+            (f64::INFINITY, 1e-6, None),
+        ] {
+            assert_eq!(StretchFound::of(b, b_sd), expected, "{b} {b_sd}");
+        }
+    }
+
+    #[test]
+    fn one_key_of_many_is_out_of_order_and_all_of_them_are_not() {
+        let one = [1.0, -2.0, 3.0, 1190.0, 2.0, -1.0].into_iter();
+        assert_eq!(in_order_cents(one).to_bits(), 40f64.to_bits(), "one an octave off");
+        let all = [1190.0, 1200.0, 1210.0].into_iter();
+        assert!(in_order_cents(all) > 1210.0, "all an octave off");
+        let none = [f64::NAN].into_iter();
+        assert_eq!(in_order_cents(none).to_bits(), 40f64.to_bits(), "no number");
+    }
+
+    #[test]
+    fn missing_keys_lie_between_the_outermost() {
+        let keys = |midi: &[i16]| -> Vec<NoteName> {
+            midi.iter().copied().map(NoteName::from_midi).collect()
+        };
+        assert_eq!(missing(&keys(&[63, 60, 61, 66])), keys(&[62, 64, 65]), "in any order");
+        assert_eq!(missing(&keys(&[60])), [], "one key");
+        assert_eq!(missing(&[]), [], "no key");
     }
 }

@@ -79,6 +79,11 @@ fn fixed(folder: &Path) -> Done {
     checks.get_by_label("Checks").click();
     checks.run_steps(3);
     keep(&mut checks, &folder.join("checks.png"))?;
+    let mut keys = Scene::keyboard(Theme::Dark).open(SIZE, 1.0);
+    keys.run_steps(2);
+    keys.get_by_label("Keys").click();
+    keys.run_steps(3);
+    keep(&mut keys, &folder.join("keys.png"))?;
     for (state, name) in
         [(State::Several, "several"), (State::Unpitched, "unpitched"), (State::Silent, "silent")]
     {

@@ -5,10 +5,11 @@ use std::sync::{Arc, Mutex, PoisonError};
 
 use nice_plug_egui::RepaintNotifier;
 use plumbtone_analysis::tuning::{NoteName, Tuning};
-use plumbtone_analysis::{Gap, GapReason, Reading, Sink, State};
+use plumbtone_analysis::{Gap, GapReason, Note, Reading, Sink, State};
 use triple_buffer::Input;
 
 use crate::check::Checks;
+use crate::keys::Keys;
 use crate::marks::Cause;
 use crate::readings_log::{Line, ReadingsLog};
 use crate::readout::{Condition, Gaps, Live, Missing, Readout};
@@ -26,6 +27,8 @@ pub(crate) struct Delivery {
     pub(crate) readout: Readout,
     /// What is checked.
     pub(crate) checks: Checks,
+    /// What is collected key by key.
+    pub(crate) keys: Keys,
     changed: bool,
     /// Whether the change is worth drawing.
     visible: bool,
@@ -52,10 +55,12 @@ impl Delivery {
         repaint: RepaintNotifier,
         log: Option<ReadingsLog>,
         checks: Checks,
+        keys: Keys,
     ) -> Self {
         Self {
             readout: Readout::default(),
             checks,
+            keys,
             changed: false,
             visible: false,
             silent_readings: 0,
@@ -77,7 +82,8 @@ impl Delivery {
     }
 
     /// An engine begins, whose readings lie this many samples apart.
-    pub(crate) fn begin(&self, hop: usize) {
+    pub(crate) fn begin(&mut self, hop: usize) {
+        self.keys.begin(self.readout.tuning, self.readout.sample_rate_hz);
         self.with_trail(|trail| trail.grid(hop, self.readout.sample_rate_hz));
     }
 
@@ -85,6 +91,7 @@ impl Delivery {
     pub(crate) fn tune(&mut self, tuning: Tuning) {
         if self.readout.tuning != tuning {
             self.readout.tuning = tuning;
+            self.keys.tune(tuning);
             self.readout.forget_offset();
             self.show();
         }
@@ -102,6 +109,7 @@ impl Delivery {
         self.held.clear();
         self.anchors.clear();
         self.checks.start();
+        self.keys.start();
         self.stand(Condition::Waiting);
     }
 
@@ -134,6 +142,7 @@ impl Delivery {
         }
         self.readout.played = self.held.last().map(|&key| NoteName::from_midi(i16::from(key)));
         self.checks.key(at, self.readout.played.map(|note| self.readout.tuning.frequency_hz(note)));
+        self.keys.key(at, key, down);
         self.show();
     }
 
@@ -213,6 +222,7 @@ impl Sink for Delivery {
             trail.push(stream, reading, &session);
             trail.next()
         });
+        self.keys.reading(reading);
         self.checks.reading(reading, trail_end.saturating_sub(1), self.status.shown());
         self.readout.weigh(reading);
         self.changed = true;
@@ -222,6 +232,11 @@ impl Sink for Delivery {
         self.show_reading(reading);
         self.readout.take(reading, session);
         self.readout.trail_end = trail_end;
+    }
+
+    fn note(&mut self, note: &Note) {
+        self.keys.note(note);
+        self.show();
     }
 
     fn gap(&mut self, gap: &Gap) {

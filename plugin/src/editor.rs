@@ -6,6 +6,7 @@ mod copy;
 mod drift;
 mod field;
 mod ink;
+mod keys;
 mod knob;
 mod notices;
 mod panel;

@@ -12,6 +12,7 @@ mod controls;
 mod convert;
 mod delivery;
 pub mod editor;
+pub mod keys;
 mod marks;
 pub mod offset;
 pub mod parameters;

@@ -12,6 +12,7 @@ use nice_plug::prelude::*;
 pub use choices::{Channel, Reference, TemperamentChoice};
 
 use crate::check::Results;
+use crate::keys::Sheet;
 use crate::state::{Kept, Unsound};
 
 /// All parameters, and what a session keeps beside them.
@@ -32,6 +33,9 @@ pub struct Parameters {
     /// The results of drift checks.
     #[persist = "checks"]
     pub results: Results,
+    /// The key sheet.
+    #[persist = "keys"]
+    pub sheet: Sheet,
     /// What of the last loaded state was unsound.
     #[persist = "unsound"]
     pub unsound: Unsound,
@@ -97,6 +101,7 @@ impl Default for Parameters {
             check: CheckParameters::new(&concert_pitch_hz),
             kept: Kept::default(),
             results: Results::default(),
+            sheet: Sheet::default(),
             unsound: Unsound::default(),
         }
     }

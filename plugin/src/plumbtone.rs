@@ -14,6 +14,7 @@ use crate::controls::Controls;
 use crate::convert::index;
 use crate::delivery::Delivery;
 use crate::editor::{self, Window};
+use crate::keys::Keys;
 use crate::parameters::Parameters;
 use crate::pool::Place;
 use crate::readings_log::ReadingsLog;
@@ -45,7 +46,9 @@ impl Default for Plumbtone {
         let status = Arc::new(Status::new(log.is_some()));
         let parameters = Arc::<Parameters>::default();
         let checks = Checks::new(parameters.results.clone());
-        let delivery = Delivery::new(Arc::clone(&status), input, repaint.clone(), log, checks);
+        let keys = Keys::new(parameters.sheet.clone());
+        let delivery =
+            Delivery::new(Arc::clone(&status), input, repaint.clone(), log, checks, keys);
         let trail = delivery.trail();
         Self {
             parameters,

@@ -216,6 +216,7 @@ mod tests {
     use crate::check::{Checks, Results};
     use crate::controls::Controls;
     use crate::delivery::Delivery;
+    use crate::keys::{Keys, Sheet};
     use crate::readout::{Condition, Readout};
     use crate::session::Transport;
     use crate::status::Status;
@@ -232,6 +233,7 @@ mod tests {
             RepaintNotifier::new(),
             None,
             Checks::new(Results::default()),
+            Keys::new(Sheet::default()),
         );
         let place = Place::take(Analysis::new(build, delivery));
         let status = Arc::new(Status::default());

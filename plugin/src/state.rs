@@ -12,6 +12,7 @@ use serde_json::Value;
 
 use crate::check;
 use crate::editor::Theme;
+use crate::keys;
 use crate::parameters::Parameters;
 
 /// Version of the part that is no parameter. A newer one is read as far as it is understood.
@@ -21,6 +22,7 @@ const ZOOM: (f64, f64) = (0.5, 3.0);
 /// Keys of the persistent fields.
 const KEPT: &str = "kept";
 const CHECKS: &str = "checks";
+const KEYS: &str = "keys";
 const UNSOUND: &str = "unsound";
 
 /// The part of the state that is no parameter.
@@ -128,6 +130,10 @@ pub(crate) fn filter(state: &mut PluginState) {
     let checks = check::read(state.fields.get(CHECKS).map(String::as_str), &mut findings);
     if let Ok(checks) = serde_json::to_string(&checks) {
         state.fields.insert(CHECKS.to_owned(), checks);
+    }
+    let keys = keys::read(state.fields.get(KEYS).map(String::as_str), &mut findings);
+    if let Ok(keys) = serde_json::to_string(&keys) {
+        state.fields.insert(KEYS.to_owned(), keys);
     }
     if let Ok(findings) = serde_json::to_string(&Findings(findings)) {
         state.fields.insert(UNSOUND.to_owned(), findings);

@@ -14,7 +14,7 @@ use crate::check::{CheckResult, Results, Snapshot, VerdictWord};
 const NOTHING: &str = "Switch Check on, or automate it: each stretch over which it is on ends in a verdict here, kept with the session.";
 
 /// Room for the bar that the list scrolls by.
-const BAR: f32 = 14.0;
+pub(super) const BAR: f32 = 14.0;
 
 /// The results as the editor saw them last, and what is opened of them.
 #[derive(Debug, Clone, Default)]
@@ -147,18 +147,18 @@ fn passes(ui: &mut Ui, checks: &mut Checks, results: &Results, palette: &Palette
 }
 
 /// A sentence in passing.
-fn say(ui: &mut Ui, text: &str, palette: &Palette) {
+pub(super) fn say(ui: &mut Ui, text: &str, palette: &Palette) {
     ui.label(RichText::new(text).size(SMALL).color(palette.dim));
 }
 
 /// A small button.
-fn act(ui: &mut Ui, text: &str, palette: &Palette) -> bool {
+pub(super) fn act(ui: &mut Ui, text: &str, palette: &Palette) -> bool {
     let button = egui::Button::new(RichText::new(text).size(SMALL).color(palette.ink));
     ui.add(button.fill(palette.ground).stroke(Stroke::new(1.0, palette.edge))).clicked()
 }
 
 /// A setting that is on or off; true when it changed.
-fn tick(ui: &mut Ui, on: &mut bool, text: &str, help: &str) -> bool {
+pub(super) fn tick(ui: &mut Ui, on: &mut bool, text: &str, help: &str) -> bool {
     ui.checkbox(on, RichText::new(text).size(FIGURE)).on_hover_text(help).changed()
 }
 

@@ -5,6 +5,7 @@ use egui::{Align2, Rect, Response, Role, Sense, Stroke, Ui, WidgetInfo, pos2, ve
 use super::checks::{self, Checks};
 use super::field::Bench;
 use super::ink;
+use super::keys::{self, Keys};
 use super::screen::Shown;
 use super::settings::{self, Look};
 use super::sound::{self, Figures};
@@ -19,13 +20,18 @@ const ACTIONS: f32 = 34.0;
 pub(crate) enum Tab {
     #[default]
     Sound,
+    Keys,
     Checks,
     Settings,
 }
 
 impl Tab {
-    const ALL: [(Self, &'static str); 3] =
-        [(Self::Sound, "Sound"), (Self::Checks, "Checks"), (Self::Settings, "Settings")];
+    const ALL: [(Self, &'static str); 4] = [
+        (Self::Sound, "Sound"),
+        (Self::Keys, "Keys"),
+        (Self::Checks, "Checks"),
+        (Self::Settings, "Settings"),
+    ];
 }
 
 /// What is asked to be copied.
@@ -33,24 +39,32 @@ impl Tab {
 pub(crate) enum Copy {
     Text,
     Csv,
+    KeysText,
+    KeysCsv,
     Picture,
 }
 
+const PICTURE: (Copy, &str, &str) = (
+    Copy::Picture,
+    "picture",
+    "Copy what you see as an SVG picture: paste it into a drawing program or save it as a file",
+);
 const COPIES: [(Copy, &str, &str); 3] = [
     (Copy::Text, "text", "Copy all figures as text"),
     (Copy::Csv, "CSV", "Copy all figures as CSV, for a spreadsheet or a program"),
-    (
-        Copy::Picture,
-        "picture",
-        "Copy what you see as an SVG picture: paste it into a drawing program or save it as a file",
-    ),
+    PICTURE,
+];
+const COPIES_OF_KEYS: [(Copy, &str, &str); 3] = [
+    (Copy::KeysText, "text", "Copy the key sheet as text"),
+    (Copy::KeysCsv, "CSV", "Copy the key sheet as CSV, for a spreadsheet or a program"),
+    PICTURE,
 ];
 
 /// Draws it. Says what is asked for.
 pub(crate) fn show(
     ui: &mut Ui,
     rect: Rect,
-    (tab, look, checks): (&mut Tab, &mut Look<'_>, &mut Checks),
+    (tab, look, checks, keys): (&mut Tab, &mut Look<'_>, &mut Checks, &mut Keys),
     (shown, figures): (&Shown<'_>, &Figures),
     bench: &mut Bench<'_>,
 ) -> Option<Copy> {
@@ -63,10 +77,12 @@ pub(crate) fn show(
     let body = rect.with_min_y(rect.top() + TABS).with_max_y(rect.bottom() - ACTIONS);
     match tab {
         Tab::Sound => sound::show(ui, body, shown, figures, palette),
+        Tab::Keys => keys::show(ui, body, keys, shown, palette),
         Tab::Checks => checks::show(ui, body, checks, shown, palette),
         Tab::Settings => settings::show(ui, body, look, bench),
     }
-    copies(ui, rect.with_min_y(rect.bottom() - ACTIONS), palette)
+    let all = if *tab == Tab::Keys { &COPIES_OF_KEYS } else { &COPIES };
+    copies(ui, rect.with_min_y(rect.bottom() - ACTIONS), all, palette)
 }
 
 fn tabs(ui: &mut Ui, rect: Rect, tab: &mut Tab, palette: &Palette) {
@@ -93,7 +109,7 @@ fn tabs(ui: &mut Ui, rect: Rect, tab: &mut Tab, palette: &Palette) {
     }
 }
 
-fn copies(ui: &mut Ui, rect: Rect, palette: &Palette) -> Option<Copy> {
+fn copies(ui: &mut Ui, rect: Rect, all: &[(Copy, &str, &str)], palette: &Palette) -> Option<Copy> {
     ui.painter().hline(
         rect.shrink2(vec2(PAD, 0.0)).x_range(),
         rect.top(),
@@ -103,7 +119,7 @@ fn copies(ui: &mut Ui, rect: Rect, palette: &Palette) -> Option<Copy> {
     let at = (pos2(rect.left() + PAD, y), Align2::LEFT_CENTER);
     let mut x = ink::text(ui, at, "copy", sans(12.0), palette.dim).rect.right() + 14.0;
     let mut asked = None;
-    for (copy, name, help) in COPIES {
+    for &(copy, name, help) in all {
         let response = link(ui, pos2(x, y), (name, help), palette);
         if response.clicked() {
             asked = Some(copy);

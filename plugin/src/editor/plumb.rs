@@ -9,8 +9,8 @@ mod strays;
 use egui::{Align2, Key, Rangef, Rect, Role, Sense, Stroke, Ui, WidgetInfo, pos2, vec2};
 use plumbtone_analysis::{Partial, Reading};
 
-use self::axis::{Axis, CalmCents, CalmFloor, CalmRows, RowAxis};
-pub(crate) use self::axis::{CENTS, Calm, round_step};
+pub(crate) use self::axis::{Axis, CENTS, Calm, CalmCents, CalmRange, round_step};
+use self::axis::{CalmFloor, CalmRows, RowAxis};
 use self::memory::Memory;
 use self::rows::Columns;
 use super::field;

@@ -8,6 +8,7 @@ use super::band::{self, Figures};
 use super::checks::Checks;
 use super::drift::Drift;
 use super::field::{Bench, Editing};
+use super::keys::Keys;
 use super::knob::Gesture;
 use super::panel::{self, Copy, Tab};
 use super::plumb::Plumb;
@@ -60,6 +61,7 @@ pub struct Screen {
     plumb: Plumb,
     drift: Drift,
     checks: Checks,
+    keys: Keys,
     editing: Editing,
 }
 
@@ -107,6 +109,8 @@ impl Screen {
             ui.ctx().copy_text(match copy {
                 Copy::Text => copy::text(shown),
                 Copy::Csv => copy::csv(shown),
+                Copy::KeysText => self.keys.text(shown),
+                Copy::KeysCsv => self.keys.csv(shown),
                 Copy::Picture => self.svg(area.size(), shown),
             });
         }
@@ -128,6 +132,7 @@ impl Screen {
         self.sound.update(shown);
         self.plumb.update(shown);
         self.checks.update(&shown.parameters.results);
+        self.keys.update(shown);
         self.drift.update(shown.trail, width - 2.0 * MARGIN, shown);
     }
 
@@ -141,7 +146,7 @@ impl Screen {
         let palette = self.theme.palette();
         *ui.visuals_mut() = self.theme.visuals();
         ui.painter().rect_filled(area, 0.0, palette.ground);
-        let Self { theme, zoom, tab, figures, sound, plumb, drift, checks, editing } = self;
+        let Self { theme, zoom, tab, figures, sound, plumb, drift, checks, keys, editing } = self;
         let mut bench = Bench { parameters: shown.parameters, palette, editing, gestures };
         let top = area.top() + band::HEIGHT;
         band::show(ui, area.with_max_y(top), shown, figures, &mut bench);
@@ -159,14 +164,21 @@ impl Screen {
             body.max.y = trace.top() - GAP;
         }
         let mut asked = None;
+        let mut of_keys = false;
         if area.width() >= WIDE {
             let split = body.right() - PANEL;
             let side = Rect::from_min_max(pos2(split, body.top()), body.max);
             let mut look = Look { theme, zoom, plumb };
-            asked = panel::show(ui, side, (tab, &mut look, checks), (shown, sound), &mut bench);
+            asked =
+                panel::show(ui, side, (tab, &mut look, checks, keys), (shown, sound), &mut bench);
             body.max.x = split - GAP;
+            of_keys = *tab == Tab::Keys;
         }
-        plumb.show(ui, body, shown, palette);
+        if of_keys {
+            keys.picture(ui, body, shown, palette);
+        } else {
+            plumb.show(ui, body, shown, palette);
+        }
         if let Some(stretch) = checks.jump.take() {
             drift.jump(stretch);
             ui.ctx().request_repaint();

@@ -4,6 +4,7 @@
 mod checks;
 mod controls;
 mod hostile;
+mod keys;
 mod pictures;
 mod scenes;
 mod views;

@@ -7,6 +7,7 @@ mod automation;
 mod bundles;
 mod checks;
 mod editor;
+mod keys;
 mod lifecycle;
 mod live;
 mod many;

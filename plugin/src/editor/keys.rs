@@ -1,0 +1,138 @@
+//! The key sheet: how the sound before this plugin behaves over the keyboard. A row per key in the side panel, and a
+//! picture of all of them where the plumb view stands otherwise.
+
+mod compass;
+mod picture;
+mod rows;
+mod scales;
+mod strips;
+mod words;
+
+use egui::{Rect, RichText, ScrollArea, Stroke, Ui, vec2};
+
+use self::scales::Scales;
+use super::checks::{BAR, act, say, tick};
+use super::screen::Shown;
+use super::theme::{FIGURE, PAD, Palette};
+use crate::keys::{self, Sheet, Snapshot, Stored};
+
+/// What is told where there is nothing yet.
+const NOTHING: &str = "Play notes from the host: into the instrument before this plugin, and the same notes into this plugin. Each key gets a row here by itself, kept with the session; playing a key again replaces its row.";
+const UNPLAYED_HELP: &str = "On: sound for which no key is held makes a row too, of the note nearest to its pitch. Off: only keys that the host plays make rows.";
+
+/// The sheet as the editor saw it last, and how it is shown.
+#[derive(Debug, Clone, Default)]
+pub(crate) struct Keys {
+    snapshot: Snapshot,
+    scales: Scales,
+    /// The keys under the pointer: in the sheet, and in the picture.
+    in_sheet: Option<u8>,
+    in_picture: Option<u8>,
+    /// A key whose row is to be scrolled to.
+    sought: Option<u8>,
+    /// Whether it was asked to forget all, and is to be asked again.
+    clearing: bool,
+}
+
+impl Keys {
+    /// Looks at the sheet; never waits for it.
+    pub(crate) fn update(&mut self, shown: &Shown<'_>) {
+        shown.parameters.sheet.look(&mut self.snapshot);
+        let tuning = &shown.readout.tuning;
+        self.scales.update(&self.snapshot.stored.rows, tuning, shown.time_s);
+    }
+
+    /// The sheet as lines of text.
+    pub(crate) fn text(&self, shown: &Shown<'_>) -> String {
+        words::text(&self.snapshot.stored.rows, &shown.readout.tuning)
+    }
+
+    /// The sheet as CSV.
+    pub(crate) fn csv(&self, shown: &Shown<'_>) -> String {
+        keys::csv(&self.snapshot.stored.rows, &shown.readout.tuning)
+    }
+
+    /// Draws the picture.
+    pub(crate) fn picture(
+        &mut self,
+        ui: &mut Ui,
+        rect: Rect,
+        shown: &Shown<'_>,
+        palette: &Palette,
+    ) {
+        let rows = &self.snapshot.stored.rows;
+        let lit = self.in_sheet;
+        let done =
+            picture::show(ui, rect, (rows, &self.scales, lit), &shown.readout.tuning, palette);
+        self.in_picture = done.under_pointer;
+        self.sought = done.clicked;
+    }
+}
+
+/// Draws the sheet into the side panel.
+pub(crate) fn show(ui: &mut Ui, rect: Rect, keys: &mut Keys, shown: &Shown<'_>, palette: &Palette) {
+    let area = rect.shrink2(vec2(PAD, 0.0));
+    let mut whole = ui.new_child(egui::UiBuilder::new().max_rect(area));
+    // A fade in the toolkit's colour would not be the card's.
+    whole.spacing_mut().scroll.fade.strength = 0.0;
+    whole.visuals_mut().widgets.inactive.bg_stroke = Stroke::new(1.0, palette.edge);
+    whole.spacing_mut().item_spacing = vec2(6.0, 5.0);
+    let ui = &mut whole;
+    ui.add_space(8.0);
+    let sheet = &shown.parameters.sheet;
+    head(ui, keys, palette);
+    settings(ui, keys, sheet, palette);
+    ui.add_space(2.0);
+    rows::heading(ui, area.width() - BAR, palette);
+    let list = ScrollArea::vertical().id_salt("keys").auto_shrink(false);
+    keys.in_sheet = list
+        .show(ui, |ui| {
+            ui.set_width(area.width() - BAR);
+            let lit = (keys.in_picture, keys.sought.take());
+            rows::show(ui, &keys.snapshot.stored, lit, &shown.readout.tuning, palette)
+        })
+        .inner;
+}
+
+/// Which keys there are, which are still to be played, and what the last note came to if it has no row.
+fn head(ui: &mut Ui, keys: &Keys, palette: &Palette) {
+    let Snapshot { stored: Stored { rows, .. }, declined, .. } = &keys.snapshot;
+    if rows.is_empty() {
+        say(ui, NOTHING, palette);
+    } else {
+        ui.label(RichText::new(words::compass(rows)).size(FIGURE).color(palette.ink));
+        if let Some(missing) = words::still_to_play(rows) {
+            ui.label(RichText::new(missing).size(FIGURE).color(palette.stray));
+        }
+    }
+    if let Some(declined) = declined {
+        say(ui, &words::declined(declined), palette);
+    }
+}
+
+/// What makes rows, and forgetting all of them.
+fn settings(ui: &mut Ui, keys: &mut Keys, sheet: &Sheet, palette: &Palette) {
+    let mut unplayed = keys.snapshot.stored.unplayed;
+    if tick(ui, &mut unplayed, "rows without played keys", UNPLAYED_HELP) {
+        keys.snapshot.stored.unplayed = unplayed;
+        sheet.take_unplayed(unplayed);
+    }
+    let count = keys.snapshot.stored.rows.len();
+    if count == 0 {
+        keys.clearing = false;
+        return;
+    }
+    ui.horizontal(|ui| {
+        if !keys.clearing {
+            keys.clearing = act(ui, "forget all keys", palette);
+            return;
+        }
+        if act(ui, &format!("forget {count}, for good"), palette) {
+            sheet.clear();
+            keys.clearing = false;
+        }
+        if act(ui, "keep them", palette) {
+            keys.clearing = false;
+        }
+    });
+}

@@ -1,0 +1,174 @@
+//! The key sheet in words, and as text for people.
+
+use std::fmt::Write as _;
+
+use plumbtone_analysis::Stretch;
+use plumbtone_analysis::keys::{StretchFound, missing};
+use plumbtone_analysis::tuning::{NoteName, Tuning};
+
+use super::super::sound::stretch;
+use super::super::steady::{NONE, decimals, signed};
+use super::super::words::{hertz, note};
+use crate::keys::{Declined, KeyAlias, Row};
+
+/// Most runs of missing keys that are listed.
+const RUNS_MAX: usize = 8;
+
+/// What is known of the stretch of a row.
+pub(super) fn stretch_found(row: &Row) -> Option<StretchFound> {
+    let (b, b_sd) = row.inharmonicity_b.zip(row.inharmonicity_sd)?;
+    StretchFound::of(b, b_sd)
+}
+
+/// A key's name as print has it.
+pub(super) fn name(key: u8) -> String {
+    note(NoteName::from_midi(i16::from(key)))
+}
+
+/// How many keys there are, from which to which.
+pub(super) fn compass(rows: &[Row]) -> String {
+    match rows {
+        [] => String::new(),
+        [only] => format!("1 key: {}", name(only.key)),
+        [first, .., last] => {
+            format!("{} keys, {} to {}", rows.len(), name(first.key), name(last.key))
+        }
+    }
+}
+
+/// The missing keys as runs, from and to.
+pub(super) fn gaps(rows: &[Row]) -> Vec<(u8, u8)> {
+    let keys: Vec<NoteName> = rows.iter().map(Row::note).collect();
+    let mut runs: Vec<(u8, u8)> = Vec::new();
+    for key in missing(&keys).into_iter().filter_map(|key| u8::try_from(key.midi()).ok()) {
+        match runs.last_mut() {
+            Some(run) if run.1 + 1 == key => run.1 = key,
+            _ => runs.push((key, key)),
+        }
+    }
+    runs
+}
+
+/// A run of keys.
+pub(super) fn run((from, to): (u8, u8)) -> String {
+    match to - from {
+        0 => name(from),
+        1 => format!("{}, {}", name(from), name(to)),
+        _ => format!("{} to {}", name(from), name(to)),
+    }
+}
+
+/// Which keys between the lowest and the highest have no row.
+pub(super) fn still_to_play(rows: &[Row]) -> Option<String> {
+    let runs = gaps(rows);
+    if runs.is_empty() {
+        return None;
+    }
+    let told: Vec<String> = runs.iter().take(RUNS_MAX).copied().map(run).collect();
+    let left: usize = runs.iter().skip(RUNS_MAX).map(|run| usize::from(run.1 - run.0) + 1).sum();
+    let more = if left > 0 { format!(" and {left} more") } else { String::new() };
+    Some(format!("still to play: {}{more}", told.join(", ")))
+}
+
+/// Why the last note has no row.
+pub(super) fn declined(declined: &Declined) -> String {
+    format!(
+        "{}: other keys were held with it, so there is no row. Play one key at a time.",
+        name(declined.key)
+    )
+}
+
+/// Cents with their deviation.
+pub(super) fn cents(row: &Row, tuning: &Tuning) -> String {
+    let digits = decimals(row.f0_sd_cents, 2);
+    format!("{} \u{b1} {:.digits$}", signed(row.cents(tuning), digits), row.f0_sd_cents)
+}
+
+/// A level or a slope, or a dash.
+pub(super) fn figure(value: Option<f64>) -> String {
+    value.map_or_else(|| NONE.to_owned(), |value| signed(value, 1))
+}
+
+/// A time in seconds, or a dash.
+pub(super) fn seconds(value: Option<f64>) -> String {
+    value.map_or_else(|| NONE.to_owned(), |s| format!("{s:.*}", if s < 9.995 { 2 } else { 0 }))
+}
+
+/// B to two digits, or what it is below.
+pub(super) fn b_short(row: &Row) -> String {
+    match stretch_found(row) {
+        None => NONE.to_owned(),
+        Some(StretchFound::Below(_)) => "0".to_owned(),
+        Some(StretchFound::Measured { b, .. }) => format!("{b:.1e}"),
+    }
+}
+
+/// All figures of a key, a line each.
+pub(super) fn lines(row: &Row, tuning: &Tuning) -> Vec<String> {
+    let level =
+        row.level_dbfs.map_or_else(|| NONE.to_owned(), |l| format!("{} dBFS", signed(l, 1)));
+    let tilt = row
+        .tilt_db_per_octave
+        .map_or_else(|| NONE.to_owned(), |tilt| format!("{} dB/octave", signed(tilt, 1)));
+    let b = match stretch_found(row) {
+        None => NONE.to_owned(),
+        Some(StretchFound::Below(most)) => format!("none found, below {most:.0e}"),
+        Some(StretchFound::Measured { b, b_sd }) => stretch(Stretch { b, b_sd }),
+    };
+    let settling = row.settling_s.map_or_else(
+        || "the pitch never settles".to_owned(),
+        |s| format!("the pitch settles in {s:.2} s"),
+    );
+    let whose = if row.told { "played by the host" } else { "the nearest note, no key was held" };
+    vec![
+        format!("{} ct, {} Hz", cents(row, tuning), hertz(row.f0_hz, 2)),
+        format!("level {level}"),
+        format!("tilt {tilt}"),
+        row.worst_alias.as_ref().map_or_else(|| "no alias found".to_owned(), alias),
+        settling,
+        format!("stretch B {b}"),
+        format!("{:.1} s long, {whose}", row.length_s),
+    ]
+}
+
+fn alias(alias: &KeyAlias) -> String {
+    let over = alias.over_mask_db.map_or_else(String::new, |over| {
+        let heard = if over > 0.0 { "may be heard" } else { "masked" };
+        format!(", {} dB over what masks it: {heard}", signed(over, 1))
+    });
+    format!("worst alias: partial {} at {} Hz{over}", alias.partial, hertz(alias.frequency_hz, 0))
+}
+
+/// The sheet as lines of text.
+pub(super) fn text(rows: &[Row], tuning: &Tuning) -> String {
+    let concert = tuning.concert_pitch_hz();
+    let mut out = format!("key sheet; concert pitch {concert:.2} Hz, {}\n", tuning.temperament());
+    if rows.is_empty() {
+        out.push_str("no key yet\n");
+        return out;
+    }
+    // Writing to a string cannot fail.
+    let _ = writeln!(
+        out,
+        "{:<5}{:>16}{:>8}{:>11}{:>12}{:>11}{:>9}",
+        "key", "ct", "dBFS", "dB/octave", "alias, dB", "settles, s", "B"
+    );
+    for row in rows {
+        let alias = row.worst_alias.and_then(|alias| alias.over_mask_db);
+        let _ = writeln!(
+            out,
+            "{:<5}{:>16}{:>8}{:>11}{:>12}{:>11}{:>9}",
+            name(row.key),
+            cents(row, tuning),
+            figure(row.level_dbfs),
+            figure(row.tilt_db_per_octave),
+            figure(alias),
+            seconds(row.settling_s),
+            b_short(row)
+        );
+    }
+    if let Some(missing) = still_to_play(rows) {
+        let _ = writeln!(out, "{missing}");
+    }
+    out
+}
