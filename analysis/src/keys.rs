@@ -9,6 +9,11 @@ use crate::tuning::{NoteName, Tuning};
 /// Distance from the note's pitch within which it has settled, in cents, and in deviations of the reading.
 const SETTLED_CENTS: f64 = 3.0;
 const SETTLED_SD: f64 = 3.0;
+/// Readings in a row beyond that distance that say that it has not: fewer are not heard.
+const UNSETTLED: usize = 3;
+/// What is not judged before a note's end, where a sound is let go: so many seconds, or this share of the note.
+const LET_GO_S: f64 = 0.1;
+const LET_GO_SHARE: f64 = 0.25;
 /// Readings of a note kept to judge how it settles: of more, the later ones are left out (40 s at 10 ms).
 const READINGS_MAX: usize = 4096;
 /// A stretch is told from none when it is this many of its deviations.
@@ -45,7 +50,7 @@ pub struct KeyRow {
     /// The alias that stands out most.
     pub alias: Option<WorstAlias>,
     /// Time from the onset until the pitch stays within 3 cents (or 3 of its deviations) of the note's, in seconds; `None` when
-    /// it never does.
+    /// it never does. Less than 30 ms beyond that, and the last tenth of a second, do not count.
     pub settling_s: Option<f64>,
 }
 
@@ -60,11 +65,11 @@ pub struct WorstAlias {
     pub folds: u32,
     /// Level against the strongest partial, in dB.
     pub relative_db: f64,
-    /// Level over the masking threshold of the partials there, in dB: positive where it may be heard.
+    /// Level over what the partials and the ear's own threshold hide there, in dB: positive where it may be heard.
     pub over_mask_db: f64,
 }
 
-/// The alias of a note that lies highest over the masking threshold, if there is any.
+/// The alias of a note that lies highest over what hides it, if there is any.
 #[must_use]
 pub fn worst_alias(note: &Note) -> Option<WorstAlias> {
     let partials = || note.partials.iter().map(|p| (p.frequency_hz, p.level_mean_dbfs));
@@ -76,7 +81,7 @@ pub fn worst_alias(note: &Note) -> Option<WorstAlias> {
             folds,
             relative_db: stray.level_dbfs - strongest,
             over_mask_db: stray.level_dbfs
-                - masking::masked_below_dbfs(stray.frequency_hz, partials()),
+                - masking::unheard_below_dbfs(stray.frequency_hz, partials()),
         }),
         StrayKind::Mains { .. } | StrayKind::Unexplained => None,
     });
@@ -193,14 +198,27 @@ impl KeySheet {
 
     /// Time from the onset to the first reading from which on the pitch stays.
     fn settling_s(&self, note: &Note) -> Option<f64> {
-        let within = |&&(at, _, _): &&(u64, f64, f64)| at >= note.start && at < note.end;
-        let readings = self.readings.iter().filter(within);
+        let length = (note.end - note.start) as f64;
+        let judged = length - (LET_GO_S * self.sample_rate_hz).min(LET_GO_SHARE * length);
         let log_f0 = note.f0_hz.ln();
-        let near = |&&(_, log, sd): &&(u64, f64, f64)| {
-            CENTS_PER_NEPER * (log - log_f0).abs() < SETTLED_CENTS.max(SETTLED_SD * sd)
-        };
-        let first = readings.rev().take_while(near).last()?;
-        Some((first.0 - note.start) as f64 / self.sample_rate_hz)
+        let mut settled = None;
+        let mut off = 0;
+        for &(at, log, sd) in self.readings.iter().filter(|reading| reading.0 >= note.start) {
+            let since = (at - note.start) as f64;
+            if since >= judged {
+                break;
+            }
+            if CENTS_PER_NEPER * (log - log_f0).abs() < SETTLED_CENTS.max(SETTLED_SD * sd) {
+                off = 0;
+                settled.get_or_insert(since / self.sample_rate_hz);
+            } else {
+                off += 1;
+                if off >= UNSETTLED {
+                    settled = None;
+                }
+            }
+        }
+        settled
     }
 }
 
@@ -268,6 +286,25 @@ mod tests {
         sheet.tune(Tuning::new(450.0, Temperament::Equal).expect("in range"));
         let row = sheet.note(&note(), None).expect("A4 is near");
         assert!((row.cents + 36.943).abs() < 1e-3, "{row:?}");
+    }
+
+    #[test]
+    fn neither_a_blip_nor_the_release_unsettles_a_pitch() {
+        let settling = |off: fn(u64) -> f64| {
+            let mut sheet = KeySheet::new(Tuning::default(), 48_000.0);
+            for k in 0..200 {
+                let f0_hz = 440.5 * (off(k) / CENTS_PER_NEPER).exp();
+                let pitch = Some(Pitch { f0_hz, f0_sd_cents: 0.1, confidence: 0.9 });
+                sheet.reading(&Reading { centre: 1480 + 480 * k, pitch, ..Reading::default() });
+            }
+            sheet.note(&note(), None).expect("A4 is near").settling_s
+        };
+        let glide = |k: u64| (-20.0 + k as f64).min(0.0);
+        assert_eq!(settling(glide), Some(0.19), "a glide of 20 cents");
+        assert_eq!(settling(|k| if k % 20 < 2 { 8.0 } else { 0.0 }), Some(0.03), "blips");
+        assert_eq!(settling(|k| if k > 198 { 90.0 } else { 0.0 }), Some(0.01), "a release");
+        assert_eq!(settling(|k| 12.0 * (0.35 * k as f64).sin()), None, "a vibrato");
+        assert_eq!(settling(|k| if k > 150 { 9.0 } else { 0.0 }), None, "it goes off");
     }
 
     #[test]

@@ -20,6 +20,7 @@ mod plumbtone;
 mod pool;
 pub mod readings_log;
 pub mod readout;
+pub mod report_files;
 pub mod session;
 mod state;
 mod status;

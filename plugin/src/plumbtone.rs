@@ -77,6 +77,7 @@ impl Drop for Plumbtone {
         self.end();
         // A report that was begun is finished, whatever the host does next.
         self.parameters.results.finish_reports();
+        self.parameters.sheet.finish_reports();
     }
 }
 

@@ -11,10 +11,10 @@ mod words;
 use egui::{Rect, RichText, ScrollArea, Stroke, Ui, vec2};
 
 use self::scales::Scales;
-use super::checks::{BAR, act, say, tick};
+use super::checks::{BAR, act, reports, say, tick};
 use super::screen::Shown;
 use super::theme::{FIGURE, PAD, Palette};
-use crate::keys::{self, Sheet, Snapshot, Stored};
+use crate::keys::{self, Snapshot, Stored};
 
 /// What is told where there is nothing yet.
 const NOTHING: &str = "Play notes from the host: into the instrument before this plugin, and the same notes into this plugin. Each key gets a row here by itself, kept with the session; playing a key again replaces its row.";
@@ -79,9 +79,8 @@ pub(crate) fn show(ui: &mut Ui, rect: Rect, keys: &mut Keys, shown: &Shown<'_>, 
     whole.spacing_mut().item_spacing = vec2(6.0, 5.0);
     let ui = &mut whole;
     ui.add_space(8.0);
-    let sheet = &shown.parameters.sheet;
     head(ui, keys, palette);
-    settings(ui, keys, sheet, palette);
+    settings(ui, keys, shown, palette);
     ui.add_space(2.0);
     rows::heading(ui, area.width() - BAR, palette);
     let list = ScrollArea::vertical().id_salt("keys").auto_shrink(false);
@@ -111,7 +110,8 @@ fn head(ui: &mut Ui, keys: &Keys, palette: &Palette) {
 }
 
 /// What makes rows, and forgetting all of them.
-fn settings(ui: &mut Ui, keys: &mut Keys, sheet: &Sheet, palette: &Palette) {
+fn settings(ui: &mut Ui, keys: &mut Keys, shown: &Shown<'_>, palette: &Palette) {
+    let sheet = &shown.parameters.sheet;
     let mut unplayed = keys.snapshot.stored.unplayed;
     if tick(ui, &mut unplayed, "rows without played keys", UNPLAYED_HELP) {
         keys.snapshot.stored.unplayed = unplayed;
@@ -125,6 +125,10 @@ fn settings(ui: &mut Ui, keys: &mut Keys, sheet: &Sheet, palette: &Palette) {
     ui.horizontal(|ui| {
         if !keys.clearing {
             keys.clearing = act(ui, "forget all keys", palette);
+            if act(ui, "write CSV", palette) {
+                sheet.write(shown.parameters.results.place(), shown.readout.tuning);
+                keys.snapshot.writing = true;
+            }
             return;
         }
         if act(ui, &format!("forget {count}, for good"), palette) {
@@ -135,4 +139,23 @@ fn settings(ui: &mut Ui, keys: &mut Keys, sheet: &Sheet, palette: &Palette) {
             keys.clearing = false;
         }
     });
+    file(ui, keys, shown, palette);
+}
+
+/// Where the file goes, while no folder is set, and what came of the last one.
+fn file(ui: &mut Ui, keys: &Keys, shown: &Shown<'_>, palette: &Palette) {
+    let Snapshot { told, writing, .. } = &keys.snapshot;
+    if told.is_some() || *writing {
+        let results = &shown.parameters.results;
+        let mut set = results.reports();
+        let hint = ("files into the folder", "whole path");
+        if reports::entry(ui, &mut set.folder, hint, palette) {
+            results.set_reports(set);
+        }
+    }
+    reports::told(ui, told.as_ref(), ".csv", palette);
+    if *writing {
+        // What comes of the file is told without further news.
+        ui.ctx().request_repaint_after(core::time::Duration::from_millis(100));
+    }
 }

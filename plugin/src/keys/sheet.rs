@@ -6,9 +6,12 @@
 use std::sync::{Arc, Mutex, MutexGuard, PoisonError, TryLockError};
 
 use nice_plug::params::persist::PersistentField;
+use plumbtone_analysis::tuning::Tuning;
 use serde::{Deserialize, Serialize};
 
+use super::csv;
 use super::row::Row;
+use crate::report_files::{self, Place, Told, Writers};
 
 /// Version of the stored form. A newer one is read as far as it is understood.
 pub(super) const FORMAT: u64 = 1;
@@ -22,6 +25,8 @@ struct Book {
     stored: Stored,
     revision: u64,
     declined: Option<Declined>,
+    /// Sheets being written to files.
+    writers: Writers,
 }
 
 /// What a session keeps of the sheet.
@@ -50,6 +55,10 @@ pub struct Snapshot {
     pub stored: Stored,
     /// The last note, if it made no row.
     pub declined: Option<Declined>,
+    /// What came of the last file.
+    pub told: Option<Told>,
+    /// Whether one is being written.
+    pub writing: bool,
 }
 
 impl Default for Stored {
@@ -89,6 +98,8 @@ impl Sheet {
             Err(TryLockError::WouldBlock) => return,
         };
         snapshot.declined = book.declined;
+        snapshot.writing = book.writers.is_busy();
+        book.writers.look(&mut snapshot.told);
         if snapshot.revision != Some(book.revision) {
             snapshot.revision = Some(book.revision);
             snapshot.stored.clone_from(&book.stored);
@@ -122,6 +133,20 @@ impl Sheet {
         let mut book = self.lock();
         book.stored.unplayed = unplayed;
         book.revision += 1;
+    }
+
+    /// Writes the sheet as a file, on a thread of its own; cents are against a tuning.
+    pub(crate) fn write(&self, place: Place, tuning: Tuning) {
+        let mut book = self.lock();
+        let rows = book.stored.rows.clone();
+        let place = place.and("keys");
+        book.writers.start(move || place.write(|| Ok(vec![("csv", csv::text(&rows, &tuning))])));
+    }
+
+    /// Waits for the files that are being written.
+    pub(crate) fn finish_reports(&self) {
+        let threads = self.lock().writers.take();
+        report_files::finish(threads);
     }
 
     /// Whether it does.

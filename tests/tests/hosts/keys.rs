@@ -1,12 +1,18 @@
 //! Key sheets in a host: notes go to an instrument and to the plugin after it, and each key gets the row that is its own.
 
+use std::path::Path;
+use std::process::Command;
+
 use clack_host::events::event_types::{NoteOffEvent, NoteOnEvent};
 use clack_host::prelude::*;
 use plumbtone_analysis::signals::{Random, Timbre, Tone, narrow, sample_count};
 use plumbtone_analysis::tuning::{NoteName, Tuning, ratio};
 use plumbtone_plugin::keys::{Row, Stored};
 use plumbtone_tests::clap_host::{Format, Instance};
+use plumbtone_tests::readings::VARIABLE;
+use tempfile::TempDir;
 
+use crate::bundles::{target, there};
 use crate::rig::{Log, instance, json, load};
 
 const RATE: f64 = 48_000.0;
@@ -140,6 +146,46 @@ fn a_sweep_gives_one_row_per_key_whatever_the_block() {
     for block in [64, 480, 4096] {
         assert_eq!(rows(&sound, &played, block), first, "blocks of {block}");
     }
+}
+
+#[test]
+fn a_scale_played_in_a_vst3_host_gives_the_sheet_of_its_instrument() {
+    let what = "the key sheet in dawdreamer";
+    let bundle = there(target().join("bundled/Plumbtone.vst3"), what);
+    let python = there(target().join("vst3-hosts/bin/python"), what);
+    let (Some(bundle), Some(python)) = (bundle, python) else { return };
+    let script = Path::new(env!("CARGO_MANIFEST_DIR")).join("hosts/keys_host.py");
+    let folder = TempDir::new().expect("a temporary folder");
+    let keys: Vec<u8> = (36..=96).step_by(3).collect();
+    let mut sheets = Vec::new();
+    for block in ["512", "480"] {
+        let output = Command::new(&python)
+            .arg(&script)
+            .arg(&bundle)
+            .args(["36", "96", "3", block])
+            .env(VARIABLE, folder.path())
+            .output()
+            .expect("the host starts");
+        let said = String::from_utf8_lossy(&output.stdout);
+        let errors = String::from_utf8_lossy(&output.stderr);
+        assert!(output.status.success(), "{said}{errors}");
+        let line = said.lines().last().expect("a sheet");
+        let stored: Stored = serde_json::from_str(line).expect("in its form");
+        let found: Vec<u8> = stored.rows.iter().map(|row| row.key).collect();
+        assert_eq!(found, keys, "blocks of {block}: one row per key");
+        sheets.push(stored.rows);
+    }
+    for row in &sheets[0] {
+        let stretched = 3.0 * (f64::from(row.key) - 69.0) / 12.0;
+        let off = row.cents(&Tuning::default()) - stretched;
+        let allowed = 4.0 * row.f0_sd_cents + 2e-3;
+        assert!(off.abs() < allowed, "{}: {off} cents off: {row:?}", row.note());
+        assert!(row.told && row.settling_s.is_some_and(|s| s < 0.2), "{row:?}");
+    }
+    // A naive saw folds: the higher the key, the more of it is heard.
+    let over = |row: &Row| row.worst_alias.and_then(|alias| alias.over_mask_db);
+    let high: Vec<Option<f64>> = sheets[0].iter().rev().take(3).map(over).collect();
+    assert!(high.iter().all(|over| over.is_some_and(|over| over > 0.0)), "{high:?}");
 }
 
 #[test]
