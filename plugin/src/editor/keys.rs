@@ -20,6 +20,9 @@ use crate::keys::{self, Snapshot, Stored};
 const NOTHING: &str = "Play notes from the host: into the instrument before this plugin, and the same notes into this plugin. Each key gets a row here by itself, kept with the session; playing a key again replaces its row.";
 const UNPLAYED_HELP: &str = "On: sound for which no key is held makes a row too, of the note nearest to its pitch. Off: only keys that the host plays make rows.";
 
+/// Height of the panel below which all of it scrolls, not the rows alone.
+const TALL: f32 = 330.0;
+
 /// The sheet as the editor saw it last, and how it is shown.
 #[derive(Debug, Clone, Default)]
 pub(crate) struct Keys {
@@ -77,20 +80,40 @@ pub(crate) fn show(ui: &mut Ui, rect: Rect, keys: &mut Keys, shown: &Shown<'_>, 
     whole.spacing_mut().scroll.fade.strength = 0.0;
     whole.visuals_mut().widgets.inactive.bg_stroke = Stroke::new(1.0, palette.edge);
     whole.spacing_mut().item_spacing = vec2(6.0, 5.0);
-    let ui = &mut whole;
+    let list = ScrollArea::vertical().id_salt("keys").auto_shrink(false).min_scrolled_height(0.0);
+    let width = area.width() - BAR;
+    keys.in_sheet = if rect.height() < TALL {
+        let whole = list.show(&mut whole, |ui| {
+            ui.set_width(width);
+            above(ui, width, keys, shown, palette);
+            sheet(ui, keys, shown, palette)
+        });
+        whole.inner
+    } else {
+        above(&mut whole, width, keys, shown, palette);
+        let rows = list.show(&mut whole, |ui| {
+            ui.set_width(width);
+            sheet(ui, keys, shown, palette)
+        });
+        rows.inner
+    };
+}
+
+/// What stands above the rows.
+fn above(ui: &mut Ui, width: f32, keys: &mut Keys, shown: &Shown<'_>, palette: &Palette) {
     ui.add_space(8.0);
     head(ui, keys, palette);
     settings(ui, keys, shown, palette);
-    ui.add_space(2.0);
-    rows::heading(ui, area.width() - BAR, palette);
-    let list = ScrollArea::vertical().id_salt("keys").auto_shrink(false);
-    keys.in_sheet = list
-        .show(ui, |ui| {
-            ui.set_width(area.width() - BAR);
-            let lit = (keys.in_picture, keys.sought.take());
-            rows::show(ui, &keys.snapshot.stored, lit, &shown.readout.tuning, palette)
-        })
-        .inner;
+    if !keys.snapshot.stored.rows.is_empty() {
+        ui.add_space(2.0);
+        rows::heading(ui, width, palette);
+    }
+}
+
+/// The rows; gives the key under the pointer.
+fn sheet(ui: &mut Ui, keys: &mut Keys, shown: &Shown<'_>, palette: &Palette) -> Option<u8> {
+    let lit = (keys.in_picture, keys.sought.take());
+    rows::show(ui, &keys.snapshot.stored, lit, &shown.readout.tuning, palette)
 }
 
 /// Which keys there are, which are still to be played, and what the last note came to if it has no row.

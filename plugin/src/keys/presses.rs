@@ -89,16 +89,21 @@ impl Presses {
         let seconds = |s: f64| crate::convert::nearest(s * sample_rate_hz);
         let oldest = start.saturating_sub(seconds(LATE_S));
         self.all.retain(|press| press.up.is_none_or(|up| up >= oldest));
-        let down_in_time = |press: &&Press| press.down <= start + seconds(EARLY_S);
         let held = |press: &Press| press.held_within(start, end);
         // Of presses that were held equally long, such as not at all, the newest.
         let own = self.all.iter().filter(|p| p.down < end).max_by_key(|p| (held(p), p.number));
-        let Some(own) = own.filter(down_in_time) else { return Match::Nothing };
+        let Some(own) = own else { return Match::Nothing };
         let lap = seconds(LAP_S.max(LAP_SHARE * (end - start) as f64 / sample_rate_hz));
         let others = || self.all.iter().filter(|press| press.key != own.key && held(press) > 0);
         if others().map(held).sum::<u64>() > lap {
             let newest = others().map(|p| (p.down, p.key)).chain([(own.down, own.key)]).max();
             return Match::Several { newest: newest.map_or(own.key, |(_, key)| key) };
+        }
+        // The same key may have been struck again within the note.
+        let first =
+            self.all.iter().filter(|press| press.key == own.key).map(|press| press.down).min();
+        if first.is_some_and(|down| down > start + seconds(EARLY_S)) {
+            return Match::Nothing;
         }
         Match::Key { key: own.key, press: own.number }
     }

@@ -2,6 +2,7 @@
 
 use egui_kittest::Harness;
 use egui_kittest::kittest::Queryable as _;
+use plumbtone_plugin::check::Reports;
 use plumbtone_plugin::editor::Theme;
 use plumbtone_plugin::keys::{Declined, Row, Snapshot, Stored};
 
@@ -147,4 +148,50 @@ fn a_click_on_a_column_scrolls_to_its_row() {
     editor.get_by_label_contains("C6 in the picture").click();
     editor.run_steps(40);
     assert!(top(&editor) < before - 300.0, "the lowest key's row has moved up");
+}
+
+#[test]
+fn the_key_under_the_pointer_is_told_at_once() {
+    let mut editor = editor(Scene::keyboard(Theme::Dark));
+    editor.get_by_label_contains("F4 in the picture").hover();
+    editor.run_steps(2);
+    assert_eq!(told(&editor, "F4  +"), 1, "above the picture");
+    editor.get_by_label_contains("D4 in the picture").hover();
+    editor.run_steps(2);
+    assert_eq!(told(&editor, "D4  still to play"), 1, "a gap too");
+    editor.get_by_label_contains("E\u{266d}2: +").hover();
+    editor.run_steps(3);
+    assert_eq!(told(&editor, "E\u{266d}2  +"), 1, "a row of the sheet lights its column");
+}
+
+#[test]
+fn the_sheet_is_written_as_a_file_or_the_reason_said() {
+    let mut editor = editor(Scene::keyboard(Theme::Dark));
+    let comes = |editor: &mut Editor, text: &str| {
+        (0..2_000).any(|_| {
+            editor.step();
+            std::thread::sleep(core::time::Duration::from_millis(5));
+            told(editor, text) > 0
+        })
+    };
+    editor.get_by_label("write CSV").click();
+    assert!(comes(&mut editor, "No report was written: no folder is set"), "it is said");
+    assert!(told(&editor, "files into the folder") > 0, "and asked for");
+    let folder = tempfile::tempdir().unwrap();
+    let results = editor.state().parameters.results.clone();
+    results.set_reports(Reports {
+        folder: folder.path().display().to_string(),
+        name: "Pad".to_owned(),
+        ..Reports::default()
+    });
+    editor.run_steps(2);
+    editor.get_by_label("write CSV").click();
+    assert!(comes(&mut editor, "written: "), "it is said");
+    let files: Vec<_> =
+        std::fs::read_dir(folder.path()).unwrap().map(|f| f.unwrap().path()).collect();
+    assert_eq!(files.len(), 1, "{files:?}");
+    let name = files[0].file_name().unwrap().to_string_lossy().into_owned();
+    assert!(name.starts_with("Pad keys ") && name.ends_with(".csv"), "{name}");
+    let text = std::fs::read_to_string(&files[0]).unwrap();
+    assert_eq!(text.lines().count(), 45, "a head and a line for each key");
 }

@@ -53,19 +53,16 @@ pub(super) fn show(
         ink::text_within(ui, at, (&text, rect.width() - 24.0), sans(13.0), palette.dim);
         return Done::default();
     };
-    let head = (inner.left_top() + vec2(0.0, 15.0), Align2::LEFT_CENTER);
-    ink::text_within(
-        ui,
-        head,
-        ("the sound over the keyboard", inner.width()),
-        sans(SMALL),
-        palette.dim,
-    );
     let body = inner.with_min_y(rect.top() + HEAD + GAPS).with_max_y(rect.bottom() - AXIS);
     let plot = body.with_min_x(x.min);
     let columns = plot.with_min_y(plot.top() - GAPS).with_max_y(rect.bottom());
     let done = columns_under_pointer(ui, columns, (&compass, rows), tuning);
     let lit = done.under_pointer.or(lit);
+    heading(ui, inner, (rows, lit), tuning, palette);
+    let places = layout(body);
+    for (_, place) in &places {
+        ui.painter().rect_filled(place.with_min_x(x.min), 3.0, palette.ground.gamma_multiply(0.5));
+    }
     if let Some(key) = lit {
         let column = Rect::from_x_y_ranges(compass.columns((key, key)), plot.y_range());
         ui.painter().rect_filled(column.expand2(vec2(0.0, 3.0)), 2.0, palette.lit);
@@ -73,7 +70,7 @@ pub(super) fn show(
     compass.gaps(ui, &words::gaps(rows), plot, palette);
     compass.octaves(ui, plot.y_range(), palette);
     let ground = Ground { compass: &compass, rows, tuning, palette };
-    for (strip, place) in layout(body) {
+    for (strip, place) in places {
         strip.paint(ui, place, scales.of(strip), &ground);
     }
     compass.names(ui, rect.bottom() - AXIS / 2.0 + 3.0, lit, palette);
@@ -81,6 +78,26 @@ pub(super) fn show(
         compass.newest(ui, newest.key, plot.bottom() + 1.0, palette);
     }
     done
+}
+
+/// What the picture is of, or the figures of the key that is lit.
+fn heading(
+    ui: &mut Ui,
+    inner: Rect,
+    (rows, lit): (&[Row], Option<u8>),
+    tuning: &Tuning,
+    palette: &Palette,
+) {
+    let place = (inner.left_top() + vec2(0.0, 15.0), Align2::LEFT_CENTER);
+    let row = lit.and_then(|key| rows.iter().find(|row| row.key == key));
+    let (text, colour) = match (row, lit) {
+        (Some(row), _) => {
+            (format!("{}  {}", words::name(row.key), words::line(row, tuning)), palette.ink)
+        }
+        (None, Some(key)) => (format!("{}  still to play", words::name(key)), palette.stray),
+        (None, None) => ("the sound over the keyboard".to_owned(), palette.dim),
+    };
+    ink::text_within(ui, place, (&text, inner.width()), sans(SMALL), colour);
 }
 
 /// Where each strip lies, as many as there is room for.

@@ -10,9 +10,9 @@ use crate::keys::Row;
 /// Ends of the scale of settling times, in seconds.
 const SETTLING_S: [f64; 9] = [0.05, 0.1, 0.2, 0.5, 1.0, 2.0, 5.0, 10.0, 30.0];
 /// Steps of the other scales, and the least distance of their ends: dB, dB per octave, dB, decades.
-const LEVEL: (f64, f64) = (6.0, 18.0);
+const LEVEL: (f64, f64) = (6.0, 12.0);
 const TILT: (f64, f64) = (3.0, 6.0);
-const ALIAS: (f64, f64) = (10.0, 30.0);
+const ALIAS: (f64, f64) = (10.0, 20.0);
 const STRETCH: (f64, f64) = (1.0, 2.0);
 /// Values beyond these do not stretch their scale.
 const LEVEL_DBFS: (f64, f64) = (-140.0, 24.0);

@@ -7,7 +7,7 @@ use plumbtone_analysis::keys::{StretchFound, missing};
 use plumbtone_analysis::tuning::{NoteName, Tuning};
 
 use super::super::sound::stretch;
-use super::super::steady::{NONE, decimals, signed};
+use super::super::steady::{NONE, signed};
 use super::super::words::{hertz, note};
 use crate::keys::{Declined, KeyAlias, Row};
 
@@ -80,8 +80,18 @@ pub(super) fn declined(declined: &Declined) -> String {
 
 /// Cents with their deviation.
 pub(super) fn cents(row: &Row, tuning: &Tuning) -> String {
-    let digits = decimals(row.f0_sd_cents, 2);
-    format!("{} \u{b1} {:.digits$}", signed(row.cents(tuning), digits), row.f0_sd_cents)
+    if !row.f0_sd_cents.is_finite() {
+        return NONE.to_owned();
+    }
+    // Two digits of the deviation, one where it is small; never less than can be written.
+    let digits = match row.f0_sd_cents {
+        sd if sd >= 9.95 => 0,
+        sd if sd >= 0.995 => 1,
+        sd if sd >= 0.0095 => 2,
+        _ => 3,
+    };
+    let sd = row.f0_sd_cents.max(0.001);
+    format!("{} \u{b1} {sd:.digits$}", signed(row.cents(tuning), digits))
 }
 
 /// A level or a slope, or a dash.
@@ -91,6 +101,7 @@ pub(super) fn figure(value: Option<f64>) -> String {
 
 /// A time in seconds, or a dash.
 pub(super) fn seconds(value: Option<f64>) -> String {
+    let value = value.filter(|s| s.is_finite());
     value.map_or_else(|| NONE.to_owned(), |s| format!("{s:.*}", if s < 9.995 { 2 } else { 0 }))
 }
 
@@ -101,6 +112,20 @@ pub(super) fn b_short(row: &Row) -> String {
         Some(StretchFound::Below(_)) => "0".to_owned(),
         Some(StretchFound::Measured { b, .. }) => format!("{b:.1e}"),
     }
+}
+
+/// The figures of a key in one line.
+pub(super) fn line(row: &Row, tuning: &Tuning) -> String {
+    let alias = row.worst_alias.and_then(|alias| alias.over_mask_db).map_or_else(
+        || "no alias".to_owned(),
+        |over| format!("alias {} dB over mask", signed(over, 1)),
+    );
+    let settling = match row.settling_s {
+        Some(_) => format!("settles in {} s", seconds(row.settling_s)),
+        None => "never settles".to_owned(),
+    };
+    let (level, tilt) = (figure(row.level_dbfs), figure(row.tilt_db_per_octave));
+    format!("{} ct, {level} dBFS, {tilt} dB/oct, {alias}, {settling}", cents(row, tuning))
 }
 
 /// All figures of a key, a line each.
