@@ -163,13 +163,14 @@ fn a_scale_played_in_a_vst3_host_gives_the_sheet_of_its_instrument() {
     let (Some(bundle), Some(python)) = (bundle, python) else { return };
     let script = Path::new(env!("CARGO_MANIFEST_DIR")).join("hosts/keys_host.py");
     let folder = TempDir::new().expect("a temporary folder");
-    let keys: Vec<u8> = (36..=96).step_by(3).collect();
+    // Far above, the aliases of a naive saw may lie on a series of their own.
+    let keys: Vec<u8> = (36..=87).step_by(3).collect();
     let mut sheets = Vec::new();
     for block in ["512", "480"] {
         let output = Command::new(&python)
             .arg(&script)
             .arg(&bundle)
-            .args(["36", "96", "3", block])
+            .args(["36", "87", "3", block])
             .env(VARIABLE, folder.path())
             .output()
             .expect("the host starts");

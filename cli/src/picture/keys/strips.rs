@@ -19,6 +19,9 @@ const WHISKER_SD: f64 = 2.0;
 const TICKS: f64 = 4.0;
 const INSET: f64 = 4.0;
 
+/// How deep an alias may be masked and still be drawn to scale, in dB.
+const MASKED_DB: f64 = -40.0;
+
 /// A figure of the keys.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub(super) enum Strip {
@@ -79,7 +82,7 @@ impl Strip {
             // The threshold is always to be seen.
             Self::Alias => {
                 let (low, high) = found.unwrap_or((0.0, 0.0));
-                steps((low.min(0.0), high.max(0.0)), 1.0, 10.0, 20.0)
+                steps((low.clamp(MASKED_DB, 0.0), high.max(0.0)), 1.0, 10.0, 20.0)
             }
             Self::Settling => {
                 let most = found.map_or(0.0, |found| found.1);

@@ -17,7 +17,7 @@ const STRETCH: (f64, f64) = (1.0, 2.0);
 /// Values beyond these do not stretch their scale.
 const LEVEL_DBFS: (f64, f64) = (-140.0, 24.0);
 const TILT_DB: (f64, f64) = (-60.0, 60.0);
-const ALIAS_DB: (f64, f64) = (-100.0, 100.0);
+const ALIAS_DB: (f64, f64) = (-40.0, 80.0);
 const STRETCH_LOG: (f64, f64) = (-9.0, 0.0);
 
 /// What the strips' scales are, and have been.
