@@ -217,6 +217,18 @@ mod tests {
     }
 
     #[test]
+    fn after_a_gap_nobody_knows_which_keys_are_held() {
+        let (mut keys, sheet) = keys(false);
+        keys.key(1_000, 57, true);
+        keys.lose(48_000);
+        keys.note(&note(96_000, 144_000, 220.0));
+        assert_eq!(rows(&sheet), [], "its release may have been lost");
+        keys.key(144_000, 69, true);
+        keys.note(&note(144_300, 192_000, 440.0));
+        assert_eq!(rows(&sheet), [(69, 0.0)], "and it does not stand beside the next key");
+    }
+
+    #[test]
     fn a_stream_begins_without_keys() {
         let (mut keys, sheet) = keys(false);
         keys.key(1_000, 69, true);

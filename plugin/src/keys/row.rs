@@ -47,7 +47,7 @@ pub struct KeyAlias {
     pub folds: u32,
     /// Level against the strongest partial, in dB.
     pub relative_db: f64,
-    /// Level over what the partials mask there, in dB: positive where it may be heard.
+    /// Level over what the partials and the ear's own threshold hide there, in dB: positive where it may be heard.
     pub over_mask_db: Option<f64>,
 }
 

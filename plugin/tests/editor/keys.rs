@@ -186,7 +186,8 @@ fn the_sheet_is_written_as_a_file_or_the_reason_said() {
     });
     editor.run_steps(2);
     editor.get_by_label("write CSV").click();
-    assert!(comes(&mut editor, "written: "), "it is said");
+    let written = format!("written: {}", folder.path().display());
+    assert!(comes(&mut editor, &written), "it is said");
     let files: Vec<_> =
         std::fs::read_dir(folder.path()).unwrap().map(|f| f.unwrap().path()).collect();
     assert_eq!(files.len(), 1, "{files:?}");

@@ -136,9 +136,9 @@ fn columns_under_pointer(
         let name = words::name(key);
         let row = rows.binary_search_by_key(&key, |row| row.key).ok().map(|at| &rows[at]);
         let lines =
-            row.map_or_else(|| vec!["still to play".to_owned()], |r| words::lines(r, tuning));
+            || row.map_or_else(|| vec!["still to play".to_owned()], |r| words::lines(r, tuning));
         response.widget_info(|| {
-            let said = format!("{name} in the picture: {}", lines.join(", "));
+            let said = format!("{name} in the picture: {}", lines().join(", "));
             WidgetInfo::labeled(Role::Button, true, said)
         });
         if response.hovered() || response.has_focus() {
@@ -149,7 +149,7 @@ fn columns_under_pointer(
         }
         response.on_hover_ui_at_pointer(|ui| {
             ui.label(egui::RichText::new(&name).strong());
-            lines.iter().for_each(|line| {
+            lines().iter().for_each(|line| {
                 ui.label(line);
             });
         });

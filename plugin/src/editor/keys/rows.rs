@@ -27,7 +27,7 @@ const LOWER_HEADS: [(&str, &str); 4] = [
     ("tilt", "Slope of the partials' levels, in dB per octave."),
     (
         "alias",
-        "The alias that stands out most, in dB over what the partials mask there: above 0 it may be heard.",
+        "The alias that stands out most, in dB over what hides it there, the measured partials or the ear's own threshold: above 0 it may be heard.",
     ),
     (
         "settles",
@@ -65,10 +65,10 @@ pub(super) fn show(
         let (rect, response) =
             ui.allocate_exact_size(vec2(ui.available_width(), ROW), Sense::CLICK);
         let is_newest = newest == Some(row.key);
-        let lines = words::lines(row, tuning);
+        let lines = || words::lines(row, tuning);
         response.widget_info(|| {
             let mark = if is_newest { ", the newest" } else { "" };
-            let said = format!("{}{mark}: {}", words::name(row.key), lines.join(", "));
+            let said = format!("{}{mark}: {}", words::name(row.key), lines().join(", "));
             WidgetInfo::labeled(Role::Button, true, said)
         });
         if sought == Some(row.key) {
@@ -82,7 +82,7 @@ pub(super) fn show(
             paint(ui, rect, row, (is_newest, lit, response.has_focus()), tuning, palette);
         }
         response.on_hover_ui(|ui| {
-            lines.iter().for_each(|line| {
+            lines().iter().for_each(|line| {
                 ui.label(line);
             });
         });

@@ -66,7 +66,7 @@ impl Strip {
             Self::Alias => (
                 "worst alias",
                 "dB over mask",
-                "The alias that stands out most, over what the partials mask there: above the line at 0 it may be heard. A ring at the foot: no alias was found.",
+                "The alias that stands out most, over what hides it there (the measured partials, or the ear's own threshold where a full-scale sine is 100 dB SPL): above the line at 0 it may be heard. A ring at the foot: no alias was found.",
             ),
             Self::Settling => (
                 "settling",

@@ -158,8 +158,8 @@ pub(super) fn lines(row: &Row, tuning: &Tuning) -> Vec<String> {
 
 fn alias(alias: &KeyAlias) -> String {
     let over = alias.over_mask_db.map_or_else(String::new, |over| {
-        let heard = if over > 0.0 { "may be heard" } else { "masked" };
-        format!(", {} dB over what masks it: {heard}", signed(over, 1))
+        let heard = if over > 0.0 { "may be heard" } else { "not heard" };
+        format!(", {} dB over what hides it: {heard}", signed(over, 1))
     });
     format!("worst alias: partial {} at {} Hz{over}", alias.partial, hertz(alias.frequency_hz, 0))
 }
