@@ -135,6 +135,19 @@ pub fn missing(keys: &[NoteName]) -> Vec<NoteName> {
     between.filter(|key| !keys.contains(key)).collect()
 }
 
+/// The same as runs of keys that follow each other: the first and the last of each.
+#[must_use]
+pub fn missing_runs(keys: &[NoteName]) -> Vec<(NoteName, NoteName)> {
+    let mut runs: Vec<(NoteName, NoteName)> = Vec::new();
+    for key in missing(keys) {
+        match runs.last_mut() {
+            Some(run) if run.1.midi() + 1 == key.midi() => run.1 = key,
+            _ => runs.push((key, key)),
+        }
+    }
+    runs
+}
+
 /// Makes rows of notes, from the readings within them.
 #[derive(Debug)]
 pub struct KeySheet {
@@ -358,6 +371,11 @@ mod tests {
             midi.iter().copied().map(NoteName::from_midi).collect()
         };
         assert_eq!(missing(&keys(&[63, 60, 61, 66])), keys(&[62, 64, 65]), "in any order");
+        let runs: Vec<(i16, i16)> = missing_runs(&keys(&[63, 60, 61, 66]))
+            .into_iter()
+            .map(|(from, to)| (from.midi(), to.midi()))
+            .collect();
+        assert_eq!(runs, [(62, 62), (64, 65)], "as runs");
         assert_eq!(missing(&keys(&[60])), [], "one key");
         assert_eq!(missing(&[]), [], "no key");
     }

@@ -1,4 +1,4 @@
-//! The picture of a key sheet: strips stacked over one axis of note names, one column per key, gaps hatched.
+//! The picture of a key sheet: strips stacked over one axis of note names, one column per key, those still to play hatched.
 
 mod strips;
 
@@ -6,7 +6,7 @@ use super::canvas::{self, Canvas, Pen, Side, Type};
 use super::theme::{DIM, GRID, GROUND, HEAD, INK, MARGIN, PANEL, PARTIAL, STRAY, WIDTH};
 use crate::keys::record::KeyRecord;
 use anyhow::Result;
-use plumbtone_analysis::keys::missing;
+use plumbtone_analysis::keys::missing_runs;
 use plumbtone_analysis::tuning::{NoteName, Temperament};
 use std::path::Path;
 use strips::STRIPS;
@@ -14,14 +14,14 @@ use strips::STRIPS;
 const LABEL: Type = Type::sans(11.0, DIM);
 const VALUE: Type = Type::sans(15.0, INK);
 const NAME: Type = Type::mono(10.0, DIM);
-const GAP: Type = Type::mono(10.0, STRAY);
+const MISSING: Type = Type::mono(10.0, STRAY);
 /// Left end of the strips, beside captions and ticks, and their right end.
 const PLOT_LEFT: f64 = 156.0;
 const PLOT_RIGHT: f64 = WIDTH - MARGIN - 14.0;
 /// Height of a strip of weight 1, and the space between two.
 const STRIP: f64 = 84.0;
 const BETWEEN: f64 = 16.0;
-/// Room above the strips for the names of gaps, and below them for those of keys.
+/// Room above the strips for the names of missing keys, and below them for those of keys.
 const ABOVE: f64 = 34.0;
 const BELOW: f64 = 34.0;
 /// Fewest keys shown.
@@ -40,7 +40,7 @@ pub(crate) struct KeysPicture<'a> {
     temperament: Temperament,
     compass: Compass,
     /// Missing keys as runs, from and to.
-    gaps: Vec<(i16, i16)>,
+    missing: Vec<(NoteName, NoteName)>,
 }
 
 /// Keys against width.
@@ -88,14 +88,7 @@ impl<'a> KeysPicture<'a> {
     ) -> Option<Self> {
         let compass = Compass::of(rows.first()?.note.midi(), rows.last()?.note.midi());
         let keys: Vec<NoteName> = rows.iter().map(|row| row.note).collect();
-        let mut gaps: Vec<(i16, i16)> = Vec::new();
-        for key in missing(&keys).into_iter().map(NoteName::midi) {
-            match gaps.last_mut() {
-                Some(run) if run.1 + 1 == key => run.1 = key,
-                _ => gaps.push((key, key)),
-            }
-        }
-        Some(Self { rows, concert_pitch_hz, temperament, compass, gaps })
+        Some(Self { rows, concert_pitch_hz, temperament, compass, missing: missing_runs(&keys) })
     }
 
     fn draw(&self) -> Result<String> {
@@ -107,7 +100,7 @@ impl<'a> KeysPicture<'a> {
             canvas.rectangle((0.0, 0.0), (WIDTH, height), GROUND, 1.0)?;
             self.head(canvas)?;
             canvas.panel((MARGIN, top), (WIDTH - MARGIN, height - MARGIN), PANEL)?;
-            self.gaps(canvas, plot)?;
+            self.hatch(canvas, plot)?;
             self.octaves(canvas, plot)?;
             let mut from = plot.0;
             for strip in STRIPS {
@@ -139,23 +132,25 @@ impl<'a> KeysPicture<'a> {
         }
         let right = WIDTH - MARGIN;
         canvas.text(right, 28.0, "still to play", LABEL.at(Side::Right))?;
-        let told: Vec<String> = self.gaps.iter().take(RUNS_SHOWN).map(|gap| run(*gap)).collect();
-        let more = self.gaps.len().saturating_sub(RUNS_SHOWN);
+        let told: Vec<String> =
+            self.missing.iter().take(RUNS_SHOWN).map(|keys| run(*keys)).collect();
+        let more = self.missing.len().saturating_sub(RUNS_SHOWN);
         let text = match (told.is_empty(), more) {
             (true, _) => "nothing in between".to_owned(),
             (false, 0) => told.join(", "),
             (false, more) => format!("{} and {more} more", told.join(", ")),
         };
-        let set = if self.gaps.is_empty() { VALUE } else { Type::sans(13.0, STRAY) };
+        let set = if self.missing.is_empty() { VALUE } else { Type::sans(13.0, STRAY) };
         canvas.text(right, 49.0, &text, set.at(Side::Right))
     }
 
-    /// Gaps: hatched over all strips, with their names above where there is room.
-    fn gaps(&self, canvas: &Canvas<'_>, (top, bottom): (f64, f64)) -> Result<()> {
+    /// Keys still to play: hatched over all strips, with their names above where there is room.
+    fn hatch(&self, canvas: &Canvas<'_>, (top, bottom): (f64, f64)) -> Result<()> {
         let half = 0.5 * self.compass.width();
         let mut free_from = PLOT_LEFT - 20.0;
-        for &gap in &self.gaps {
-            let (from, to) = (self.compass.at(gap.0) - half, self.compass.at(gap.1) + half);
+        for &keys in &self.missing {
+            let (from, to) =
+                (self.compass.at(keys.0.midi()) - half, self.compass.at(keys.1.midi()) + half);
             canvas.rectangle((from, top), (to, bottom), GROUND, 1.0)?;
             let mut at = from - (bottom - top);
             while at < to {
@@ -164,11 +159,11 @@ impl<'a> KeysPicture<'a> {
                 canvas.line((a, bottom - (a - at)), (b, bottom - (b - at)), Pen::new(1.0, GRID))?;
                 at += HATCH;
             }
-            let text = run(gap);
+            let text = run(keys);
             let wide = 0.5 * LETTER * text.chars().count() as f64;
             let middle = (0.5 * (from + to)).clamp(PLOT_LEFT + wide, PLOT_RIGHT - wide);
             if middle - wide >= free_from {
-                canvas.text(middle, top - 12.0, &text, GAP.at(Side::Centre))?;
+                canvas.text(middle, top - 12.0, &text, MISSING.at(Side::Centre))?;
                 free_from = middle + wide + LETTER;
             } else {
                 let x = 0.5 * (from + to);
@@ -202,9 +197,8 @@ impl<'a> KeysPicture<'a> {
 }
 
 /// A run of keys.
-fn run((from, to): (i16, i16)) -> String {
-    let (low, high) = (NoteName::from_midi(from), NoteName::from_midi(to));
-    match to - from {
+fn run((low, high): (NoteName, NoteName)) -> String {
+    match high.midi() - low.midi() {
         0 => low.to_string(),
         1 => format!("{low}, {high}"),
         _ => format!("{low} to {high}"),
@@ -277,10 +271,10 @@ mod tests {
     }
 
     #[test]
-    fn gaps_are_told_as_runs() {
+    fn missing_keys_are_told_as_runs() {
         let rows: Vec<KeyRecord> = [60, 62, 66, 69].map(row).into();
         let picture = KeysPicture::new(&rows, 440.0, Temperament::Equal).unwrap();
-        let told: Vec<String> = picture.gaps.iter().map(|gap| run(*gap)).collect();
+        let told: Vec<String> = picture.missing.iter().map(|keys| run(*keys)).collect();
         assert_eq!(told, ["C#4", "Eb4 to F4", "G4, G#4"]);
         assert!(KeysPicture::new(&[], 440.0, Temperament::Equal).is_none(), "nothing to draw");
     }

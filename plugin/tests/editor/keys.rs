@@ -75,7 +75,7 @@ fn a_note_with_several_keys_is_told() {
     editor.state().parameters.sheet.take(key_row(63));
     editor.run_steps(2);
     assert_eq!(told(&editor, "other keys were held"), 0, "until the next row");
-    assert_eq!(told(&editor, "still to play: C\u{266f}3, D4, E4, E5"), 1, "a gap is closed");
+    assert_eq!(told(&editor, "still to play: C\u{266f}3, D4, E4, E5"), 1, "one less");
 }
 
 #[test]
@@ -158,7 +158,7 @@ fn the_key_under_the_pointer_is_told_at_once() {
     assert_eq!(told(&editor, "F4  +"), 1, "above the picture");
     editor.get_by_label_contains("D4 in the picture").hover();
     editor.run_steps(2);
-    assert_eq!(told(&editor, "D4  still to play"), 1, "a gap too");
+    assert_eq!(told(&editor, "D4  still to play"), 1, "a missing one too");
     editor.get_by_label_contains("E\u{266d}2: +").hover();
     editor.run_steps(3);
     assert_eq!(told(&editor, "E\u{266d}2  +"), 1, "a row of the sheet lights its column");

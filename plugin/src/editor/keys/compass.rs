@@ -1,4 +1,4 @@
-//! The keys that the picture spans, and where each lies: one column per key, named below, gaps named above.
+//! The keys that the picture spans, and where each lies: one column per key, named below, those still to play above.
 
 use egui::{Align2, Pos2, Rangef, Rect, Shape, Stroke, Ui, pos2};
 
@@ -13,7 +13,7 @@ const HIGHEST: u8 = 127;
 /// Semitones from one name to the next, from the first of which there is room, and that room in points.
 const STEPS: [u8; 6] = [1, 2, 3, 4, 6, 12];
 const ROOM: f32 = 32.0;
-/// Space between two names of gaps.
+/// Space between two names of missing keys.
 const APART: f32 = 8.0;
 
 /// Keys against width.
@@ -99,15 +99,15 @@ impl Compass {
         ui.painter().add(Shape::convex_polygon(points.to_vec(), palette.pitch, Stroke::NONE));
     }
 
-    /// Gaps: hatched over all strips, their names above where there is room.
-    pub(super) fn gaps(&self, ui: &Ui, runs: &[(u8, u8)], area: Rect, palette: &Palette) {
+    /// Keys still to play: hatched over all strips, their names above where there is room.
+    pub(super) fn missing(&self, ui: &Ui, runs: &[(u8, u8)], area: Rect, palette: &Palette) {
         let mut free_from = f32::NEG_INFINITY;
-        for &gap in runs {
-            let columns = self.columns(gap);
+        for &run in runs {
+            let columns = self.columns(run);
             let place = Rect::from_x_y_ranges(columns, area.y_range());
             ui.painter().rect_filled(place, 0.0, palette.ground);
             ink::hatch(ui, place, palette.edge);
-            let galley = ui.painter().layout_no_wrap(words::run(gap), mono(SMALL), palette.stray);
+            let galley = ui.painter().layout_no_wrap(words::run(run), mono(SMALL), palette.stray);
             let half = galley.size().x / 2.0;
             let middle = columns.center().clamp(self.x.min + half, self.x.max - half);
             if middle - half >= free_from && 2.0 * half < self.x.span() {

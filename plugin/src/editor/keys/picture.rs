@@ -11,15 +11,15 @@ use super::strips::{GUTTER, Ground, STRIPS, Strip};
 use super::words;
 use crate::keys::Row;
 
-/// Height of the heading, of the names of gaps, and of the axis.
+/// Height of the heading, of the names of missing keys, and of the axis.
 const HEAD: f32 = 28.0;
-const GAPS: f32 = 18.0;
+const MISSING: f32 = 18.0;
 const AXIS: f32 = 30.0;
 /// Space between strips, and the least height of one.
 const BETWEEN: f32 = 10.0;
 const LEAST: f32 = 30.0;
 /// Size below which there is no picture.
-const SMALLEST: egui::Vec2 = vec2(GUTTER + 120.0, HEAD + GAPS + AXIS + LEAST);
+const SMALLEST: egui::Vec2 = vec2(GUTTER + 120.0, HEAD + MISSING + AXIS + LEAST);
 
 /// What is done to the picture.
 #[derive(Debug, Clone, Copy, Default)]
@@ -53,9 +53,9 @@ pub(super) fn show(
         ink::text_within(ui, at, (&text, rect.width() - 24.0), sans(13.0), palette.dim);
         return Done::default();
     };
-    let body = inner.with_min_y(rect.top() + HEAD + GAPS).with_max_y(rect.bottom() - AXIS);
+    let body = inner.with_min_y(rect.top() + HEAD + MISSING).with_max_y(rect.bottom() - AXIS);
     let plot = body.with_min_x(x.min);
-    let columns = plot.with_min_y(plot.top() - GAPS).with_max_y(rect.bottom());
+    let columns = plot.with_min_y(plot.top() - MISSING).with_max_y(rect.bottom());
     let done = columns_under_pointer(ui, columns, (&compass, rows), tuning);
     let lit = done.under_pointer.or(lit);
     heading(ui, inner, (rows, lit), tuning, palette);
@@ -67,7 +67,7 @@ pub(super) fn show(
         let column = Rect::from_x_y_ranges(compass.columns((key, key)), plot.y_range());
         ui.painter().rect_filled(column.expand2(vec2(0.0, 3.0)), 2.0, palette.lit);
     }
-    compass.gaps(ui, &words::gaps(rows), plot, palette);
+    compass.missing(ui, &words::missing(rows), plot, palette);
     compass.octaves(ui, plot.y_range(), palette);
     let ground = Ground { compass: &compass, rows, tuning, palette };
     for (strip, place) in places {
@@ -120,7 +120,7 @@ fn layout(body: Rect) -> Vec<(Strip, Rect)> {
     shown.iter().map(place).collect()
 }
 
-/// The columns for pointer and screen readers: every key with a row, and every gap.
+/// The columns for pointer and screen readers: every key with a row, and every missing one.
 fn columns_under_pointer(
     ui: &Ui,
     area: Rect,

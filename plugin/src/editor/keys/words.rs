@@ -3,7 +3,7 @@
 use std::fmt::Write as _;
 
 use plumbtone_analysis::Stretch;
-use plumbtone_analysis::keys::{StretchFound, missing};
+use plumbtone_analysis::keys::{StretchFound, missing_runs};
 use plumbtone_analysis::tuning::{NoteName, Tuning};
 
 use super::super::sound::stretch;
@@ -37,16 +37,11 @@ pub(super) fn compass(rows: &[Row]) -> String {
 }
 
 /// The missing keys as runs, from and to.
-pub(super) fn gaps(rows: &[Row]) -> Vec<(u8, u8)> {
+pub(super) fn missing(rows: &[Row]) -> Vec<(u8, u8)> {
     let keys: Vec<NoteName> = rows.iter().map(Row::note).collect();
-    let mut runs: Vec<(u8, u8)> = Vec::new();
-    for key in missing(&keys).into_iter().filter_map(|key| u8::try_from(key.midi()).ok()) {
-        match runs.last_mut() {
-            Some(run) if run.1 + 1 == key => run.1 = key,
-            _ => runs.push((key, key)),
-        }
-    }
-    runs
+    let key = |note: NoteName| u8::try_from(note.midi()).ok();
+    let runs = missing_runs(&keys).into_iter();
+    runs.filter_map(|(from, to)| Some((key(from)?, key(to)?))).collect()
 }
 
 /// A run of keys.
@@ -60,7 +55,7 @@ pub(super) fn run((from, to): (u8, u8)) -> String {
 
 /// Which keys between the lowest and the highest have no row.
 pub(super) fn still_to_play(rows: &[Row]) -> Option<String> {
-    let runs = gaps(rows);
+    let runs = missing(rows);
     if runs.is_empty() {
         return None;
     }
