@@ -33,6 +33,8 @@ pub(crate) struct Keys {
     in_picture: Option<u8>,
     /// A key whose row is to be scrolled to.
     sought: Option<u8>,
+    /// The newest take seen.
+    newest: Option<u64>,
     /// Whether it was asked to forget all, and is to be asked again.
     clearing: bool,
 }
@@ -43,6 +45,15 @@ impl Keys {
         shown.parameters.sheet.look(&mut self.snapshot);
         let tuning = &shown.readout.tuning;
         self.scales.update(&self.snapshot.stored.rows, tuning, shown.time_s);
+        let newest = self.snapshot.stored.newest().map(|row| (row.take, row.key));
+        let seen = core::mem::replace(&mut self.newest, newest.map(|(take, _)| take));
+        // What has just been played is to be seen, unless somebody is looking at another row.
+        if let Some((take, key)) = newest
+            && seen.is_some_and(|seen| seen < take)
+            && self.in_sheet.is_none()
+        {
+            self.sought = Some(key);
+        }
     }
 
     /// The sheet as lines of text.
@@ -68,7 +79,7 @@ impl Keys {
         let done =
             picture::show(ui, rect, (rows, &self.scales, lit), &shown.readout.tuning, palette);
         self.in_picture = done.under_pointer;
-        self.sought = done.clicked;
+        self.sought = done.clicked.or(self.sought);
     }
 }
 

@@ -196,3 +196,17 @@ fn the_sheet_is_written_as_a_file_or_the_reason_said() {
     let text = std::fs::read_to_string(&files[0]).unwrap();
     assert_eq!(text.lines().count(), 45, "a head and a line for each key");
 }
+
+#[test]
+fn the_key_just_played_is_scrolled_to() {
+    let mut editor = editor(Scene::keyboard(Theme::Dark));
+    let top = |editor: &Editor| editor.get_by_label_contains("C2: +").rect().top();
+    let before = top(&editor);
+    editor.state().parameters.sheet.take(key_row(84));
+    editor.run_steps(40);
+    assert!(top(&editor) < before - 300.0, "the lowest key's row has moved up");
+    editor.state().parameters.sheet.take(key_row(36));
+    editor.run_steps(40);
+    let moved = editor.get_by_label_contains("C2, the newest").rect().top() - before;
+    assert!(moved.abs() < 40.0, "and back: {moved}");
+}
