@@ -2,7 +2,7 @@
 
 use crate::masking;
 use crate::note::Note;
-use crate::reading::{Reading, StrayKind};
+use crate::reading::{Reading, Stray, StrayKind};
 use crate::stiff::CENTS_PER_NEPER;
 use crate::tuning::{NoteName, Tuning};
 
@@ -72,16 +72,29 @@ pub struct WorstAlias {
 /// The alias of a note that lies highest over what hides it, if there is any.
 #[must_use]
 pub fn worst_alias(note: &Note) -> Option<WorstAlias> {
-    let partials = || note.partials.iter().map(|p| (p.frequency_hz, p.level_mean_dbfs));
-    let strongest = partials().map(|p| p.1).fold(f64::NEG_INFINITY, f64::max);
-    let aliases = note.strays.iter().filter_map(|stray| match stray.kind {
+    worst(&note.partials.iter().map(|p| (p.frequency_hz, p.level_mean_dbfs)), &note.strays)
+}
+
+/// The same of a reading.
+#[must_use]
+pub fn worst_alias_now(reading: &Reading) -> Option<WorstAlias> {
+    worst(&reading.partials.iter().map(|p| (p.frequency_hz, p.level_dbfs)), &reading.strays)
+}
+
+/// Partials come as (frequency in Hz, level in dBFS).
+fn worst(
+    partials: &(impl Iterator<Item = (f64, f64)> + Clone),
+    strays: &[Stray],
+) -> Option<WorstAlias> {
+    let strongest = partials.clone().map(|p| p.1).fold(f64::NEG_INFINITY, f64::max);
+    let aliases = strays.iter().filter_map(|stray| match stray.kind {
         StrayKind::Alias { partial, folds } => Some(WorstAlias {
             frequency_hz: stray.frequency_hz,
             partial,
             folds,
             relative_db: stray.level_dbfs - strongest,
             over_mask_db: stray.level_dbfs
-                - masking::unheard_below_dbfs(stray.frequency_hz, partials()),
+                - masking::unheard_below_dbfs(stray.frequency_hz, partials.clone()),
         }),
         StrayKind::Mains { .. } | StrayKind::Unexplained => None,
     });
@@ -243,7 +256,7 @@ impl KeySheet {
 mod tests {
     use super::*;
     use crate::note::NotePartial;
-    use crate::reading::{Pitch, Stray};
+    use crate::reading::Pitch;
     use crate::tuning::Temperament;
 
     fn note() -> Note {

@@ -8,6 +8,7 @@ use plumbtone_analysis::tuning::{NoteName, Tuning};
 use plumbtone_analysis::{Gap, GapReason, Note, Reading, Sink, State};
 use triple_buffer::Input;
 
+use crate::captures::Press;
 use crate::check::Checks;
 use crate::keys::Keys;
 use crate::marks::Cause;
@@ -16,6 +17,7 @@ use crate::readout::{Condition, Gaps, Live, Missing, Readout};
 use crate::session::{Anchor, SessionPosition};
 use crate::status::Status;
 use crate::trail::Trail;
+use crate::voices::Voices;
 
 /// In silence the editor draws anew once in this many readings only.
 const SILENT_READINGS: u32 = 100;
@@ -29,6 +31,8 @@ pub(crate) struct Delivery {
     pub(crate) checks: Checks,
     /// What is collected key by key.
     pub(crate) keys: Keys,
+    /// What is captured.
+    pub(crate) press: Press,
     changed: bool,
     /// Whether the change is worth drawing.
     visible: bool,
@@ -54,13 +58,13 @@ impl Delivery {
         output: Input<Readout>,
         repaint: RepaintNotifier,
         log: Option<ReadingsLog>,
-        checks: Checks,
-        keys: Keys,
+        (checks, keys, press): (Checks, Keys, Press),
     ) -> Self {
         Self {
             readout: Readout::default(),
             checks,
             keys,
+            press,
             changed: false,
             visible: false,
             silent_readings: 0,
@@ -106,10 +110,12 @@ impl Delivery {
         self.readout.last_gap = None;
         self.readout.forget_offset();
         self.readout.played = None;
+        self.readout.voices = Voices::default();
         self.held.clear();
         self.anchors.clear();
         self.checks.start();
         self.keys.start();
+        self.press.start();
         self.stand(Condition::Waiting);
     }
 
@@ -127,6 +133,23 @@ impl Delivery {
 
     pub(crate) fn freeze(&mut self, frozen: bool) {
         self.frozen = frozen;
+    }
+
+    /// The reading at a position, or the one on display while that is held, is to be captured.
+    pub(crate) fn capture(&mut self, at: u64) {
+        if self.frozen && self.readout.measured {
+            self.press.take(&self.readout);
+            self.show();
+        } else {
+            self.press.press(at);
+        }
+    }
+
+    /// No more readings come for now.
+    pub(crate) fn close(&mut self) {
+        if self.press.close(&self.readout) {
+            self.show();
+        }
     }
 
     pub(crate) fn anchor(&mut self, anchor: Anchor) {
@@ -232,9 +255,11 @@ impl Sink for Delivery {
         self.show_reading(reading);
         self.readout.take(reading, session);
         self.readout.trail_end = trail_end;
+        self.visible |= self.press.reading(&self.readout);
     }
 
     fn note(&mut self, note: &Note) {
+        self.readout.voices.take(note);
         self.keys.note(note);
         self.show();
     }

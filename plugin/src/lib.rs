@@ -7,6 +7,7 @@
 #![forbid(unsafe_code)]
 
 mod analysis;
+pub mod captures;
 pub mod check;
 mod controls;
 mod convert;
@@ -26,6 +27,7 @@ mod state;
 mod status;
 mod tap;
 pub mod trail;
+pub mod voices;
 
 pub use plumbtone::Plumbtone;
 

@@ -11,6 +11,7 @@ use nice_plug::prelude::*;
 
 pub use choices::{Channel, Reference, TemperamentChoice};
 
+use crate::captures::Captures;
 use crate::check::Results;
 use crate::keys::Sheet;
 use crate::state::{Kept, Unsound};
@@ -36,6 +37,9 @@ pub struct Parameters {
     /// The key sheet.
     #[persist = "keys"]
     pub sheet: Sheet,
+    /// The captures.
+    #[persist = "captures"]
+    pub captures: Captures,
     /// What of the last loaded state was unsound.
     #[persist = "unsound"]
     pub unsound: Unsound,
@@ -73,6 +77,9 @@ pub struct AnalysisParameters {
     /// Keeps the present reading on display.
     #[id = "freeze"]
     pub freeze: BoolParam,
+    /// Keeps a capture each time it is switched on.
+    #[id = "capture"]
+    pub capture: BoolParam,
 }
 
 /// The drift check.
@@ -102,6 +109,7 @@ impl Default for Parameters {
             kept: Kept::default(),
             results: Results::default(),
             sheet: Sheet::default(),
+            captures: Captures::default(),
             unsound: Unsound::default(),
         }
     }
@@ -151,6 +159,7 @@ impl AnalysisParameters {
             .with_string_to_value(Arc::new(text::milliseconds)),
             partials: IntParam::new("Partials", 40, IntRange::Linear { min: 1, max: 128 }),
             freeze: BoolParam::new("Freeze", false),
+            capture: BoolParam::new("Capture", false),
         }
     }
 }
@@ -203,6 +212,7 @@ mod tests {
             "integration",
             "partials",
             "freeze",
+            "capture",
             "check",
             "tolerance",
             "reference",
@@ -258,6 +268,7 @@ mod tests {
             "integration" => f(&analysis.integration),
             "partials" => f(&analysis.partials),
             "freeze" => f(&analysis.freeze),
+            "capture" => f(&analysis.capture),
             "check" => f(&check.check),
             "tolerance" => f(&check.tolerance),
             "reference" => f(&check.reference),

@@ -9,6 +9,7 @@ use plumbtone_analysis::Analyzer;
 use triple_buffer::{Output, triple_buffer};
 
 use crate::analysis::Analysis;
+use crate::captures::Press;
 use crate::check::Checks;
 use crate::controls::Controls;
 use crate::convert::index;
@@ -47,8 +48,9 @@ impl Default for Plumbtone {
         let parameters = Arc::<Parameters>::default();
         let checks = Checks::new(parameters.results.clone());
         let keys = Keys::new(parameters.sheet.clone());
-        let delivery =
-            Delivery::new(Arc::clone(&status), input, repaint.clone(), log, checks, keys);
+        let press = Press::new(parameters.captures.clone());
+        let parts = (checks, keys, press);
+        let delivery = Delivery::new(Arc::clone(&status), input, repaint.clone(), log, parts);
         let trail = delivery.trail();
         Self {
             parameters,
@@ -78,6 +80,7 @@ impl Drop for Plumbtone {
         // A report that was begun is finished, whatever the host does next.
         self.parameters.results.finish_reports();
         self.parameters.sheet.finish_reports();
+        self.parameters.captures.finish_errands();
     }
 }
 
@@ -213,6 +216,9 @@ impl ClapPlugin for Plumbtone {
                 page.add_param(&tuning.concert_pitch);
                 page.add_param(&tuning.temperament);
                 page.add_param(&analysis.freeze);
+            });
+            section.add_page("Captures", |page| {
+                page.add_param(&analysis.capture);
             });
             section.add_page("Check", |page| {
                 page.add_param(&check.check);

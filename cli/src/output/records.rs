@@ -4,7 +4,7 @@
 use crate::measure::Timebase;
 use plumbtone_analysis::masking::unheard_below_dbfs;
 use plumbtone_analysis::tuning::Tuning;
-use plumbtone_analysis::waveform::{Waveform, waveform};
+use plumbtone_analysis::waveform::waveform;
 use plumbtone_analysis::{Gap, GapReason, Note, NotePartial, Reading, State, Stray, StrayKind};
 use serde::Serialize;
 use std::ops::Range;
@@ -205,17 +205,9 @@ impl WaveformRecord {
         // What lies above the last partial found cannot be told from what the band or the count left out.
         let looked_for = partials.last()?.0;
         let fit = waveform(partials, looked_for)?;
-        let (name, width) = match fit.waveform {
-            Waveform::Sine => ("sine", None),
-            Waveform::Saw => ("saw", None),
-            Waveform::Square => ("square", None),
-            Waveform::Triangle => ("triangle", None),
-            Waveform::Pulse { width } => ("pulse", Some(width)),
-            Waveform::HalfRectifiedSine => ("half-rectified sine", None),
-        };
         Some(Self {
-            name,
-            width,
+            name: fit.waveform.name(),
+            width: fit.waveform.width(),
             level_rms_db: fit.level_rms_db,
             phase_rms_rad: fit.phase_rms_rad,
             partials: fit.partials,

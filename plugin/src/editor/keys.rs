@@ -11,7 +11,8 @@ mod words;
 use egui::{Rect, RichText, ScrollArea, Stroke, Ui, vec2};
 
 use self::scales::Scales;
-use super::checks::{BAR, act, reports, say, tick};
+use super::checks::reports;
+use super::parts::{BAR, act, say, tick};
 use super::screen::Shown;
 use super::theme::{FIGURE, PAD, Palette};
 use crate::keys::{self, Snapshot, Stored};

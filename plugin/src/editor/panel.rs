@@ -2,6 +2,7 @@
 
 use egui::{Align2, Rect, Response, Role, Sense, Stroke, Ui, WidgetInfo, pos2, vec2};
 
+use super::captures::{self, Captures};
 use super::checks::{self, Checks};
 use super::field::Bench;
 use super::ink;
@@ -14,20 +15,24 @@ use super::theme::{CORNER, PAD, Palette, bold, sans};
 /// Height of the tabs, and of the line of actions at the bottom.
 const TABS: f32 = 38.0;
 const ACTIONS: f32 = 34.0;
+/// Space between two tabs, where there is room for it.
+const TABS_APART: f32 = 22.0;
 
 /// What the panel shows.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
 pub(crate) enum Tab {
     #[default]
     Sound,
+    Captures,
     Keys,
     Checks,
     Settings,
 }
 
 impl Tab {
-    const ALL: [(Self, &'static str); 4] = [
+    const ALL: [(Self, &'static str); 5] = [
         (Self::Sound, "Sound"),
+        (Self::Captures, "Captures"),
         (Self::Keys, "Keys"),
         (Self::Checks, "Checks"),
         (Self::Settings, "Settings"),
@@ -60,11 +65,20 @@ const COPIES_OF_KEYS: [(Copy, &str, &str); 3] = [
     PICTURE,
 ];
 
+/// What the tabs show and change.
+pub(crate) struct Views<'a, 'b> {
+    pub(crate) tab: &'a mut Tab,
+    pub(crate) look: &'a mut Look<'b>,
+    pub(crate) captures: &'a mut Captures,
+    pub(crate) checks: &'a mut Checks,
+    pub(crate) keys: &'a mut Keys,
+}
+
 /// Draws it. Says what is asked for.
 pub(crate) fn show(
     ui: &mut Ui,
     rect: Rect,
-    (tab, look, checks, keys): (&mut Tab, &mut Look<'_>, &mut Checks, &mut Keys),
+    Views { tab, look, captures, checks, keys }: Views<'_, '_>,
     (shown, figures): (&Shown<'_>, &Figures),
     bench: &mut Bench<'_>,
 ) -> Option<Copy> {
@@ -77,6 +91,7 @@ pub(crate) fn show(
     let body = rect.with_min_y(rect.top() + TABS).with_max_y(rect.bottom() - ACTIONS);
     match tab {
         Tab::Sound => sound::show(ui, body, shown, figures, palette),
+        Tab::Captures => captures::show(ui, body, captures, shown, palette),
         Tab::Keys => keys::show(ui, body, keys, shown, palette),
         Tab::Checks => checks::show(ui, body, checks, shown, palette),
         Tab::Settings => settings::show(ui, body, look, bench),
@@ -86,12 +101,18 @@ pub(crate) fn show(
 }
 
 fn tabs(ui: &mut Ui, rect: Rect, tab: &mut Tab, palette: &Palette) {
-    let mut x = rect.left() + PAD;
-    for (this, name) in Tab::ALL {
+    let names = Tab::ALL.map(|(this, name)| {
         let on = *tab == this;
         let font = if on { bold(12.5) } else { sans(12.5) };
         let colour = if on { palette.ink } else { palette.dim };
-        let galley = ui.painter().layout_no_wrap(name.to_owned(), font, colour);
+        ui.painter().layout_no_wrap(name.to_owned(), font, colour)
+    });
+    let wide: f32 = names.iter().map(|galley| galley.size().x).sum();
+    let apart = (rect.width() - 2.0 * PAD - wide) / (names.len() as f32 - 1.0);
+    let mut x = rect.left() + PAD;
+    for ((this, name), galley) in Tab::ALL.into_iter().zip(names) {
+        let on = *tab == this;
+        let colour = if on { palette.ink } else { palette.dim };
         let place = Rect::from_min_size(pos2(x, rect.top() + 6.0), vec2(galley.size().x, 24.0));
         let response =
             ui.interact(place.expand2(vec2(6.0, 0.0)), ui.scope_id().with(name), Sense::click());
@@ -105,7 +126,7 @@ fn tabs(ui: &mut Ui, rect: Rect, tab: &mut Tab, palette: &Palette) {
         if response.clicked() {
             *tab = this;
         }
-        x = place.right() + 22.0;
+        x = place.right() + apart.min(TABS_APART);
     }
 }
 

@@ -88,6 +88,31 @@ fn figures_that_are_no_numbers() {
 }
 
 #[test]
+fn comparisons_of_all_kinds() {
+    let compared = |change: fn(&mut Scene)| {
+        move || {
+            let mut scene = Scene::captured(Theme::Dark);
+            change(&mut scene);
+            scene.screen.compare(Some(1), None);
+            scene
+        }
+    };
+    draw("128 partials", compared(|s| s.readout.reading.partials = string_partials(128)));
+    draw("no partials", compared(|s| s.readout.reading.partials.clear()));
+    draw("no pitch", compared(|s| s.readout.reading.pitch = None));
+    draw(
+        "no numbers",
+        compared(|scene| {
+            let partials = &mut scene.readout.reading.partials;
+            for (p, value) in partials.iter_mut().zip([f64::NAN, f64::INFINITY, 1e30, -1e30]) {
+                (p.level_dbfs, p.cents_from_harmonic, p.phase_rad) = (value, value, value);
+                (p.level_sd_db, p.cents_sd) = (value, value);
+            }
+        }),
+    );
+}
+
+#[test]
 fn strays_by_the_hundred() {
     let stray = |k: u32| Stray {
         frequency_hz: 30.0 + 17.3 * f64::from(k),

@@ -63,6 +63,32 @@ fn no_single_pitch() {
 }
 
 #[test]
+fn detuned_voices() {
+    picture("detuned", Scene::detuned(Theme::Dark), SIZE);
+}
+
+#[test]
+fn difference_dark() {
+    difference("difference-dark", Theme::Dark, (1, None));
+}
+
+#[test]
+fn difference_light() {
+    difference("difference-light", Theme::Light, (3, Some(2)));
+}
+
+/// A capture against another, or against what is heard.
+fn difference(name: &str, theme: Theme, (first, second): (u64, Option<u64>)) {
+    let mut scene = Scene::captured(theme);
+    scene.screen.compare(Some(first), second);
+    let mut harness = scene.open(SIZE, 1.0);
+    harness.run_steps(3);
+    harness.get_by_label("Captures").click();
+    harness.run_steps(4);
+    compare(name, &mut harness);
+}
+
+#[test]
 fn checks_dark() {
     checks("checks-dark", Theme::Dark);
 }

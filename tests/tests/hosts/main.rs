@@ -5,6 +5,7 @@
 mod allocations;
 mod automation;
 mod bundles;
+mod captures;
 mod checks;
 mod editor;
 mod keys;

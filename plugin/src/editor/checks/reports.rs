@@ -1,9 +1,10 @@
 //! Where reports go, when they are written, and what came of the last one.
 
-use egui::{RichText, Role, TextEdit, Ui, WidgetInfo};
+use egui::{Role, TextEdit, Ui, WidgetInfo};
 
-use super::super::theme::{FIGURE, Palette, SMALL, sans};
-use super::{Checks, act, say, tick};
+use super::super::parts::{act, say, tick, warn};
+use super::super::theme::{FIGURE, Palette, sans};
+use super::Checks;
 use crate::check::{CAUTION, Results};
 use crate::report_files::Told;
 
@@ -34,8 +35,8 @@ pub(in crate::editor) fn told(ui: &mut Ui, told: Option<&Told>, endings: &str, p
     match told {
         Some(Told::Written(place)) => say(ui, &format!("written: {place}{endings}"), palette),
         Some(Told::Failed(why)) => {
-            let text = format!("! No report was written: {why}. The results are still here.");
-            ui.label(RichText::new(text).size(SMALL).color(palette.stray));
+            let text = format!("No report was written: {why}. The results are still here.");
+            warn(ui, &text, palette);
         }
         None => {}
     }

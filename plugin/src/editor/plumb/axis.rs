@@ -139,6 +139,11 @@ impl RowAxis {
         self.y.max - (number - self.first + BELOW) * self.row()
     }
 
+    /// The number at a height.
+    pub(crate) fn number(&self, y: f32) -> f32 {
+        self.first - BELOW + (self.y.max - y) / self.row()
+    }
+
     /// Whether a whole row is to be seen.
     pub(crate) fn shows(&self, number: f32) -> bool {
         number > self.first - BELOW && number < self.first + self.count - 1.0 + ABOVE
