@@ -79,6 +79,11 @@ fn fixed(folder: &Path) -> Done {
     checks.get_by_label("Checks").click();
     checks.run_steps(3);
     keep(&mut checks, &folder.join("checks.png"))?;
+    let mut keys = Scene::keyboard(Theme::Dark).open(SIZE, 1.0);
+    keys.run_steps(2);
+    keys.get_by_label("Keys").click();
+    keys.run_steps(3);
+    keep(&mut keys, &folder.join("keys.png"))?;
     save(Scene::detuned(Theme::Light), SIZE, 1.0, &folder.join("detuned.png"))?;
     let mut compared = Scene::captured(Theme::Dark);
     compared.screen.compare(Some(1), None);

@@ -145,6 +145,7 @@ impl Analysis {
             }
             Event::Jump => self.finish(),
             Event::Missed { samples, cause } => {
+                self.delivery.keys.lose(self.position);
                 self.delivery.miss(samples, cause);
                 if let Engine::Running(engine) = &mut self.engine {
                     engine.skip(samples, &mut self.delivery);

@@ -10,6 +10,7 @@ use triple_buffer::Input;
 
 use crate::captures::Press;
 use crate::check::Checks;
+use crate::keys::Keys;
 use crate::marks::Cause;
 use crate::readings_log::{Line, ReadingsLog};
 use crate::readout::{Condition, Gaps, Live, Missing, Readout};
@@ -28,6 +29,8 @@ pub(crate) struct Delivery {
     pub(crate) readout: Readout,
     /// What is checked.
     pub(crate) checks: Checks,
+    /// What is collected key by key.
+    pub(crate) keys: Keys,
     /// What is captured.
     pub(crate) press: Press,
     changed: bool,
@@ -55,11 +58,12 @@ impl Delivery {
         output: Input<Readout>,
         repaint: RepaintNotifier,
         log: Option<ReadingsLog>,
-        (checks, press): (Checks, Press),
+        (checks, keys, press): (Checks, Keys, Press),
     ) -> Self {
         Self {
             readout: Readout::default(),
             checks,
+            keys,
             press,
             changed: false,
             visible: false,
@@ -82,7 +86,8 @@ impl Delivery {
     }
 
     /// An engine begins, whose readings lie this many samples apart.
-    pub(crate) fn begin(&self, hop: usize) {
+    pub(crate) fn begin(&mut self, hop: usize) {
+        self.keys.begin(self.readout.tuning, self.readout.sample_rate_hz);
         self.with_trail(|trail| trail.grid(hop, self.readout.sample_rate_hz));
     }
 
@@ -90,6 +95,7 @@ impl Delivery {
     pub(crate) fn tune(&mut self, tuning: Tuning) {
         if self.readout.tuning != tuning {
             self.readout.tuning = tuning;
+            self.keys.tune(tuning);
             self.readout.forget_offset();
             self.show();
         }
@@ -108,6 +114,7 @@ impl Delivery {
         self.held.clear();
         self.anchors.clear();
         self.checks.start();
+        self.keys.start();
         self.press.start();
         self.stand(Condition::Waiting);
     }
@@ -158,6 +165,7 @@ impl Delivery {
         }
         self.readout.played = self.held.last().map(|&key| NoteName::from_midi(i16::from(key)));
         self.checks.key(at, self.readout.played.map(|note| self.readout.tuning.frequency_hz(note)));
+        self.keys.key(at, key, down);
         self.show();
     }
 
@@ -237,6 +245,7 @@ impl Sink for Delivery {
             trail.push(stream, reading, &session);
             trail.next()
         });
+        self.keys.reading(reading);
         self.checks.reading(reading, trail_end.saturating_sub(1), self.status.shown());
         self.readout.weigh(reading);
         self.changed = true;
@@ -251,6 +260,7 @@ impl Sink for Delivery {
 
     fn note(&mut self, note: &Note) {
         self.readout.voices.take(note);
+        self.keys.note(note);
         self.show();
     }
 

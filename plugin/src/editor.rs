@@ -9,6 +9,7 @@ mod difference;
 mod drift;
 mod field;
 mod ink;
+mod keys;
 mod knob;
 mod mark;
 mod notices;

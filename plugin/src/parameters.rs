@@ -13,6 +13,7 @@ pub use choices::{Channel, Reference, TemperamentChoice};
 
 use crate::captures::Captures;
 use crate::check::Results;
+use crate::keys::Sheet;
 use crate::state::{Kept, Unsound};
 
 /// All parameters, and what a session keeps beside them.
@@ -33,6 +34,9 @@ pub struct Parameters {
     /// The results of drift checks.
     #[persist = "checks"]
     pub results: Results,
+    /// The key sheet.
+    #[persist = "keys"]
+    pub sheet: Sheet,
     /// The captures.
     #[persist = "captures"]
     pub captures: Captures,
@@ -104,6 +108,7 @@ impl Default for Parameters {
             check: CheckParameters::new(&concert_pitch_hz),
             kept: Kept::default(),
             results: Results::default(),
+            sheet: Sheet::default(),
             captures: Captures::default(),
             unsound: Unsound::default(),
         }

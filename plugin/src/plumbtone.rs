@@ -15,6 +15,7 @@ use crate::controls::Controls;
 use crate::convert::index;
 use crate::delivery::Delivery;
 use crate::editor::{self, Window};
+use crate::keys::Keys;
 use crate::parameters::Parameters;
 use crate::pool::Place;
 use crate::readings_log::ReadingsLog;
@@ -46,9 +47,10 @@ impl Default for Plumbtone {
         let status = Arc::new(Status::new(log.is_some()));
         let parameters = Arc::<Parameters>::default();
         let checks = Checks::new(parameters.results.clone());
+        let keys = Keys::new(parameters.sheet.clone());
         let press = Press::new(parameters.captures.clone());
-        let delivery =
-            Delivery::new(Arc::clone(&status), input, repaint.clone(), log, (checks, press));
+        let parts = (checks, keys, press);
+        let delivery = Delivery::new(Arc::clone(&status), input, repaint.clone(), log, parts);
         let trail = delivery.trail();
         Self {
             parameters,
@@ -77,6 +79,7 @@ impl Drop for Plumbtone {
         self.end();
         // A report that was begun is finished, whatever the host does next.
         self.parameters.results.finish_reports();
+        self.parameters.sheet.finish_reports();
         self.parameters.captures.finish_errands();
     }
 }

@@ -11,6 +11,7 @@ use serde::{Deserialize, Serialize};
 use serde_json::Value;
 
 use crate::editor::Theme;
+use crate::keys;
 use crate::parameters::Parameters;
 use crate::{captures, check};
 
@@ -23,6 +24,7 @@ const SIDE: (f64, f64) = (100.0, 20_000.0);
 /// Keys of the persistent fields.
 const KEPT: &str = "kept";
 const CHECKS: &str = "checks";
+const KEYS: &str = "keys";
 const CAPTURES: &str = "captures";
 const UNSOUND: &str = "unsound";
 
@@ -150,6 +152,10 @@ pub(crate) fn filter(state: &mut PluginState) {
     let checks = check::read(state.fields.get(CHECKS).map(String::as_str), &mut findings);
     if let Ok(checks) = serde_json::to_string(&checks) {
         state.fields.insert(CHECKS.to_owned(), checks);
+    }
+    let keys = keys::read(state.fields.get(KEYS).map(String::as_str), &mut findings);
+    if let Ok(keys) = serde_json::to_string(&keys) {
+        state.fields.insert(KEYS.to_owned(), keys);
     }
     let captures = captures::read(state.fields.get(CAPTURES).map(String::as_str), &mut findings);
     if let Ok(captures) = serde_json::to_string(&captures) {

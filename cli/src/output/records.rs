@@ -2,7 +2,7 @@
 //! promises, so that the engine's can change without breaking anybody's script.
 
 use crate::measure::Timebase;
-use plumbtone_analysis::masking::masked_below_dbfs;
+use plumbtone_analysis::masking::unheard_below_dbfs;
 use plumbtone_analysis::tuning::Tuning;
 use plumbtone_analysis::waveform::waveform;
 use plumbtone_analysis::{Gap, GapReason, Note, NotePartial, Reading, State, Stray, StrayKind};
@@ -233,7 +233,7 @@ impl StrayRecord {
         };
         let partials = || note.partials.iter().map(|p| (p.frequency_hz, p.level_mean_dbfs));
         let strongest = partials().map(|p| p.1).fold(f64::NEG_INFINITY, f64::max);
-        let mask = masked_below_dbfs(stray.frequency_hz, partials());
+        let mask = unheard_below_dbfs(stray.frequency_hz, partials());
         Self {
             frequency_hz: measured(stray.frequency_hz),
             level_dbfs: measured(stray.level_dbfs),

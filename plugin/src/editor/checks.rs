@@ -1,6 +1,6 @@
 //! The side panel's drift checks: results, what is done with them, and their reports.
 
-mod reports;
+pub(super) mod reports;
 mod rows;
 
 use egui::{Color32, Pos2, Rect, RichText, Shape, Stroke, Ui, pos2};

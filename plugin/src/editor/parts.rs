@@ -5,7 +5,7 @@ use egui::{Align2, Color32, Rect, RichText, ScrollArea, Stroke, Ui, pos2, vec2};
 use super::theme::{FIGURE, PAD, Palette, SMALL, sans};
 
 /// Room for the bar that a list scrolls by.
-const BAR: f32 = 14.0;
+pub(crate) const BAR: f32 = 14.0;
 
 /// A list that scrolls, under a name of its own.
 pub(crate) fn list(

@@ -11,7 +11,9 @@ use egui::{Align2, Key, Rangef, Rect, Stroke, Ui, pos2, vec2};
 use plumbtone_analysis::{Partial, Reading};
 
 use self::axis::CalmFloor;
-pub(crate) use self::axis::{Axis, CENTS, Calm, CalmCents, CalmRows, RowAxis, round_step};
+pub(crate) use self::axis::{
+    Axis, CENTS, Calm, CalmCents, CalmRange, CalmRows, RowAxis, round_step,
+};
 use self::memory::Memory;
 use self::rows::Columns;
 pub(crate) use self::rows::{WHISKER_SD, figures_every};

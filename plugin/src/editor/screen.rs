@@ -9,6 +9,7 @@ use super::captures::{self, Captures, Side};
 use super::checks::Checks;
 use super::drift::Drift;
 use super::field::{Bench, Editing};
+use super::keys::Keys;
 use super::knob::Gesture;
 use super::panel::{self, Copy, Tab, Views};
 use super::plumb::Plumb;
@@ -62,6 +63,7 @@ pub struct Screen {
     drift: Drift,
     captures: Captures,
     checks: Checks,
+    keys: Keys,
     editing: Editing,
 }
 
@@ -114,6 +116,8 @@ impl Screen {
             ui.ctx().copy_text(match copy {
                 Copy::Text => copy::text(shown),
                 Copy::Csv => copy::csv(shown),
+                Copy::KeysText => self.keys.text(shown),
+                Copy::KeysCsv => self.keys.csv(shown),
                 Copy::Picture => self.svg(area.size(), shown),
             });
         }
@@ -136,6 +140,7 @@ impl Screen {
         self.plumb.update(shown);
         self.captures.update(shown);
         self.checks.update(&shown.parameters.results);
+        self.keys.update(shown);
         self.drift.update(shown.trail, width - 2.0 * MARGIN, shown);
     }
 
@@ -149,8 +154,19 @@ impl Screen {
         let palette = self.theme.palette();
         *ui.visuals_mut() = self.theme.visuals();
         ui.painter().rect_filled(area, 0.0, palette.ground);
-        let Self { theme, zoom, tab, figures, sound, plumb, drift, captures, checks, editing } =
-            self;
+        let Self {
+            theme,
+            zoom,
+            tab,
+            figures,
+            sound,
+            plumb,
+            drift,
+            captures,
+            checks,
+            keys,
+            editing,
+        } = self;
         let mut bench = Bench { parameters: shown.parameters, palette, editing, gestures };
         let top = area.top() + band::HEIGHT;
         band::show(ui, area.with_max_y(top), shown, figures, &mut bench);
@@ -168,15 +184,18 @@ impl Screen {
             body.max.y = trace.top() - GAP;
         }
         let mut asked = None;
+        let mut of_keys = false;
         if area.width() >= WIDE {
             let split = body.right() - PANEL;
             let side = Rect::from_min_max(pos2(split, body.top()), body.max);
             let mut look = Look { theme, zoom, plumb };
-            let views = Views { tab, look: &mut look, captures, checks };
+            let views = Views { tab, look: &mut look, captures, checks, keys };
             asked = panel::show(ui, side, views, (shown, sound), &mut bench);
             body.max.x = split - GAP;
+            of_keys = *tab == Tab::Keys;
         }
         match captures.comparison() {
+            _ if of_keys => keys.picture(ui, body, shown, palette),
             Some(comparison) => comparison.show(ui, body, palette),
             None => plumb.show(ui, body, shown, palette),
         }

@@ -6,7 +6,7 @@ use egui::{Align2, Rect, Sense, Stroke, Ui, pos2, vec2};
 use plumbtone_analysis::Stray;
 use plumbtone_analysis::tuning::ratio;
 
-pub(crate) use self::figures::Figures;
+pub(crate) use self::figures::{Figures, power_of_ten, stretch};
 use super::ink;
 use super::screen::Shown;
 use super::steady::signed;

@@ -5,6 +5,7 @@ mod captures;
 mod checks;
 mod controls;
 mod hostile;
+mod keys;
 mod pictures;
 mod scenes;
 mod views;

@@ -98,6 +98,38 @@ fn checks_light() {
     checks("checks-light", Theme::Light);
 }
 
+#[test]
+fn keys_dark() {
+    keys("keys-dark", Scene::keyboard(Theme::Dark), SIZE);
+}
+
+#[test]
+fn keys_light() {
+    keys("keys-light", Scene::keyboard(Theme::Light), SIZE);
+}
+
+#[test]
+fn keys_in_a_small_window() {
+    keys("keys-small", Scene::keyboard(Theme::Dark), vec2(800.0, 480.0));
+}
+
+#[test]
+fn keys_none_yet() {
+    keys("keys-none", Scene::string(Theme::Dark), SIZE);
+}
+
+fn keys(name: &str, scene: Scene, size: Vec2) {
+    let mut harness = scene.open(size, 1.0);
+    harness.run_steps(3);
+    harness.get_by_label("Keys").click();
+    harness.run_steps(3);
+    if let Some(column) = harness.query_by_label_contains("F4 in the picture") {
+        column.hover();
+    }
+    harness.run_steps(4);
+    compare(name, &mut harness);
+}
+
 fn checks(name: &str, theme: Theme) {
     let mut harness = Scene::checked(theme).open(SIZE, 1.0);
     harness.run_steps(3);

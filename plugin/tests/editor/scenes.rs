@@ -9,6 +9,7 @@ use plumbtone_analysis::{Cluster, Partial, Pitch, Reading, State, Stray, StrayKi
 use plumbtone_plugin::captures::Capture;
 use plumbtone_plugin::check::{CheckResult, InTrail};
 use plumbtone_plugin::editor::{Gesture, Screen, Shown, Theme, install_fonts};
+use plumbtone_plugin::keys::{KeyAlias, Row};
 use plumbtone_plugin::parameters::Parameters;
 use plumbtone_plugin::readout::{Condition, Readout};
 use plumbtone_plugin::session::{BarBeat, SessionPosition};
@@ -65,6 +66,16 @@ impl Scene {
                 scene.parameters.results.add(result);
             }
         }
+        scene
+    }
+
+    /// The same with a key sheet: a patch over four octaves, a few keys of it still to be played.
+    pub(crate) fn keyboard(theme: Theme) -> Self {
+        let scene = Self::string(theme);
+        for key in (36..=84).filter(|key| ![49, 62, 63, 64, 76].contains(key)) {
+            scene.parameters.sheet.take(key_row(key));
+        }
+        scene.parameters.sheet.take(key_row(60));
         scene
     }
 
@@ -223,6 +234,35 @@ impl Scene {
             .with_step_dt(1.0 / 60.0)
             .with_context_setup(install_fonts)
             .build_ui_state(|ui, scene: &mut Self| scene.frame(ui), self)
+    }
+}
+
+/// A key of a patch that is a little sharp in the bass, bright at the top, where its aliases come out, and slow at the bottom.
+pub(crate) fn key_row(key: u8) -> Row {
+    let at = f64::from(key) - 60.0;
+    let wobble = (1.7 * at).sin();
+    let cents = 3.2 * (-(at + 24.0) / 14.0).exp() - 0.04 * at + 0.4 * wobble;
+    let over = -14.0 + 0.75 * at + 4.0 * (2.9 * at).sin();
+    Row {
+        key,
+        take: 0,
+        told: key != 70,
+        length_s: 1.2,
+        f0_hz: 440.0 * ratio(100.0 * (at - 9.0) + cents),
+        f0_sd_cents: 0.05 + 0.5 * (-(at + 24.0) / 8.0).exp(),
+        inharmonicity_b: (key != 55)
+            .then(|| if key < 79 { 6e-5 * 2f64.powf(at / 9.0) } else { 1e-6 }),
+        inharmonicity_sd: (key != 55).then_some(4e-6),
+        tilt_db_per_octave: Some(-7.5 + 0.06 * at + 0.5 * wobble),
+        level_dbfs: Some(-18.0 - 0.09 * at + 1.1 * (0.9 * at).cos()),
+        settling_s: (key != 83).then_some(0.02 + 0.09 * (-(at + 24.0) / 10.0).exp()),
+        worst_alias: (key > 40).then_some(KeyAlias {
+            frequency_hz: 2_000.0 + 70.0 * at,
+            partial: 120,
+            folds: 1,
+            relative_db: -60.0 + 0.5 * at,
+            over_mask_db: Some(over),
+        }),
     }
 }
 

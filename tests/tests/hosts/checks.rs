@@ -20,7 +20,7 @@ use serde_json::Value;
 use tempfile::TempDir;
 
 use crate::bundles::{target, there};
-use crate::rig::{Log, instance, json, set};
+use crate::rig::{Log, instance, json, load, set};
 use crate::session::{START_S, transport};
 use crate::the_program::write_stereo;
 
@@ -104,12 +104,6 @@ fn keep(instance: &mut Instance, stored: &Stored) {
     let mut state = json(&instance.save().expect("a state"));
     state["fields"]["checks"] = serde_json::to_string(stored).expect("JSON").into();
     load(instance, &state);
-}
-
-fn load(instance: &mut Instance, state: &Value) {
-    let text = serde_json::to_vec(state).expect("JSON");
-    let length = u64::try_from(text.len()).expect("a length").to_le_bytes();
-    instance.load([&length[..], &text].concat().as_slice()).expect("it loads");
 }
 
 fn rendered(block: usize) -> Vec<CheckResult> {

@@ -8,6 +8,7 @@ mod bundles;
 mod captures;
 mod checks;
 mod editor;
+mod keys;
 mod lifecycle;
 mod live;
 mod many;

@@ -89,8 +89,15 @@ pub(crate) fn set(instance: &mut Instance, name: &str, text: &str, time: u32) ->
     ParamValueEvent::new(time, id, Pckn::match_all(), value)
 }
 
-/// A saved state as JSON.
+/// A saved state as what it holds.
 pub(crate) fn json(state: &[u8]) -> Value {
     let start = state.iter().position(|&byte| byte == b'{').expect("the state is JSON");
     serde_json::from_slice(&state[start..]).expect("the state is JSON")
+}
+
+/// Loads a state of such a form.
+pub(crate) fn load(instance: &mut Instance, state: &Value) {
+    let text = serde_json::to_vec(state).expect("JSON");
+    let length = u64::try_from(text.len()).expect("a length").to_le_bytes();
+    instance.load([&length[..], &text].concat().as_slice()).expect("it loads");
 }

@@ -72,14 +72,14 @@ impl Page {
 }
 
 fn head(page: &mut Page, job: &Job) {
-    page.text((MARGIN, 50.0), 20.0, INK, job.title());
+    page.text((MARGIN, 50.0), 20.0, INK, job.place.title());
     let count = |word| job.results.iter().filter(|r| r.verdict == word).count();
     let summary = format!(
         "Pitch-drift checks: {} within, {} outside, {} unmeasured. Written {}.",
         count(VerdictWord::Within),
         count(VerdictWord::Outside),
         count(VerdictWord::Unmeasured),
-        job.stamp()
+        job.place.stamp()
     );
     page.text((MARGIN, 72.0), 12.0, DIM, &summary);
 }

@@ -137,7 +137,7 @@ impl Figures {
 }
 
 /// B with its deviation, both over one power of ten.
-fn stretch(stretch: Stretch) -> String {
+pub(crate) fn stretch(stretch: Stretch) -> String {
     let Stretch { b, b_sd } = stretch;
     if !(b.is_finite() && b_sd.is_finite()) {
         return NONE.to_owned();
@@ -148,9 +148,15 @@ fn stretch(stretch: Stretch) -> String {
     }
     let exponent = crate::convert::floor(size.log10());
     let scale = 10f64.powf(size.log10().floor());
-    let raised: String = exponent.to_string().chars().map(superscript).collect();
     let sign = if b < 0.0 { "\u{2212}" } else { "" };
-    format!("({sign}{:.2} \u{b1} {:.2})\u{b7}10{raised}", b.abs() / scale, b_sd / scale)
+    let power = power_of_ten(exponent);
+    format!("({sign}{:.2} \u{b1} {:.2})\u{b7}{power}", b.abs() / scale, b_sd / scale)
+}
+
+/// A power of ten as print has it.
+pub(crate) fn power_of_ten(exponent: i64) -> String {
+    let raised: String = exponent.to_string().chars().map(superscript).collect();
+    format!("10{raised}")
 }
 
 fn superscript(digit: char) -> char {
