@@ -14,7 +14,7 @@ mod live;
 mod moving;
 mod vibrato;
 
-pub use aliases::{AliasFigures, aliases};
+pub use aliases::{AliasFigures, aliases, detuned_aliases};
 pub use calibration::Calibration;
 pub use case::Case;
 pub use claims::{ClaimFigures, claims};

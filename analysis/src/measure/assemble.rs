@@ -272,15 +272,17 @@ impl Assembler {
             sample_rate_hz: self.sample_rate_hz,
             resolution_hz,
         };
-        aliases::name_aliases(&mut self.candidates, &tone);
+        let traced = aliases::name_aliases(&mut self.candidates, &tone);
         if still {
+            let (f0, b) = traced.unwrap_or((fit.f0, tone.b.unwrap_or(0.0)));
             let search = Search {
                 lines: &self.meter.long.lines,
                 own: &self.own,
-                f0: tone.f0,
-                b: tone.b.unwrap_or(0.0),
+                f0: fit.f0,
+                b,
                 resolution_hz,
             };
+            let tone = aliases::Tone { f0, b: Some(b), ..tone };
             name_voices(&search, &tone, &mut self.candidates, &mut self.voice);
         }
         mains::name_mains(&mut self.candidates, resolution_hz);
@@ -302,7 +304,8 @@ impl Assembler {
     }
 }
 
-/// Finds detuned voices, names their aliases, and drops what are their partials.
+/// Finds voices beside the one that was traced, names their aliases, and drops what are their partials. Beside others the
+/// traced one's partials are no sure guide to its fundamental, so it is traced once more, by its lines.
 fn name_voices(
     search: &Search<'_>,
     tone: &aliases::Tone<'_>,
@@ -318,18 +321,32 @@ fn name_voices(
         });
         let Some(voice) = found else { return };
         known[count] = voice;
-        own.clear();
-        own.extend(search.own.iter().filter_map(|first| {
-            let line = search.line(voice, first.n)?;
-            let sd_hz = voices::LINE_SD * search.resolution_hz;
-            Some(Own { n: first.n, hz: line.hz, sd_hz, amplitude: line.amplitude })
-        }));
-        let tone = aliases::Tone { own, f0: voice.f0, f0_sd: voice.f0_sd, ..*tone };
-        aliases::name_aliases(candidates, &tone);
-        candidates.retain(|c| {
-            c.kind != StrayKind::Unexplained || !search.is_partial_of(voice, c.line.hz, VOICES_OWN)
-        });
+        if count == 1 {
+            let first = Voice { f0_sd: voice.f0_sd, ..known[0] };
+            name_voice(search, first, tone, candidates, own);
+        }
+        name_voice(search, voice, tone, candidates, own);
     }
+}
+
+fn name_voice(
+    search: &Search<'_>,
+    voice: Voice,
+    tone: &aliases::Tone<'_>,
+    candidates: &mut Vec<Candidate>,
+    own: &mut Vec<Own>,
+) {
+    own.clear();
+    own.extend(search.own.iter().filter_map(|first| {
+        let line = search.line(voice, first.n)?;
+        let sd_hz = voices::LINE_SD * search.resolution_hz;
+        Some(Own { n: first.n, hz: line.hz, sd_hz, amplitude: line.amplitude })
+    }));
+    let tone = aliases::Tone { own, f0: voice.f0, f0_sd: voice.f0_sd, ..*tone };
+    aliases::name_aliases(candidates, &tone);
+    candidates.retain(|c| {
+        c.kind != StrayKind::Unexplained || !search.is_partial_of(voice, c.line.hz, VOICES_OWN)
+    });
 }
 
 /// Whether a line is one of the aliases among the candidates, which rise by frequency.

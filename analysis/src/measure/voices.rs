@@ -109,8 +109,8 @@ impl Search<'_> {
         for own in self.own.iter().filter(|own| own.n <= HIGHEST) {
             let order = self.order(own.n);
             let hz = order * f0;
-            let others = known.iter().map(|voice| order * voice.f0).chain([own.hz]);
-            let nearest = others.map(|other| (other - hz).abs()).fold(f64::INFINITY, f64::min);
+            let others = known.iter().map(|voice| (order * voice.f0 - hz).abs());
+            let nearest = others.fold(f64::INFINITY, f64::min);
             if nearest < APART * self.resolution_hz {
                 continue;
             }

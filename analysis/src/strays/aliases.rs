@@ -92,10 +92,11 @@ fn turned_hz(hz: f64, sample_rate_hz: f64) -> f64 {
 }
 
 /// Names the aliases among the lines that have no explanation yet, sorted by frequency, and drops those that turn out to be
-/// partials in their place.
-pub(crate) fn name_aliases(candidates: &mut Vec<Candidate>, tone: &Tone<'_>) {
+/// partials in their place. Gives the fundamental in Hz and the inharmonicity that explain
+/// most of them, where there was anything to explain.
+pub(crate) fn name_aliases(candidates: &mut Vec<Candidate>, tone: &Tone<'_>) -> Option<(f64, f64)> {
     if candidates.is_empty() || tone.own.is_empty() {
-        return;
+        return None;
     }
     for candidate in candidates.iter_mut() {
         candidate.traced = (0, 0);
@@ -113,7 +114,7 @@ pub(crate) fn name_aliases(candidates: &mut Vec<Candidate>, tone: &Tone<'_>) {
             tracer.consider(told, candidates, &mut best);
         }
     }
-    let Some((model, _)) = best else { return };
+    let (model, _) = best?;
     let trace = tracer.run(model, candidates, ORDERS);
     let believed = trace.tests.iter().any(|&(found, chance)| beyond_chance(found, chance));
     let nyquist = 0.5 * tone.sample_rate_hz;
@@ -127,6 +128,7 @@ pub(crate) fn name_aliases(candidates: &mut Vec<Candidate>, tone: &Tone<'_>) {
         }
         by != tracer.number || hz > nyquist
     });
+    Some((trace.model.f0, trace.model.b))
 }
 
 /// Amplitude of the weakest of the partials that are trusted.

@@ -3,7 +3,7 @@
 use std::sync::Arc;
 
 use plumbtone_analysis::signals::{
-    NaiveWave, Random, Shape, WavePartial, add_noise, narrow, sample_count,
+    NaiveWave, Random, Shape, WavePartial, add, add_noise, narrow, sample_count,
 };
 use plumbtone_analysis::{Note, Settings, SettingsError, StrayKind};
 use rayon::prelude::*;
@@ -16,6 +16,9 @@ use crate::take::{Take, cents};
 const DURATION_S: f64 = 3.0;
 /// Fundamentals, in Hz.
 const F0_HZ: (f64, f64) = (55.0, 4_186.0);
+/// Fundamentals of detuned voices, in Hz, and the cents between neighbours: 4 resolutions and more.
+const VOICES_HZ: (f64, f64) = (220.0, 1_800.0);
+const VOICES_CENTS: (f64, f64) = (12.0, 20.0);
 /// Levels below the strongest partial down to which aliases are due, in dB.
 const DUE_DB: [f64; 2] = [-40.0, -60.0];
 /// Level below the strongest partial down to which a named alias counts as true, in dB.
@@ -60,19 +63,64 @@ fn one(seed: u64) -> Result<AliasFigures, SettingsError> {
         peak: random.between(0.1, 0.8),
         start_turns: random.uniform(),
     };
-    let name: Arc<str> = format!(
-        "seed {seed}: {:?}, f0 {:.3} Hz, {} Hz",
-        wave.shape, wave.f0_hz, wave.sample_rate_hz
-    )
-    .into();
-    let mut sound = wave.render(sample_count(DURATION_S, wave.sample_rate_hz));
-    add_noise(&mut random, &mut sound, 80.0);
-    let take = Take::of(&Settings::new(wave.sample_rate_hz), &narrow(&sound))?;
-    let right = take.longest_note().filter(|note| cents(note.f0_hz, wave.f0_hz).abs() < 50.0);
+    measure(seed, &mut random, &[wave])
+}
+
+/// The same on two to four equal waves, detuned against each other.
+///
+/// # Errors
+/// Settings that the engine refuses.
+pub fn detuned_aliases(draw: Draw) -> Result<AliasFigures, SettingsError> {
+    let all: Result<Vec<_>, _> = draw.seeds().into_par_iter().map(voices).collect();
+    Ok(all?.into_iter().fold(AliasFigures::default(), AliasFigures::plus))
+}
+
+fn voices(seed: u64) -> Result<AliasFigures, SettingsError> {
+    let mut random = Random::new(seed);
+    let count = random.pick(&[2, 3, 4]);
+    let apart_cents = random.between(VOICES_CENTS.0, VOICES_CENTS.1);
+    let lowest = NaiveWave {
+        sample_rate_hz: random.pick(&[44_100.0, 48_000.0]),
+        shape: random.pick(&[Shape::Saw, Shape::Square, Shape::Pulse(0.37)]),
+        f0_hz: random.log_between(VOICES_HZ.0, VOICES_HZ.1),
+        peak: 0.8 / f64::from(count),
+        start_turns: 0.0,
+    };
+    let waves: Vec<NaiveWave> = (0..count)
+        .map(|k| NaiveWave {
+            f0_hz: lowest.f0_hz * (apart_cents * f64::from(k) / 1200.0).exp2(),
+            start_turns: random.uniform(),
+            ..lowest
+        })
+        .collect();
+    measure(seed, &mut random, &waves)
+}
+
+/// Measures waves of one shape that sound together.
+fn measure(
+    seed: u64,
+    random: &mut Random,
+    waves: &[NaiveWave],
+) -> Result<AliasFigures, SettingsError> {
+    let NaiveWave { sample_rate_hz, shape, f0_hz, .. } = waves[0];
+    let name: Arc<str> =
+        format!("seed {seed}: {} x {shape:?}, f0 {f0_hz:.3} Hz, {sample_rate_hz} Hz", waves.len())
+            .into();
+    let count = sample_count(DURATION_S, sample_rate_hz);
+    let mut sound = vec![0.0; count];
+    for wave in waves {
+        add(&mut sound, &wave.render(count));
+    }
+    add_noise(random, &mut sound, 80.0);
+    let take = Take::of(&Settings::new(sample_rate_hz), &narrow(&sound))?;
+    let near = |note: &&Note| waves.iter().any(|wave| cents(note.f0_hz, wave.f0_hz).abs() < 50.0);
+    let right = take.longest_note().filter(near);
     let mut figures = AliasFigures::default();
     figures.right.push(right.is_some(), &name);
     if let Some(note) = right {
-        figures.judge(&name, &wave.partials(TRUE_DB), note);
+        let truths: Vec<WavePartial> =
+            waves.iter().flat_map(|wave| wave.partials(TRUE_DB)).collect();
+        figures.judge(&name, &truths, note);
     }
     Ok(figures)
 }
@@ -99,10 +147,10 @@ impl AliasFigures {
                 let stronger = by_strength[..rank].iter();
                 stronger.map(|other| other.frequency_hz - truth.frequency_hz).all(far)
             };
-            let due = by_strength.iter().enumerate().filter(|&(rank, truth)| {
+            let strong = by_strength.iter().enumerate().take_while(|(_, t)| t.amplitude >= floor);
+            let due = strong.filter(|&(rank, truth)| {
                 // A partial folded to 0 Hz has no place of its own.
-                let own_place = apart(rank, truth) && far(truth.frequency_hz / 2.0);
-                truth.folds > 0 && truth.amplitude >= floor && own_place
+                truth.folds > 0 && far(truth.frequency_hz / 2.0) && apart(rank, truth)
             });
             for (_, truth) in due.take(DUE_MAX) {
                 tally.push(named(note, truth), name);

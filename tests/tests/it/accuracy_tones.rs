@@ -59,6 +59,18 @@ fn aliases_are_named() {
 }
 
 #[test]
+fn aliases_of_detuned_voices_are_named() {
+    let f = figures::detuned_aliases(Draw { seed: 7_500, count: 16 }).unwrap();
+    let mut verdicts = Verdicts::default();
+    // Three and four equal voices that beat down to nothing are cut into notes too short for the weaker lines.
+    verdicts.at_least_percent("notes with the right f0", &f.right, 90.0);
+    verdicts.at_least_percent("aliases named down to -40 dB", &f.named[0], 92.0);
+    verdicts.at_least_percent("aliases named down to -60 dB", &f.named[1], 80.0);
+    verdicts.at_least_percent("named aliases that are one", &f.truly, 97.0);
+    verdicts.assert_all_reached();
+}
+
+#[test]
 fn mains_hum_is_named() {
     let named = figures::hum(Draw { seed: 8_000, count: 24 }).unwrap();
     let mut verdicts = Verdicts::default();

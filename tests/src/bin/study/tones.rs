@@ -57,8 +57,13 @@ pub(crate) fn decays(draw: Draw, worst: usize) -> Printed {
 
 /// Waves sampled without a band limit.
 pub(crate) fn aliases(draw: Draw, worst: usize) -> Printed {
-    let f = figures::aliases(draw)?;
-    heading("Naive saw, square, pulse");
+    alias_rows("Naive saw, square, pulse", &figures::aliases(draw)?, worst);
+    alias_rows("The same, two to four detuned voices", &figures::detuned_aliases(draw)?, worst);
+    Ok(())
+}
+
+fn alias_rows(title: &str, f: &figures::AliasFigures, worst: usize) {
+    heading(title);
     row("notes with a gross f0 error or none", &misses(&f.right), "0");
     worst_misses(&f.right, worst);
     for (tally, (name, target)) in f.named.iter().zip([
@@ -73,7 +78,6 @@ pub(crate) fn aliases(draw: Draw, worst: usize) -> Printed {
     row("strays that are partials in their place", &misses(&f.stray), "(none)");
     worst_misses(&f.stray, worst);
     row("strays left unexplained", &f.unexplained.to_string(), "(few)");
-    Ok(())
 }
 
 /// Mains hum.
