@@ -10,10 +10,11 @@ mod press;
 mod stored;
 
 use std::sync::{Arc, Mutex, MutexGuard, PoisonError, TryLockError};
-use std::thread::{self, JoinHandle};
 
 use nice_plug::params::persist::PersistentField;
 use serde::{Deserialize, Serialize};
+
+use crate::report_files::Threads;
 
 pub use self::capture::{COLOURS, Capture, Place};
 pub(crate) use self::press::Press;
@@ -36,7 +37,7 @@ struct Shelf {
     revision: u64,
     told: Option<Told>,
     /// What is being read or written.
-    errands: Vec<JoinHandle<()>>,
+    errands: Threads,
 }
 
 /// What a session keeps of the captures, and what an exported file holds.
@@ -86,7 +87,7 @@ impl Captures {
             Err(TryLockError::Poisoned(poisoned)) => poisoned.into_inner(),
             Err(TryLockError::WouldBlock) => return,
         };
-        snapshot.busy = shelf.errands.iter().any(|errand| !errand.is_finished());
+        snapshot.busy = shelf.errands.is_busy();
         if snapshot.revision != Some(shelf.revision) {
             snapshot.revision = Some(shelf.revision);
             snapshot.captures.clone_from(&shelf.kept.captures);
@@ -206,22 +207,15 @@ impl Captures {
 
     /// Waits for the files that are being read or written.
     pub(crate) fn finish_errands(&self) {
-        let errands = core::mem::take(&mut self.lock().errands);
-        for errand in errands {
-            // One that panicked has told nothing, and there is nothing to add.
-            let _ = errand.join();
-        }
+        let errands = self.lock().errands.take();
+        errands.finish();
     }
 
     fn run(&self, errand: impl FnOnce(&Self) + Send + 'static) {
         let captures = self.clone();
-        let thread = thread::Builder::new().name("plumbtone-captures".to_owned());
-        let spawned = thread.spawn(move || errand(&captures));
         let mut shelf = self.lock();
-        shelf.errands.retain(|errand| !errand.is_finished());
-        match spawned {
-            Ok(errand) => shelf.errands.push(errand),
-            Err(error) => shelf.tell(false, format!("That could not be begun: {error}.")),
+        if let Err(error) = shelf.errands.start(move || errand(&captures)) {
+            shelf.tell(false, format!("That could not be begun: {error}."));
         }
     }
 

@@ -53,7 +53,7 @@ impl Place {
 
     /// The time as a file says it.
     pub(crate) fn stamp(&self) -> String {
-        format!("{}Z", self.time(('-', 'T', ':')))
+        iso(self.time)
     }
 
     /// Writes files by their endings. Gives where they are, without endings.
@@ -95,22 +95,26 @@ impl Place {
         let clean: String =
             self.title().chars().map(|c| if allowed(c) { c } else { '_' }).take(NAME_MAX).collect();
         // A name that begins with a dot would be hidden.
-        format!("{} {}", clean.trim_start_matches('.').trim(), self.time(('-', ' ', '-')))
+        format!("{} {}", clean.trim_start_matches('.').trim(), written(self.time, ('-', ' ', '-')))
     }
+}
 
-    /// The time in UTC; `gap` stands between its parts.
-    fn time(&self, (dash, gap, colon): (char, char, char)) -> String {
-        let t = self.time;
-        format!(
-            "{:04}{dash}{:02}{dash}{:02}{gap}{:02}{colon}{:02}{colon}{:02}",
-            t.year(),
-            u8::from(t.month()),
-            t.day(),
-            t.hour(),
-            t.minute(),
-            t.second()
-        )
-    }
+/// A time as text, with these signs between its parts.
+fn written(t: OffsetDateTime, (dash, gap, colon): (char, char, char)) -> String {
+    format!(
+        "{:04}{dash}{:02}{dash}{:02}{gap}{:02}{colon}{:02}{colon}{:02}",
+        t.year(),
+        u8::from(t.month()),
+        t.day(),
+        t.hour(),
+        t.minute(),
+        t.second()
+    )
+}
+
+/// A time in UTC as ISO 8601 has it.
+pub(crate) fn iso(time: OffsetDateTime) -> String {
+    format!("{}Z", written(time, ('-', 'T', ':')))
 }
 
 /// Writes all files of a name; false when one of them is there already.
@@ -143,7 +147,8 @@ fn publish(folder: &Path, name: &str, contents: &[(&str, String)]) -> io::Result
     Ok(true)
 }
 
-fn new_file(folder: &Path) -> io::Result<NamedTempFile> {
+/// A file that is not there yet: it appears under its name when it is whole, or never.
+pub(crate) fn new_file(folder: &Path) -> io::Result<NamedTempFile> {
     let mut builder = tempfile::Builder::new();
     #[cfg(unix)]
     {
@@ -154,10 +159,45 @@ fn new_file(folder: &Path) -> io::Result<NamedTempFile> {
     builder.prefix(".plumbtone-").tempfile_in(folder)
 }
 
+/// Threads that have to do with files.
+#[derive(Debug, Default)]
+pub(crate) struct Threads(Vec<JoinHandle<()>>);
+
+impl Threads {
+    /// Does something on a thread of its own.
+    ///
+    /// # Errors
+    /// There can be no thread.
+    pub(crate) fn start(&mut self, work: impl FnOnce() + Send + 'static) -> io::Result<()> {
+        self.0.retain(|thread| !thread.is_finished());
+        let thread = std::thread::Builder::new().name("plumbtone-files".to_owned());
+        self.0.push(thread.spawn(work)?);
+        Ok(())
+    }
+
+    /// The threads, to be waited for without a lock held.
+    pub(crate) fn take(&mut self) -> Self {
+        core::mem::take(self)
+    }
+
+    /// Whether something is being done.
+    pub(crate) fn is_busy(&self) -> bool {
+        self.0.iter().any(|thread| !thread.is_finished())
+    }
+
+    /// Waits until all of it is done.
+    pub(crate) fn finish(self) {
+        for thread in self.0 {
+            // One that panicked has told nothing, and there is nothing to add.
+            let _ = thread.join();
+        }
+    }
+}
+
 /// The threads that write, and what came of the last one.
 #[derive(Debug, Default)]
 pub(crate) struct Writers {
-    threads: Vec<JoinHandle<()>>,
+    threads: Threads,
     told: Arc<Mutex<Option<Told>>>,
 }
 
@@ -167,23 +207,20 @@ impl Writers {
         &mut self,
         write: impl FnOnce() -> Result<String, String> + Send + 'static,
     ) {
-        self.threads.retain(|thread| !thread.is_finished());
         let told = Arc::clone(&self.told);
-        let thread = std::thread::Builder::new().name("plumbtone-report".to_owned());
-        match thread.spawn(move || tell(&told, write())) {
-            Ok(thread) => self.threads.push(thread),
-            Err(error) => tell(&self.told, Err(error.to_string())),
+        if let Err(error) = self.threads.start(move || tell(&told, write())) {
+            tell(&self.told, Err(error.to_string()));
         }
     }
 
     /// The threads, to be waited for without a lock held.
-    pub(crate) fn take(&mut self) -> Vec<JoinHandle<()>> {
-        core::mem::take(&mut self.threads)
+    pub(crate) fn take(&mut self) -> Threads {
+        self.threads.take()
     }
 
     /// Whether something is being written.
     pub(crate) fn is_busy(&self) -> bool {
-        self.threads.iter().any(|thread| !thread.is_finished())
+        self.threads.is_busy()
     }
 
     /// Brings what was told up to date, unless somebody else is at it just now.
@@ -191,14 +228,6 @@ impl Writers {
         if let Ok(told) = self.told.try_lock() {
             to.clone_from(&told);
         }
-    }
-}
-
-/// Waits until all of it is written.
-pub(crate) fn finish(threads: Vec<JoinHandle<()>>) {
-    for thread in threads {
-        // A writer that panicked has told nothing, and there is nothing to add.
-        let _ = thread.join();
     }
 }
 

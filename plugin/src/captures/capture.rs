@@ -11,6 +11,7 @@ use time::OffsetDateTime;
 
 use super::NAME_MAX;
 use crate::readout::Readout;
+use crate::report_files;
 use crate::session::SessionPosition;
 
 /// Colours that a capture can have, each with a shape of its own.
@@ -112,7 +113,7 @@ impl Capture {
             number: 0,
             name: String::new(),
             colour: 0,
-            time: now(),
+            time: report_files::iso(OffsetDateTime::from(SystemTime::now())),
             place: Place::of(&readout.session),
             note: nearest.map(|nearest| nearest.note.to_string()),
             cents: nearest.map(|nearest| nearest.cents),
@@ -249,19 +250,6 @@ impl StrayRecord {
         };
         Stray { frequency_hz: self.frequency_hz, level_dbfs: self.level_dbfs, kind }
     }
-}
-
-fn now() -> String {
-    let t = OffsetDateTime::from(SystemTime::now());
-    format!(
-        "{:04}-{:02}-{:02}T{:02}:{:02}:{:02}Z",
-        t.year(),
-        u8::from(t.month()),
-        t.day(),
-        t.hour(),
-        t.minute(),
-        t.second()
-    )
 }
 
 #[cfg(test)]

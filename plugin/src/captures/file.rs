@@ -4,7 +4,7 @@ use std::fs::File;
 use std::io::{Read as _, Write as _};
 use std::path::Path;
 
-use tempfile::NamedTempFile;
+use crate::report_files::new_file;
 
 /// Largest file read: many times what a full shelf takes.
 const BYTES_MAX: u64 = 16 << 20;
@@ -32,7 +32,7 @@ pub(super) fn read(path: &str) -> Result<String, String> {
 pub(super) fn write(path: &str, text: &str) -> Result<(), String> {
     let folder = whole(path)?;
     let write = || {
-        let mut file = NamedTempFile::new_in(folder)?;
+        let mut file = new_file(folder)?;
         file.write_all(text.as_bytes())?;
         file.as_file().sync_all()?;
         file.persist_noclobber(path).map_err(|error| error.error)

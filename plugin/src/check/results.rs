@@ -10,7 +10,7 @@ use serde::{Deserialize, Serialize};
 
 use super::report::{self, Job};
 use super::result::{COMMENT_MAX, CheckResult, VerdictWord};
-use crate::report_files::{self, Place, Told, Writers};
+use crate::report_files::{Place, Told, Writers};
 
 /// Version of the stored form. A newer one is read as far as it is understood.
 pub(super) const FORMAT: u64 = 1;
@@ -173,7 +173,7 @@ impl Results {
     /// Waits for the reports that are being written.
     pub(crate) fn finish_reports(&self) {
         let threads = self.lock().writers.take();
-        report_files::finish(threads);
+        threads.finish();
     }
 
     /// A bounce has ended in which these results came.

@@ -11,7 +11,7 @@ use serde::{Deserialize, Serialize};
 
 use super::csv;
 use super::row::Row;
-use crate::report_files::{self, Place, Told, Writers};
+use crate::report_files::{Place, Told, Writers};
 
 /// Version of the stored form. A newer one is read as far as it is understood.
 pub(super) const FORMAT: u64 = 1;
@@ -146,7 +146,7 @@ impl Sheet {
     /// Waits for the files that are being written.
     pub(crate) fn finish_reports(&self) {
         let threads = self.lock().writers.take();
-        report_files::finish(threads);
+        threads.finish();
     }
 
     /// Whether it does.
