@@ -101,7 +101,6 @@ impl Delivery {
         self.readout.played = None;
         self.held.clear();
         self.anchors.clear();
-        self.checks.start();
         self.stand(Condition::Waiting);
     }
 

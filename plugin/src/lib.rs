@@ -13,6 +13,7 @@ mod convert;
 mod delivery;
 pub mod editor;
 mod marks;
+mod midi_out;
 pub mod offset;
 pub mod parameters;
 mod plumbtone;
@@ -24,6 +25,7 @@ mod state;
 mod status;
 mod tap;
 pub mod trail;
+mod turns;
 
 pub use plumbtone::Plumbtone;
 

@@ -14,6 +14,7 @@ use crate::controls::Controls;
 use crate::convert::index;
 use crate::delivery::Delivery;
 use crate::editor::{self, Window};
+use crate::midi_out::MidiOut;
 use crate::parameters::Parameters;
 use crate::pool::Place;
 use crate::readings_log::ReadingsLog;
@@ -21,7 +22,7 @@ use crate::readout::Readout;
 use crate::session::Transport;
 use crate::state;
 use crate::status::Status;
-use crate::tap::{Format, Note, Patience, Tap};
+use crate::tap::{Format, Patience, Tap};
 use crate::trail::Trail;
 
 /// An instance of the plugin. It belongs to the audio thread while that runs.
@@ -31,6 +32,7 @@ pub struct Plumbtone {
     status: Arc<Status>,
     place: Place,
     tap: Option<Tap>,
+    midi_out: MidiOut,
     /// For the editor, until the host asks for it.
     readout: Option<Output<Readout>>,
     trail: Arc<Mutex<Trail>>,
@@ -53,6 +55,7 @@ impl Default for Plumbtone {
             trail,
             place: Place::take(Analysis::new(Analyzer::new, delivery)),
             tap: None,
+            midi_out: MidiOut::new(),
             readout: Some(output),
             repaint,
         }
@@ -108,7 +111,9 @@ impl Plugin for Plumbtone {
     const VERSION: &'static str = env!("CARGO_PKG_VERSION");
 
     const AUDIO_IO_LAYOUTS: &'static [AudioIOLayout] = &[layout(2, "Stereo"), layout(1, "Mono")];
-    const MIDI_INPUT: MidiConfig = MidiConfig::Basic;
+    /// All of it, not only notes: a host that sends a track's MIDI through takes what does not come out as not there.
+    const MIDI_INPUT: MidiConfig = MidiConfig::MidiCCs;
+    const MIDI_OUTPUT: MidiConfig = MidiConfig::MidiCCs;
     /// Parameter changes reach the tap at their sample, whatever the block size.
     const SAMPLE_ACCURATE_AUTOMATION: bool = true;
 
@@ -153,6 +158,7 @@ impl Plugin for Plumbtone {
             self.place.install(intake);
             self.tap = Some(tap);
         }
+        self.midi_out.start();
         true
     }
 
@@ -160,6 +166,7 @@ impl Plugin for Plumbtone {
         if let Some(tap) = &mut self.tap {
             tap.start();
         }
+        self.midi_out.start();
     }
 
     fn process(
@@ -168,13 +175,16 @@ impl Plugin for Plumbtone {
         _aux: &mut AuxiliaryBuffers<'_>,
         context: &mut impl ProcessContext<Self>,
     ) -> ProcessStatus {
-        if let Some(tap) = &mut self.tap {
-            let controls = Controls::of(&self.parameters);
+        let Self { parameters, status, tap, midi_out, .. } = self;
+        midi_out.take(context, status);
+        if let Some(tap) = tap {
+            let controls = Controls::of(parameters);
             let transport = Transport::of(context.transport());
-            let notes =
-                std::iter::from_fn(|| context.next_event()).filter_map(|event| note(&event));
-            tap.block(buffer.as_slice_immutable(), &controls, &transport, notes);
+            tap.block(buffer.as_slice_immutable(), &controls, &transport, midi_out.notes());
+            tap.wait_for_turns();
         }
+        let due = || tap.as_mut().and_then(Tap::due);
+        midi_out.send(&parameters.midi, due, context, status);
         ProcessStatus::Normal
     }
 
@@ -198,7 +208,7 @@ impl ClapPlugin for Plumbtone {
     ];
 
     fn remote_controls(&self, context: &mut impl RemoteControlsContext) {
-        let Parameters { tuning, analysis, check, .. } = &*self.parameters;
+        let Parameters { tuning, analysis, check, midi, .. } = &*self.parameters;
         context.add_section("Plumbtone", |section| {
             section.add_page("Analysis", |page| {
                 page.add_param(&analysis.channel);
@@ -215,6 +225,9 @@ impl ClapPlugin for Plumbtone {
                 page.add_param(&check.tolerance);
                 page.add_param(&check.reference);
                 page.add_param(&check.reference_pitch);
+                page.add_param(&midi.output);
+                page.add_param(&midi.number);
+                page.add_param(&midi.channel);
             });
         });
     }
@@ -234,16 +247,4 @@ fn patience(api: PluginApi, mode: ProcessMode) -> Patience {
         (_, ProcessMode::Offline) => Patience::Always,
         (_, ProcessMode::Realtime | ProcessMode::Buffered) => Patience::Never,
     }
-}
-
-/// A key that went down or up.
-fn note(event: &NoteEvent<()>) -> Option<Note> {
-    let (timing, key, down) = match event {
-        NoteEvent::NoteOn { timing, key, .. } => (timing, key, true),
-        NoteEvent::NoteOff { timing, key, .. } | NoteEvent::Choke { timing, key, .. } => {
-            (timing, key, false)
-        }
-        _ => return None,
-    };
-    Some(Note { offset: index(u64::from(*timing)), key: key.number()?, down })
 }

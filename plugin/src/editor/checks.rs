@@ -1,11 +1,12 @@
 //! The side panel's drift checks: results, what is done with them, and their reports.
 
+mod midi;
 mod reports;
 mod rows;
 
 use egui::{Align2, Color32, Pos2, Rect, RichText, ScrollArea, Shape, Stroke, Ui, pos2, vec2};
 
-use super::screen::Shown;
+use super::field::Bench;
 use super::steady::signed;
 use super::theme::{FIGURE, PAD, Palette, SMALL, sans};
 use crate::check::{CheckResult, Results, Snapshot, VerdictWord};
@@ -55,13 +56,8 @@ impl Checks {
 }
 
 /// Draws it.
-pub(crate) fn show(
-    ui: &mut Ui,
-    rect: Rect,
-    checks: &mut Checks,
-    shown: &Shown<'_>,
-    palette: &Palette,
-) {
+pub(crate) fn show(ui: &mut Ui, rect: Rect, checks: &mut Checks, bench: &mut Bench<'_>) {
+    let palette = bench.palette;
     let area = rect.shrink2(vec2(PAD, 0.0));
     let mut whole = ui.new_child(egui::UiBuilder::new().max_rect(area));
     // A fade in the toolkit's colour would not be the card's.
@@ -72,11 +68,12 @@ pub(crate) fn show(
         ui.set_width(area.width() - BAR);
         ui.spacing_mut().item_spacing = vec2(6.0, 5.0);
         ui.add_space(8.0);
-        let results = &shown.parameters.results;
+        let results = &bench.parameters.results;
         head(ui, checks, palette);
         rows::show(ui, checks, results, palette);
         passes(ui, checks, results, palette);
         reports::show(ui, checks, results, palette);
+        midi::show(ui, bench);
         ui.add_space(8.0);
     });
     if checks.snapshot.writing {

@@ -63,7 +63,7 @@ pub(crate) fn show(
     let body = rect.with_min_y(rect.top() + TABS).with_max_y(rect.bottom() - ACTIONS);
     match tab {
         Tab::Sound => sound::show(ui, body, shown, figures, palette),
-        Tab::Checks => checks::show(ui, body, checks, shown, palette),
+        Tab::Checks => checks::show(ui, body, checks, bench),
         Tab::Settings => settings::show(ui, body, look, bench),
     }
     copies(ui, rect.with_min_y(rect.bottom() - ACTIONS), palette)

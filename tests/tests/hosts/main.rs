@@ -5,11 +5,13 @@
 mod allocations;
 mod automation;
 mod bundles;
+mod bundles_checks;
 mod checks;
 mod editor;
 mod lifecycle;
 mod live;
 mod many;
+mod midi_out;
 mod pass_through;
 mod rig;
 mod session;
