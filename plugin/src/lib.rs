@@ -29,5 +29,5 @@ mod turns;
 
 pub use plumbtone::Plumbtone;
 
-nice_plug::nice_export_clap!(Plumbtone);
-nice_plug::nice_export_vst3!(Plumbtone);
+nice_plug::nice_export_clap!(Plumbtone<true>);
+nice_plug::nice_export_vst3!(Plumbtone<false>);

@@ -7,7 +7,6 @@ use nice_plug::prelude::*;
 
 use crate::convert::index;
 use crate::parameters::{MidiOutput, MidiParameters};
-use crate::plumbtone::Plumbtone;
 use crate::status::Status;
 use crate::tap::{Due, Note};
 
@@ -33,9 +32,9 @@ enum Message {
 }
 
 impl MidiOut {
-    pub(crate) fn new() -> Self {
-        let input = Vec::with_capacity(Plumbtone::INPUT_EVENT_CAPACITY);
-        Self { input, outside: false, on: None }
+    /// With memory for so many events of a block.
+    pub(crate) fn new(capacity: usize) -> Self {
+        Self { input: Vec::with_capacity(capacity), outside: false, on: None }
     }
 
     /// A new stream begins: no check is outside in it. What is on is switched off with its first block.
@@ -44,7 +43,11 @@ impl MidiOut {
     }
 
     /// Takes in what comes with a block.
-    pub(crate) fn take(&mut self, context: &mut impl ProcessContext<Plumbtone>, status: &Status) {
+    pub(crate) fn take<P: Plugin<SysExMessage = ()>>(
+        &mut self,
+        context: &mut impl ProcessContext<P>,
+        status: &Status,
+    ) {
         self.input.clear();
         while let Some(event) = context.next_event() {
             if self.input.len() == self.input.capacity() {
@@ -61,11 +64,11 @@ impl MidiOut {
     }
 
     /// Passes on what came in with the block, and in between sends what is due.
-    pub(crate) fn send(
+    pub(crate) fn send<P: Plugin<SysExMessage = ()>>(
         &mut self,
         parameters: &MidiParameters,
         mut due: impl FnMut() -> Option<Due>,
-        context: &mut impl ProcessContext<Plumbtone>,
+        context: &mut impl ProcessContext<P>,
         status: &Status,
     ) {
         let message = Message::of(parameters);
@@ -85,11 +88,11 @@ impl MidiOut {
 
     /// Switches on or off what should be; true when something was. What the host does not take now is tried with the next
     /// block again.
-    fn follow(
+    fn follow<P: Plugin<SysExMessage = ()>>(
         &mut self,
         message: Option<Message>,
         offset: usize,
-        context: &mut impl ProcessContext<Plumbtone>,
+        context: &mut impl ProcessContext<P>,
     ) -> bool {
         let wanted = message.filter(|_| self.outside);
         if self.on == wanted {
@@ -111,10 +114,10 @@ impl MidiOut {
     }
 
     /// Passes on the first events of the block.
-    fn pass(
+    fn pass<P: Plugin<SysExMessage = ()>>(
         &mut self,
         count: usize,
-        context: &mut impl ProcessContext<Plumbtone>,
+        context: &mut impl ProcessContext<P>,
         status: &Status,
     ) {
         for event in self.input.drain(..count) {

@@ -26,8 +26,11 @@ use crate::tap::{Format, Patience, Tap};
 use crate::trail::Trail;
 
 /// An instance of the plugin. It belongs to the audio thread while that runs.
+///
+/// `CONTROLLERS` says whether MIDI comes in with its controllers, to be passed on. In VST3 each of them would be a parameter
+/// of its own, 2080 in all, and a host that reads every parameter's texts takes a minute to load them: there, notes come in.
 #[derive(Debug)]
-pub struct Plumbtone {
+pub struct Plumbtone<const CONTROLLERS: bool> {
     parameters: Arc<Parameters>,
     status: Arc<Status>,
     place: Place,
@@ -39,7 +42,7 @@ pub struct Plumbtone {
     repaint: RepaintNotifier,
 }
 
-impl Default for Plumbtone {
+impl<const CONTROLLERS: bool> Default for Plumbtone<CONTROLLERS> {
     fn default() -> Self {
         let (input, output) = triple_buffer(&Readout::default());
         let repaint = RepaintNotifier::new();
@@ -55,14 +58,14 @@ impl Default for Plumbtone {
             trail,
             place: Place::take(Analysis::new(Analyzer::new, delivery)),
             tap: None,
-            midi_out: MidiOut::new(),
+            midi_out: MidiOut::new(Self::INPUT_EVENT_CAPACITY),
             readout: Some(output),
             repaint,
         }
     }
 }
 
-impl Plumbtone {
+impl<const CONTROLLERS: bool> Plumbtone<CONTROLLERS> {
     /// Ends the stream. All of it is measured before this returns: the host may take the instance away next.
     fn end(&mut self) {
         if let Some(tap) = &mut self.tap {
@@ -72,7 +75,7 @@ impl Plumbtone {
     }
 }
 
-impl Drop for Plumbtone {
+impl<const CONTROLLERS: bool> Drop for Plumbtone<CONTROLLERS> {
     fn drop(&mut self) {
         self.end();
         // A report that was begun is finished, whatever the host does next.
@@ -103,7 +106,7 @@ const fn layout(channels: u32, name: &'static str) -> AudioIOLayout {
     }
 }
 
-impl Plugin for Plumbtone {
+impl<const CONTROLLERS: bool> Plugin for Plumbtone<CONTROLLERS> {
     const NAME: &'static str = "Plumbtone";
     const VENDOR: &'static str = "Plumbtone";
     const URL: &'static str = "";
@@ -111,8 +114,9 @@ impl Plugin for Plumbtone {
     const VERSION: &'static str = env!("CARGO_PKG_VERSION");
 
     const AUDIO_IO_LAYOUTS: &'static [AudioIOLayout] = &[layout(2, "Stereo"), layout(1, "Mono")];
-    /// All of it, not only notes: a host that sends a track's MIDI through takes what does not come out as not there.
-    const MIDI_INPUT: MidiConfig = MidiConfig::MidiCCs;
+    /// A host that sends a track's MIDI through takes what does not come out as not there.
+    const MIDI_INPUT: MidiConfig =
+        if CONTROLLERS { MidiConfig::MidiCCs } else { MidiConfig::Basic };
     const MIDI_OUTPUT: MidiConfig = MidiConfig::MidiCCs;
     /// Parameter changes reach the tap at their sample, whatever the block size.
     const SAMPLE_ACCURATE_AUTOMATION: bool = true;
@@ -193,7 +197,7 @@ impl Plugin for Plumbtone {
     }
 }
 
-impl ClapPlugin for Plumbtone {
+impl ClapPlugin for Plumbtone<true> {
     const CLAP_ID: &'static str = "org.plumbtone.plumbtone";
     const CLAP_DESCRIPTION: Option<&'static str> =
         Some("Partials, their distance from the harmonic series, strays and pitch drift");
@@ -233,7 +237,7 @@ impl ClapPlugin for Plumbtone {
     }
 }
 
-impl Vst3Plugin for Plumbtone {
+impl Vst3Plugin for Plumbtone<false> {
     const VST3_CLASS_ID: [u8; 16] = *b"PlumbtonePlugin1";
     const VST3_SUBCATEGORIES: &'static [Vst3SubCategory] =
         &[Vst3SubCategory::Fx, Vst3SubCategory::Analyzer, Vst3SubCategory::Tools];
