@@ -18,12 +18,14 @@ mod settings;
 mod slope;
 mod sounding;
 mod spans;
+mod trace;
 
 pub use allan::OverlappingAllan;
 pub use outcome::{Drift, Outcome, Stability, Unmeasured, Verdict, Vibrato};
 pub use reference::{Expected, Reference};
 pub use settings::CheckSettings;
 pub use spans::Span;
+pub use trace::{Column, Trace};
 
 use crate::reading::{Gap, Reading, State};
 use crate::settings::SettingsError;

@@ -16,7 +16,9 @@ mod stored;
 
 use std::collections::VecDeque;
 
-use plumbtone_analysis::check::{Check, CheckSettings, CheckSink, Heard, Reference, Verdict};
+use plumbtone_analysis::check::{
+    Check, CheckSettings, CheckSink, Heard, Reference, Trace, Verdict,
+};
 use plumbtone_analysis::tuning::Tuning;
 use plumbtone_analysis::{Gap, Reading, VERSION};
 
@@ -26,7 +28,7 @@ pub use self::result::{CheckResult, Extent, InTrail, OutsideSpan, VerdictWord};
 pub use self::results::{Reports, Results, RunningCheck, Snapshot, Stored, Told};
 pub(crate) use self::stored::read;
 
-use self::curve::Tracing;
+use self::curve::COLUMNS_MAX;
 use self::places::Places;
 use crate::controls::Controls;
 use crate::convert::decimal;
@@ -78,18 +80,18 @@ struct Running {
     last: Option<(u64, u64)>,
     first: Option<(u64, u64)>,
     lost_samples: u64,
-    curve: Tracing,
+    trace: Trace,
 }
 
 /// Where a check that is on delivers.
 struct Ends<'a> {
     turns: &'a mut Teller,
-    curve: &'a mut Tracing,
+    trace: &'a mut Trace,
 }
 
 impl CheckSink for Ends<'_> {
     fn heard(&mut self, heard: &Heard) {
-        self.curve.push(heard);
+        self.trace.push(heard);
     }
 
     fn established(&mut self, position: u64) {
@@ -170,7 +172,7 @@ impl Checks {
             last: None,
             first: None,
             lost_samples: 0,
-            curve: Tracing::new(start, hop),
+            trace: Trace::new(COLUMNS_MAX),
         });
     }
 
@@ -178,7 +180,7 @@ impl Checks {
     pub(crate) fn end(&mut self, end: u64) {
         let Some(mut running) = self.running.take() else { return };
         self.turns.know(end);
-        let mut ends = Ends { turns: &mut self.turns, curve: &mut running.curve };
+        let mut ends = Ends { turns: &mut self.turns, trace: &mut running.trace };
         running.check.finish(&mut ends);
         if let Some(result) = running.result(end.max(running.start)) {
             self.made.push(self.results.add(result));
@@ -254,7 +256,7 @@ impl Running {
         let start = gap.start.max(self.start).max(known);
         if start < gap.end {
             self.lost_samples += gap.end - start;
-            let mut ends = Ends { turns, curve: &mut self.curve };
+            let mut ends = Ends { turns, trace: &mut self.trace };
             self.check.gap(&Gap { start, ..*gap }, &mut ends);
         }
     }
@@ -264,7 +266,7 @@ impl Running {
             self.keys.pop_front();
         }
         let played_hz = self.keys.front().and_then(|&(_, hz)| hz);
-        let mut ends = Ends { turns, curve: &mut self.curve };
+        let mut ends = Ends { turns, trace: &mut self.trace };
         self.check.reading_against(reading, played_hz, &mut ends);
         self.readings += 1;
         let place = (reading.centre, in_trail);
@@ -285,6 +287,12 @@ impl Running {
             reference: self.setup.name.clone(),
             from: self.first.map_or(0.0, |(_, index)| index as f64),
         }
+    }
+
+    /// The heard pitch over all of it.
+    fn curve(&self, end: u64) -> Option<Curve> {
+        let bars = self.places.bars(self.start, end);
+        Curve::of(&self.trace, bars, |at| self.places.extent(at, at).start_s)
     }
 
     /// What it comes to; nothing when there was nothing to check: no reading, or silence while the transport stood.
@@ -328,7 +336,7 @@ impl Running {
             temperament: tuning.temperament().to_string(),
             engine_version: VERSION.to_owned(),
             comment: String::new(),
-            curve: self.curve.curve(settings.sample_rate_hz, self.places.bars(self.start, end)),
+            curve: self.curve(end),
             in_trail: Some(InTrail {
                 start: first.1 as f64 - (first.0 - self.start) as f64 / settings.hop as f64,
                 end: last.1 as f64,

@@ -9,7 +9,7 @@ use std::thread::JoinHandle;
 use nice_plug::params::persist::PersistentField;
 use serde::{Deserialize, Serialize};
 
-use super::curve::COLUMNS_IN_ALL_MAX;
+use super::curve::{COLUMNS_IN_ALL_MAX, Curve};
 use super::report::{self, Job};
 use super::result::{COMMENT_MAX, CheckResult, VerdictWord};
 
@@ -259,7 +259,7 @@ impl Stored {
         self.left_out += surplus as u64;
         let mut columns = 0;
         for result in self.results.iter_mut().rev() {
-            columns += result.curve.as_ref().map_or(0, |curve| curve.columns.len());
+            columns += result.curve.as_ref().map_or(0, Curve::columns);
             if columns > COLUMNS_IN_ALL_MAX {
                 result.curve = None;
             }

@@ -92,7 +92,7 @@ fn lane(svg: &mut Svg, results: &[CheckResult], colours: &Colours) {
 fn card(svg: &mut Svg, top: f64, result: &CheckResult, colours: &Colours) -> f64 {
     let lines = lines(result);
     let text = PAD + LINE * (1 + lines.len()) as f64 + 2.0;
-    let plot = result.curve.as_ref().map_or(0.0, |_| plot::HEIGHT + plot::FOOT + 8.0);
+    let plot = result.curve.as_ref().map_or(0.0, |curve| plot::height(curve) + 8.0);
     let bottom = top + text + plot + 8.0;
     svg.card(SIDES, (top, bottom), colours);
     let x = (SIDES.0 + PAD, SIDES.1 - PAD);
@@ -129,7 +129,7 @@ fn title(svg: &mut Svg, (x, y): ((f64, f64), f64), result: &CheckResult, colours
     svg.text((x.0 + 16.0, y), result.verdict.name(), Style::new(12.0, colour).bold());
     let (start, end) = result.extent.ends();
     let told = format!("{start} \u{2013} {end}");
-    svg.text((x.0 + 112.0, y), &told, Style::new(12.0, colours.ink));
+    svg.text((x.0 + 120.0, y), &told, Style::new(12.0, colours.ink));
     let against = format!(
         "check {}, against {} \u{b1} {} ct",
         result.number, result.reference, result.tolerance_cents
@@ -160,7 +160,7 @@ fn lines(result: &CheckResult) -> Vec<(String, bool)> {
         figures.push(format!("{} samples lost", result.lost_samples));
     }
     if !figures.is_empty() {
-        lines.push((figures.join("   "), true));
+        lines.push((figures.join(" \u{b7} "), true));
     }
     if !result.spans.is_empty() {
         lines.push((spans(result), false));

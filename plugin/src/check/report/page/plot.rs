@@ -1,13 +1,14 @@
 //! The heard pitch of one check against its reference: tolerance, curve with its deviation, what is outside.
 
 use super::super::super::curve::Curve;
-use super::super::super::result::{CheckResult, clock};
+use super::super::super::result::{CheckResult, OutsideSpan, clock};
 use super::signed;
 use super::svg::{Anchor, Colours, Style, Svg};
 
-/// Height of the plot, and of what is below it.
-pub(super) const HEIGHT: f64 = 118.0;
-pub(super) const FOOT: f64 = 34.0;
+/// Height of the plot, of the labels of time below it, and of those of bars below these.
+const HEIGHT: f64 = 118.0;
+const TIME: f64 = 18.0;
+const BARS: f64 = 13.0;
 /// Room for the cents on its left.
 const LEFT: f64 = 50.0;
 /// Deviations that the shade spans each way.
@@ -15,6 +16,8 @@ const SHADE_SDS: f64 = 2.0;
 /// How much of the plot the tolerance takes at most, and the least cents from its middle to its edge.
 const ROOM: f64 = 1.6;
 const HALF_LEAST: f64 = 1.0;
+/// Shortest time without a pitch that is told, in seconds.
+const GAP_S: f64 = 0.1;
 /// Steps of the axes: cents, and seconds.
 const CENTS: [f64; 12] =
     [0.5, 1.0, 2.0, 5.0, 10.0, 20.0, 50.0, 100.0, 200.0, 500.0, 1000.0, 5000.0];
@@ -47,13 +50,17 @@ impl Frame {
     }
 }
 
+/// How high it is.
+pub(super) fn height(curve: &Curve) -> f64 {
+    HEIGHT + TIME + if curve.bars.is_empty() { 0.0 } else { BARS }
+}
+
 /// Draws it from `top` on between two places.
 pub(super) fn draw(svg: &mut Svg, result: &CheckResult, curve: &Curve, x: (f64, f64), top: f64) {
     let colours = Colours::new();
-    let ends =
-        curve.columns.iter().flatten().flat_map(|[_, sd, low, high]| {
-            [low - SHADE_SDS * sd, high + SHADE_SDS * sd].map(f64::abs)
-        });
+    let ends = curve.pieces.iter().flatten().flat_map(|[_, _, sd, low, high]| {
+        [low - SHADE_SDS * sd, high + SHADE_SDS * sd].map(f64::abs)
+    });
     let most = ends.fold(ROOM * result.tolerance_cents, f64::max);
     let frame = Frame {
         x: (x.0 + LEFT, x.1),
@@ -62,6 +69,7 @@ pub(super) fn draw(svg: &mut Svg, result: &CheckResult, curve: &Curve, x: (f64, 
         end_s: result.extent.end_s,
         half: (1.06 * most).max(HALF_LEAST),
     };
+    shades(svg, &frame, result, &colours);
     cents(svg, &frame, result.tolerance_cents, &colours);
     spans(svg, &frame, result, &colours);
     gaps(svg, &frame, curve, &colours);
@@ -89,12 +97,23 @@ fn cents(svg: &mut Svg, frame: &Frame, tolerance: f64, colours: &Colours) {
     }
 }
 
-/// What is outside: a shade over its time, a bar at the foot, and the word with its worst where there is room.
+/// Where a span begins and ends, in points.
+fn ends(frame: &Frame, span: &OutsideSpan) -> (f64, f64) {
+    let (from, to) = (frame.x(span.extent.start_s), frame.x(span.extent.end_s));
+    (from, to.max(from + 1.0))
+}
+
+/// A shade behind all, over the time of what is outside.
+fn shades(svg: &mut Svg, frame: &Frame, result: &CheckResult, colours: &Colours) {
+    for span in &result.spans {
+        svg.area(ends(frame, span), frame.y, colours.outside, 0.12);
+    }
+}
+
+/// What is outside: a bar at the foot, and the word with its worst where there is room.
 fn spans(svg: &mut Svg, frame: &Frame, result: &CheckResult, colours: &Colours) {
     for span in &result.spans {
-        let (from, to) = (frame.x(span.extent.start_s), frame.x(span.extent.end_s));
-        let x = (from, to.max(from + 1.0));
-        svg.area(x, frame.y, colours.outside, 0.12);
+        let x = ends(frame, span);
         svg.area(x, (frame.y.1 - 3.0, frame.y.1), colours.outside, 1.0);
         let worst = signed(span.worst_cents, 1);
         let text = if x.1 - x.0 > 1.6 * WORD {
@@ -113,18 +132,14 @@ fn spans(svg: &mut Svg, frame: &Frame, result: &CheckResult, colours: &Colours) 
 
 /// Where nothing was heard, in words where there is room: the curve is not drawn on.
 fn gaps(svg: &mut Svg, frame: &Frame, curve: &Curve, colours: &Colours) {
-    let at = |column: usize| frame.x(frame.start_s + column as f64 * curve.step_s);
-    let mut from = 0;
-    for run in curve.columns.chunk_by(|a, b| a.is_some() == b.is_some()) {
-        let (left, right) = (at(from), at(from + run.len()));
-        from += run.len();
-        if run[0].is_none() {
-            gap(svg, frame, (left, right), colours);
+    let mut heard_s = frame.start_s;
+    let firsts = curve.pieces.iter().filter_map(|piece| Some(piece.first()?[0]));
+    let lasts = curve.pieces.iter().filter_map(|piece| Some(piece.last()?[0]));
+    for (first_s, last_s) in firsts.zip(lasts).chain([(frame.end_s, frame.end_s)]) {
+        if first_s - heard_s > GAP_S {
+            gap(svg, frame, (frame.x(heard_s), frame.x(first_s)), colours);
         }
-    }
-    // The curve ends with what was heard last.
-    if frame.x.1 - at(from) > 2.0 {
-        gap(svg, frame, (at(from), frame.x.1), colours);
+        heard_s = last_s;
     }
 }
 
@@ -138,29 +153,21 @@ fn gap(svg: &mut Svg, frame: &Frame, x: (f64, f64), colours: &Colours) {
 
 /// The curve: the shade of its deviation, its spread within a column, and the line of its mean.
 fn pitch(svg: &mut Svg, frame: &Frame, curve: &Curve, colours: &Colours) {
-    let mut from = 0;
-    for run in curve.columns.chunk_by(|a, b| a.is_some() == b.is_some()) {
-        let at = |k: usize| frame.x(frame.start_s + (k as f64 + 0.5) * curve.step_s);
-        let heard: Vec<(f64, [f64; 4])> = run
-            .iter()
-            .enumerate()
-            .filter_map(|(k, column)| Some((at(from + k), (*column)?)))
-            .collect();
-        from += run.len();
-        let [(first, [mean, ..]), ..] = heard[..] else { continue };
+    for piece in &curve.pieces {
         let ribbon = |sds: f64| -> Vec<(f64, f64)> {
-            let upper = heard.iter().map(|(x, [_, sd, _, high])| (*x, frame.y(high + sds * sd)));
-            let lower =
-                heard.iter().rev().map(|(x, [_, sd, low, _])| (*x, frame.y(low - sds * sd)));
+            let edge = |at: f64, cents: f64| (frame.x(at), frame.y(cents));
+            let upper = piece.iter().map(|[at, _, sd, _, high]| edge(*at, high + sds * sd));
+            let lower = piece.iter().rev().map(|[at, _, sd, low, _]| edge(*at, low - sds * sd));
             upper.chain(lower).collect()
         };
-        if heard.len() == 1 {
-            svg.disc((first, frame.y(mean)), 1.0, colours.pitch, true);
+        let line: Vec<_> =
+            piece.iter().map(|[at, mean, ..]| (frame.x(*at), frame.y(*mean))).collect();
+        if let [only] = line[..] {
+            svg.disc(only, 1.0, colours.pitch, true);
             continue;
         }
         svg.shape(&ribbon(SHADE_SDS), colours.pitch, 0.22);
         svg.shape(&ribbon(0.0), colours.pitch, 0.4);
-        let line: Vec<_> = heard.iter().map(|(x, [mean, ..])| (*x, frame.y(*mean))).collect();
         svg.trace(&line, 1.4, colours.pitch);
     }
 }
