@@ -452,6 +452,45 @@ mod tests {
     }
 
     #[test]
+    fn turns_are_due_at_their_sample_and_late_ones_at_once() {
+        let status = watched();
+        let (mut tap, mut intake) = Tap::new(FORMAT, status);
+        let mut turns = intake.turns.take().unwrap();
+        turns.start(1);
+        // 1.25 s after their places: at samples 60 100 and 60 900.
+        turns.tell(100, true);
+        turns.tell(900, false);
+        let controls = Controls::default();
+        let mut found = Vec::new();
+        for number in 0..120_u64 {
+            block(&mut tap, &controls, 1.0, 512);
+            let mut room = vec![0.0; 512];
+            assert!(intake.samples.pop_entire_slice(&mut room).is_ok(), "the block came");
+            events(&mut intake);
+            while let Some(due) = tap.due() {
+                found.push((number * 512 + position(due.offset), due.late, due.outside));
+            }
+            // The worker hands them over when the second is over.
+            if number == 118 {
+                turns.publish(0, 0);
+            }
+        }
+        assert_eq!(found, [(119 * 512, true, true), (119 * 512, true, false)], "late");
+        tap.start();
+        turns.start(2);
+        turns.tell(100, true);
+        turns.publish(0, 0);
+        for number in 0..120_u64 {
+            block(&mut tap, &controls, 1.0, 512);
+            let mut room = vec![0.0; 512];
+            assert!(intake.samples.pop_entire_slice(&mut room).is_ok(), "the block came");
+            events(&mut intake);
+            let due = tap.due().map(|due| (number * 512 + position(due.offset), due.late));
+            assert_eq!(due, (number == 117).then_some((60_100, false)), "block {number}");
+        }
+    }
+
+    #[test]
     fn a_reset_ends_the_stream_before_the_next_begins() {
         let (mut tap, mut intake) = Tap::new(FORMAT, watched());
         let controls = Controls::default();

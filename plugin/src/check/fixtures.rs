@@ -66,7 +66,7 @@ fn curve(start_s: f64, end_s: f64) -> Option<Curve> {
         let share = index as f64 / count as f64;
         let wave = (25.0 * share).sin();
         let cents = if (0.33..0.67).contains(&share) { 6.4 + 0.7 * wave } else { 1.5 * wave };
-        if !(0.8..0.88).contains(&share) {
+        if !(0.8..0.9).contains(&share) {
             trace.push(&Heard {
                 position: 480 * index,
                 reference_hz: 220.0,
