@@ -31,6 +31,11 @@ enum Message {
     Controller { channel: u8, number: u8 },
 }
 
+/// Whether anything is to be sent at all.
+pub(crate) fn sends(parameters: &MidiParameters) -> bool {
+    parameters.output.value() != MidiOutput::Off
+}
+
 impl MidiOut {
     /// With memory for so many events of a block.
     pub(crate) fn new(capacity: usize) -> Self {
@@ -71,15 +76,14 @@ impl MidiOut {
         context: &mut impl ProcessContext<P>,
         status: &Status,
     ) {
-        let message = Message::of(parameters);
         // What is set may be new with this block.
-        self.follow(message, 0, context);
+        self.follow(parameters, 0, context);
         while let Some(Due { offset, late, outside }) = due() {
             let earlier =
                 self.input.iter().take_while(|event| index(event.timing().into()) < offset);
             self.pass(earlier.count(), context, status);
             self.outside = outside;
-            if self.follow(message, offset, context) && late {
+            if self.follow(parameters, offset, context) && late {
                 status.send_late();
             }
         }
@@ -90,11 +94,11 @@ impl MidiOut {
     /// block again.
     fn follow<P: Plugin<SysExMessage = ()>>(
         &mut self,
-        message: Option<Message>,
+        parameters: &MidiParameters,
         offset: usize,
         context: &mut impl ProcessContext<P>,
     ) -> bool {
-        let wanted = message.filter(|_| self.outside);
+        let wanted = if self.outside { Message::of(parameters) } else { None };
         if self.on == wanted {
             return false;
         }
@@ -120,6 +124,9 @@ impl MidiOut {
         context: &mut impl ProcessContext<P>,
         status: &Status,
     ) {
+        if count == 0 {
+            return;
+        }
         for event in self.input.drain(..count) {
             let sent = context.try_send_event(passed_on(event));
             if matches!(sent, Err((_, SendEventError::HostBufferFull))) {

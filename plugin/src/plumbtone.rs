@@ -14,7 +14,7 @@ use crate::controls::Controls;
 use crate::convert::index;
 use crate::delivery::Delivery;
 use crate::editor::{self, Window};
-use crate::midi_out::MidiOut;
+use crate::midi_out::{self, MidiOut};
 use crate::parameters::Parameters;
 use crate::pool::Place;
 use crate::readings_log::ReadingsLog;
@@ -179,16 +179,18 @@ impl<const CONTROLLERS: bool> Plugin for Plumbtone<CONTROLLERS> {
         _aux: &mut AuxiliaryBuffers<'_>,
         context: &mut impl ProcessContext<Self>,
     ) -> ProcessStatus {
-        let Self { parameters, status, tap, midi_out, .. } = self;
-        midi_out.take(context, status);
+        let Self { parameters, status, tap, midi_out: output, .. } = self;
+        output.take(context, status);
         if let Some(tap) = tap {
             let controls = Controls::of(parameters);
             let transport = Transport::of(context.transport());
-            tap.block(buffer.as_slice_immutable(), &controls, &transport, midi_out.notes());
-            tap.wait_for_turns();
+            tap.block(buffer.as_slice_immutable(), &controls, &transport, output.notes());
+            if midi_out::sends(&parameters.midi) {
+                tap.wait_for_turns();
+            }
         }
         let due = || tap.as_mut().and_then(Tap::due);
-        midi_out.send(&parameters.midi, due, context, status);
+        output.send(&parameters.midi, due, context, status);
         ProcessStatus::Normal
     }
 

@@ -217,12 +217,14 @@ impl Tap {
     fn advance(&mut self, length: u64) {
         self.at += length;
         self.status.at(self.at);
-        self.turns.remember(Sent { at: self.at, samples: self.sent, marks: self.marked });
+        if self.format.patience != Patience::Never {
+            self.turns.remember(Sent { at: self.at, samples: self.sent, marks: self.marked });
+        }
     }
 
     /// Offline, waits until all that is due in the block that was taken last has come.
     pub(crate) fn wait_for_turns(&self) {
-        if !self.turns.is_complete(self.at) && self.may_wait() {
+        if self.may_wait() && !self.turns.is_complete(self.at) {
             self.wait(|| self.turns.is_complete(self.at), || self.turns.progress());
         }
     }
@@ -231,7 +233,9 @@ impl Tap {
     pub(crate) fn due(&mut self) -> Option<Due> {
         let Turn { at, outside, .. } = self.turns.next(self.at)?;
         let offset = index(at.saturating_sub(self.from));
-        Some(Due { offset, late: at < self.from, outside })
+        // Where it may be waited for, it was not wanted before.
+        let late = at < self.from && !self.may_wait();
+        Some(Due { offset, late, outside })
     }
 
     fn has_room(&self, length: usize) -> bool {

@@ -1,6 +1,6 @@
 //! What is sent to the note output while a check is outside.
 
-use egui::{Rect, Sense, Ui, vec2};
+use egui::{Sense, Ui, vec2};
 use plumbtone_analysis::tuning::NoteName;
 
 use super::super::field::{self, Bench, Field, Place};
@@ -52,8 +52,8 @@ pub(super) fn show(ui: &mut Ui, bench: &mut Bench<'_>) {
 fn line(ui: &mut Ui, field: &Field, bench: &mut Bench<'_>) {
     let size = vec2(ui.available_width(), LINE);
     let (rect, _) = ui.allocate_exact_size(size, Sense::hover());
-    // A field's frame stands out by this much.
-    field::field(ui, Rect::from_min_max(rect.min, rect.max).shrink2(vec2(6.0, 1.0)), field, bench);
+    // Its frame stands out to either side.
+    field::field(ui, rect.with_max_x(rect.right() - 8.0), field, bench);
 }
 
 /// What is sent, in words.
