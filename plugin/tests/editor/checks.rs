@@ -81,6 +81,18 @@ fn what_is_sent_while_outside_is_chosen_from_a_list() {
     editor.get_by_label("Checks").click();
     editor.run_steps(3);
     assert!(editor.query_by_label_contains("channel:").is_none(), "off: nothing else to be set");
+    let at = editor.get_by_label("MIDI when outside: Off").rect().center();
+    editor.hover_at(at);
+    editor.step();
+    editor.event(Event::MouseWheel {
+        unit: egui::MouseWheelUnit::Line,
+        delta: vec2(0.0, -1.0),
+        phase: egui::TouchPhase::Move,
+        modifiers: egui::Modifiers::NONE,
+        source: egui::MouseWheelSource::Unknown,
+    });
+    editor.run_steps(2);
+    assert_eq!(editor.state().gestures, [], "the wheel scrolls the panel");
     editor.get_by_label("MIDI when outside: Off").click();
     editor.run_steps(2);
     editor.get_by_label("Controller").click();
