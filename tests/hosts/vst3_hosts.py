@@ -20,6 +20,10 @@ import vst3_state
 
 BLOCKS = (512, 480, 4096)
 
+# No window is opened here. Without a name the hosts' toolkit would look for a display of its own accord, and end the process
+# with whatever goes wrong there.
+os.environ["DISPLAY"] = "none"
+
 
 def noise(rate, seconds):
     generator = np.random.default_rng(7)
