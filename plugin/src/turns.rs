@@ -216,6 +216,21 @@ mod tests {
     }
 
     #[test]
+    fn the_delay_is_longer_than_what_is_looked_ahead_at_every_rate() {
+        use plumbtone_analysis::{Analyzer, Settings};
+        // A long window of the check, and as many readings as may jump away and come back.
+        let check_s = 0.65;
+        for rate in
+            [8_000.0, 22_050.0, 44_100.0, 48_000.0, 88_200.0, 96_000.0, 192_000.0, 384_000.0]
+        {
+            let engine = Analyzer::new(&Settings::new(rate)).unwrap();
+            let engine_s = engine.look_ahead() as f64 / rate;
+            let spare_s = DELAY_S - MARGIN_S - engine_s - check_s;
+            assert!(spare_s >= 0.0, "{rate} Hz: the engine looks {engine_s} s ahead");
+        }
+    }
+
+    #[test]
     fn turns_of_an_older_stream_are_dropped() {
         let (mut teller, mut listener) = turns(RATE_HZ);
         teller.start(listener.start());
