@@ -264,13 +264,13 @@ impl Analyzer {
     fn analyse(&mut self) {
         let centre = self.centre(self.analysed);
         let quiet = self.history.loud_until() + self.evidence.reach() as u64 <= centre;
-        let level_dbfs = if quiet {
+        let (level_dbfs, noise_dbfs) = if quiet {
             // Nothing in the longest frame is above the silence threshold, so nothing is transformed.
             self.evidence.restart();
-            f64::NEG_INFINITY
+            (f64::NEG_INFINITY, f64::NEG_INFINITY)
         } else {
             self.evidence.run(&self.history, centre, self.tracker.next());
-            self.evidence.level_dbfs()
+            (self.evidence.level_dbfs(), self.evidence.noise_dbfs())
         };
         if !(level_dbfs > SILENCE_DBFS) {
             self.tracker.next().clear();
@@ -280,6 +280,7 @@ impl Analyzer {
         instant.centre = centre;
         instant.level_dbfs = level_dbfs;
         instant.calm_dbfs = level_dbfs;
+        instant.noise_dbfs = noise_dbfs;
         instant.tones.clear();
         instant.model = (0.0, 0.0);
         instant.second = 0.0;
@@ -362,6 +363,7 @@ impl Analyzer {
         let reading = &mut self.reading;
         reading.centre = instant.centre;
         reading.level_dbfs = instant.level_dbfs;
+        reading.noise_dbfs = instant.noise_dbfs;
         reading.state = settled.state;
         reading.partials.clear();
         reading.strays.clear();
@@ -392,14 +394,15 @@ impl Analyzer {
         self.live.clear();
         let heard = 2 * self.evidence.reach() as u64;
         let quiet = self.history.loud_until() + heard <= self.history.end();
-        let level_dbfs = if quiet {
-            f64::NEG_INFINITY
+        let (level_dbfs, noise_dbfs) = if quiet {
+            (f64::NEG_INFINITY, f64::NEG_INFINITY)
         } else {
-            self.evidence.newest(&self.history, &mut self.live)
+            (self.evidence.newest(&self.history, &mut self.live), self.evidence.noise_dbfs())
         };
         let reading = &mut self.reading;
         reading.centre = self.history.end();
         reading.level_dbfs = level_dbfs;
+        reading.noise_dbfs = noise_dbfs;
         reading.partials.clear();
         reading.strays.clear();
         reading.pitch = None;

@@ -9,6 +9,9 @@ use crate::stiff::{CENTS_PER_NEPER, quadrature};
 /// Differences, in deviations, from which they are more than noise: by chance one in 370.
 pub const SIGNIFICANT: f64 = 3.0;
 
+/// Turns of a partial against the fundamental, in Hz, from which its phase is that of a moment and says nothing of the sound.
+const LOCKED_HZ: f64 = 0.1;
+
 /// A difference and its standard deviation, in the same unit.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Difference {
@@ -40,7 +43,7 @@ pub struct PartialDifference {
     /// Distance from the harmonic series in cents: it compares sounds of different pitch.
     pub cents: Option<Difference>,
     /// Phase in radians, -pi to pi, after the shift in time that brings the fundamentals together; `None` also when one of
-    /// the sounds has no fundamental.
+    /// the sounds has no fundamental, or when the partial turns against it in one of them: there is no phase to compare then.
     pub phase_rad: Option<Difference>,
     /// Whether the first sound has the partial, and the second.
     pub present: (bool, bool),
@@ -71,11 +74,13 @@ pub fn compare(first: &[Partial], second: &[Partial]) -> Vec<PartialDifference> 
                     let cents = |p: &Partial| (p.cents_from_harmonic, p.cents_sd);
                     Difference::of(cents(&a), cents(&b))
                 }),
-                phase_rad: both.zip(fundamentals.0.zip(fundamentals.1)).map(|((a, b), (f, g))| {
-                    let mut off = Difference::of(phase(&a, &f), phase(&b, &g));
-                    off.value -= TAU * nearest(off.value / TAU);
-                    off
-                }),
+                phase_rad: both.zip(fundamentals.0.zip(fundamentals.1)).and_then(
+                    |((a, b), (f, g))| {
+                        let mut off = Difference::of(phase(&a, &f)?, phase(&b, &g)?);
+                        off.value -= TAU * nearest(off.value / TAU);
+                        Some(off)
+                    },
+                ),
                 present: (pair.0.is_some(), pair.1.is_some()),
             }
         })
@@ -87,12 +92,17 @@ fn fundamental(partials: &[Partial]) -> Option<Partial> {
 }
 
 /// Phase against the fundamental's, and its deviation: that of an amplitude's logarithm is that of its phase in radians
-/// (D. Rife & R. Boorstyn, IEEE Trans. Inf. Theory 20(5):591-598, 1974).
-fn phase(partial: &Partial, fundamental: &Partial) -> (f64, f64) {
+/// (D. Rife & R. Boorstyn, IEEE Trans. Inf. Theory 20(5):591-598, 1974). `None` when they do not stay together.
+fn phase(partial: &Partial, fundamental: &Partial) -> Option<(f64, f64)> {
     let n = f64::from(partial.number);
+    let turns_hz = (partial.frequency_hz - n * fundamental.frequency_hz).abs();
+    let turns_sd_hz = quadrature(partial.frequency_sd_hz, n * fundamental.frequency_sd_hz);
+    if turns_hz > LOCKED_HZ + 2.0 * turns_sd_hz {
+        return None;
+    }
     let sd = |p: &Partial| (0.5 * 10f64.powf(-p.snr_db / 10.0)).sqrt();
     let own = if partial.number == 1 { 0.0 } else { quadrature(sd(partial), n * sd(fundamental)) };
-    (partial.phase_rad - n * fundamental.phase_rad, own)
+    Some((partial.phase_rad - n * fundamental.phase_rad, own))
 }
 
 /// Distance of one fundamental from another in cents, with its deviation, from (Hz, deviation in cents).
@@ -146,6 +156,17 @@ mod tests {
         assert!(changed.cents.expect("both").is_significant(), "2 cents: {changed:?}");
         assert!(changed.phase_rad.expect("both").is_significant(), "0.5 rad: {changed:?}");
         assert_eq!((new.level_db, new.present), (None, (false, true)), "only in the second");
+    }
+
+    #[test]
+    fn a_partial_that_turns_has_no_phase_to_compare() {
+        let first = [partial(1, -6.0, 0.0, 0.0), partial(2, -12.0, 0.0, 0.0)];
+        let mut second = first;
+        second[1].frequency_hz += 0.4;
+        let found = compare(&first, &second);
+        assert!(found[0].phase_rad.is_some() && found[1].phase_rad.is_none(), "{found:?}");
+        second[1].frequency_sd_hz = 0.2;
+        assert!(compare(&first, &second)[1].phase_rad.is_some(), "it may as well hold");
     }
 
     #[test]

@@ -3,6 +3,8 @@
 //! From partial numbers and peak amplitudes to the figures of [`Descriptors`]; one pass, nothing allocated. A partial
 //! that was not found counts as absent, so each figure speaks of the partials given and of no others.
 
+use crate::reading::Reading;
+
 /// What a note's partials say together. `None` where the partials needed were not found.
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
 pub struct Descriptors {
@@ -41,6 +43,16 @@ impl Descriptors {
             }
         }
         sums.descriptors(rest_power)
+    }
+
+    /// The descriptors of a reading; all that is not in its partials is its noise and its strays.
+    #[must_use]
+    pub fn of_reading(reading: &Reading) -> Self {
+        let power = |dbfs: f64| 0.5 * 10f64.powf(dbfs / 10.0);
+        let strays: f64 = reading.strays.iter().map(|stray| power(stray.level_dbfs)).sum();
+        let partials = reading.partials.iter();
+        let amplitudes = partials.map(|p| (p.number, 10f64.powf(p.level_dbfs / 20.0)));
+        Self::of(amplitudes, Some(power(reading.noise_dbfs) + strays))
     }
 }
 

@@ -203,12 +203,17 @@ impl Evidence {
     /// Level in the shortest frame in which a fundamental does not ripple: what an onset is told by.
     pub(crate) fn calm_level_dbfs(&self, f0: f64) -> f64 {
         let calm = |i: &usize| f0 > CALM_BINS * self.now.bin_hz(*i);
-        level_dbfs(&self.now.frames[(1..LONGEST).find(calm).unwrap_or(LONGEST)])
+        level_dbfs(self.now.frames[(1..LONGEST).find(calm).unwrap_or(LONGEST)].total())
     }
 
     /// Root mean square around the centre as a level in dBFS, the constant left out.
     pub(crate) fn level_dbfs(&self) -> f64 {
-        level_dbfs(&self.now.frames[1])
+        level_dbfs(self.now.frames[1].total())
+    }
+
+    /// Level of the noise between the partials, over the whole band, in dBFS.
+    pub(crate) fn noise_dbfs(&self) -> f64 {
+        level_dbfs(self.noise.total())
     }
 
     /// Refines the partials of a fundamental in the frame that suits it; says how long that frame is, in seconds.
@@ -239,7 +244,7 @@ impl Evidence {
             self.newest.pick(i, &self.noise);
         }
         self.search.run(&self.newest.view(None), out);
-        level_dbfs(&self.newest.frames[0])
+        level_dbfs(self.newest.frames[0].total())
     }
 
     /// Refines the partials of a candidate of the newest samples; says where they were measured.
@@ -268,7 +273,7 @@ fn on_comb(peak: &Peak, candidate: &Candidate) -> bool {
     (peak.hz - expected).abs() < (0.02 * expected).min(0.14 * candidate.hz)
 }
 
-/// Level of a Hann frame: a sine of amplitude A puts 1.5 A^2 into its bins.
-fn level_dbfs(frame: &Frame) -> f64 {
-    10.0 * (f64::from(frame.total()) / 1.5).log10()
+/// Level of the power in the bins of a Hann frame: a sine of amplitude A puts 1.5 A^2 into them.
+fn level_dbfs(power: f32) -> f64 {
+    10.0 * (f64::from(power) / 1.5).log10()
 }

@@ -111,6 +111,15 @@ impl NoiseFloor {
         }
     }
 
+    /// Noise power of all bins together. Of few numbers the quantile lies higher than of many: of n exponential ones the r-th
+    /// smallest is `1/n + ... + 1/(n - r + 1)` in the mean (A. Renyi, Acta Math. Hung. 4:191-231, 1953).
+    pub(crate) fn total(&self) -> f32 {
+        let count = NOISE_BLOCK / NOISE_STEP;
+        let mean: f32 = (0..=NOISE_RANK).map(|i| 1.0 / (count - i) as f32).sum();
+        let many = -(1.0 - NOISE_QUANTILE).ln();
+        self.blocks.iter().sum::<f32>() * NOISE_BLOCK as f32 * many / mean
+    }
+
     /// Noise power in a bin of the longest frame at `bin` (fractional) of a frame of `len` samples, scaled to that frame.
     pub(crate) fn at(&self, bin: usize, len: usize) -> f32 {
         let ratio = self.len / len;

@@ -102,6 +102,10 @@ pub struct Reading {
     pub pitch: Option<Pitch>,
     /// Level (root mean square) around the centre, in dBFS; negative infinity where no sample near it reaches -95 dBFS.
     pub level_dbfs: f64,
+    /// Level of the noise floor over the whole band, in dBFS: what lies between the spectral lines. Lines closer than about
+    /// 30 Hz, and such as move, leave less room between them and count towards it with their skirts. Negative infinity in
+    /// digital silence.
+    pub noise_dbfs: f64,
     /// Inharmonicity, when the partials allow an estimate.
     pub stretch: Option<Stretch>,
     /// Partials found, by rising number; empty without a single pitch.

@@ -47,6 +47,8 @@ pub(crate) struct Instant {
     pub(crate) level_dbfs: f64,
     /// Level in a frame that the fundamental does not ripple, in dBFS.
     pub(crate) calm_dbfs: f64,
+    /// Level of the noise between the partials, in dBFS.
+    pub(crate) noise_dbfs: f64,
     /// Fundamental and inharmonicity that the tones were refined for.
     pub(crate) model: (f64, f64),
     /// Length of the frame they were refined in.
@@ -76,6 +78,7 @@ impl Instant {
             centre: 0,
             level_dbfs: f64::NEG_INFINITY,
             calm_dbfs: f64::NEG_INFINITY,
+            noise_dbfs: f64::NEG_INFINITY,
             model: (0.0, 0.0),
             frame_s: 0.0,
             tones: Vec::with_capacity(partials),

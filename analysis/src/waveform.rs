@@ -8,6 +8,7 @@
 use core::f64::consts::{PI, TAU};
 
 use crate::convert::nearest;
+use crate::reading::{Partial, Reading};
 use crate::stiff::DB_PER_NEPER;
 
 /// Levels below the strongest partial, in dB, that are compared.
@@ -58,6 +59,28 @@ pub struct WaveformFit {
 }
 
 impl Waveform {
+    /// The word for it.
+    #[must_use]
+    pub fn name(self) -> &'static str {
+        match self {
+            Self::Sine => "sine",
+            Self::Saw => "saw",
+            Self::Square => "square",
+            Self::Triangle => "triangle",
+            Self::Pulse { .. } => "pulse",
+            Self::HalfRectifiedSine => "half-rectified sine",
+        }
+    }
+
+    /// The share of the period that a pulse is high.
+    #[must_use]
+    pub fn width(self) -> Option<f64> {
+        match self {
+            Self::Pulse { width } => Some(width),
+            _ => None,
+        }
+    }
+
     /// Amplitude and cosine phase of partial `n` (from 1), up to a common factor and a shift in time. The amplitude is
     /// negative where that says the phase more simply.
     fn partial(self, n: f64) -> (f64, f64) {
@@ -96,6 +119,15 @@ pub fn waveform(partials: &[(u32, f64, f64)], looked_for: u32) -> Option<Wavefor
     plain
         .min_by(|a, b| badness(a).total_cmp(&badness(b)))
         .or_else(|| fit(partials, looked_for, best_pulse(partials, looked_for)?))
+}
+
+/// Finds the textbook wave of a reading. What lies above its last partial cannot be told from what the band or the count left
+/// out, so it is not looked for.
+#[must_use]
+pub fn of_reading(reading: &Reading) -> Option<WaveformFit> {
+    let partial = |p: &Partial| (p.number, 10f64.powf(p.level_dbfs / 20.0), p.phase_rad);
+    let partials: Vec<_> = reading.partials.iter().map(partial).collect();
+    waveform(&partials, partials.last()?.0)
 }
 
 /// The pulse whose levels fit best.

@@ -74,6 +74,7 @@ pub(crate) fn reading(centre: u64, partials: u32) -> Reading {
         state: State::Steady,
         pitch: Some(Pitch { f0_hz, f0_sd_cents: 0.31, confidence: 0.97 }),
         level_dbfs: -11.2,
+        noise_dbfs: -61.2,
         stretch: None,
         partials: (1..=partials)
             .map(|number| {

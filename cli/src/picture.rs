@@ -6,6 +6,7 @@ mod canvas;
 pub(crate) mod drift;
 mod head;
 mod history;
+pub(crate) mod keys;
 mod levels;
 mod plumb;
 mod raster;

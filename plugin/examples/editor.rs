@@ -79,6 +79,19 @@ fn fixed(folder: &Path) -> Done {
     checks.get_by_label("Checks").click();
     checks.run_steps(3);
     keep(&mut checks, &folder.join("checks.png"))?;
+    let mut keys = Scene::keyboard(Theme::Dark).open(SIZE, 1.0);
+    keys.run_steps(2);
+    keys.get_by_label("Keys").click();
+    keys.run_steps(3);
+    keep(&mut keys, &folder.join("keys.png"))?;
+    save(Scene::detuned(Theme::Light), SIZE, 1.0, &folder.join("detuned.png"))?;
+    let mut compared = Scene::captured(Theme::Dark);
+    compared.screen.compare(Some(1), None);
+    let mut captures = compared.open(SIZE, 1.0);
+    captures.run_steps(2);
+    captures.get_by_label("Captures").click();
+    captures.run_steps(3);
+    keep(&mut captures, &folder.join("captures.png"))?;
     for (state, name) in
         [(State::Several, "several"), (State::Unpitched, "unpitched"), (State::Silent, "silent")]
     {
@@ -159,16 +172,17 @@ impl Sink for Listener {
     }
 }
 
-/// 40 partials and half an hour of drift behind them, at three zooms.
+/// 40 partials and half an hour of drift behind them, at three zooms, and compared with a capture.
 fn cost() {
-    let mut scene = Scene::empty(Theme::Dark);
+    let mut scene = Scene::captured(Theme::Dark);
     let vibrato =
         |t: f64| Some(2.0 * (5.5 * core::f64::consts::TAU * t).sin() + 3.0 * (0.05 * t).sin());
     scene.play(190_000, vibrato, &string_partials(40), &strays());
     let ctx = Context::default();
     install_fonts(&ctx);
-    for span_s in [20.0, 300.0, 1_800.0] {
+    for (span_s, compared) in [(20.0, None), (300.0, None), (1_800.0, None), (20.0, Some(1))] {
         scene.screen.span(span_s);
+        scene.screen.compare(compared, None);
         let (mut drawn_s, mut tessellated_s) = (0.0, 0.0);
         for frame in 0..FRAMES + 20 {
             scene.advance();
@@ -190,7 +204,8 @@ fn cost() {
         }
         let ms = |s: f64| 1000.0 * s / f64::from(FRAMES);
         println!(
-            "{span_s:>5} s of drift shown: layout {:.2} ms, tessellation {:.2} ms a frame",
+            "{span_s:>5} s of drift shown{}: layout {:.2} ms, tessellation {:.2} ms a frame",
+            if compared.is_some() { ", a capture compared" } else { "" },
             ms(drawn_s),
             ms(tessellated_s)
         );

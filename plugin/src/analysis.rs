@@ -157,13 +157,18 @@ impl Analysis {
             }
             Event::Jump => self.finish(),
             Event::Missed { samples, cause } => {
+                self.delivery.keys.lose(self.position);
                 self.delivery.miss(samples, cause);
                 if let Engine::Running(engine) = &mut self.engine {
                     engine.skip(samples, &mut self.delivery);
                 }
                 self.position += samples;
             }
-            Event::Pause => self.rest(Condition::Paused),
+            Event::Pause => {
+                self.rest(Condition::Paused);
+                // Nobody listens while it is on.
+                self.controls.capture = false;
+            }
             Event::Note { key, down } => self.delivery.key(self.position, key, down),
             Event::End { bounce } => {
                 self.rest(Condition::Ended);
@@ -189,6 +194,11 @@ impl Analysis {
         let before = core::mem::replace(&mut self.controls, controls);
         self.delivery.tune(controls.tuning());
         self.delivery.freeze(controls.freeze);
+        self.delivery.press.integrate(controls.integration_s());
+        // A parameter that is on when the stream begins was switched on before it.
+        if controls.capture && !before.capture && self.position > 0 {
+            self.delivery.capture(self.position);
+        }
         if controls.channel != before.channel || (before.check && !controls.check) {
             // Another signal from here on, or the end of what is checked: nothing before belongs to what follows.
             self.finish();
@@ -268,6 +278,7 @@ impl Analysis {
     /// Ends what is measured, and with it the check that is on.
     fn finish(&mut self) {
         self.flush();
+        self.delivery.close();
         self.delivery.checks.end(self.position);
     }
 

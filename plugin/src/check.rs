@@ -25,7 +25,7 @@ use plumbtone_analysis::{Gap, Reading, VERSION};
 pub use self::curve::Curve;
 pub(crate) use self::report::CAUTION;
 pub use self::result::{CheckResult, Extent, InTrail, OutsideSpan, VerdictWord};
-pub use self::results::{Reports, Results, RunningCheck, Snapshot, Stored, Told};
+pub use self::results::{Reports, Results, RunningCheck, Snapshot, Stored};
 pub(crate) use self::stored::read;
 
 use self::curve::COLUMNS_MAX;

@@ -17,6 +17,7 @@ pub(crate) struct Controls {
     pub(crate) integration_ms: f32,
     pub(crate) partials: i32,
     pub(crate) freeze: bool,
+    pub(crate) capture: bool,
     pub(crate) check: bool,
     pub(crate) tolerance_cents: f32,
     pub(crate) reference: Reference,
@@ -36,6 +37,7 @@ impl Controls {
             integration_ms: analysis.integration.value(),
             partials: analysis.partials.value(),
             freeze: analysis.freeze.value(),
+            capture: analysis.capture.value(),
             check: check.check.value(),
             tolerance_cents: check.tolerance.value(),
             reference: check.reference.value(),
@@ -54,9 +56,14 @@ impl Controls {
             lowest_hz,
             highest_hz,
             partials: count(self.partials),
-            integration_s: f64::from(self.integration_ms) / 1000.0,
+            integration_s: self.integration_s(),
             ..defaults
         }
+    }
+
+    /// Time over which partials are averaged, in seconds.
+    pub(crate) fn integration_s(&self) -> f64 {
+        f64::from(self.integration_ms) / 1000.0
     }
 
     /// What notes are called.

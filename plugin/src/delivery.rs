@@ -5,16 +5,19 @@ use std::sync::{Arc, Mutex, PoisonError};
 
 use nice_plug_egui::RepaintNotifier;
 use plumbtone_analysis::tuning::{NoteName, Tuning};
-use plumbtone_analysis::{Gap, GapReason, Reading, Sink, State};
+use plumbtone_analysis::{Gap, GapReason, Note, Reading, Sink, State};
 use triple_buffer::Input;
 
+use crate::captures::Press;
 use crate::check::Checks;
+use crate::keys::Keys;
 use crate::marks::Cause;
 use crate::readings_log::{Line, ReadingsLog};
 use crate::readout::{Condition, Gaps, Live, Missing, Readout};
 use crate::session::{Anchor, SessionPosition};
 use crate::status::Status;
 use crate::trail::Trail;
+use crate::voices::Voices;
 
 /// In silence the editor draws anew once in this many readings only.
 const SILENT_READINGS: u32 = 100;
@@ -26,6 +29,10 @@ pub(crate) struct Delivery {
     pub(crate) readout: Readout,
     /// What is checked.
     pub(crate) checks: Checks,
+    /// What is collected key by key.
+    pub(crate) keys: Keys,
+    /// What is captured.
+    pub(crate) press: Press,
     changed: bool,
     /// Whether the change is worth drawing.
     visible: bool,
@@ -51,11 +58,13 @@ impl Delivery {
         output: Input<Readout>,
         repaint: RepaintNotifier,
         log: Option<ReadingsLog>,
-        checks: Checks,
+        (checks, keys, press): (Checks, Keys, Press),
     ) -> Self {
         Self {
             readout: Readout::default(),
             checks,
+            keys,
+            press,
             changed: false,
             visible: false,
             silent_readings: 0,
@@ -77,7 +86,8 @@ impl Delivery {
     }
 
     /// An engine begins, whose readings lie this many samples apart.
-    pub(crate) fn begin(&self, hop: usize) {
+    pub(crate) fn begin(&mut self, hop: usize) {
+        self.keys.begin(self.readout.tuning, self.readout.sample_rate_hz);
         self.with_trail(|trail| trail.grid(hop, self.readout.sample_rate_hz));
     }
 
@@ -85,6 +95,7 @@ impl Delivery {
     pub(crate) fn tune(&mut self, tuning: Tuning) {
         if self.readout.tuning != tuning {
             self.readout.tuning = tuning;
+            self.keys.tune(tuning);
             self.readout.forget_offset();
             self.show();
         }
@@ -99,8 +110,11 @@ impl Delivery {
         self.readout.last_gap = None;
         self.readout.forget_offset();
         self.readout.played = None;
+        self.readout.voices = Voices::default();
         self.held.clear();
         self.anchors.clear();
+        self.keys.start();
+        self.press.start();
         self.stand(Condition::Waiting);
     }
 
@@ -120,6 +134,23 @@ impl Delivery {
         self.frozen = frozen;
     }
 
+    /// The reading at a position, or the one on display while that is held, is to be captured.
+    pub(crate) fn capture(&mut self, at: u64) {
+        if self.frozen && self.readout.measured {
+            self.press.take(&self.readout);
+            self.show();
+        } else {
+            self.press.press(at);
+        }
+    }
+
+    /// No more readings come for now.
+    pub(crate) fn close(&mut self) {
+        if self.press.close(&self.readout) {
+            self.show();
+        }
+    }
+
     pub(crate) fn anchor(&mut self, anchor: Anchor) {
         self.anchors.push_back(anchor);
         self.checks.anchor(anchor);
@@ -133,6 +164,7 @@ impl Delivery {
         }
         self.readout.played = self.held.last().map(|&key| NoteName::from_midi(i16::from(key)));
         self.checks.key(at, self.readout.played.map(|note| self.readout.tuning.frequency_hz(note)));
+        self.keys.key(at, key, down);
         self.show();
     }
 
@@ -212,6 +244,7 @@ impl Sink for Delivery {
             trail.push(stream, reading, &session);
             trail.next()
         });
+        self.keys.reading(reading);
         self.checks.reading(reading, trail_end.saturating_sub(1), self.status.shown());
         self.readout.weigh(reading);
         self.changed = true;
@@ -221,6 +254,13 @@ impl Sink for Delivery {
         self.show_reading(reading);
         self.readout.take(reading, session);
         self.readout.trail_end = trail_end;
+        self.visible |= self.press.reading(&self.readout);
+    }
+
+    fn note(&mut self, note: &Note) {
+        self.readout.voices.take(note);
+        self.keys.note(note);
+        self.show();
     }
 
     fn gap(&mut self, gap: &Gap) {

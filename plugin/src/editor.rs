@@ -1,14 +1,20 @@
 //! The editor: shows what the worker said last, and never waits for it. Each view is a function of plain data.
 
+mod alias;
 mod band;
+mod captures;
 mod checks;
 mod copy;
+mod difference;
 mod drift;
 mod field;
 mod ink;
+mod keys;
 mod knob;
+mod mark;
 mod notices;
 mod panel;
+mod parts;
 mod picture;
 mod plumb;
 mod screen;
@@ -25,7 +31,7 @@ use nice_plug::context::gui::GuiContext;
 use nice_plug::editor::dpi::LogicalSize;
 use nice_plug::editor::{ResizeHint, SizeConstraints};
 use nice_plug::plugin::TrackInfo;
-use nice_plug_egui::baseview::HandlerError;
+use nice_plug_egui::baseview::{HandlerError, WindowSize};
 use nice_plug_egui::{
     EguiEditor, EguiEditorState, EguiNiceSettings, Frame, NiceEguiApp, RepaintNotifier,
     create_egui_editor,
@@ -47,6 +53,8 @@ use crate::trail::Trail;
 /// Size of the window when it is first opened, and its smallest one, in points.
 const SIZE: LogicalSize<f32> = LogicalSize::new(1120.0, 760.0);
 const SMALLEST: LogicalSize<f32> = LogicalSize::new(480.0, 320.0);
+/// Frames in which a window takes its first size.
+const OPENING_FRAMES: u64 = 10;
 
 /// The editor of one instance; lives as long as that and is shown now and then.
 #[derive(Debug)]
@@ -64,6 +72,10 @@ struct Open {
     screen: Screen,
     context: GuiContext,
     since: Instant,
+    /// The kept size of the window, until it was asked for.
+    size: Option<egui::Vec2>,
+    /// Frames drawn.
+    frames: u64,
 }
 
 impl core::fmt::Debug for Open {
@@ -105,14 +117,27 @@ impl NiceEguiApp for Window {
         theme.apply(&egui_ctx);
         egui_ctx.set_zoom_factor(zoom);
         let screen = Screen::new(theme, zoom);
-        self.open = Some(Open { screen, context: nice_gui_ctx, since: Instant::now() });
+        let size = self.parameters.kept.size();
+        self.open = Some(Open {
+            screen,
+            context: nice_gui_ctx,
+            since: Instant::now(),
+            size: size.map(|(width, height)| egui::vec2(single(width), single(height))),
+            frames: 0,
+        });
         self.status.watch(true);
         self.bell.ring();
         Ok(())
     }
 
     fn ui(&mut self, ui: &mut egui::Ui, _frame: &mut Frame) {
-        let Some(Open { screen, context, since }) = &mut self.open else { return };
+        let Some(Open { screen, context, since, size, frames }) = &mut self.open else { return };
+        *frames += 1;
+        if let Some(size) = size.take()
+            && (ui.ctx().content_rect().size() - size).abs().max_elem() > 1.0
+        {
+            ui.ctx().send_viewport_cmd(egui::ViewportCommand::InnerSize(size));
+        }
         self.readout.update();
         let unsound = self.parameters.unsound.findings();
         let shown = Shown {
@@ -144,6 +169,13 @@ impl NiceEguiApp for Window {
 
     fn zoom_factor_changed(&mut self, zoom_factor: f32) {
         self.parameters.kept.set_zoom(f64::from(zoom_factor));
+    }
+
+    fn resized(&mut self, new_size: WindowSize) {
+        // The sizes that a window goes through while it opens are nobody's choice.
+        if self.open.as_ref().is_some_and(|open| open.frames > OPENING_FRAMES) {
+            self.parameters.kept.set_size(new_size.logical.width, new_size.logical.height);
+        }
     }
 
     fn track_info_changed(&mut self, info: TrackInfo) {

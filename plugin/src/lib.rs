@@ -7,11 +7,13 @@
 #![forbid(unsafe_code)]
 
 mod analysis;
+pub mod captures;
 pub mod check;
 mod controls;
 mod convert;
 mod delivery;
 pub mod editor;
+pub mod keys;
 mod marks;
 mod midi_out;
 pub mod offset;
@@ -20,12 +22,14 @@ mod plumbtone;
 mod pool;
 pub mod readings_log;
 pub mod readout;
+pub mod report_files;
 pub mod session;
 mod state;
 mod status;
 mod tap;
 pub mod trail;
 mod turns;
+pub mod voices;
 
 pub use plumbtone::Plumbtone;
 

@@ -11,7 +11,9 @@ use nice_plug::prelude::*;
 
 pub use choices::{Channel, MidiOutput, Reference, TemperamentChoice};
 
+use crate::captures::Captures;
 use crate::check::Results;
+use crate::keys::Sheet;
 use crate::state::{Kept, Unsound};
 
 /// All parameters, and what a session keeps beside them.
@@ -35,6 +37,12 @@ pub struct Parameters {
     /// The results of drift checks.
     #[persist = "checks"]
     pub results: Results,
+    /// The key sheet.
+    #[persist = "keys"]
+    pub sheet: Sheet,
+    /// The captures.
+    #[persist = "captures"]
+    pub captures: Captures,
     /// What of the last loaded state was unsound.
     #[persist = "unsound"]
     pub unsound: Unsound,
@@ -72,6 +80,9 @@ pub struct AnalysisParameters {
     /// Keeps the present reading on display.
     #[id = "freeze"]
     pub freeze: BoolParam,
+    /// Keeps a capture each time it is switched on.
+    #[id = "capture"]
+    pub capture: BoolParam,
 }
 
 /// The drift check.
@@ -115,6 +126,8 @@ impl Default for Parameters {
             midi: MidiParameters::default(),
             kept: Kept::default(),
             results: Results::default(),
+            sheet: Sheet::default(),
+            captures: Captures::default(),
             unsound: Unsound::default(),
         }
     }
@@ -164,6 +177,7 @@ impl AnalysisParameters {
             .with_string_to_value(Arc::new(text::milliseconds)),
             partials: IntParam::new("Partials", 40, IntRange::Linear { min: 1, max: 128 }),
             freeze: BoolParam::new("Freeze", false),
+            capture: BoolParam::new("Capture", false),
         }
     }
 }
@@ -230,6 +244,7 @@ mod tests {
             "integration",
             "partials",
             "freeze",
+            "capture",
             "check",
             "tolerance",
             "reference",
@@ -288,6 +303,7 @@ mod tests {
             "integration" => f(&analysis.integration),
             "partials" => f(&analysis.partials),
             "freeze" => f(&analysis.freeze),
+            "capture" => f(&analysis.capture),
             "check" => f(&check.check),
             "tolerance" => f(&check.tolerance),
             "reference" => f(&check.reference),

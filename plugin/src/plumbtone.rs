@@ -9,11 +9,13 @@ use plumbtone_analysis::Analyzer;
 use triple_buffer::{Output, triple_buffer};
 
 use crate::analysis::Analysis;
+use crate::captures::Press;
 use crate::check::Checks;
 use crate::controls::Controls;
 use crate::convert::index;
 use crate::delivery::Delivery;
 use crate::editor::{self, Window};
+use crate::keys::Keys;
 use crate::midi_out::{self, MidiOut};
 use crate::parameters::Parameters;
 use crate::pool::Place;
@@ -50,7 +52,10 @@ impl<const CONTROLLERS: bool> Default for Plumbtone<CONTROLLERS> {
         let status = Arc::new(Status::new(log.is_some()));
         let parameters = Arc::<Parameters>::default();
         let checks = Checks::new(parameters.results.clone());
-        let delivery = Delivery::new(Arc::clone(&status), input, repaint.clone(), log, checks);
+        let keys = Keys::new(parameters.sheet.clone());
+        let press = Press::new(parameters.captures.clone());
+        let parts = (checks, keys, press);
+        let delivery = Delivery::new(Arc::clone(&status), input, repaint.clone(), log, parts);
         let trail = delivery.trail();
         Self {
             parameters,
@@ -80,6 +85,8 @@ impl<const CONTROLLERS: bool> Drop for Plumbtone<CONTROLLERS> {
         self.end();
         // A report that was begun is finished, whatever the host does next.
         self.parameters.results.finish_reports();
+        self.parameters.sheet.finish_reports();
+        self.parameters.captures.finish_errands();
     }
 }
 
@@ -225,6 +232,9 @@ impl ClapPlugin for Plumbtone<true> {
                 page.add_param(&tuning.concert_pitch);
                 page.add_param(&tuning.temperament);
                 page.add_param(&analysis.freeze);
+            });
+            section.add_page("Captures", |page| {
+                page.add_param(&analysis.capture);
             });
             section.add_page("Check", |page| {
                 page.add_param(&check.check);

@@ -213,9 +213,11 @@ mod tests {
 
     use super::*;
     use crate::analysis::Build;
+    use crate::captures::{Captures, Press};
     use crate::check::{Checks, Results};
     use crate::controls::Controls;
     use crate::delivery::Delivery;
+    use crate::keys::{Keys, Sheet};
     use crate::readout::{Condition, Readout};
     use crate::session::Transport;
     use crate::status::Status;
@@ -231,7 +233,11 @@ mod tests {
             input,
             RepaintNotifier::new(),
             None,
-            Checks::new(Results::default()),
+            (
+                Checks::new(Results::default()),
+                Keys::new(Sheet::default()),
+                Press::new(Captures::default()),
+            ),
         );
         let place = Place::take(Analysis::new(build, delivery));
         let status = Arc::new(Status::default());

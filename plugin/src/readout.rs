@@ -6,6 +6,7 @@ use plumbtone_analysis::{Pitch, Reading, SettingsError, State};
 use crate::offset::{Offset, Offsets};
 use crate::session::SessionPosition;
 use crate::trail::CONFIDENCE_SHOWN;
+use crate::voices::Voices;
 
 /// The newest reading of an instance, and how its analysis stands.
 #[derive(Debug, Clone, Default)]
@@ -34,6 +35,8 @@ pub struct Readout {
     pub tuning: Tuning,
     /// The key that the note input holds, the last one pressed of several.
     pub played: Option<NoteName>,
+    /// What the last note told of its partials' lines.
+    pub voices: Voices,
     /// What did not reach the engine in this stream.
     pub gaps: Gaps,
     /// The last stretch of this stream that did not reach the engine though somebody listened.
@@ -147,6 +150,7 @@ impl Readout {
             session,
             tuning,
             played,
+            voices,
             gaps,
             last_gap,
             offsets,
@@ -160,6 +164,7 @@ impl Readout {
         self.session = *session;
         self.tuning = *tuning;
         self.played = *played;
+        self.voices.copy(voices);
         self.gaps = *gaps;
         self.since = *since;
         self.offset = *offset;
@@ -175,6 +180,7 @@ pub(crate) fn copy_reading(to: &mut Reading, from: &Reading) {
     to.state = from.state;
     to.pitch = from.pitch;
     to.level_dbfs = from.level_dbfs;
+    to.noise_dbfs = from.noise_dbfs;
     to.stretch = from.stretch;
     to.partials.clone_from(&from.partials);
     to.strays.clone_from(&from.strays);

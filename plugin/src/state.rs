@@ -10,17 +10,22 @@ use nice_plug::prelude::*;
 use serde::{Deserialize, Serialize};
 use serde_json::Value;
 
-use crate::check;
 use crate::editor::Theme;
+use crate::keys;
 use crate::parameters::Parameters;
+use crate::{captures, check};
 
 /// Version of the part that is no parameter. A newer one is read as far as it is understood.
 const FORMAT: u64 = 1;
 /// Smallest and largest zoom of the editor.
 const ZOOM: (f64, f64) = (0.5, 3.0);
+/// Shortest and longest side of its window, in points.
+const SIDE: (f64, f64) = (100.0, 20_000.0);
 /// Keys of the persistent fields.
 const KEPT: &str = "kept";
 const CHECKS: &str = "checks";
+const KEYS: &str = "keys";
+const CAPTURES: &str = "captures";
 const UNSOUND: &str = "unsound";
 
 /// The part of the state that is no parameter.
@@ -35,6 +40,8 @@ pub struct KeptFields {
     zoom: f64,
     /// Name of its theme.
     theme: String,
+    /// Width and height of its window in points, once it was resized.
+    size: Option<(f64, f64)>,
 }
 
 /// What of the last loaded state was unsound, in words; never stored.
@@ -48,7 +55,7 @@ pub struct Findings(Vec<String>);
 
 impl Default for KeptFields {
     fn default() -> Self {
-        Self { format: FORMAT, zoom: 1.0, theme: Theme::default().name().to_owned() }
+        Self { format: FORMAT, zoom: 1.0, theme: Theme::default().name().to_owned(), size: None }
     }
 }
 
@@ -62,6 +69,23 @@ impl Kept {
     pub fn set_zoom(&self, zoom: f64) {
         lock(&self.0).zoom = zoom.clamp(ZOOM.0, ZOOM.1);
     }
+}
+
+impl Kept {
+    /// Size of the editor's window in points, if it was resized.
+    pub fn size(&self) -> Option<(f64, f64)> {
+        lock(&self.0).size
+    }
+
+    /// Keeps the size of the editor's window.
+    pub fn set_size(&self, width: f64, height: f64) {
+        lock(&self.0).size = Some((width, height)).filter(fits);
+    }
+}
+
+/// Whether a window can have a size.
+fn fits(&(width, height): &(f64, f64)) -> bool {
+    [width, height].into_iter().all(|side| side >= SIDE.0 && side <= SIDE.1)
 }
 
 impl Kept {
@@ -129,6 +153,14 @@ pub(crate) fn filter(state: &mut PluginState) {
     if let Ok(checks) = serde_json::to_string(&checks) {
         state.fields.insert(CHECKS.to_owned(), checks);
     }
+    let keys = keys::read(state.fields.get(KEYS).map(String::as_str), &mut findings);
+    if let Ok(keys) = serde_json::to_string(&keys) {
+        state.fields.insert(KEYS.to_owned(), keys);
+    }
+    let captures = captures::read(state.fields.get(CAPTURES).map(String::as_str), &mut findings);
+    if let Ok(captures) = serde_json::to_string(&captures) {
+        state.fields.insert(CAPTURES.to_owned(), captures);
+    }
     if let Ok(findings) = serde_json::to_string(&Findings(findings)) {
         state.fields.insert(UNSOUND.to_owned(), findings);
     }
@@ -158,6 +190,15 @@ fn kept_from(stored: Option<&str>, findings: &mut Vec<String>) -> KeptFields {
         Some(Some(theme)) => theme.name().clone_into(&mut kept.theme),
         None => {}
         Some(None) => findings.push("the stored theme cannot be used".to_owned()),
+    }
+    match fields.get("size") {
+        None | Some(Value::Null) => {}
+        Some(size) => {
+            kept.size = serde_json::from_value(size.clone()).ok().filter(fits);
+            if kept.size.is_none() {
+                findings.push("the stored size of the editor cannot be used".to_owned());
+            }
+        }
     }
     kept
 }
@@ -200,6 +241,7 @@ fn known(parameters: &Parameters) -> Vec<Known> {
         float("integration", &analysis.integration),
         int("partials", &analysis.partials),
         boolean("freeze", &analysis.freeze),
+        boolean("capture", &analysis.capture),
         boolean("check", &check.check),
         float("tolerance", &check.tolerance),
         choice("reference", &check.reference),
@@ -270,12 +312,13 @@ mod tests {
     fn a_sound_state_passes_unchanged() {
         let mut state = stored(
             &[("concert_pitch", ParamValue::F32(415.0)), ("partials", ParamValue::I32(8))],
-            Some(r#"{"format":1,"zoom":1.5,"theme":"light"}"#),
+            Some(r#"{"format":1,"zoom":1.5,"theme":"light","size":[1300.0,900.0]}"#),
         );
         filter(&mut state);
         assert!(matches!(state.params["concert_pitch"], ParamValue::F32(415.0)), "{state:?}");
         assert!(matches!(state.params["partials"], ParamValue::I32(8)), "{state:?}");
-        assert_eq!(state.fields[KEPT], r#"{"format":1,"zoom":1.5,"theme":"light"}"#, "{state:?}");
+        let kept = r#"{"format":1,"zoom":1.5,"theme":"light","size":[1300.0,900.0]}"#;
+        assert_eq!(state.fields[KEPT], kept, "{state:?}");
         assert_eq!(findings(&state), Vec::<String>::new(), "{state:?}");
     }
 
@@ -312,6 +355,8 @@ mod tests {
             r#"{"format":1,"zoom":"large"}"#,
             r#"{"format":1,"zoom":9}"#,
             r#"{"format":1,"theme":"plaid"}"#,
+            r#"{"format":1,"size":[1300]}"#,
+            r#"{"format":1,"size":[1300,-2]}"#,
             r#"{"zoom":1}"#,
             r#"{"format":7,"zoom":1}"#,
         ] {

@@ -196,13 +196,15 @@ impl Tap {
 
     /// Whether anybody uses what would be measured.
     fn listens(&self, controls: &Controls) -> bool {
-        controls.check || self.status.watched()
+        controls.check || controls.capture || self.status.watched()
     }
 
     fn pass_by(&mut self, length: u64) {
         if self.listening && (self.has_room(0) || self.wait_for_room(0)) {
             self.mark(0, Event::Pause);
             self.listening = false;
+            // What changes meanwhile is told when somebody listens again.
+            self.told_controls = None;
         }
         self.unwatched += length;
         self.advance(length);

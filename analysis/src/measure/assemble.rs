@@ -1,9 +1,10 @@
 //! A note from its stretches: the figures of each put together, the strays named, the descriptors drawn up.
 
 use super::clusters;
-use super::lines::LINES_MAX;
+use super::lines::{LINES_MAX, Line};
 use super::note::{Meter, SPARE, STRETCH_S};
 use super::rows::Row;
+use super::voices::{self, Search, VOICES_MAX, Voice};
 use crate::convert::{index, nearest_index, number};
 use crate::descriptors::Descriptors;
 use crate::history::{History, Span};
@@ -19,6 +20,8 @@ use crate::strays::{self, Candidate, mains};
 
 /// Distance of a line from a partial within which it is that partial, in resolutions.
 const OWN: f64 = 4.0;
+/// The same for a partial of a detuned voice.
+const VOICES_OWN: f64 = 0.75;
 /// The same for a line that nothing else explains, in cents: strings in pairs and choruses spread a partial.
 const SPREAD_CENTS: f64 = 15.0;
 /// And at most, as a share of the fundamental.
@@ -52,6 +55,8 @@ pub(crate) struct Assembler {
     points: Vec<Point>,
     candidates: Vec<Candidate>,
     own: Vec<Own>,
+    /// Partials of a detuned voice.
+    voice: Vec<Own>,
     start: u64,
     stretch_start: u64,
     seconds: f64,
@@ -77,6 +82,7 @@ impl Assembler {
             points: Vec::with_capacity(partials),
             candidates: Vec::with_capacity(LINES_MAX),
             own: Vec::with_capacity(partials + SPARE),
+            voice: Vec::with_capacity(partials + SPARE),
             start: 0,
             stretch_start: 0,
             seconds: 0.0,
@@ -224,11 +230,6 @@ impl Assembler {
         let sweep = self.meter.sweep;
         let last = self.meter.rows.rows.last().map_or(0, |r| r.n);
         let still = sweep <= 0.0;
-        for row in
-            self.meter.rows.rows.iter().filter(|r| still && r.present && r.n <= self.partials)
-        {
-            self.sums[row.n].cluster = clusters::cluster(&long.lines, row.hz(), fit.f0);
-        }
         for line in &long.lines {
             let n = nearest_number(line.hz, fit);
             let near = |n: usize| {
@@ -241,11 +242,18 @@ impl Assembler {
                 self.candidates.push(Candidate::new(*line));
             }
         }
-        self.name(fit);
+        self.name(fit, still);
+        let strange = |line: &Line| is_alias(&self.candidates, line);
+        for row in
+            self.meter.rows.rows.iter().filter(|r| still && r.present && r.n <= self.partials)
+        {
+            let lines = &self.meter.long.lines;
+            self.sums[row.n].cluster = clusters::cluster(lines, row.hz(), fit.f0, strange);
+        }
     }
 
-    /// Explains the lines collected.
-    fn name(&mut self, fit: &StiffFit) {
+    /// Explains the lines collected; where the pitch holds `still`, those of detuned voices too.
+    fn name(&mut self, fit: &StiffFit, still: bool) {
         let resolution_hz = self.meter.long.resolution_hz;
         let rows = &self.meter.rows.rows;
         self.own.clear();
@@ -265,6 +273,16 @@ impl Assembler {
             resolution_hz,
         };
         aliases::name_aliases(&mut self.candidates, &tone);
+        if still {
+            let search = Search {
+                lines: &self.meter.long.lines,
+                own: &self.own,
+                f0: tone.f0,
+                b: tone.b.unwrap_or(0.0),
+                resolution_hz,
+            };
+            name_voices(&search, &tone, &mut self.candidates, &mut self.voice);
+        }
         mains::name_mains(&mut self.candidates, resolution_hz);
     }
 
@@ -282,6 +300,42 @@ impl Assembler {
         self.note.strays.extend(self.candidates[..kept].iter().map(strays::stray));
         self.note.strays_left_out = self.candidates.len() - kept;
     }
+}
+
+/// Finds detuned voices, names their aliases, and drops what are their partials.
+fn name_voices(
+    search: &Search<'_>,
+    tone: &aliases::Tone<'_>,
+    candidates: &mut Vec<Candidate>,
+    own: &mut Vec<Own>,
+) {
+    let mut known = [Voice { f0: tone.f0, f0_sd: tone.f0_sd }; VOICES_MAX + 1];
+    for count in 1..=VOICES_MAX {
+        let found = search.next(&known[..count], |line| {
+            let voices = &mut known[..count].iter();
+            is_alias(candidates, line)
+                || voices.any(|&voice| search.is_partial_of(voice, line.hz, VOICES_OWN))
+        });
+        let Some(voice) = found else { return };
+        known[count] = voice;
+        own.clear();
+        own.extend(search.own.iter().filter_map(|first| {
+            let line = search.line(voice, first.n)?;
+            let sd_hz = voices::LINE_SD * search.resolution_hz;
+            Some(Own { n: first.n, hz: line.hz, sd_hz, amplitude: line.amplitude })
+        }));
+        let tone = aliases::Tone { own, f0: voice.f0, f0_sd: voice.f0_sd, ..*tone };
+        aliases::name_aliases(candidates, &tone);
+        candidates.retain(|c| {
+            c.kind != StrayKind::Unexplained || !search.is_partial_of(voice, c.line.hz, VOICES_OWN)
+        });
+    }
+}
+
+/// Whether a line is one of the aliases among the candidates, which rise by frequency.
+fn is_alias(candidates: &[Candidate], line: &Line) -> bool {
+    let found = candidates.binary_search_by(|c| c.line.hz.total_cmp(&line.hz));
+    found.is_ok_and(|at| matches!(candidates[at].kind, StrayKind::Alias { .. }))
 }
 
 /// Number of the partial of the model nearest to a frequency.

@@ -4,22 +4,24 @@
 //! are one line that beats.
 
 use super::lines::Line;
+use super::voices::{VOICE, reach_hz};
 use crate::note::Cluster;
 use crate::stiff::CENTS_PER_NEPER;
 
-/// Amplitude under the strongest line of a partial from which a line is one of its voices, as a ratio: 26 dB.
-const VOICE: f64 = 0.05;
-/// Farthest from the partial at which a voice is looked for, in cents, and as a share of the fundamental.
-const REACH_CENTS: f64 = 50.0;
-const REACH_OF_F0: f64 = 0.3;
-
-/// The cluster that the partial at a frequency is, if it is one. `lines` rise by frequency.
-pub(crate) fn cluster(lines: &[Line], hz: f64, f0: f64) -> Option<Cluster> {
-    let reach = (hz * REACH_CENTS / CENTS_PER_NEPER).min(REACH_OF_F0 * f0);
+/// The cluster that the partial at a frequency is, if it is one. `lines` rise by frequency; `strange` tells those that are
+/// known to be something else.
+pub(crate) fn cluster(
+    lines: &[Line],
+    hz: f64,
+    f0: f64,
+    strange: impl Fn(&Line) -> bool,
+) -> Option<Cluster> {
+    let reach = reach_hz(hz, f0);
     let from = lines.partition_point(|l| l.hz < hz - reach);
     let near = &lines[from..from + lines[from..].partition_point(|l| l.hz <= hz + reach)];
-    let strongest = near.iter().max_by(|a, b| a.amplitude.total_cmp(&b.amplitude))?;
-    let voices = || near.iter().filter(|l| l.amplitude >= VOICE * strongest.amplitude);
+    let own = || near.iter().filter(|l| !strange(l));
+    let strongest = own().max_by(|a, b| a.amplitude.total_cmp(&b.amplitude))?;
+    let voices = || own().filter(|l| l.amplitude >= VOICE * strongest.amplitude);
     let others = || voices().filter(|l| l.hz.total_cmp(&strongest.hz).is_ne());
     let second = others().max_by(|a, b| a.amplitude.total_cmp(&b.amplitude))?;
     let (lowest, highest) = (voices().next()?, voices().next_back()?);
@@ -47,11 +49,14 @@ mod tests {
             line(441.0, 0.02),
             line(443.0, 0.2),
         ];
-        let found = cluster(&lines, 440.0, 220.0).expect("three voices");
+        let nothing = |_: &Line| false;
+        let found = cluster(&lines, 440.0, 220.0, nothing).expect("three voices");
         assert_eq!(found.lines, 3, "{found:?}");
         assert!((found.beat_hz - 2.0).abs() < 1e-12, "{found:?}");
         assert!((found.spread_cents - 19.651).abs() < 1e-2, "{found:?}");
-        assert_eq!(cluster(&lines, 300.0, 220.0), None, "a single line");
-        assert_eq!(cluster(&lines, 800.0, 220.0), None, "no line");
+        let without = cluster(&lines, 440.0, 220.0, |line| line.hz > 442.0).expect("two voices");
+        assert_eq!(without.lines, 2, "the third is something else: {without:?}");
+        assert_eq!(cluster(&lines, 300.0, 220.0, nothing), None, "a single line");
+        assert_eq!(cluster(&lines, 800.0, 220.0, nothing), None, "no line");
     }
 }

@@ -91,10 +91,14 @@ fn turned_hz(hz: f64, sample_rate_hz: f64) -> f64 {
     hz - sample_rate_hz * nearest(hz / sample_rate_hz)
 }
 
-/// Names the aliases among lines sorted by frequency, and drops those that turn out to be partials in their place.
+/// Names the aliases among the lines that have no explanation yet, sorted by frequency, and drops those that turn out to be
+/// partials in their place.
 pub(crate) fn name_aliases(candidates: &mut Vec<Candidate>, tone: &Tone<'_>) {
     if candidates.is_empty() || tone.own.is_empty() {
         return;
+    }
+    for candidate in candidates.iter_mut() {
+        candidate.traced = (0, 0);
     }
     let mut tracer = Tracer { tone, number: 0 };
     let mut best: Option<(Model, f64)> = None;
@@ -174,7 +178,8 @@ impl Tracer<'_> {
         let mut expected = trace.own(tone);
         let nyquist = 0.5 * tone.sample_rate_hz;
         let widest = MATCH * tone.resolution_hz;
-        let chance = 2.0 * widest * candidates.len() as f64 / nyquist;
+        let open = candidates.iter().filter(|c| c.kind == StrayKind::Unexplained).count();
+        let chance = 2.0 * widest * open as f64 / nyquist;
         let mut folded = 0;
         for n in tone.looked_for + 1..=tone.looked_for + orders {
             let order = partial_hz(1.0, model.b, n as f64);
@@ -191,6 +196,7 @@ impl Tracer<'_> {
             let found = candidates[first..]
                 .iter_mut()
                 .take_while(|c| c.line.hz <= lies + widest)
+                .filter(|c| c.kind == StrayKind::Unexplained)
                 .filter(|c| c.traced.1 != self.number && c.line.amplitude <= most)
                 .max_by(|a, b| a.line.amplitude.total_cmp(&b.line.amplitude));
             let matched = found.is_some();

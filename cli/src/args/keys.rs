@@ -1,6 +1,6 @@
 //! What the user can say to the command `keys`.
 
-use super::{EXIT_STATUS, What};
+use super::{EXIT_STATUS, What, picture_path};
 use clap::Args as ClapArgs;
 use std::path::PathBuf;
 
@@ -15,8 +15,8 @@ Examples:
       one row for each note of the file
   plumbtone keys --named takes/
       a folder of files such as pad-C4.wav and pad-F#4.wav, the keys taken from the names
-  plumbtone keys --json --csv sheet.csv scale.wav
-      the sheet as JSON, and as CSV";
+  plumbtone keys --json --csv sheet.csv --picture sheet.svg scale.wav
+      the sheet as JSON, as CSV, and drawn over the keyboard";
 
 /// Measure how an instrument behaves over its keys.
 #[derive(Debug, ClapArgs)]
@@ -33,6 +33,9 @@ pub(crate) struct Keys {
     /// Print JSON instead of a table
     #[arg(long)]
     pub(crate) json: bool,
+    /// Draw the figures of all keys over the keyboard as SVG or, if the name ends in .png, as PNG
+    #[arg(long, value_name = "PICTURE", value_parser = picture_path)]
+    pub(crate) picture: Option<PathBuf>,
     /// Also write the sheet as CSV into this file
     #[arg(long, value_name = "SHEET.csv")]
     pub(crate) csv: Option<PathBuf>,

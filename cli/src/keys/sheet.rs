@@ -1,11 +1,13 @@
 //! The key sheet of all files together.
 
 use super::record::{COLUMNS, KeyRecord};
-use crate::args::Keys;
+use crate::args::{Keys, What};
 use crate::output::csv::Sheet;
 use crate::output::words::{plain, signed, with_deviation};
-use anyhow::{Context as _, Result};
+use crate::picture::keys::{self as picture, KeysPicture};
+use anyhow::{Context as _, Result, bail};
 use comfy_table::{CellAlignment, Table, presets};
+use plumbtone_analysis::keys;
 use plumbtone_analysis::tuning::NoteName;
 use serde::Serialize;
 use std::collections::BTreeMap;
@@ -48,18 +50,23 @@ pub(super) fn write(mut rows: Vec<KeyRecord>, command: &Keys) -> Result<()> {
         table(&rows)
     };
     match std::io::stdout().write_all(text.as_bytes()) {
-        Err(error) if error.kind() != ErrorKind::BrokenPipe => Err(error).context("cannot print"),
-        _ => Ok(()),
+        Err(error) if error.kind() != ErrorKind::BrokenPipe => {
+            return Err(error).context("cannot print");
+        }
+        _ => {}
+    }
+    let Some(place) = &command.picture else { return Ok(()) };
+    let What { concert_pitch, temperament, .. } = command.what;
+    match KeysPicture::new(&rows, concert_pitch, temperament) {
+        Some(drawn) => picture::write(place, &drawn),
+        None => bail!("no picture was drawn: no key was found"),
     }
 }
 
 /// Keys between the lowest and the highest that have no row.
 fn missing(rows: &[KeyRecord]) -> Vec<NoteName> {
-    let Some((first, last)) = rows.first().zip(rows.last()) else { return Vec::new() };
-    (first.note.midi()..=last.note.midi())
-        .map(NoteName::from_midi)
-        .filter(|key| rows.iter().all(|row| row.note != *key))
-        .collect()
+    let keys: Vec<NoteName> = rows.iter().map(|row| row.note).collect();
+    keys::missing(&keys)
 }
 
 fn table(rows: &[KeyRecord]) -> String {

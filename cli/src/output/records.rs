@@ -2,9 +2,9 @@
 //! promises, so that the engine's can change without breaking anybody's script.
 
 use crate::measure::Timebase;
-use plumbtone_analysis::masking::masked_below_dbfs;
+use plumbtone_analysis::masking::unheard_below_dbfs;
 use plumbtone_analysis::tuning::Tuning;
-use plumbtone_analysis::waveform::{Waveform, waveform};
+use plumbtone_analysis::waveform::waveform;
 use plumbtone_analysis::{Gap, GapReason, Note, NotePartial, Reading, State, Stray, StrayKind};
 use serde::Serialize;
 use std::ops::Range;
@@ -205,17 +205,9 @@ impl WaveformRecord {
         // What lies above the last partial found cannot be told from what the band or the count left out.
         let looked_for = partials.last()?.0;
         let fit = waveform(partials, looked_for)?;
-        let (name, width) = match fit.waveform {
-            Waveform::Sine => ("sine", None),
-            Waveform::Saw => ("saw", None),
-            Waveform::Square => ("square", None),
-            Waveform::Triangle => ("triangle", None),
-            Waveform::Pulse { width } => ("pulse", Some(width)),
-            Waveform::HalfRectifiedSine => ("half-rectified sine", None),
-        };
         Some(Self {
-            name,
-            width,
+            name: fit.waveform.name(),
+            width: fit.waveform.width(),
             level_rms_db: fit.level_rms_db,
             phase_rms_rad: fit.phase_rms_rad,
             partials: fit.partials,
@@ -241,7 +233,7 @@ impl StrayRecord {
         };
         let partials = || note.partials.iter().map(|p| (p.frequency_hz, p.level_mean_dbfs));
         let strongest = partials().map(|p| p.1).fold(f64::NEG_INFINITY, f64::max);
-        let mask = masked_below_dbfs(stray.frequency_hz, partials());
+        let mask = unheard_below_dbfs(stray.frequency_hz, partials());
         Self {
             frequency_hz: measured(stray.frequency_hz),
             level_dbfs: measured(stray.level_dbfs),

@@ -128,11 +128,30 @@ fn keys_come_from_a_scale_with_its_holes() {
         let settling = row["settling_s"].as_f64().unwrap();
         assert!(settling < 0.1, "it holds from the start: {row}");
     }
+    for (name, beginning) in [("sheet.svg", &b"<svg"[..]), ("sheet.png", b"\x89PNG")] {
+        let run = plumbtone(folder.path(), "keys", &["--picture", name, "scale.wav"]);
+        assert_eq!(run.status, Some(0), "{}", run.stderr);
+        let drawn = std::fs::read(folder.path().join(name)).unwrap();
+        assert!(drawn.starts_with(beginning), "{name}: {} bytes", drawn.len());
+    }
+    let drawn = std::fs::read_to_string(folder.path().join("sheet.svg")).unwrap();
+    for text in ["3 keys", "A3 to C4", "still to play", "B3", "worst alias", "settling"] {
+        assert!(drawn.contains(text), "{text} is in the picture");
+    }
     let csv = std::fs::read_to_string(folder.path().join("sheet.csv")).unwrap();
     assert_eq!(csv.lines().count(), 4, "a head and three rows: {csv}");
     let table = plumbtone(folder.path(), "keys", &["scale.wav"]).stdout;
     let hole = table.lines().find(|line| line.contains("B3") && !line.contains("Bb3"));
     assert!(hole.is_some_and(|line| line.contains("not found")), "{table}");
+}
+
+#[test]
+fn without_a_key_there_is_no_picture() {
+    let folder = folder_with([("silence.wav", wav(&[silence(1.0)], Coding::S16))]);
+    let run = plumbtone(folder.path(), "keys", &["--picture", "sheet.svg", "silence.wav"]);
+    assert_eq!(run.status, Some(2), "{}", run.stderr);
+    assert!(run.stderr.contains("no picture was drawn: no key was found"), "{}", run.stderr);
+    assert!(!folder.path().join("sheet.svg").exists(), "no picture of silence");
 }
 
 #[test]

@@ -4,7 +4,6 @@
 //! takes it.
 
 use std::sync::{Arc, Mutex, MutexGuard, PoisonError, TryLockError};
-use std::thread::JoinHandle;
 
 use nice_plug::params::persist::PersistentField;
 use serde::{Deserialize, Serialize};
@@ -12,6 +11,7 @@ use serde::{Deserialize, Serialize};
 use super::curve::{COLUMNS_IN_ALL_MAX, Curve};
 use super::report::{self, Job};
 use super::result::{COMMENT_MAX, CheckResult, VerdictWord};
+use crate::report_files::{self, Place, Told, Writers};
 
 /// Version of the stored form. A newer one is read as far as it is understood.
 pub(super) const FORMAT: u64 = 1;
@@ -33,8 +33,7 @@ struct Book {
     /// What the host calls the track; empty while it does not tell.
     track: String,
     /// Reports being written.
-    writing: Vec<JoinHandle<()>>,
-    told: Arc<Mutex<Option<Told>>>,
+    writers: Writers,
 }
 
 /// What a session keeps of the checks.
@@ -78,15 +77,6 @@ pub struct RunningCheck {
     pub from: f64,
 }
 
-/// What came of a report.
-#[derive(Debug, Clone, PartialEq, Eq)]
-pub enum Told {
-    /// It is there: its files without their endings.
-    Written(String),
-    /// It could not be written: why.
-    Failed(String),
-}
-
 /// All of it as it stands at one time.
 #[derive(Debug, Clone, Default)]
 pub struct Snapshot {
@@ -122,10 +112,8 @@ impl Results {
             Err(TryLockError::WouldBlock) => return,
         };
         snapshot.running.clone_from(&book.running);
-        snapshot.writing = book.writing.iter().any(|thread| !thread.is_finished());
-        if let Ok(told) = book.told.try_lock() {
-            snapshot.told.clone_from(&told);
-        }
+        snapshot.writing = book.writers.is_busy();
+        book.writers.look(&mut snapshot.told);
         if snapshot.revision != Some(book.revision) {
             snapshot.revision = Some(book.revision);
             snapshot.stored.clone_from(&book.stored);
@@ -159,6 +147,12 @@ impl Results {
         self.change(|stored| stored.every_pass = every);
     }
 
+    /// How reports are written.
+    #[must_use]
+    pub fn reports(&self) -> Reports {
+        self.lock().stored.reports.clone()
+    }
+
     /// Sets how reports are written.
     pub fn set_reports(&self, reports: Reports) {
         let fits = |text: &String| text.chars().count() <= TEXT_MAX;
@@ -179,11 +173,8 @@ impl Results {
 
     /// Waits for the reports that are being written.
     pub(crate) fn finish_reports(&self) {
-        let writing = core::mem::take(&mut self.lock().writing);
-        for thread in writing {
-            // A writer that panicked has told nothing, and there is nothing to add.
-            let _ = thread.join();
-        }
+        let threads = self.lock().writers.take();
+        report_files::finish(threads);
     }
 
     /// A bounce has ended in which these results came.
@@ -212,23 +203,16 @@ impl Results {
         self.lock().running = running;
     }
 
+    /// Where a report goes, and what it is called.
+    pub(crate) fn place(&self) -> Place {
+        self.lock().place()
+    }
+
     fn report_of(&self, wanted: impl Fn(&CheckResult) -> bool) {
         let mut book = self.lock();
-        book.writing.retain(|thread| !thread.is_finished());
-        let Stored { reports, results, .. } = &book.stored;
-        let results: Vec<CheckResult> = results.iter().filter(|r| wanted(r)).cloned().collect();
-        let mut reports = reports.clone();
-        if reports.name.trim().is_empty() {
-            reports.name.clone_from(&book.track);
-        }
-        let job = Job::new(reports, results);
-        let told = Arc::clone(&book.told);
-        let thread = std::thread::Builder::new().name("plumbtone-report".to_owned());
-        let spawned = thread.spawn(move || tell(&told, report::write(&job)));
-        match spawned {
-            Ok(thread) => book.writing.push(thread),
-            Err(error) => tell(&book.told, Err(error.to_string())),
-        }
+        let results = book.stored.results.iter().filter(|r| wanted(r)).cloned().collect();
+        let job = Job { place: book.place(), results };
+        book.writers.start(move || report::write(&job));
     }
 
     fn change<R>(&self, f: impl FnOnce(&mut Stored) -> R) -> R {
@@ -239,6 +223,14 @@ impl Results {
 
     fn lock(&self) -> MutexGuard<'_, Book> {
         self.0.lock().unwrap_or_else(PoisonError::into_inner)
+    }
+}
+
+impl Book {
+    fn place(&self) -> Place {
+        let Reports { folder, name, .. } = &self.stored.reports;
+        let name = if name.trim().is_empty() { &self.track } else { name };
+        Place::new(folder.clone(), name.clone())
     }
 }
 
@@ -265,14 +257,6 @@ impl Stored {
             }
         }
     }
-}
-
-fn tell(to: &Mutex<Option<Told>>, came: Result<String, String>) {
-    let told = match came {
-        Ok(place) => Told::Written(place),
-        Err(why) => Told::Failed(why),
-    };
-    *to.lock().unwrap_or_else(PoisonError::into_inner) = Some(told);
 }
 
 impl<'a> PersistentField<'a, Stored> for Results {

@@ -4,6 +4,8 @@ use egui::{Align2, Rect, Ui, pos2, vec2};
 use plumbtone_analysis::tuning::Nearest;
 use plumbtone_analysis::{Pitch, State};
 
+use super::alias::Alias;
+use super::captures;
 use super::field::{self, Bench, Field, Place};
 use super::ink;
 use super::knob::Knob;
@@ -16,8 +18,9 @@ use super::words::{self, Saying};
 pub(crate) const HEIGHT: f32 = 76.0;
 /// Buttons: size, and from the right edge.
 const BUTTON: egui::Vec2 = vec2(72.0, 32.0);
-/// Width of a field, and of all that stands left of the fields at its widest.
-const FIELD: f32 = 104.0;
+/// Width of a field, at least and at most, and of all that stands left of the fields at its widest.
+const FIELD: f32 = 92.0;
+const FIELD_MOST: f32 = 124.0;
 const FIGURES: f32 = 372.0;
 /// Deviation below which "less than" is said, in cents.
 const LEAST_SD: f64 = 0.005;
@@ -63,6 +66,7 @@ pub(crate) struct Figures {
     cents: Steady,
     cents_sd: Steady,
     hz: Steady,
+    alias: Option<Alias>,
 }
 
 impl Figures {
@@ -87,6 +91,7 @@ impl Figures {
         self.cents_sd.update(sd, sd / 3.0, elapsed_s, 2);
         let sd_hz = pitch.f0_hz * sd / 1731.0;
         self.hz.update(pitch.f0_hz, sd_hz, elapsed_s, 2);
+        self.alias = Alias::next(self.alias.take(), &readout.reading, readout.sample_rate_hz);
         if readout.reading.state == State::Gliding {
             // A pitch on the move is followed without delay.
             self.cents.clear();
@@ -116,7 +121,7 @@ pub(crate) fn show(
             unpitched(ui, pos2(left, rect.top()), shown, word, palette);
         }
     }
-    controls(ui, rect, bench);
+    controls(ui, rect, shown, figures.alias.as_ref(), bench);
 }
 
 /// The note of the reading.
@@ -215,46 +220,51 @@ fn since(shown: &Shown<'_>) -> String {
     words::lasting(lasted / readout.sample_rate_hz)
 }
 
-fn controls(ui: &mut Ui, rect: Rect, bench: &mut Bench<'_>) {
-    let buttons = [
-        (
-            Knob::Freeze,
-            "Freeze",
-            "Holds the present reading on display. Measuring and the drift check go on.",
-        ),
-        (
-            Knob::Check,
-            "Check",
-            "Arms the drift check: the pitch is measured even while the editor is closed.",
-        ),
-    ];
-    let mut right = rect.right() - 14.0;
-    if rect.width() < NARROW {
-        for (k, (knob, caption, help)) in buttons.into_iter().enumerate() {
-            let y = rect.top() + 9.0 + 31.0 * k as f32;
-            let place = Rect::from_min_size(pos2(right - BUTTON.x, y), vec2(BUTTON.x, 27.0));
-            field::switch(ui, place, (knob, caption, help), bench);
+/// Freeze, Capture and Check, what is set, and the worst alias if there is one.
+fn controls(
+    ui: &mut Ui,
+    rect: Rect,
+    shown: &Shown<'_>,
+    alias: Option<&Alias>,
+    bench: &mut Bench<'_>,
+) {
+    let narrow = rect.width() < NARROW;
+    let place = |number: f32| {
+        if narrow {
+            let size = vec2(BUTTON.x, 21.0);
+            let y = rect.top() + 4.0 + 23.0 * number;
+            Rect::from_min_size(pos2(rect.right() - 14.0 - size.x, y), size)
+        } else {
+            let x = rect.right() - 14.0 - BUTTON.x - (2.0 - number) * (BUTTON.x + 8.0);
+            Rect::from_min_size(pos2(x, rect.top() + 22.0), BUTTON)
         }
+    };
+    let help = "Holds the present reading on display. Measuring and the drift check go on.";
+    field::switch(ui, place(0.0), (Knob::Freeze, "Freeze", help), bench);
+    let help = "Keeps the present reading, to compare it later. A host can do the same with the parameter Capture: each time it is switched on.";
+    if field::button(ui, place(1.0), "Capture", bench.palette).on_hover_text(help).clicked() {
+        captures::capture(shown);
+    }
+    let help = "Arms the drift check: the pitch is measured even while the editor is closed.";
+    field::switch(ui, place(2.0), (Knob::Check, "Check", help), bench);
+    if narrow {
         return;
     }
-    for (knob, caption, help) in buttons.into_iter().rev() {
-        let place = Rect::from_min_size(pos2(right - BUTTON.x, rect.top() + 22.0), BUTTON);
-        field::switch(ui, place, (knob, caption, help), bench);
-        right -= BUTTON.x + 8.0;
-    }
     let left = rect.left() + 20.0 + FIGURES;
-    let room = right - GAP - left;
-    let count = FIELDS
-        .iter()
-        .scan(0.0, |used, _| {
-            *used += FIELD;
-            Some(*used)
-        })
-        .filter(|&used| used <= room)
-        .count();
-    for (number, field) in FIELDS.iter().take(count).enumerate() {
-        let x = left + number as f32 * (room / count as f32).min(124.0);
-        let place = Rect::from_min_size(pos2(x, rect.top() + 20.0), vec2(FIELD - 14.0, 38.0));
-        field::field(ui, place, field, bench);
+    let room = place(0.0).left() - GAP - left;
+    let parts = FIELDS.len() + usize::from(alias.is_some());
+    let count = (1..=parts).take_while(|&count| count as f32 * FIELD <= room).count();
+    let width = (room / count.max(1) as f32).min(FIELD_MOST);
+    let slot = |number: usize| {
+        let x = left + number as f32 * width;
+        Rect::from_min_size(pos2(x, rect.top() + 20.0), vec2(width - 8.0, 38.0))
+    };
+    let fields = count.min(parts - usize::from(alias.is_some()));
+    let fields = if alias.is_some() && count < parts { count.saturating_sub(1) } else { fields };
+    for (number, field) in FIELDS.iter().take(fields).enumerate() {
+        field::field(ui, slot(number), field, bench);
+    }
+    if let Some(alias) = alias.filter(|_| count > 0) {
+        alias.show(ui, slot(fields), bench.palette);
     }
 }

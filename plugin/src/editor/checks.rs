@@ -1,21 +1,19 @@
 //! The side panel's drift checks: results, what is done with them, and their reports.
 
 mod midi;
-mod reports;
+pub(super) mod reports;
 mod rows;
 
-use egui::{Align2, Color32, Pos2, Rect, RichText, ScrollArea, Shape, Stroke, Ui, pos2, vec2};
+use egui::{Color32, Pos2, Rect, RichText, Shape, Stroke, Ui, pos2};
 
 use super::field::Bench;
+use super::parts::{self, act, say, tick};
 use super::steady::signed;
-use super::theme::{FIGURE, PAD, Palette, SMALL, sans};
+use super::theme::{FIGURE, Palette};
 use crate::check::{CheckResult, Results, Snapshot, VerdictWord};
 
 /// What is told where there is nothing yet.
 const NOTHING: &str = "Switch Check on, or automate it: each stretch over which it is on ends in a verdict here, kept with the session.";
-
-/// Room for the bar that the list scrolls by.
-const BAR: f32 = 14.0;
 
 /// The results as the editor saw them last, and what is opened of them.
 #[derive(Debug, Clone, Default)]
@@ -58,23 +56,13 @@ impl Checks {
 /// Draws it.
 pub(crate) fn show(ui: &mut Ui, rect: Rect, checks: &mut Checks, bench: &mut Bench<'_>) {
     let palette = bench.palette;
-    let area = rect.shrink2(vec2(PAD, 0.0));
-    let mut whole = ui.new_child(egui::UiBuilder::new().max_rect(area));
-    // A fade in the toolkit's colour would not be the card's.
-    whole.spacing_mut().scroll.fade.strength = 0.0;
-    whole.visuals_mut().widgets.inactive.bg_stroke = Stroke::new(1.0, palette.edge);
-    let list = ScrollArea::vertical().id_salt("checks").auto_shrink(false);
-    list.show(&mut whole, |ui| {
-        ui.set_width(area.width() - BAR);
-        ui.spacing_mut().item_spacing = vec2(6.0, 5.0);
-        ui.add_space(8.0);
+    parts::list(ui, rect, "checks", palette, |ui| {
         let results = &bench.parameters.results;
         head(ui, checks, palette);
         rows::show(ui, checks, results, palette);
         passes(ui, checks, results, palette);
         reports::show(ui, checks, results, palette);
         midi::show(ui, bench);
-        ui.add_space(8.0);
     });
     if checks.snapshot.writing {
         // What comes of the report is told without further news.
@@ -143,22 +131,6 @@ fn passes(ui: &mut Ui, checks: &mut Checks, results: &Results, palette: &Palette
     });
 }
 
-/// A sentence in passing.
-fn say(ui: &mut Ui, text: &str, palette: &Palette) {
-    ui.label(RichText::new(text).size(SMALL).color(palette.dim));
-}
-
-/// A small button.
-fn act(ui: &mut Ui, text: &str, palette: &Palette) -> bool {
-    let button = egui::Button::new(RichText::new(text).size(SMALL).color(palette.ink));
-    ui.add(button.fill(palette.ground).stroke(Stroke::new(1.0, palette.edge))).clicked()
-}
-
-/// A setting that is on or off; true when it changed.
-fn tick(ui: &mut Ui, on: &mut bool, text: &str, help: &str) -> bool {
-    ui.checkbox(on, RichText::new(text).size(FIGURE)).on_hover_text(help).changed()
-}
-
 /// The colour of a verdict; a word or a shape always stands beside it.
 pub(crate) fn colour(verdict: VerdictWord, palette: &Palette) -> Color32 {
     match verdict {
@@ -184,9 +156,4 @@ pub(crate) fn shape(at: Pos2, verdict: VerdictWord, palette: &Palette) -> Shape 
 
 fn worst(cents: Option<f64>) -> String {
     cents.map_or_else(String::new, |cents| format!(", worst {} ct", signed(cents, 1)))
-}
-
-/// Text at a place of a row.
-fn write(ui: &Ui, (x, y): (f32, f32), text: &str, size: f32, colour: Color32) {
-    ui.painter().text(pos2(x, y), Align2::LEFT_CENTER, text, sans(size), colour);
 }

@@ -2,9 +2,12 @@
 
 use std::fmt::Write as _;
 
+use plumbtone_analysis::recipe::Recipe;
+
 use super::screen::Shown;
 use super::steady::signed;
 use super::words;
+use crate::captures::Capture;
 
 /// The figures as lines of text.
 pub(crate) fn text(shown: &Shown<'_>) -> String {
@@ -51,6 +54,23 @@ pub(crate) fn text(shown: &Shown<'_>) -> String {
     for stray in &reading.strays {
         let (hz, level) = (stray.frequency_hz, signed(stray.level_dbfs, 2));
         let _ = writeln!(out, "{:>7} {hz:>12.3} {:>25} {}", "\u{2013}", level, words::stray(stray));
+    }
+    out
+}
+
+/// What a capture's partials are made of, as CSV: the columns of the command line's recipe.
+pub(crate) fn recipe_csv(capture: &Capture) -> String {
+    let mut out = String::from(
+        "number,ratio,ratio_sd,frequency_hz,amplitude,amplitude_sd,level_dbfs,phase_rad\n",
+    );
+    let Some(recipe) = Recipe::of(&capture.reading()) else { return out };
+    for p in &recipe.ingredients {
+        let level_dbfs = 20.0 * p.amplitude.log10();
+        let _ = writeln!(
+            out,
+            "{},{},{},{},{},{},{level_dbfs},{}",
+            p.number, p.ratio, p.ratio_sd, p.frequency_hz, p.amplitude, p.amplitude_sd, p.phase_rad
+        );
     }
     out
 }

@@ -1,6 +1,8 @@
 //! Drawing with names: whatever is painted as text is also told to screen readers.
 
-use egui::{Align2, Color32, FontId, Pos2, Rect, Response, Role, Sense, Ui, WidgetInfo, vec2};
+use egui::{
+    Align2, Color32, FontId, Pos2, Rect, Response, Role, Sense, Stroke, Ui, WidgetInfo, pos2, vec2,
+};
 
 /// Paints text at a place and labels it. Text that is wider than `width` is cut with an ellipsis.
 pub(crate) fn text(
@@ -53,9 +55,21 @@ pub(crate) fn mark(
     ui.painter().text(at, align, text, font, colour)
 }
 
+/// Slanted lines over a place where something is missing.
+pub(crate) fn hatch(ui: &Ui, area: Rect, colour: Color32) {
+    let painter = ui.painter().with_clip_rect(area);
+    let stroke = Stroke::new(1.0, colour);
+    let mut at = area.left() - area.height();
+    while at < area.right() {
+        painter
+            .line_segment([pos2(at, area.bottom()), pos2(at + area.height(), area.top())], stroke);
+        at += 7.0;
+    }
+}
+
 /// A diamond: the shape of what belongs to no partial.
 pub(crate) fn diamond(ui: &Ui, centre: Pos2, radius: f32, colour: Color32) {
     let points = [vec2(0.0, -radius), vec2(radius, 0.0), vec2(0.0, radius), vec2(-radius, 0.0)]
         .map(|offset| centre + offset);
-    ui.painter().add(egui::Shape::closed_line(points.to_vec(), egui::Stroke::new(1.5, colour)));
+    ui.painter().add(egui::Shape::closed_line(points.to_vec(), Stroke::new(1.5, colour)));
 }

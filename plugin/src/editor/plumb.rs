@@ -4,27 +4,32 @@ mod axis;
 mod memory;
 mod pinned;
 mod rows;
+mod scroll;
 mod strays;
 
-use egui::{Align2, Key, Rangef, Rect, Role, Sense, Stroke, Ui, WidgetInfo, pos2, vec2};
+use egui::{Align2, Key, Rangef, Rect, Stroke, Ui, pos2, vec2};
 use plumbtone_analysis::{Partial, Reading};
 
-use self::axis::{Axis, CalmCents, CalmFloor, CalmRows, RowAxis};
-pub(crate) use self::axis::{CENTS, Calm, round_step};
+use self::axis::CalmFloor;
+pub(crate) use self::axis::{
+    Axis, CENTS, Calm, CalmCents, CalmRange, CalmRows, RowAxis, round_step,
+};
 use self::memory::Memory;
 use self::rows::Columns;
-use super::field;
+pub(crate) use self::rows::{WHISKER_SD, figures_every};
+pub(crate) use self::scroll::Scroll;
 use super::ink;
 use super::screen::Shown;
 use super::steady::signed;
 use super::theme::{CORNER, PAD, Palette, SMALL, mono, sans};
 use super::words;
+use crate::voices::Voices;
 
 /// Height of the captions above the rows and of the scale below them.
 const HEAD: f32 = 28.0;
 const FOOT: f32 = 28.0;
-/// Fewest and most rows.
-const ROWS: (f32, f32) = (8.0, 128.0);
+/// What a screen reader calls it.
+const NAME: &str = "Plumb view: partials off the harmonic series";
 /// Widths: partial numbers, lane of the strays, and the figures of Hz and dB.
 const NUMBERS: f32 = 42.0;
 const LANE: f32 = 48.0;
@@ -93,10 +98,7 @@ pub(crate) struct Plumb {
     fitting_rows: f32,
     calm_floor: CalmFloor,
     fitting_floor: f64,
-    /// Rows to be seen, when the user zoomed.
-    rows: Option<f32>,
-    /// Number of the lowest row.
-    first: f32,
+    scroll: Scroll,
     pub(crate) pinned: Option<u32>,
     memory: Memory,
 }
@@ -112,8 +114,7 @@ impl Default for Plumb {
             fitting_rows: 16.0,
             calm_floor: CalmFloor::default(),
             fitting_floor: -80.0,
-            rows: None,
-            first: 1.0,
+            scroll: Scroll::default(),
             pinned: None,
             memory: Memory::default(),
         }
@@ -130,12 +131,6 @@ impl Plumb {
         }
     }
 
-    /// Back to the automatic choice of rows.
-    pub(crate) fn fit(&mut self) {
-        self.rows = None;
-        self.first = 1.0;
-    }
-
     /// Draws it.
     pub(crate) fn show(&mut self, ui: &mut Ui, rect: Rect, shown: &Shown<'_>, palette: &Palette) {
         ui.painter().rect_filled(rect, CORNER, palette.card);
@@ -149,11 +144,13 @@ impl Plumb {
         let held = shown.readout.measured && shown.readout.pitch().is_some();
         let partials: &[Partial] = if held { &reading.partials } else { &[] };
         let columns = self.columns(body, shown, partials);
-        self.navigate(ui, body, columns.rows);
+        if self.scroll.navigate(ui, body, columns.rows, NAME).has_focus() {
+            self.keys(ui);
+        }
         if held {
             captions(ui, &columns, self.levels, palette);
             grid(ui, &columns, palette);
-            self.sound(ui, &columns, reading, palette);
+            self.sound(ui, &columns, reading, &shown.readout.voices, palette);
         } else {
             nothing(ui, body, shown, palette);
         }
@@ -165,11 +162,20 @@ impl Plumb {
         }
     }
 
-    fn sound(&mut self, ui: &mut Ui, columns: &Columns, reading: &Reading, palette: &Palette) {
+    fn sound(
+        &mut self,
+        ui: &mut Ui,
+        columns: &Columns,
+        reading: &Reading,
+        voices: &Voices,
+        palette: &Palette,
+    ) {
         let Some(pitch) = &reading.pitch else { return };
         let zero = self.levels.zero_dbfs(&reading.partials);
         let level = |dbfs: f64| dbfs - zero;
-        let done = rows::show(ui, columns, (&reading.partials, self.pinned), level, palette);
+        let cluster = |number| voices.of(number, pitch.f0_hz);
+        let partials = (&reading.partials[..], self.pinned);
+        let done = rows::show(ui, columns, partials, (level, cluster), palette);
         let highest = reading.partials.iter().map(|p| p.number).max().unwrap_or(0);
         rows::curve(ui, columns, reading.stretch, highest, palette);
         let lane = strays::Lane {
@@ -189,13 +195,8 @@ impl Plumb {
         if !partials.is_empty() {
             self.fitting_rows = self.calm_rows.update(highest, shown.time_s);
         }
-        let count = self.rows.unwrap_or(self.fitting_rows).clamp(ROWS.0, ROWS.1);
-        self.first = self.first.clamp(1.0, (ROWS.1 - count + 1.0).max(1.0));
-        let rows = RowAxis {
-            y: Rangef::new(rect.top() + HEAD, rect.bottom() - FOOT),
-            first: self.first,
-            count,
-        };
+        let y = Rangef::new(rect.top() + HEAD, rect.bottom() - FOOT);
+        let rows = self.scroll.axis(y, self.fitting_rows);
         let (low, high) = self.scale(shown, partials);
         if !partials.is_empty() {
             self.refit_floor(shown);
@@ -251,41 +252,8 @@ impl Plumb {
         }
     }
 
-    /// Scroll and zoom, by wheel and keys.
-    fn navigate(&mut self, ui: &Ui, rect: Rect, axis: RowAxis) {
-        let response = ui.interact(rect, ui.scope_id().with("ground"), Sense::click());
-        response.widget_info(|| {
-            WidgetInfo::labeled(
-                Role::GenericContainer,
-                true,
-                "Plumb view: partials off the harmonic series",
-            )
-        });
-        if response.double_clicked() {
-            self.fit();
-        }
-        if ui.rect_contains_pointer(rect) {
-            let (scroll, zoom) =
-                ui.input(|input| (input.smooth_scroll_delta().y, input.zoom_delta()));
-            if (zoom - 1.0).abs() > 1e-3 {
-                let at =
-                    ui.input(|input| input.pointer.hover_pos()).map_or(rect.center().y, |p| p.y);
-                let number = axis.first - 0.75 + (axis.y.max - at) / axis.row();
-                let count = (axis.count / zoom).clamp(ROWS.0, ROWS.1);
-                self.first = number - (number - axis.first) * count / axis.count;
-                self.rows = Some(count);
-            } else if scroll != 0.0 {
-                self.rows = Some(axis.count);
-                self.first += scroll / axis.row();
-            }
-        }
-        field::keep_arrows(ui, &response);
-        if response.has_focus() {
-            self.keys(ui, axis);
-        }
-    }
-
-    fn keys(&mut self, ui: &Ui, axis: RowAxis) {
+    /// Pins by keys.
+    fn keys(&mut self, ui: &Ui) {
         let pressed = |key| ui.input(|input| input.key_pressed(key));
         let pinned = self.pinned.unwrap_or(0);
         if pressed(Key::ArrowUp) {
@@ -296,20 +264,6 @@ impl Plumb {
         }
         if pressed(Key::Escape) {
             self.pinned = None;
-        }
-        for (key, by) in [(Key::Plus, 0.8), (Key::Equals, 0.8), (Key::Minus, 1.25)] {
-            if pressed(key) {
-                self.rows = Some((axis.count * by).clamp(ROWS.0, ROWS.1));
-            }
-        }
-        for (key, by) in [(Key::PageUp, 0.8), (Key::PageDown, -0.8)] {
-            if pressed(key) {
-                self.rows = Some(axis.count);
-                self.first += by * axis.count;
-            }
-        }
-        if pressed(Key::Home) {
-            self.fit();
         }
     }
 }

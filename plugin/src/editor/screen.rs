@@ -5,11 +5,13 @@ use std::sync::Mutex;
 use egui::{Rect, Ui, pos2};
 
 use super::band::{self, Figures};
+use super::captures::{self, Captures, Side};
 use super::checks::Checks;
 use super::drift::Drift;
 use super::field::{Bench, Editing};
+use super::keys::Keys;
 use super::knob::Gesture;
-use super::panel::{self, Copy, Tab};
+use super::panel::{self, Copy, Tab, Views};
 use super::plumb::Plumb;
 use super::settings::Look;
 use super::theme::{GAP, Theme};
@@ -61,7 +63,9 @@ pub struct Screen {
     sound: sound::Figures,
     plumb: Plumb,
     drift: Drift,
+    captures: Captures,
     checks: Checks,
+    keys: Keys,
     editing: Editing,
 }
 
@@ -94,6 +98,11 @@ impl Screen {
         self.plumb.pinned = partial;
     }
 
+    /// Compares a capture, by its number, with another one or with what is heard; without one nothing is compared.
+    pub fn compare(&mut self, first: Option<u64>, second: Option<u64>) {
+        self.captures.choose(first, second.map_or(Side::Live, Side::Kept));
+    }
+
     /// Shows so many seconds of drift.
     pub fn span(&mut self, seconds: f64) {
         self.drift.span(seconds);
@@ -109,6 +118,8 @@ impl Screen {
             ui.ctx().copy_text(match copy {
                 Copy::Text => copy::text(shown),
                 Copy::Csv => copy::csv(shown),
+                Copy::KeysText => self.keys.text(shown),
+                Copy::KeysCsv => self.keys.csv(shown),
                 Copy::Picture => self.svg(area.size(), shown),
             });
         }
@@ -129,7 +140,9 @@ impl Screen {
         self.figures.update(shown);
         self.sound.update(shown);
         self.plumb.update(shown);
+        self.captures.update(shown);
         self.checks.update(&shown.parameters.results);
+        self.keys.update(shown);
         self.drift.update(shown.trail, width - 2.0 * MARGIN, shown);
     }
 
@@ -143,7 +156,19 @@ impl Screen {
         let palette = self.theme.palette();
         *ui.visuals_mut() = self.theme.visuals();
         ui.painter().rect_filled(area, 0.0, palette.ground);
-        let Self { theme, zoom, tab, figures, sound, plumb, drift, checks, editing } = self;
+        let Self {
+            theme,
+            zoom,
+            tab,
+            figures,
+            sound,
+            plumb,
+            drift,
+            captures,
+            checks,
+            keys,
+            editing,
+        } = self;
         let mut bench = Bench { parameters: shown.parameters, palette, editing, gestures };
         let top = area.top() + band::HEIGHT;
         band::show(ui, area.with_max_y(top), shown, figures, &mut bench);
@@ -161,14 +186,22 @@ impl Screen {
             body.max.y = trace.top() - GAP;
         }
         let mut asked = None;
+        let mut of_keys = false;
         if area.width() >= WIDE {
             let split = body.right() - PANEL;
             let side = Rect::from_min_max(pos2(split, body.top()), body.max);
             let mut look = Look { theme, zoom, plumb };
-            asked = panel::show(ui, side, (tab, &mut look, checks), (shown, sound), &mut bench);
+            let views = Views { tab, look: &mut look, captures, checks, keys };
+            asked = panel::show(ui, side, views, (shown, sound), &mut bench);
             body.max.x = split - GAP;
+            of_keys = *tab == Tab::Keys;
         }
-        plumb.show(ui, body, shown, palette);
+        match captures.comparison() {
+            _ if of_keys => keys.picture(ui, body, shown, palette),
+            Some(comparison) => comparison.show(ui, body, palette),
+            None => plumb.show(ui, body, shown, palette),
+        }
+        captures::tell(ui, body, captures, shown.time_s, palette);
         if let Some(stretch) = checks.jump.take() {
             drift.jump(stretch);
             ui.ctx().request_repaint();

@@ -6,13 +6,14 @@ use egui::{Align2, Rect, Sense, Stroke, Ui, pos2, vec2};
 use plumbtone_analysis::Stray;
 use plumbtone_analysis::tuning::ratio;
 
-pub(crate) use self::figures::Figures;
+pub(crate) use self::figures::{Figures, power_of_ten, stretch};
 use super::ink;
 use super::screen::Shown;
 use super::steady::signed;
 use super::theme::{FIGURE, PAD, Palette, SMALL, mono, sans};
 use super::words;
 use crate::offset::{Explanation, explain};
+use crate::voices::Summary;
 
 /// Height of a line, and of one in the list of strays.
 const LINE: f32 = 25.0;
@@ -21,6 +22,8 @@ const STRAY_LINE: f32 = 22.0;
 const HEADING: f32 = 38.0;
 /// Room that is kept for the whole track below the strays.
 const TRACK: f32 = 98.0;
+/// The same for the last note's voices.
+const VOICES: f32 = 78.0;
 
 /// Draws it.
 pub(crate) fn show(
@@ -53,10 +56,12 @@ fn all(ui: &mut Ui, area: Rect, shown: &Shown<'_>, figures: &Figures, palette: &
     if held && !shown.readout.reading.strays.is_empty() {
         let strays = &shown.readout.reading.strays;
         let track = if shown.readout.offset.is_some() { TRACK } else { 0.0 };
+        let track = track + if shown.readout.voices.clusters.is_empty() { 0.0 } else { VOICES };
         let least = y + HEADING + 2.0 * STRAY_LINE;
         let lines = area.with_min_y(y).with_max_y((area.bottom() - track).max(least));
         y = self::strays(ui, lines, strays, shown, palette);
     }
+    let y = voices(ui, area.with_min_y(y), shown, palette);
     track(ui, area.with_min_y(y), shown, palette)
 }
 
@@ -101,6 +106,38 @@ fn strays(ui: &mut Ui, area: Rect, strays: &[Stray], shown: &Shown<'_>, palette:
             signed(stray.level_dbfs - strongest, 1)
         ));
         y += STRAY_LINE;
+    }
+    y
+}
+
+/// Partials that are several lines.
+fn voices(ui: &mut Ui, area: Rect, shown: &Shown<'_>, palette: &Palette) -> f32 {
+    let voices = &shown.readout.voices;
+    let Some(Summary { lines, spread_cents, lowest, highest }) = voices.summary() else {
+        return area.top();
+    };
+    let help = "How many of the partials are no single line: detuned voices, a chorus, strings in pairs. Told from the last whole note, for a reading is too short to tell such lines apart; the plumb view shows how wide they lie.";
+    let mut y = heading(ui, area, "several lines, in the last note", help, palette);
+    let note = shown.readout.tuning.nearest(voices.f0_hz).map(|nearest| words::note(nearest.note));
+    let count = match lines {
+        (few, most) if few == most => format!("{few} lines"),
+        (few, most) => format!("{few} to {most} lines"),
+    };
+    let first = format!(
+        "{}: {count}, {spread_cents:.1} ct wide, in {} of {}",
+        note.unwrap_or_else(|| "?".to_owned()),
+        voices.clusters.len(),
+        voices.partials
+    );
+    let mut second = format!("beats: partial {} {:.2} Hz", lowest.0, lowest.1);
+    if highest.0 != lowest.0 {
+        second = format!("{second}, {} {:.2} Hz", highest.0, highest.1);
+    }
+    for (line, colour) in [(first, palette.ink), (second, palette.dim)] {
+        let at = (pos2(area.left(), y + 9.0), Align2::LEFT_CENTER);
+        ink::text_within(ui, at, (&line, area.width()), sans(FIGURE), colour)
+            .on_hover_text(line.clone());
+        y += 20.0;
     }
     y
 }

@@ -55,6 +55,8 @@ pub(crate) struct Palette {
     pub(crate) within_ground: Color32,
     /// Under the pointer, or chosen.
     pub(crate) lit: Color32,
+    /// Of captures.
+    pub(crate) captures: [Color32; 6],
 }
 
 const DARK: Palette = Palette {
@@ -69,6 +71,14 @@ const DARK: Palette = Palette {
     within: Color32::from_rgb(0x2B, 0xB5, 0x92),
     within_ground: Color32::from_rgb(0x17, 0x33, 0x2C),
     lit: Color32::from_rgb(0x26, 0x2E, 0x39),
+    captures: [
+        Color32::from_rgb(0xE6, 0x9F, 0x00),
+        Color32::from_rgb(0x56, 0xB4, 0xE9),
+        Color32::from_rgb(0xD9, 0x86, 0xB4),
+        Color32::from_rgb(0x2B, 0xB5, 0x92),
+        Color32::from_rgb(0xEF, 0xE3, 0x50),
+        Color32::from_rgb(0xA8, 0x9B, 0xF0),
+    ],
 };
 
 const LIGHT: Palette = Palette {
@@ -83,6 +93,14 @@ const LIGHT: Palette = Palette {
     within: Color32::from_rgb(0x06, 0x75, 0x58),
     within_ground: Color32::from_rgb(0xDA, 0xF1, 0xE9),
     lit: Color32::from_rgb(0xE8, 0xEF, 0xF7),
+    captures: [
+        Color32::from_rgb(0x8A, 0x5A, 0x00),
+        Color32::from_rgb(0x00, 0x6B, 0xB0),
+        Color32::from_rgb(0xA0, 0x3B, 0x74),
+        Color32::from_rgb(0x06, 0x75, 0x58),
+        Color32::from_rgb(0x6B, 0x66, 0x00),
+        Color32::from_rgb(0x5A, 0x48, 0xB8),
+    ],
 };
 
 impl Theme {
@@ -198,7 +216,10 @@ mod tests {
                     ("pitch", palette.pitch),
                     ("stray", palette.stray),
                     ("within", palette.within),
-                ] {
+                ]
+                .into_iter()
+                .chain(palette.captures.map(|colour| ("capture", colour)))
+                {
                     let found = contrast(ink, ground);
                     assert!(found >= 4.5, "{theme:?} {name} on {ground:?}: {found:.2}");
                 }

@@ -1,6 +1,7 @@
 //! What the editor says in words.
 
 use plumbtone_analysis::tuning::NoteName;
+use plumbtone_analysis::waveform::WaveformFit;
 use plumbtone_analysis::{Reading, State, Stray, StrayKind};
 
 use super::steady::{NONE, signed};
@@ -97,6 +98,12 @@ pub(crate) fn stray_short(stray: &Stray) -> String {
         StrayKind::Mains { .. } => "mains".to_owned(),
         StrayKind::Unexplained => "unexplained".to_owned(),
     }
+}
+
+/// A textbook wave, and how well it fits.
+pub(crate) fn waveform(fit: &WaveformFit) -> String {
+    let width = fit.waveform.width().map_or_else(String::new, |width| format!(" {width:.3}"));
+    format!("{}{width}, to {:.1} dB", fit.waveform.name(), fit.level_rms_db)
 }
 
 /// A level, or silence.

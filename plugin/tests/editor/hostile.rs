@@ -1,10 +1,12 @@
 //! Data that should never come, in windows that nobody would open: everything is drawn, nothing breaks.
 
 use egui::{Vec2, vec2};
+use egui_kittest::kittest::Queryable as _;
 use plumbtone_analysis::{Partial, Pitch, Stray, StrayKind, Stretch};
 use plumbtone_plugin::editor::Theme;
+use plumbtone_plugin::keys::Row;
 
-use crate::scenes::{Scene, strays, string_partials};
+use crate::scenes::{Scene, key_row, strays, string_partials};
 
 const SIZES: [Vec2; 5] = [
     vec2(60.0, 40.0),
@@ -86,6 +88,31 @@ fn figures_that_are_no_numbers() {
 }
 
 #[test]
+fn comparisons_of_all_kinds() {
+    let compared = |change: fn(&mut Scene)| {
+        move || {
+            let mut scene = Scene::captured(Theme::Dark);
+            change(&mut scene);
+            scene.screen.compare(Some(1), None);
+            scene
+        }
+    };
+    draw("128 partials", compared(|s| s.readout.reading.partials = string_partials(128)));
+    draw("no partials", compared(|s| s.readout.reading.partials.clear()));
+    draw("no pitch", compared(|s| s.readout.reading.pitch = None));
+    draw(
+        "no numbers",
+        compared(|scene| {
+            let partials = &mut scene.readout.reading.partials;
+            for (p, value) in partials.iter_mut().zip([f64::NAN, f64::INFINITY, 1e30, -1e30]) {
+                (p.level_dbfs, p.cents_from_harmonic, p.phase_rad) = (value, value, value);
+                (p.level_sd_db, p.cents_sd) = (value, value);
+            }
+        }),
+    );
+}
+
+#[test]
 fn strays_by_the_hundred() {
     let stray = |k: u32| Stray {
         frequency_hz: 30.0 + 17.3 * f64::from(k),
@@ -107,6 +134,55 @@ fn strays_by_the_hundred() {
             }
         }),
     );
+}
+
+/// Draws the key sheet of a scene in windows of all sizes.
+fn draw_keys(what: &str, rows: impl Fn() -> Vec<Row>) {
+    for size in SIZES {
+        let scene = Scene::string(Theme::Light);
+        rows().into_iter().for_each(|row| scene.parameters.sheet.take(row));
+        let mut harness = scene.open(size, 1.0);
+        harness.run_steps(2);
+        // A window that is too narrow for the side panel has no key sheet.
+        if let Some(tab) = harness.query_by_label("Keys") {
+            tab.click();
+        }
+        harness.run_steps(3);
+        let svg = harness.state().svg(size);
+        assert!(svg.ends_with("</svg>\n") && !svg.contains("NaN"), "{what} at {size}");
+    }
+}
+
+#[test]
+fn keys_of_all_kinds() {
+    draw_keys("all keys", || (0..128).map(key_row).collect());
+    draw_keys("the outermost keys", || vec![key_row(0), key_row(127)]);
+    draw_keys("one key", || vec![key_row(127)]);
+    for value in [f64::NAN, f64::INFINITY, f64::NEG_INFINITY, 1e300, -1e300, 0.0] {
+        draw_keys(&format!("keys of {value}"), || {
+            let mut rows: Vec<Row> = (50..60).map(key_row).collect();
+            for row in rows.iter_mut().skip(3) {
+                row.f0_hz = value;
+                row.f0_sd_cents = value;
+                row.length_s = value;
+                row.inharmonicity_b = Some(value);
+                row.inharmonicity_sd = Some(value);
+                row.tilt_db_per_octave = Some(value);
+                row.level_dbfs = Some(value);
+                row.settling_s = Some(value);
+                if let Some(alias) = &mut row.worst_alias {
+                    alias.frequency_hz = value;
+                    alias.over_mask_db = Some(value);
+                }
+            }
+            rows
+        });
+    }
+    draw_keys("an octave off", || {
+        let mut rows: Vec<Row> = (50..60).map(key_row).collect();
+        rows[4].f0_hz *= 2.0;
+        rows
+    });
 }
 
 #[test]

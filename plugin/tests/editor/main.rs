@@ -1,9 +1,11 @@
 //! The editor without a host or a window: what is shown, what is done to the parameters, and its pictures.
 #![expect(clippy::print_stdout, reason = "what is skipped has to be said")]
 
+mod captures;
 mod checks;
 mod controls;
 mod hostile;
+mod keys;
 mod pictures;
 mod scenes;
 mod views;

@@ -63,6 +63,32 @@ fn no_single_pitch() {
 }
 
 #[test]
+fn detuned_voices() {
+    picture("detuned", Scene::detuned(Theme::Dark), SIZE);
+}
+
+#[test]
+fn difference_dark() {
+    difference("difference-dark", Theme::Dark, (1, None));
+}
+
+#[test]
+fn difference_light() {
+    difference("difference-light", Theme::Light, (3, Some(2)));
+}
+
+/// A capture against another, or against what is heard.
+fn difference(name: &str, theme: Theme, (first, second): (u64, Option<u64>)) {
+    let mut scene = Scene::captured(theme);
+    scene.screen.compare(Some(first), second);
+    let mut harness = scene.open(SIZE, 1.0);
+    harness.run_steps(3);
+    harness.get_by_label("Captures").click();
+    harness.run_steps(4);
+    compare(name, &mut harness);
+}
+
+#[test]
 fn checks_dark() {
     checks("checks-dark", Theme::Dark);
 }
@@ -70,6 +96,38 @@ fn checks_dark() {
 #[test]
 fn checks_light() {
     checks("checks-light", Theme::Light);
+}
+
+#[test]
+fn keys_dark() {
+    keys("keys-dark", Scene::keyboard(Theme::Dark), SIZE);
+}
+
+#[test]
+fn keys_light() {
+    keys("keys-light", Scene::keyboard(Theme::Light), SIZE);
+}
+
+#[test]
+fn keys_in_a_small_window() {
+    keys("keys-small", Scene::keyboard(Theme::Dark), vec2(800.0, 480.0));
+}
+
+#[test]
+fn keys_none_yet() {
+    keys("keys-none", Scene::string(Theme::Dark), SIZE);
+}
+
+fn keys(name: &str, scene: Scene, size: Vec2) {
+    let mut harness = scene.open(size, 1.0);
+    harness.run_steps(3);
+    harness.get_by_label("Keys").click();
+    harness.run_steps(3);
+    if let Some(column) = harness.query_by_label_contains("F4 in the picture") {
+        column.hover();
+    }
+    harness.run_steps(4);
+    compare(name, &mut harness);
 }
 
 fn checks(name: &str, theme: Theme) {

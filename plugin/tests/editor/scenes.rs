@@ -5,13 +5,16 @@ use std::sync::{Mutex, PoisonError};
 use egui::Vec2;
 use egui_kittest::Harness;
 use plumbtone_analysis::tuning::ratio;
-use plumbtone_analysis::{Partial, Pitch, Reading, State, Stray, StrayKind, Stretch};
+use plumbtone_analysis::{Cluster, Partial, Pitch, Reading, State, Stray, StrayKind, Stretch};
+use plumbtone_plugin::captures::Capture;
 use plumbtone_plugin::check::{CheckResult, InTrail};
 use plumbtone_plugin::editor::{Gesture, Screen, Shown, Theme, install_fonts};
+use plumbtone_plugin::keys::{KeyAlias, Row};
 use plumbtone_plugin::parameters::Parameters;
 use plumbtone_plugin::readout::{Condition, Readout};
 use plumbtone_plugin::session::{BarBeat, SessionPosition};
 use plumbtone_plugin::trail::Trail;
+use plumbtone_plugin::voices::Voices;
 
 const RATE_HZ: f64 = 48_000.0;
 const HOP: u64 = 480;
@@ -66,6 +69,75 @@ impl Scene {
         scene
     }
 
+    /// The same with a key sheet: a patch over four octaves, a few keys of it still to be played.
+    pub(crate) fn keyboard(theme: Theme) -> Self {
+        let scene = Self::string(theme);
+        for key in (36..=84).filter(|key| ![49, 62, 63, 64, 76].contains(key)) {
+            scene.parameters.sheet.take(key_row(key));
+        }
+        scene.parameters.sheet.take(key_row(60));
+        scene
+    }
+
+    /// The same after a note that two voices played, 7 cents apart.
+    pub(crate) fn detuned(theme: Theme) -> Self {
+        let mut scene = Self::string(theme);
+        let cluster = |number: u32| Cluster {
+            lines: if number.is_multiple_of(5) { 3 } else { 2 },
+            spread_cents: 7.0 + 0.05 * f64::from(number % 3),
+            beat_hz: 0.89 * f64::from(number),
+        };
+        scene.readout.voices = Voices {
+            f0_hz: 220.2,
+            partials: 20,
+            clusters: (2..=18).map(|number| (number, cluster(number))).collect(),
+        };
+        scene
+    }
+
+    /// The same with three captures: two versions of the string before this one, and a saw an octave up.
+    pub(crate) fn captured(theme: Theme) -> Self {
+        let mut scene = Self::string(theme);
+        let now = scene.readout.reading.clone();
+        scene.capture("Pluck, first idea", |p| {
+            let n = f64::from(p.number);
+            p.level_dbfs += [0.0, 1.4, -4.2, 0.1, 2.6][p.number as usize % 5] + 0.25 * n;
+            p.cents_from_harmonic *= 1.3;
+            p.phase_rad = (p.phase_rad + 0.25 * n) % 3.0;
+            p.level_sd_db = 0.02 * n;
+            p.number != 7
+        });
+        scene.capture("Pluck, softer", |p| {
+            p.level_dbfs -= 0.9 * f64::from(p.number);
+            p.number < 15
+        });
+        let f0 = 440.0;
+        scene.readout.reading.pitch = now.pitch.map(|pitch| Pitch { f0_hz: f0, ..pitch });
+        scene.readout.reading.stretch = Some(Stretch { b: 0.0, b_sd: 1e-7 });
+        scene.capture("Saw", |p| {
+            let n = f64::from(p.number);
+            p.frequency_hz = n * f0;
+            p.cents_from_harmonic = 0.0;
+            p.level_dbfs = -9.0 - 20.0 * n.log10();
+            p.phase_rad = -core::f64::consts::FRAC_PI_2;
+            true
+        });
+        scene.readout.reading = now;
+        scene
+    }
+
+    /// Captures what is shown after a change to its partials; a change that gives false drops the partial.
+    fn capture(&mut self, name: &str, change: impl FnMut(&mut Partial) -> bool) {
+        let kept = self.readout.reading.partials.clone();
+        self.readout.reading.partials.retain_mut(change);
+        let capture = Capture::of(&self.readout, 0.4);
+        self.readout.reading.partials = kept;
+        let time = "2026-05-04T10:20:30Z".to_owned();
+        let captures = &self.parameters.captures;
+        let number = captures.add(capture.map(|capture| Capture { time, ..capture }));
+        captures.rename(number.unwrap_or_default(), name);
+    }
+
     /// Feeds so many readings, 10 ms apart, of a pitch given as cents off A3; without one there is none.
     pub(crate) fn play(
         &mut self,
@@ -92,6 +164,7 @@ impl Scene {
                 state: if pitch.is_some() { State::Steady } else { State::Silent },
                 pitch,
                 level_dbfs: if pitch.is_some() { level(partials) } else { f64::NEG_INFINITY },
+                noise_dbfs: if pitch.is_some() { -61.4 } else { f64::NEG_INFINITY },
                 stretch: pitch.map(|_| Stretch { b: 1.6e-4, b_sd: 2e-6 }),
                 partials: if last { partials.to_vec() } else { Vec::new() },
                 strays: if last { strays.to_vec() } else { Vec::new() },
@@ -162,6 +235,35 @@ impl Scene {
             .with_step_dt(1.0 / 60.0)
             .with_context_setup(install_fonts)
             .build_ui_state(|ui, scene: &mut Self| scene.frame(ui), self)
+    }
+}
+
+/// A key of a patch that is a little sharp in the bass, bright at the top, where its aliases come out, and slow at the bottom.
+pub(crate) fn key_row(key: u8) -> Row {
+    let at = f64::from(key) - 60.0;
+    let wobble = (1.7 * at).sin();
+    let cents = 3.2 * (-(at + 24.0) / 14.0).exp() - 0.04 * at + 0.4 * wobble;
+    let over = -14.0 + 0.75 * at + 4.0 * (2.9 * at).sin();
+    Row {
+        key,
+        take: 0,
+        told: key != 70,
+        length_s: 1.2,
+        f0_hz: 440.0 * ratio(100.0 * (at - 9.0) + cents),
+        f0_sd_cents: 0.05 + 0.5 * (-(at + 24.0) / 8.0).exp(),
+        inharmonicity_b: (key != 55)
+            .then(|| if key < 79 { 6e-5 * 2f64.powf(at / 9.0) } else { 1e-6 }),
+        inharmonicity_sd: (key != 55).then_some(4e-6),
+        tilt_db_per_octave: Some(-7.5 + 0.06 * at + 0.5 * wobble),
+        level_dbfs: Some(-18.0 - 0.09 * at + 1.1 * (0.9 * at).cos()),
+        settling_s: (key != 83).then_some(0.02 + 0.09 * (-(at + 24.0) / 10.0).exp()),
+        worst_alias: (key > 40).then_some(KeyAlias {
+            frequency_hz: 2_000.0 + 70.0 * at,
+            partial: 120,
+            folds: 1,
+            relative_db: -60.0 + 0.5 * at,
+            over_mask_db: Some(over),
+        }),
     }
 }
 

@@ -20,7 +20,7 @@ use serde_json::Value;
 use tempfile::TempDir;
 
 use crate::bundles::{target, there};
-use crate::rig::{Log, instance, set};
+use crate::rig::{Log, instance, json, load, set};
 use crate::session::{START_S, transport};
 use crate::the_program::write_stereo;
 
@@ -100,22 +100,11 @@ fn kept(instance: &mut Instance) -> Stored {
     serde_json::from_str(text).expect("in their form")
 }
 
-fn json(state: &[u8]) -> Value {
-    let start = state.iter().position(|&byte| byte == b'{').expect("the state is JSON");
-    serde_json::from_slice(&state[start..]).expect("the state is JSON")
-}
-
 /// Changes what the instance keeps of its checks, by way of its state.
 fn keep(instance: &mut Instance, stored: &Stored) {
     let mut state = json(&instance.save().expect("a state"));
     state["fields"]["checks"] = serde_json::to_string(stored).expect("JSON").into();
     load(instance, &state);
-}
-
-fn load(instance: &mut Instance, state: &Value) {
-    let text = serde_json::to_vec(state).expect("JSON");
-    let length = u64::try_from(text.len()).expect("a length").to_le_bytes();
-    instance.load([&length[..], &text].concat().as_slice()).expect("it loads");
 }
 
 fn rendered(block: usize) -> Vec<CheckResult> {

@@ -8,6 +8,7 @@ use plumbtone_analysis::signals::{Random, Timbre, Tone, narrow, sample_count};
 use plumbtone_plugin::readings_log::log_into;
 use plumbtone_tests::clap_host::{Format, Instance, Library};
 use plumbtone_tests::readings::{Logged, read_logs};
+use serde_json::Value;
 use tempfile::TempDir;
 
 /// The plugin as linked into this program.
@@ -86,4 +87,17 @@ pub(crate) fn awkward(seed: u64, length: usize) -> Vec<f32> {
 pub(crate) fn set(instance: &mut Instance, name: &str, text: &str, time: u32) -> ParamValueEvent {
     let (id, value) = instance.value(name, text).expect("a value");
     ParamValueEvent::new(time, id, Pckn::match_all(), value)
+}
+
+/// A saved state as what it holds.
+pub(crate) fn json(state: &[u8]) -> Value {
+    let start = state.iter().position(|&byte| byte == b'{').expect("the state is JSON");
+    serde_json::from_slice(&state[start..]).expect("the state is JSON")
+}
+
+/// Loads a state of such a form.
+pub(crate) fn load(instance: &mut Instance, state: &Value) {
+    let text = serde_json::to_vec(state).expect("JSON");
+    let length = u64::try_from(text.len()).expect("a length").to_le_bytes();
+    instance.load([&length[..], &text].concat().as_slice()).expect("it loads");
 }

@@ -34,6 +34,7 @@ fn changed() -> Instance {
         ("Integration time", "250"),
         ("Partials", "17"),
         ("Freeze", "On"),
+        ("Capture", "On"),
         ("Check", "On"),
         ("Tolerance", "7.5"),
         ("Reference", "Reference pitch"),

@@ -16,6 +16,7 @@ fn parameters_are_named_and_grouped() {
         ("Integration time", "Analysis"),
         ("Partials", "Analysis"),
         ("Freeze", "Analysis"),
+        ("Capture", "Analysis"),
         ("Check", "Check"),
         ("Tolerance", "Check"),
         ("Reference", "Check"),

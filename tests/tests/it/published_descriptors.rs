@@ -3,7 +3,9 @@
 
 use std::f64::consts::PI;
 
-use plumbtone_analysis::Descriptors;
+use plumbtone_analysis::signals::{Random, Timbre, Tone, add_noise, narrow};
+use plumbtone_analysis::{Descriptors, Settings};
+use plumbtone_tests::take::Take;
 
 /// Partials of a wave: the number and the amplitude that a Fourier series gives for it.
 fn wave(partials: u32, amplitude: fn(f64) -> f64) -> impl Iterator<Item = (u32, f64)> + Clone {
@@ -121,5 +123,31 @@ fn harmonicity_in_terms_of_the_correlation() {
         let amplitude = (2.0 * r).sqrt();
         let d = Descriptors::of([(1, amplitude)], Some(1.0 - r));
         assert_near(d.hnr_db, expected_db, 1e-4, &format!("r = {r}"));
+    }
+}
+
+#[test]
+fn harmonicity_of_a_reading_is_that_of_the_sound() {
+    // From 60 dB on the partials' own skirts reach into what is left between them.
+    for (seed, f0_hz, snr_db, tolerance_db) in [
+        (1, 110.0, 20.0, 0.5),
+        (2, 220.0, 40.0, 0.5),
+        (3, 1000.0, 50.0, 0.7),
+        (4, 440.0, 60.0, 1.2),
+    ] {
+        let mut random = Random::new(seed);
+        let timbre = Timbre { partials: 12, ..Timbre::default() };
+        let tone = Tone::random(&mut random, 48_000.0, f0_hz, 0.0, &timbre);
+        let mut sound = tone.render(96_000);
+        add_noise(&mut random, &mut sound, snr_db);
+        let take = Take::of(&Settings::new(48_000.0), &narrow(&sound)).unwrap();
+        let found: Vec<f64> = (take.readings.iter().skip(40).take(100))
+            .filter_map(|reading| Descriptors::of_reading(reading).hnr_db)
+            .collect();
+        assert_eq!(found.len(), 100, "every reading has partials and noise");
+        let mean = found.iter().sum::<f64>() / 100.0;
+        assert!((mean - snr_db).abs() < tolerance_db, "{f0_hz} Hz: {mean:.2} dB, not {snr_db}");
+        let worst = found.iter().map(|db| (db - mean).abs()).fold(0.0, f64::max);
+        assert!(worst < 1.5, "{f0_hz} Hz: {worst:.2} dB from the mean");
     }
 }

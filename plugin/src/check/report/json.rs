@@ -22,8 +22,8 @@ struct Report<'a> {
 /// All of it.
 pub(super) fn text(job: &Job) -> io::Result<String> {
     let report = Report {
-        name: job.title(),
-        written: job.stamp(),
+        name: job.place.title(),
+        written: job.place.stamp(),
         engine_version: VERSION,
         caution: CAUTION,
         results: &job.results,

@@ -49,14 +49,14 @@ pub(super) fn text(job: &Job) -> String {
 }
 
 fn head(svg: &mut Svg, job: &Job, colours: &Colours) {
-    svg.text((MARGIN, 50.0), job.title(), Style::new(20.0, colours.ink).bold());
+    svg.text((MARGIN, 50.0), job.place.title(), Style::new(20.0, colours.ink).bold());
     let count = |word| job.results.iter().filter(|r| r.verdict == word).count();
     let summary = format!(
         "Pitch-drift checks: {} within, {} outside, {} unmeasured. Written {}.",
         count(VerdictWord::Within),
         count(VerdictWord::Outside),
         count(VerdictWord::Unmeasured),
-        job.stamp()
+        job.place.stamp()
     );
     svg.text((MARGIN, 72.0), &summary, Style::new(12.0, colours.dim));
 }

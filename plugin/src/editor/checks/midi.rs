@@ -5,7 +5,7 @@ use plumbtone_analysis::tuning::NoteName;
 
 use super::super::field::{self, Bench, Field, Place};
 use super::super::knob::Knob;
-use super::say;
+use super::super::parts::say;
 use crate::parameters::{MidiOutput, MidiParameters};
 use crate::turns::DELAY_S;
 

@@ -1,10 +1,12 @@
 //! Where reports go, when they are written, and what came of the last one.
 
-use egui::{RichText, Role, TextEdit, Ui, WidgetInfo};
+use egui::{Role, TextEdit, Ui, WidgetInfo};
 
-use super::super::theme::{FIGURE, Palette, SMALL, sans};
-use super::{Checks, act, say, tick};
-use crate::check::{CAUTION, Results, Told};
+use super::super::parts::{act, say, tick, warn};
+use super::super::theme::{FIGURE, Palette, sans};
+use super::Checks;
+use crate::check::{CAUTION, Results};
+use crate::report_files::Told;
 
 /// Draws it.
 pub(super) fn show(ui: &mut Ui, checks: &mut Checks, results: &Results, palette: &Palette) {
@@ -24,21 +26,29 @@ pub(super) fn show(ui: &mut Ui, checks: &mut Checks, results: &Results, palette:
         results.report();
         checks.snapshot.writing = true;
     }
-    match &checks.snapshot.told {
-        Some(Told::Written(place)) => {
-            say(ui, &format!("written: {place}.csv, .json, .svg"), palette);
-        }
-        Some(Told::Failed(why)) => {
-            let text = format!("! No report was written: {why}. The results are still here.");
-            ui.label(RichText::new(text).size(SMALL).color(palette.stray));
-        }
-        None => {}
-    }
+    told(ui, checks.snapshot.told.as_ref(), ".csv, .json, .svg", palette);
     say(ui, CAUTION, palette);
 }
 
+/// What came of writing files with some endings.
+pub(in crate::editor) fn told(ui: &mut Ui, told: Option<&Told>, endings: &str, palette: &Palette) {
+    match told {
+        Some(Told::Written(place)) => say(ui, &format!("written: {place}{endings}"), palette),
+        Some(Told::Failed(why)) => {
+            let text = format!("No report was written: {why}. The results are still here.");
+            warn(ui, &text, palette);
+        }
+        None => {}
+    }
+}
+
 /// A line of text; true when it changed.
-fn entry(ui: &mut Ui, text: &mut String, (caption, hint): (&str, &str), palette: &Palette) -> bool {
+pub(in crate::editor) fn entry(
+    ui: &mut Ui,
+    text: &mut String,
+    (caption, hint): (&str, &str),
+    palette: &Palette,
+) -> bool {
     say(ui, caption, palette);
     let edit = TextEdit::singleline(text).hint_text(hint).desired_width(f32::INFINITY);
     let response = ui.add(edit.font(sans(FIGURE)));

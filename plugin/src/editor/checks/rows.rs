@@ -2,9 +2,10 @@
 
 use egui::{Role, Sense, Stroke, TextEdit, Ui, WidgetInfo, vec2};
 
+use super::super::parts::{act, say, write};
 use super::super::steady::{NONE, signed};
 use super::super::theme::{FIGURE, Palette, SMALL, sans};
-use super::{Checks, act, colour, say, shape, write};
+use super::{Checks, colour, shape};
 use crate::check::{CheckResult, Extent, InTrail, Results};
 
 /// Height of a row.

@@ -169,16 +169,10 @@ fn gap(ui: &Ui, frame: &Frame, (first, last): (&Column, &Column), palette: &Pale
     if !(area.width() > 0.0) {
         return;
     }
-    let painter = ui.painter().with_clip_rect(area);
-    let stroke = Stroke::new(1.0, palette.edge);
-    let mut at = area.left() - area.height();
-    while at < area.right() {
-        painter
-            .line_segment([pos2(at, area.bottom()), pos2(at + area.height(), area.top())], stroke);
-        at += 7.0;
-    }
+    ink::hatch(ui, area, palette.edge);
     if area.width() > 40.0 {
         let label = Rect::from_center_size(area.center(), vec2(30.0, 16.0));
+        let painter = ui.painter().with_clip_rect(area);
         painter.rect_filled(label, 3.0, palette.card);
         ink::mark(ui, area.center(), Align2::CENTER_CENTER, "gap", sans(SMALL), palette.dim);
     }

@@ -42,6 +42,45 @@ impl Calm {
     }
 }
 
+/// Both ends of a scale, in whole steps.
+#[derive(Debug, Clone, Copy, Default)]
+pub(crate) struct CalmRange {
+    shown: Option<(f64, f64)>,
+    small_since_s: Option<f64>,
+}
+
+impl CalmRange {
+    /// Takes the ends of what is to be seen; gives the scale's, multiples of a step and at least so far apart.
+    pub(crate) fn update(
+        &mut self,
+        (low, high): (f64, f64),
+        (step, least): (f64, f64),
+        now_s: f64,
+    ) -> (f64, f64) {
+        let mut wanted = ((low / step).floor() * step, (high / step).ceil() * step);
+        while wanted.1 - wanted.0 < least {
+            wanted = if wanted.1 - high > low - wanted.0 {
+                (wanted.0 - step, wanted.1)
+            } else {
+                (wanted.0, wanted.1 + step)
+            };
+        }
+        let shown = self.shown.unwrap_or(wanted);
+        if wanted.0 < shown.0 || wanted.1 > shown.1 || self.shown.is_none() {
+            self.small_since_s = None;
+            self.shown = Some((wanted.0.min(shown.0), wanted.1.max(shown.1)));
+        } else if wanted != shown {
+            let since = *self.small_since_s.get_or_insert(now_s);
+            if now_s - since >= SHRINK_S {
+                *self = Self { shown: Some(wanted), small_since_s: None };
+            }
+        } else {
+            self.small_since_s = None;
+        }
+        self.shown.unwrap_or(wanted)
+    }
+}
+
 /// The scale of cents, as left and right end.
 #[derive(Debug, Clone, Copy, Default)]
 pub(crate) struct CalmCents {
@@ -98,6 +137,11 @@ impl RowAxis {
     /// Where a partial lies; a number between two lies between them.
     pub(crate) fn at(&self, number: f32) -> f32 {
         self.y.max - (number - self.first + BELOW) * self.row()
+    }
+
+    /// The number at a height.
+    pub(crate) fn number(&self, y: f32) -> f32 {
+        self.first - BELOW + (self.y.max - y) / self.row()
     }
 
     /// Whether a whole row is to be seen.
@@ -170,6 +214,22 @@ mod tests {
             let shown = calm.update(need, f64::from(tick) * 0.016, &CENTS);
             assert!(tick < 5 || shown > 19.0, "{tick}: {shown}");
         }
+    }
+
+    #[test]
+    fn a_range_holds_what_is_needed_in_whole_steps() {
+        let mut range = CalmRange::default();
+        let shown: Vec<(f64, f64)> = [
+            (0.0, (-18.0, -14.0)),
+            (0.1, (-31.0, -14.0)),
+            (0.2, (-18.0, -14.0)),
+            (3.1, (-18.0, -14.0)),
+            (3.3, (-18.0, -14.0)),
+        ]
+        .map(|(now, need)| range.update(need, (6.0, 12.0), now))
+        .to_vec();
+        let (small, large) = ((-24.0, -12.0), (-36.0, -12.0));
+        assert_eq!(shown, [small, large, large, large, small]);
     }
 
     #[test]

@@ -4,7 +4,7 @@ use egui::{
     Align2, Color32, CornerRadius, Rangef, Rect, Response, Role, Sense, Shape, Stroke, StrokeKind,
     Ui, WidgetInfo, pos2,
 };
-use plumbtone_analysis::{Partial, Stretch};
+use plumbtone_analysis::{Cluster, Partial, Stretch};
 
 use super::super::ink;
 use super::super::steady::signed;
@@ -14,7 +14,7 @@ use super::axis::{Axis, RowAxis};
 use crate::convert::single;
 
 /// Deviations that a whisker spans each way.
-const WHISKER_SD: f64 = 2.0;
+pub(crate) const WHISKER_SD: f64 = 2.0;
 /// Radius of a dot: of the strongest partial, and of one this many dB below it and weaker.
 const DOT: (f32, f32) = (5.5, 2.5);
 const DOT_RANGE_DB: f64 = 60.0;
@@ -43,12 +43,12 @@ pub(crate) struct Done {
     pub(crate) clicked: Option<u32>,
 }
 
-/// Draws all rows; `level` gives a level on the axis, and the figure of it.
+/// Draws all rows; `level` gives a level on the axis, and the figure of it, `cluster` what a partial is made of.
 pub(crate) fn show(
     ui: &mut Ui,
     columns: &Columns,
     (partials, pinned): (&[Partial], Option<u32>),
-    level: impl Fn(f64) -> f64,
+    (level, cluster): (impl Fn(f64) -> f64, impl Fn(u32) -> Option<Cluster>),
     palette: &Palette,
 ) -> Done {
     let mut done = Done::default();
@@ -68,11 +68,15 @@ pub(crate) fn show(
         }
         let lit = response.hovered() || pinned == Some(partial.number);
         bar(ui, columns, y, level(partial.level_dbfs), (partial, strongest), palette);
+        let cluster = cluster(partial.number);
+        if let Some(cluster) = cluster {
+            spread(ui, columns, y, (partial, cluster), palette);
+        }
         dot(ui, columns, y, (partial, strongest), palette);
         if lit || (partial.number - 1).is_multiple_of(every) {
             figures(ui, columns, y, (partial, level(partial.level_dbfs)), lit, palette);
         }
-        response.on_hover_ui_at_pointer(|ui| tell(ui, partial));
+        response.on_hover_ui_at_pointer(|ui| tell(ui, partial, cluster));
     }
     done
 }
@@ -158,6 +162,25 @@ fn dot(
     ui.painter().circle_filled(pos2(x, y), radius, palette.pitch);
 }
 
+/// How wide the lines of a partial lie, around it: a bar as long as they spread.
+fn spread(
+    ui: &Ui,
+    columns: &Columns,
+    y: f32,
+    (partial, cluster): (&Partial, Cluster),
+    palette: &Palette,
+) {
+    let axis = &columns.cents;
+    let (cents, half) = (partial.cents_from_harmonic, cluster.spread_cents / 2.0);
+    if !axis.holds(cents) || !half.is_finite() {
+        return;
+    }
+    let x = Rangef::new(axis.at(cents - half), axis.at(cents + half));
+    let height = (columns.rows.row() * 0.32).clamp(1.5, 6.0);
+    let bar = Rect::from_x_y_ranges(x, Rangef::new(y - height, y + height));
+    ui.painter().rect_filled(bar, 2.0, palette.pitch.gamma_multiply(0.28));
+}
+
 /// A triangle at the edge: the partial lies beyond the scale.
 fn beyond(ui: &Ui, axis: &Axis, y: f32, cents: f64, palette: &Palette) {
     if cents.is_nan() {
@@ -191,7 +214,7 @@ fn figures(
 }
 
 /// All figures of a partial.
-fn tell(ui: &mut Ui, partial: &Partial) {
+fn tell(ui: &mut Ui, partial: &Partial, cluster: Option<Cluster>) {
     ui.label(egui::RichText::new(format!("partial {}", partial.number)).strong());
     let Partial {
         frequency_hz, frequency_sd_hz, cents_sd, level_dbfs, level_sd_db, snr_db, ..
@@ -206,6 +229,12 @@ fn tell(ui: &mut Ui, partial: &Partial) {
     ] {
         ui.monospace(line);
     }
+    if let Some(Cluster { lines, spread_cents, beat_hz }) = cluster {
+        ui.monospace(format!(
+            "{lines} lines, {spread_cents:.1} ct wide, beating at {beat_hz:.2} Hz"
+        ));
+        ui.label("in the last note: no single line, so its figures stand for all of them.");
+    }
     ui.label("Click to pin it and see its past.");
 }
 
@@ -216,7 +245,7 @@ fn faded(palette: &Palette, below_db: f64) -> Color32 {
 }
 
 /// Figures are written for one row of this many.
-fn figures_every(row: f32) -> u32 {
+pub(crate) fn figures_every(row: f32) -> u32 {
     [1, 2, 4, 5, 8, 10, 16]
         .into_iter()
         .find(|&every| row * every as f32 >= FIGURE_APART)
@@ -237,7 +266,7 @@ pub(crate) fn curve(
     let mut y = axis.y.max;
     let mut points = Vec::new();
     while y >= axis.y.min {
-        let n = f64::from(axis.first - 0.75 + (axis.y.max - y) / axis.row());
+        let n = f64::from(axis.number(y));
         let cents = 600.0 * (1.0 + b * n * n).max(1e-9).log2();
         if n >= 0.0 && n <= f64::from(highest) + 0.7 && columns.cents.holds(cents) {
             points.push(pos2(columns.cents.at(cents), y));

@@ -1,12 +1,14 @@
 //! The sound's descriptors, held still for the eye.
 
-use plumbtone_analysis::{Descriptors, Reading, Stretch};
+use plumbtone_analysis::waveform::{self, WaveformFit};
+use plumbtone_analysis::{Descriptors, Stretch};
 
 use super::super::screen::Shown;
 use super::super::steady::{NONE, Steady};
+use super::super::words;
 
-/// A level known to about this many dB tells the rest beside the partials down to this many dB below them.
-const HNR_MOST_DB: f64 = 25.0;
+/// How often a textbook wave is looked for, in seconds of sound: it takes longer than a frame should.
+const LOOK_S: f64 = 0.5;
 /// Deviations that the figures are rounded by: these descriptors come without one.
 const SHOWN_SD: f64 = 0.03;
 
@@ -41,7 +43,7 @@ const LINES: [Line; 6] = [
         caption: "harmonic to noise",
         unit: " dB",
         signed: true,
-        help: "Power of the partials over everything else. Above 25 dB the difference of two levels tells no more.",
+        help: "Power of the partials over the noise between them and over what belongs to none. Partials that move or lie closer than 30 Hz count as noise with their skirts.",
     },
     Line {
         caption: "centroid",
@@ -64,6 +66,9 @@ pub(crate) struct Figures {
     since: u64,
     stretch: Option<Stretch>,
     values: [Option<Steady>; LINES.len()],
+    /// The textbook wave, and where it was looked for last.
+    waveform: Option<WaveformFit>,
+    looked: u64,
 }
 
 impl Figures {
@@ -81,7 +86,15 @@ impl Figures {
         self.centre = readout.reading.centre;
         let held = readout.pitch().is_some();
         self.stretch = readout.reading.stretch.filter(|_| held);
-        let descriptors = if held { of(&readout.reading) } else { Descriptors::default() };
+        let descriptors =
+            if held { Descriptors::of_reading(&readout.reading) } else { Descriptors::default() };
+        let looked_s = self.centre.saturating_sub(self.looked) as f64 / readout.sample_rate_hz;
+        if !held {
+            self.waveform = None;
+        } else if self.looked == 0 || looked_s >= LOOK_S {
+            self.looked = self.centre;
+            self.waveform = waveform::of_reading(&readout.reading);
+        }
         let level = Some(readout.reading.level_dbfs);
         let newest = [
             descriptors.tilt_db_per_octave,
@@ -110,31 +123,21 @@ impl Figures {
                 || NONE.to_owned(),
                 |value| match (line.caption, value.text(line.signed)) {
                     ("centroid", text) => format!("partial {text}"),
-                    ("harmonic to noise", text) if text.starts_with("+25") => {
-                        "over 25 dB".to_owned()
-                    }
                     (_, text) => format!("{text}{}", line.unit),
                 },
             );
             (line.caption, text, line.help)
         });
-        std::iter::once(("stretch B", b, help)).chain(rest)
+        let wave = self.waveform.as_ref().map(|fit| {
+            let help = "The textbook wave whose partials have these levels and phases, and how well the levels fit.";
+            ("waveform", words::waveform(fit), help)
+        });
+        std::iter::once(("stretch B", b, help)).chain(rest).chain(wave)
     }
 }
 
-/// The descriptors of a reading. All power beside the partials is what its level holds beyond them; the levels are not
-/// exact enough to tell less than [`HNR_MOST_DB`] below.
-fn of(reading: &Reading) -> Descriptors {
-    let amplitude = |dbfs: f64| 10f64.powf(dbfs / 20.0);
-    let partials = reading.partials.iter().map(|p| (p.number, amplitude(p.level_dbfs)));
-    let within: f64 = partials.clone().map(|(_, a)| a * a / 2.0).filter(|p| p.is_finite()).sum();
-    let whole = amplitude(reading.level_dbfs).powi(2) / 2.0;
-    let least = within * 10f64.powf(-HNR_MOST_DB / 10.0);
-    Descriptors::of(partials, Some((whole - within).max(least)))
-}
-
 /// B with its deviation, both over one power of ten.
-fn stretch(stretch: Stretch) -> String {
+pub(crate) fn stretch(stretch: Stretch) -> String {
     let Stretch { b, b_sd } = stretch;
     if !(b.is_finite() && b_sd.is_finite()) {
         return NONE.to_owned();
@@ -145,9 +148,15 @@ fn stretch(stretch: Stretch) -> String {
     }
     let exponent = crate::convert::floor(size.log10());
     let scale = 10f64.powf(size.log10().floor());
-    let raised: String = exponent.to_string().chars().map(superscript).collect();
     let sign = if b < 0.0 { "\u{2212}" } else { "" };
-    format!("({sign}{:.2} \u{b1} {:.2})\u{b7}10{raised}", b.abs() / scale, b_sd / scale)
+    let power = power_of_ten(exponent);
+    format!("({sign}{:.2} \u{b1} {:.2})\u{b7}{power}", b.abs() / scale, b_sd / scale)
+}
+
+/// A power of ten as print has it.
+pub(crate) fn power_of_ten(exponent: i64) -> String {
+    let raised: String = exponent.to_string().chars().map(superscript).collect();
+    format!("10{raised}")
 }
 
 fn superscript(digit: char) -> char {
@@ -163,8 +172,6 @@ fn superscript(digit: char) -> char {
 
 #[cfg(test)]
 mod tests {
-    use plumbtone_analysis::Partial;
-
     use super::*;
 
     #[test]
@@ -177,26 +184,5 @@ mod tests {
         ] {
             assert_eq!(stretch(Stretch { b, b_sd }), expected);
         }
-    }
-
-    #[test]
-    fn noise_of_a_tenth_of_the_power_is_ten_db() {
-        let partial = Partial {
-            number: 1,
-            frequency_hz: 220.0,
-            frequency_sd_hz: 0.0,
-            cents_from_harmonic: 0.0,
-            cents_sd: 0.0,
-            level_dbfs: -12.0,
-            level_sd_db: 0.0,
-            phase_rad: 0.0,
-            snr_db: 40.0,
-        };
-        let level_dbfs = -12.0 + 10.0 * 1.1f64.log10();
-        let mut reading = Reading { partials: vec![partial], level_dbfs, ..Reading::default() };
-        let hnr = of(&reading).hnr_db.unwrap();
-        assert!((hnr - 10.0).abs() < 1e-6, "{hnr}");
-        reading.level_dbfs = -12.5;
-        assert_eq!(of(&reading).hnr_db.map(f64::round), Some(25.0), "no less can be told");
     }
 }
