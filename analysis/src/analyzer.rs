@@ -117,6 +117,12 @@ impl Analyzer {
         self.hop
     }
 
+    /// Samples after a reading's centre that it may depend on, at most.
+    #[must_use]
+    pub fn look_ahead(&self) -> usize {
+        (LOOK_AHEAD + NEIGHBOURS) * self.hop + 2 * self.evidence.reach()
+    }
+
     /// How often each of the engine's transforms has run since it was built, for benches: what it takes at least.
     pub fn transforms(&self) -> impl Iterator<Item = TransformRuns> {
         self.evidence.transforms().chain(self.notes.transforms())

@@ -18,12 +18,14 @@ mod settings;
 mod slope;
 mod sounding;
 mod spans;
+mod trace;
 
 pub use allan::OverlappingAllan;
 pub use outcome::{Drift, Outcome, Stability, Unmeasured, Verdict, Vibrato};
 pub use reference::{Expected, Reference};
 pub use settings::CheckSettings;
 pub use spans::Span;
+pub use trace::{Column, Trace};
 
 use crate::reading::{Gap, Reading, State};
 use crate::settings::SettingsError;
@@ -52,6 +54,13 @@ pub trait CheckSink {
 
     /// The next span that was outside, once it has ended.
     fn span(&mut self, _span: &Span) {}
+
+    /// The span now running counts from this sample position on: what was heard up to there is surely outside.
+    fn established(&mut self, _position: u64) {}
+
+    /// What was established last ended at this sample position. It may yet have turned out to be none that counts: its mean
+    /// has sunk since.
+    fn over(&mut self, _position: u64) {}
 }
 
 /// Takes nothing.
@@ -339,6 +348,42 @@ mod tests {
             let outcome = outcome(10.0, &readings(0, bump, 3));
             assert_eq!(outcome.verdict == Verdict::Outside, counts, "{length_s} s: {outcome:?}");
         }
+    }
+
+    /// Where spans were established, and where they ended.
+    #[derive(Default)]
+    struct Ends(Vec<(u64, bool)>);
+
+    impl CheckSink for Ends {
+        fn established(&mut self, position: u64) {
+            self.0.push((position, true));
+        }
+        fn over(&mut self, position: u64) {
+            self.0.push((position, false));
+        }
+    }
+
+    #[test]
+    fn what_is_established_is_told_once_and_its_end_too() {
+        // Outside for a second, for too short, and until the sound stops.
+        let cents_at = |t: f64| {
+            let high = (1.0..2.0).contains(&t) || (3.0..3.1).contains(&t) || t >= 4.0;
+            (t < 5.0).then_some(if high { 25.0 } else { 0.0 })
+        };
+        let mut check = check(10.0);
+        let mut ends = Ends::default();
+        readings(0, cents_at, 6).iter().for_each(|reading| check.reading(reading, &mut ends));
+        let told: Vec<(f64, bool)> =
+            ends.0.iter().map(|&(at, on)| (at as f64 / RATE_HZ, on)).collect();
+        // What counts lasts 0.15 s at least.
+        let expected = [(1.15, true), (2.0, false), (4.15, true), (5.0, false)];
+        let near =
+            |(a, on): (f64, bool), (b, other): (f64, bool)| on == other && (a - b).abs() < 0.02;
+        let as_expected = told.len() == 4 && told.iter().zip(expected).all(|(&a, b)| near(a, b));
+        assert!(as_expected, "{told:?}, not {expected:?}");
+        let spans = seconds(&check.outcome().spans);
+        let ends = [(told[1].0, spans[0].1), (told[3].0, spans[1].1)];
+        assert!(ends.iter().all(|(a, b)| (a - b).abs() < 1e-9), "where the spans end: {ends:?}");
     }
 
     #[test]

@@ -32,8 +32,8 @@ harmonic series n·f0. What was odd about a file is said on standard error.
 Examples:
   plumbtone measure piano.wav
       one table per note
-  plumbtone measure --json takes/*.flac > takes.jsonl
-      one JSON object per file, one file per line
+  plumbtone measure --json takes/ > takes.jsonl
+      one JSON object for each sound file below the folder, one file per line
   plumbtone measure --concert-pitch 415 --csv figures --picture a3.svg lute-a3.wav
       the figures as CSV files in the folder figures, and a picture, beside the table
   plumbtone measure --start 12.5 --end 15 --channel side mix.wav
@@ -63,7 +63,7 @@ pub(crate) enum Command {
 #[derive(Debug, ClapArgs)]
 #[command(after_long_help = format!("{MEASURE_DETAILS}\n\n{EXIT_STATUS}"), after_help = "More with --help.")]
 pub(crate) struct Measure {
-    /// Sound files
+    /// Sound files, folders of them, or patterns such as 'takes/*.wav'
     #[arg(required = true, value_name = "FILE")]
     pub(crate) files: Vec<PathBuf>,
     #[command(flatten)]

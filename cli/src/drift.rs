@@ -5,7 +5,6 @@ mod notes;
 pub(crate) mod record;
 mod report;
 mod table;
-pub(crate) mod trace;
 
 use crate::args::{Drift, Limits, ReferenceChoice, What};
 use crate::files::expand;

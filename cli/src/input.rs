@@ -199,9 +199,6 @@ impl Input {
 
 fn open_file(path: &Path) -> Result<File> {
     let kind = std::fs::metadata(path).map_err(|error| reason(&error))?;
-    if kind.is_dir() {
-        bail!("is a directory: name the files in it");
-    }
     if !kind.is_file() {
         bail!("is not a regular file");
     }

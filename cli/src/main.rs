@@ -28,7 +28,7 @@ use std::process::ExitCode;
 fn main() -> ExitCode {
     let args = args::Args::parse();
     match args.command {
-        args::Command::Measure(measure) => measure_job::measure_files(&measure),
+        args::Command::Measure(measure) => measure_job::measure_files(measure),
         args::Command::Drift(drift) => drift::check_files(drift),
         args::Command::Recipe(recipe) => recipe::write_recipes(recipe),
         args::Command::Keys(keys) => keys::write_sheet(keys),

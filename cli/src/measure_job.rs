@@ -1,6 +1,7 @@
 //! The command `measure`: the notes of many files into tables, JSON, CSV and pictures.
 
 use crate::args::{Measure, What};
+use crate::files::expand;
 use crate::measure::Timebase;
 use crate::names::{distinct_names, picture_place};
 use crate::output::Report;
@@ -14,24 +15,25 @@ use std::path::PathBuf;
 use std::process::ExitCode;
 
 /// Measures every file and prints what comes of it.
-pub(crate) fn measure_files(command: &Measure) -> ExitCode {
+pub(crate) fn measure_files(command: Measure) -> ExitCode {
     let ended = MeasureJob::new(command).and_then(|job| run::run(&job, |_, _| {}));
     run::exit_code(ended)
 }
 
-struct MeasureJob<'a> {
-    command: &'a Measure,
+struct MeasureJob {
+    command: Measure,
     names: Vec<String>,
 }
 
-impl<'a> MeasureJob<'a> {
-    fn new(command: &'a Measure) -> Result<Self> {
+impl MeasureJob {
+    fn new(mut command: Measure) -> Result<Self> {
+        command.files = expand(&command.files)?;
         folder_for(command.to.csv.as_deref())?;
-        Ok(Self { command, names: distinct_names(&command.files) })
+        Ok(Self { names: distinct_names(&command.files), command })
     }
 }
 
-impl Job for MeasureJob<'_> {
+impl Job for MeasureJob {
     fn files(&self) -> &[PathBuf] {
         &self.command.files
     }

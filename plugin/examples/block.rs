@@ -9,8 +9,10 @@ use std::path::Path;
 
 use nice_plug::context::PluginApi;
 use nice_plug::prelude::*;
-use plumbtone_plugin::Plumbtone;
 use plumbtone_plugin::readings_log::log_into;
+
+/// The plugin as CLAP hosts get it.
+type Plumbtone = plumbtone_plugin::Plumbtone<true>;
 
 const RATE: f32 = 48_000.0;
 

@@ -38,6 +38,8 @@ pub(crate) struct Analysis {
     popped: u64,
     taken: u64,
     marks: VecDeque<Mark>,
+    /// Marks that were dealt with.
+    applied: u64,
     slice: Vec<f32>,
     delivery: Delivery,
 }
@@ -65,18 +67,23 @@ impl Analysis {
             popped: 0,
             taken: 0,
             marks: VecDeque::new(),
+            applied: 0,
             slice: vec![0.0; SLICE],
             delivery,
         }
     }
 
     /// Listens to another tap from here on.
-    pub(crate) fn install(&mut self, intake: Intake) {
+    pub(crate) fn install(&mut self, mut intake: Intake) {
+        if let Some(turns) = intake.turns.take() {
+            self.delivery.checks.tell(turns);
+        }
         self.delivery.readout.sample_rate_hz = intake.format.sample_rate_hz;
         self.engine = Engine::Absent;
         self.marks.clear();
         self.popped = 0;
         self.taken = 0;
+        self.applied = 0;
         self.position = 0;
         self.intake = Some(intake);
     }
@@ -90,11 +97,10 @@ impl Analysis {
             Patience::Always | Patience::WhenAhead => SLICE_WAITING,
         };
         let count = intake.samples.slots().min(most);
-        let marks_before = self.marks.len();
         while let Ok(mark) = intake.marks.pop() {
             self.marks.push_back(mark);
         }
-        if count == 0 && self.marks.len() == marks_before {
+        if count == 0 && self.marks.front().is_none_or(|mark| mark.after > self.taken) {
             return false;
         }
         let mut slice = core::mem::take(&mut self.slice);
@@ -103,7 +109,7 @@ impl Analysis {
             self.take(&slice[..count]);
         }
         self.slice = slice;
-        self.delivery.publish();
+        self.publish();
         true
     }
 
@@ -113,12 +119,18 @@ impl Analysis {
         self.taken = self.popped;
         self.slice.resize(SLICE, 0.0);
         self.delivery.stand(Condition::Failed);
+        self.publish();
+    }
+
+    fn publish(&mut self) {
         self.delivery.publish();
+        self.delivery.checks.publish(self.taken, self.applied);
     }
 
     fn take(&mut self, mut samples: &[f32]) {
         loop {
             while let Some(mark) = self.marks.pop_front_if(|mark| mark.after <= self.taken) {
+                self.applied += 1;
                 self.apply(mark.event);
             }
             if samples.is_empty() {
@@ -134,7 +146,7 @@ impl Analysis {
 
     fn apply(&mut self, event: Event) {
         match event {
-            Event::Start => self.start(),
+            Event::Start { stream } => self.start(stream),
             Event::Controls(controls) => self.control(controls),
             Event::Transport(transport) => {
                 let anchor = Anchor { at: self.position, transport };
@@ -165,9 +177,10 @@ impl Analysis {
         }
     }
 
-    fn start(&mut self) {
+    fn start(&mut self, stream: u64) {
         self.finish();
         self.delivery.start();
+        self.delivery.checks.start(stream);
         self.position = 0;
         self.settle_at = None;
         match &mut self.engine {
@@ -242,6 +255,7 @@ impl Analysis {
         self.engine = match (self.build)(&settings) {
             Ok(mut engine) => {
                 self.delivery.begin(engine.hop());
+                self.delivery.checks.look_ahead(position(engine.look_ahead()));
                 // Its positions go on where the stream is.
                 engine.skip(self.position, &mut self.delivery);
                 Engine::Running(Box::new(engine))

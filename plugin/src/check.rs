@@ -5,6 +5,7 @@
 //! between the two and nothing else: neither block sizes, nor speed, nor an open editor change it. A jump or a stop of the
 //! transport ends one check and begins the next. What a check is set to when it begins holds for all of it.
 
+mod curve;
 #[cfg(test)]
 mod fixtures;
 mod places;
@@ -15,20 +16,25 @@ mod stored;
 
 use std::collections::VecDeque;
 
-use plumbtone_analysis::check::{Check, CheckSettings, Reference, Verdict};
+use plumbtone_analysis::check::{
+    Check, CheckSettings, CheckSink, Heard, Reference, Trace, Verdict,
+};
 use plumbtone_analysis::tuning::Tuning;
 use plumbtone_analysis::{Gap, Reading, VERSION};
 
+pub use self::curve::Curve;
 pub(crate) use self::report::CAUTION;
 pub use self::result::{CheckResult, Extent, InTrail, OutsideSpan, VerdictWord};
 pub use self::results::{Reports, Results, RunningCheck, Snapshot, Stored};
 pub(crate) use self::stored::read;
 
+use self::curve::COLUMNS_MAX;
 use self::places::Places;
 use crate::controls::Controls;
 use crate::convert::decimal;
 use crate::parameters::Reference as Choice;
 use crate::session::Anchor;
+use crate::turns::{Teller, turns};
 
 /// Readings between two words on a running check.
 const READINGS_A_WORD: u64 = 25;
@@ -44,6 +50,10 @@ pub(crate) struct Checks {
     key_hz: Option<f64>,
     /// Results of this stream.
     made: Vec<u64>,
+    /// Where it turns outside and back is told here.
+    turns: Teller,
+    /// Samples after its centre that a reading may depend on.
+    look_ahead: u64,
 }
 
 /// What a check is set to.
@@ -70,15 +80,62 @@ struct Running {
     last: Option<(u64, u64)>,
     first: Option<(u64, u64)>,
     lost_samples: u64,
+    trace: Trace,
+}
+
+/// Where a check that is on delivers.
+struct Ends<'a> {
+    turns: &'a mut Teller,
+    trace: &'a mut Trace,
+}
+
+impl CheckSink for Ends<'_> {
+    fn heard(&mut self, heard: &Heard) {
+        self.trace.push(heard);
+    }
+
+    fn established(&mut self, position: u64) {
+        self.turns.tell(position, true);
+    }
+
+    fn over(&mut self, position: u64) {
+        self.turns.tell(position, false);
+    }
 }
 
 impl Checks {
     pub(crate) fn new(results: Results) -> Self {
-        Self { results, running: None, anchor: None, key_hz: None, made: Vec::new() }
+        // Nobody listens before there is a stream.
+        let (turns, _) = turns(0.0);
+        Self {
+            results,
+            running: None,
+            anchor: None,
+            key_hz: None,
+            made: Vec::new(),
+            turns,
+            look_ahead: 0,
+        }
+    }
+
+    /// Tells where a check turns outside and back to somebody else from here on.
+    pub(crate) fn tell(&mut self, turns: Teller) {
+        self.turns = turns;
+    }
+
+    /// An engine begins, whose readings depend on so many samples after their centre.
+    pub(crate) fn look_ahead(&mut self, samples: u64) {
+        self.look_ahead = samples;
+    }
+
+    /// All is told that comes of so many samples and marks.
+    pub(crate) fn publish(&mut self, samples: u64, marks: u64) {
+        self.turns.publish(samples, marks);
     }
 
     /// A new stream begins.
-    pub(crate) fn start(&mut self) {
+    pub(crate) fn start(&mut self, stream: u64) {
+        self.turns.start(stream);
         self.anchor = None;
         self.key_hz = None;
         self.made.clear();
@@ -115,13 +172,16 @@ impl Checks {
             last: None,
             first: None,
             lost_samples: 0,
+            trace: Trace::new(COLUMNS_MAX),
         });
     }
 
     /// Ends the check that is on, if one is: its readings have come.
     pub(crate) fn end(&mut self, end: u64) {
         let Some(mut running) = self.running.take() else { return };
-        running.check.finish(&mut ());
+        self.turns.know(end);
+        let mut ends = Ends { turns: &mut self.turns, trace: &mut running.trace };
+        running.check.finish(&mut ends);
         if let Some(result) = running.result(end.max(running.start)) {
             self.made.push(self.results.add(result));
         }
@@ -153,14 +213,16 @@ impl Checks {
 
     pub(crate) fn gap(&mut self, gap: &Gap) {
         if let Some(running) = &mut self.running {
-            running.gap(gap);
+            self.turns.know(gap.end);
+            running.gap(gap, &mut self.turns);
         }
     }
 
     /// Takes a reading, and its index in the trail. `shown` when somebody looks on.
     pub(crate) fn reading(&mut self, reading: &Reading, in_trail: u64, shown: bool) {
         let Some(running) = &mut self.running else { return };
-        running.reading(reading, in_trail);
+        self.turns.know(reading.centre + self.look_ahead);
+        running.reading(reading, in_trail, &mut self.turns);
         if shown && running.readings % READINGS_A_WORD == 1 {
             self.results.run(Some(running.word()));
         }
@@ -188,22 +250,24 @@ impl Setup {
 }
 
 impl Running {
-    fn gap(&mut self, gap: &Gap) {
+    fn gap(&mut self, gap: &Gap, turns: &mut Teller) {
         // An engine that begins late counts what was before it as missing too.
         let known = self.last.map_or(self.start, |(centre, _)| centre);
         let start = gap.start.max(self.start).max(known);
         if start < gap.end {
             self.lost_samples += gap.end - start;
-            self.check.gap(&Gap { start, ..*gap }, &mut ());
+            let mut ends = Ends { turns, trace: &mut self.trace };
+            self.check.gap(&Gap { start, ..*gap }, &mut ends);
         }
     }
 
-    fn reading(&mut self, reading: &Reading, in_trail: u64) {
+    fn reading(&mut self, reading: &Reading, in_trail: u64, turns: &mut Teller) {
         while self.keys.get(1).is_some_and(|&(at, _)| at <= reading.centre) {
             self.keys.pop_front();
         }
         let played_hz = self.keys.front().and_then(|&(_, hz)| hz);
-        self.check.reading_against(reading, played_hz, &mut ());
+        let mut ends = Ends { turns, trace: &mut self.trace };
+        self.check.reading_against(reading, played_hz, &mut ends);
         self.readings += 1;
         let place = (reading.centre, in_trail);
         self.first.get_or_insert(place);
@@ -223,6 +287,12 @@ impl Running {
             reference: self.setup.name.clone(),
             from: self.first.map_or(0.0, |(_, index)| index as f64),
         }
+    }
+
+    /// The heard pitch over all of it.
+    fn curve(&self, end: u64) -> Option<Curve> {
+        let bars = self.places.bars(self.start, end);
+        Curve::of(&self.trace, bars, |at| self.places.extent(at, at).start_s)
     }
 
     /// What it comes to; nothing when there was nothing to check: no reading, or silence while the transport stood.
@@ -266,6 +336,7 @@ impl Running {
             temperament: tuning.temperament().to_string(),
             engine_version: VERSION.to_owned(),
             comment: String::new(),
+            curve: self.curve(end),
             in_trail: Some(InTrail {
                 start: first.1 as f64 - (first.0 - self.start) as f64 / settings.hop as f64,
                 end: last.1 as f64,

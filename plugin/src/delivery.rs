@@ -113,7 +113,6 @@ impl Delivery {
         self.readout.voices = Voices::default();
         self.held.clear();
         self.anchors.clear();
-        self.checks.start();
         self.keys.start();
         self.press.start();
         self.stand(Condition::Waiting);

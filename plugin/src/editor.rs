@@ -147,6 +147,7 @@ impl NiceEguiApp for Window {
             position: self.status.position(),
             lost_samples: self.status.lost_samples(),
             lost_notes: self.status.lost_notes(),
+            late_messages: self.status.late_messages(),
             unsound: &unsound,
             time_s: since.elapsed().as_secs_f64(),
         };

@@ -15,6 +15,7 @@ mod delivery;
 pub mod editor;
 pub mod keys;
 mod marks;
+mod midi_out;
 pub mod offset;
 pub mod parameters;
 mod plumbtone;
@@ -27,9 +28,10 @@ mod state;
 mod status;
 mod tap;
 pub mod trail;
+mod turns;
 pub mod voices;
 
 pub use plumbtone::Plumbtone;
 
-nice_plug::nice_export_clap!(Plumbtone);
-nice_plug::nice_export_vst3!(Plumbtone);
+nice_plug::nice_export_clap!(Plumbtone<true>);
+nice_plug::nice_export_vst3!(Plumbtone<false>);

@@ -14,8 +14,8 @@ pub(crate) struct Mark {
 /// What happens there.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub(crate) enum Event {
-    /// A new stream begins at position 0.
-    Start,
+    /// A new stream begins at position 0: the tap's first, second and so on.
+    Start { stream: u64 },
     /// The parameters have these values from here on.
     Controls(Controls),
     /// The transport stands like this.

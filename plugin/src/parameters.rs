@@ -9,7 +9,7 @@ use std::sync::atomic::Ordering;
 use atomic_float::AtomicF32;
 use nice_plug::prelude::*;
 
-pub use choices::{Channel, Reference, TemperamentChoice};
+pub use choices::{Channel, MidiOutput, Reference, TemperamentChoice};
 
 use crate::captures::Captures;
 use crate::check::Results;
@@ -28,6 +28,9 @@ pub struct Parameters {
     /// The drift check.
     #[nested(group = "Check")]
     pub check: CheckParameters,
+    /// What is sent while a check is outside.
+    #[nested(group = "MIDI")]
+    pub midi: MidiParameters,
     /// The part of the state that is no parameter.
     #[persist = "kept"]
     pub kept: Kept,
@@ -99,6 +102,20 @@ pub struct CheckParameters {
     pub reference_pitch: FloatParam,
 }
 
+/// The message that is sent while a check is outside.
+#[derive(Params, Debug)]
+pub struct MidiParameters {
+    /// Which kind of message.
+    #[id = "midi_output"]
+    pub output: EnumParam<MidiOutput>,
+    /// Number of the note or controller, 0 to 127.
+    #[id = "midi_number"]
+    pub number: IntParam,
+    /// Channel, 1 to 16.
+    #[id = "midi_channel"]
+    pub channel: IntParam,
+}
+
 impl Default for Parameters {
     fn default() -> Self {
         let concert_pitch_hz = Arc::new(AtomicF32::new(STANDARD_HZ));
@@ -106,6 +123,7 @@ impl Default for Parameters {
             tuning: TuningParameters::new(&concert_pitch_hz),
             analysis: AnalysisParameters::new(&concert_pitch_hz),
             check: CheckParameters::new(&concert_pitch_hz),
+            midi: MidiParameters::default(),
             kept: Kept::default(),
             results: Results::default(),
             sheet: Sheet::default(),
@@ -182,6 +200,20 @@ impl CheckParameters {
     }
 }
 
+impl Default for MidiParameters {
+    fn default() -> Self {
+        let range = |min, max| IntRange::Linear { min, max };
+        Self {
+            output: EnumParam::new("MIDI output", MidiOutput::Off),
+            // Middle C, and a controller without a meaning of its own.
+            number: IntParam::new("MIDI number", 60, range(0, 127))
+                .with_string_to_value(Arc::new(text::midi_number)),
+            // Away from the channel that a track is mostly played on, which passes through.
+            channel: IntParam::new("MIDI channel", 16, range(1, 16)),
+        }
+    }
+}
+
 /// A frequency in the engine's search range; entered as a note or in Hz.
 fn frequency(name: &str, default_hz: f32, concert_pitch_hz: &Arc<AtomicF32>) -> FloatParam {
     let concert_pitch_hz = Arc::clone(concert_pitch_hz);
@@ -217,6 +249,9 @@ mod tests {
             "tolerance",
             "reference",
             "reference_pitch",
+            "midi_output",
+            "midi_number",
+            "midi_channel",
         ];
         assert_eq!(ids, stable, "renaming one loses it in stored sessions");
     }
@@ -258,7 +293,7 @@ mod tests {
     }
 
     fn each<R>(parameters: &Parameters, id: &str, f: impl Fn(&dyn Text) -> R) -> R {
-        let Parameters { tuning, analysis, check, .. } = parameters;
+        let Parameters { tuning, analysis, check, midi, .. } = parameters;
         match id {
             "concert_pitch" => f(&tuning.concert_pitch),
             "temperament" => f(&tuning.temperament),
@@ -273,6 +308,9 @@ mod tests {
             "tolerance" => f(&check.tolerance),
             "reference" => f(&check.reference),
             "reference_pitch" => f(&check.reference_pitch),
+            "midi_output" => f(&midi.output),
+            "midi_number" => f(&midi.number),
+            "midi_channel" => f(&midi.channel),
             _ => panic!("no parameter {id}"),
         }
     }

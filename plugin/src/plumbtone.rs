@@ -16,6 +16,7 @@ use crate::convert::index;
 use crate::delivery::Delivery;
 use crate::editor::{self, Window};
 use crate::keys::Keys;
+use crate::midi_out::{self, MidiOut};
 use crate::parameters::Parameters;
 use crate::pool::Place;
 use crate::readings_log::ReadingsLog;
@@ -23,23 +24,27 @@ use crate::readout::Readout;
 use crate::session::Transport;
 use crate::state;
 use crate::status::Status;
-use crate::tap::{Format, Note, Patience, Tap};
+use crate::tap::{Format, Patience, Tap};
 use crate::trail::Trail;
 
 /// An instance of the plugin. It belongs to the audio thread while that runs.
+///
+/// `CONTROLLERS` says whether MIDI comes in with its controllers, to be passed on. In VST3 each of them would be a parameter
+/// of its own, 2080 in all, and a host that reads every parameter's texts takes a minute to load them: there, notes come in.
 #[derive(Debug)]
-pub struct Plumbtone {
+pub struct Plumbtone<const CONTROLLERS: bool> {
     parameters: Arc<Parameters>,
     status: Arc<Status>,
     place: Place,
     tap: Option<Tap>,
+    midi_out: MidiOut,
     /// For the editor, until the host asks for it.
     readout: Option<Output<Readout>>,
     trail: Arc<Mutex<Trail>>,
     repaint: RepaintNotifier,
 }
 
-impl Default for Plumbtone {
+impl<const CONTROLLERS: bool> Default for Plumbtone<CONTROLLERS> {
     fn default() -> Self {
         let (input, output) = triple_buffer(&Readout::default());
         let repaint = RepaintNotifier::new();
@@ -58,13 +63,14 @@ impl Default for Plumbtone {
             trail,
             place: Place::take(Analysis::new(Analyzer::new, delivery)),
             tap: None,
+            midi_out: MidiOut::new(Self::INPUT_EVENT_CAPACITY),
             readout: Some(output),
             repaint,
         }
     }
 }
 
-impl Plumbtone {
+impl<const CONTROLLERS: bool> Plumbtone<CONTROLLERS> {
     /// Ends the stream. All of it is measured before this returns: the host may take the instance away next.
     fn end(&mut self) {
         if let Some(tap) = &mut self.tap {
@@ -74,7 +80,7 @@ impl Plumbtone {
     }
 }
 
-impl Drop for Plumbtone {
+impl<const CONTROLLERS: bool> Drop for Plumbtone<CONTROLLERS> {
     fn drop(&mut self) {
         self.end();
         // A report that was begun is finished, whatever the host does next.
@@ -107,7 +113,7 @@ const fn layout(channels: u32, name: &'static str) -> AudioIOLayout {
     }
 }
 
-impl Plugin for Plumbtone {
+impl<const CONTROLLERS: bool> Plugin for Plumbtone<CONTROLLERS> {
     const NAME: &'static str = "Plumbtone";
     const VENDOR: &'static str = "Plumbtone";
     const URL: &'static str = "";
@@ -115,7 +121,10 @@ impl Plugin for Plumbtone {
     const VERSION: &'static str = env!("CARGO_PKG_VERSION");
 
     const AUDIO_IO_LAYOUTS: &'static [AudioIOLayout] = &[layout(2, "Stereo"), layout(1, "Mono")];
-    const MIDI_INPUT: MidiConfig = MidiConfig::Basic;
+    /// A host that sends a track's MIDI through takes what does not come out as not there.
+    const MIDI_INPUT: MidiConfig =
+        if CONTROLLERS { MidiConfig::MidiCCs } else { MidiConfig::Basic };
+    const MIDI_OUTPUT: MidiConfig = MidiConfig::MidiCCs;
     /// Parameter changes reach the tap at their sample, whatever the block size.
     const SAMPLE_ACCURATE_AUTOMATION: bool = true;
 
@@ -160,6 +169,7 @@ impl Plugin for Plumbtone {
             self.place.install(intake);
             self.tap = Some(tap);
         }
+        self.midi_out.start();
         true
     }
 
@@ -167,6 +177,7 @@ impl Plugin for Plumbtone {
         if let Some(tap) = &mut self.tap {
             tap.start();
         }
+        self.midi_out.start();
     }
 
     fn process(
@@ -175,13 +186,18 @@ impl Plugin for Plumbtone {
         _aux: &mut AuxiliaryBuffers<'_>,
         context: &mut impl ProcessContext<Self>,
     ) -> ProcessStatus {
-        if let Some(tap) = &mut self.tap {
-            let controls = Controls::of(&self.parameters);
+        let Self { parameters, status, tap, midi_out: output, .. } = self;
+        output.take(context, status);
+        if let Some(tap) = tap {
+            let controls = Controls::of(parameters);
             let transport = Transport::of(context.transport());
-            let notes =
-                std::iter::from_fn(|| context.next_event()).filter_map(|event| note(&event));
-            tap.block(buffer.as_slice_immutable(), &controls, &transport, notes);
+            tap.block(buffer.as_slice_immutable(), &controls, &transport, output.notes());
+            if midi_out::sends(&parameters.midi) {
+                tap.wait_for_turns();
+            }
         }
+        let due = || tap.as_mut().and_then(Tap::due);
+        output.send(&parameters.midi, due, context, status);
         ProcessStatus::Normal
     }
 
@@ -190,7 +206,7 @@ impl Plugin for Plumbtone {
     }
 }
 
-impl ClapPlugin for Plumbtone {
+impl ClapPlugin for Plumbtone<true> {
     const CLAP_ID: &'static str = "org.plumbtone.plumbtone";
     const CLAP_DESCRIPTION: Option<&'static str> =
         Some("Partials, their distance from the harmonic series, strays and pitch drift");
@@ -205,7 +221,7 @@ impl ClapPlugin for Plumbtone {
     ];
 
     fn remote_controls(&self, context: &mut impl RemoteControlsContext) {
-        let Parameters { tuning, analysis, check, .. } = &*self.parameters;
+        let Parameters { tuning, analysis, check, midi, .. } = &*self.parameters;
         context.add_section("Plumbtone", |section| {
             section.add_page("Analysis", |page| {
                 page.add_param(&analysis.channel);
@@ -225,12 +241,15 @@ impl ClapPlugin for Plumbtone {
                 page.add_param(&check.tolerance);
                 page.add_param(&check.reference);
                 page.add_param(&check.reference_pitch);
+                page.add_param(&midi.output);
+                page.add_param(&midi.number);
+                page.add_param(&midi.channel);
             });
         });
     }
 }
 
-impl Vst3Plugin for Plumbtone {
+impl Vst3Plugin for Plumbtone<false> {
     const VST3_CLASS_ID: [u8; 16] = *b"PlumbtonePlugin1";
     const VST3_SUBCATEGORIES: &'static [Vst3SubCategory] =
         &[Vst3SubCategory::Fx, Vst3SubCategory::Analyzer, Vst3SubCategory::Tools];
@@ -244,16 +263,4 @@ fn patience(api: PluginApi, mode: ProcessMode) -> Patience {
         (_, ProcessMode::Offline) => Patience::Always,
         (_, ProcessMode::Realtime | ProcessMode::Buffered) => Patience::Never,
     }
-}
-
-/// A key that went down or up.
-fn note(event: &NoteEvent<()>) -> Option<Note> {
-    let (timing, key, down) = match event {
-        NoteEvent::NoteOn { timing, key, .. } => (timing, key, true),
-        NoteEvent::NoteOff { timing, key, .. } | NoteEvent::Choke { timing, key, .. } => {
-            (timing, key, false)
-        }
-        _ => return None,
-    };
-    Some(Note { offset: index(u64::from(*timing)), key: key.number()?, down })
 }

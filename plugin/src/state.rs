@@ -231,7 +231,7 @@ impl Known {
 }
 
 fn known(parameters: &Parameters) -> Vec<Known> {
-    let Parameters { tuning, analysis, check, .. } = parameters;
+    let Parameters { tuning, analysis, check, midi, .. } = parameters;
     vec![
         float("concert_pitch", &tuning.concert_pitch),
         choice("temperament", &tuning.temperament),
@@ -246,6 +246,9 @@ fn known(parameters: &Parameters) -> Vec<Known> {
         float("tolerance", &check.tolerance),
         choice("reference", &check.reference),
         float("reference_pitch", &check.reference_pitch),
+        choice("midi_output", &midi.output),
+        int("midi_number", &midi.number),
+        int("midi_channel", &midi.channel),
     ]
 }
 

@@ -15,6 +15,8 @@ pub(crate) struct Status {
     lost_samples: AtomicU64,
     /// Marks of notes lost for the same reason.
     lost_notes: AtomicU64,
+    /// MIDI messages of checks that were sent late, for the worker was.
+    late_messages: AtomicU64,
 }
 
 impl Status {
@@ -58,5 +60,13 @@ impl Status {
 
     pub(crate) fn lose_note(&self) {
         self.lost_notes.fetch_add(1, Ordering::Relaxed);
+    }
+
+    pub(crate) fn late_messages(&self) -> u64 {
+        self.late_messages.load(Ordering::Relaxed)
+    }
+
+    pub(crate) fn send_late(&self) {
+        self.late_messages.fetch_add(1, Ordering::Relaxed);
     }
 }

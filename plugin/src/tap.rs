@@ -14,6 +14,7 @@ use crate::marks::{Cause, Event, Mark};
 use crate::parameters::Channel;
 use crate::session::{Anchor, News, Transport};
 use crate::status::Status;
+use crate::turns::{Listener, Sent, Teller, Turn, turns};
 
 /// Time that the ring of samples holds at least, in seconds.
 const RING_S: f64 = 0.7;
@@ -55,6 +56,8 @@ pub(crate) enum Patience {
 pub(crate) struct Intake {
     pub(crate) samples: Consumer<f32>,
     pub(crate) marks: Consumer<Mark>,
+    /// What goes back; taken out by whoever tells it.
+    pub(crate) turns: Option<Teller>,
     pub(crate) format: Format,
 }
 
@@ -67,20 +70,34 @@ pub(crate) struct Note {
     pub(crate) down: bool,
 }
 
+/// A check turned outside or back within the block that was taken last.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(crate) struct Due {
+    /// Samples after the block's first.
+    pub(crate) offset: usize,
+    /// Whether it should have come with an earlier block.
+    pub(crate) late: bool,
+    pub(crate) outside: bool,
+}
+
 /// The audio thread's end of the rings.
 #[derive(Debug)]
 pub(crate) struct Tap {
     samples: Producer<f32>,
     marks: Producer<Mark>,
+    turns: Listener,
     mixed: Vec<f32>,
     format: Format,
     status: Arc<Status>,
-    /// Samples put into the ring since it was made.
+    /// Samples and marks put into the rings since they were made.
     sent: u64,
+    marked: u64,
     /// Stream position: those, less what went before the last start, plus what was missed since.
     at: u64,
-    /// Whether the next mark has to start a stream.
-    starting: bool,
+    /// Stream position of the first sample of the block that was taken last.
+    from: u64,
+    /// The stream that the next mark has to start.
+    starting: Option<u64>,
     /// What the worker was last told.
     told_controls: Option<Controls>,
     told_transport: Option<Anchor>,
@@ -101,15 +118,19 @@ impl Tap {
         let capacity = seconds.max(RING_BLOCKS * format.block_max).next_power_of_two();
         let (samples, samples_out) = RingBuffer::new(capacity);
         let (marks, marks_out) = RingBuffer::new(RING_MARKS);
+        let (teller, mut listener) = turns(format.sample_rate_hz);
         let tap = Self {
             samples,
             marks,
+            starting: Some(listener.start()),
+            turns: listener,
             mixed: vec![0.0; format.block_max.max(1)],
             format,
             status,
             sent: 0,
+            marked: 0,
             at: 0,
-            starting: true,
+            from: 0,
             told_controls: None,
             told_transport: None,
             overrun: 0,
@@ -118,7 +139,7 @@ impl Tap {
             open: false,
             begun: None,
         };
-        (tap, Intake { samples: samples_out, marks: marks_out, format })
+        (tap, Intake { samples: samples_out, marks: marks_out, turns: Some(teller), format })
     }
 
     pub(crate) fn format(&self) -> Format {
@@ -129,7 +150,8 @@ impl Tap {
     pub(crate) fn start(&mut self) {
         self.end();
         self.at = 0;
-        self.starting = true;
+        self.from = 0;
+        self.starting = Some(self.turns.start());
         self.told_controls = None;
         self.told_transport = None;
         self.overrun = 0;
@@ -155,6 +177,7 @@ impl Tap {
         notes: impl Iterator<Item = Note>,
     ) {
         let length = channels.first().map_or(0, |channel| channel.len());
+        self.from = self.at;
         if length == 0 {
             return;
         }
@@ -177,7 +200,7 @@ impl Tap {
     }
 
     fn pass_by(&mut self, length: u64) {
-        if self.listening && self.has_room(0) {
+        if self.listening && (self.has_room(0) || self.wait_for_room(0)) {
             self.mark(0, Event::Pause);
             self.listening = false;
             // What changes meanwhile is told when somebody listens again.
@@ -196,6 +219,25 @@ impl Tap {
     fn advance(&mut self, length: u64) {
         self.at += length;
         self.status.at(self.at);
+        if self.format.patience != Patience::Never {
+            self.turns.remember(Sent { at: self.at, samples: self.sent, marks: self.marked });
+        }
+    }
+
+    /// Offline, waits until all that is due in the block that was taken last has come.
+    pub(crate) fn wait_for_turns(&self) {
+        if self.may_wait() && !self.turns.is_complete(self.at) {
+            self.wait(|| self.turns.is_complete(self.at), || self.turns.progress());
+        }
+    }
+
+    /// The next that is due in the block that was taken last.
+    pub(crate) fn due(&mut self) -> Option<Due> {
+        let Turn { at, outside, .. } = self.turns.next(self.at)?;
+        let offset = index(at.saturating_sub(self.from));
+        // Where it may be waited for, it was not wanted before.
+        let late = at < self.from && !self.may_wait();
+        Some(Due { offset, late, outside })
     }
 
     fn has_room(&self, length: usize) -> bool {
@@ -207,15 +249,21 @@ impl Tap {
         if !self.may_wait() || length > self.samples.buffer().capacity() {
             return false;
         }
-        let mut slots = self.samples.slots();
+        self.wait(|| self.has_room(length), || position(self.samples.slots()))
+    }
+
+    /// Waits until something is done; false when the worker is gone or makes no progress for very long.
+    fn wait(&self, is_done: impl Fn() -> bool, progress: impl Fn() -> u64) -> bool {
+        let mut before = progress();
         let mut waits = 0;
         while waits < WAITS_MAX && !self.samples.is_abandoned() {
             std::thread::sleep(WAIT);
-            if self.has_room(length) {
+            if is_done() {
                 return true;
             }
-            waits = if self.samples.slots() > slots { 0 } else { waits + 1 };
-            slots = self.samples.slots();
+            let now = progress();
+            waits = if now > before { 0 } else { waits + 1 };
+            before = now;
         }
         false
     }
@@ -234,16 +282,15 @@ impl Tap {
     fn mark(&mut self, offset: usize, event: Event) {
         let mark = Mark { after: self.sent + position(offset), event };
         // Room was made sure of before; a mark that finds none would only be missing.
-        let _ = self.marks.push(mark);
+        self.marked += u64::from(self.marks.push(mark).is_ok());
     }
 
     /// Marks all that is new since the last block that got through; at most [`MARKS_A_BLOCK`] marks.
     fn mark_changes(&mut self, controls: &Controls, transport: &Transport) {
         (self.listening, self.open) = (true, true);
-        if self.starting {
-            self.starting = false;
+        if let Some(stream) = self.starting.take() {
             self.begun = Some(Instant::now());
-            self.mark(0, Event::Start);
+            self.mark(0, Event::Start { stream });
         }
         for (samples, cause) in [(self.overrun, Cause::Overrun), (self.unwatched, Cause::Unwatched)]
         {
@@ -411,6 +458,45 @@ mod tests {
     }
 
     #[test]
+    fn turns_are_due_at_their_sample_and_late_ones_at_once() {
+        let status = watched();
+        let (mut tap, mut intake) = Tap::new(FORMAT, status);
+        let mut turns = intake.turns.take().unwrap();
+        turns.start(1);
+        // 1.25 s after their places: at samples 60 100 and 60 900.
+        turns.tell(100, true);
+        turns.tell(900, false);
+        let controls = Controls::default();
+        let mut found = Vec::new();
+        for number in 0..120_u64 {
+            block(&mut tap, &controls, 1.0, 512);
+            let mut room = vec![0.0; 512];
+            assert!(intake.samples.pop_entire_slice(&mut room).is_ok(), "the block came");
+            events(&mut intake);
+            while let Some(due) = tap.due() {
+                found.push((number * 512 + position(due.offset), due.late, due.outside));
+            }
+            // The worker hands them over when the second is over.
+            if number == 118 {
+                turns.publish(0, 0);
+            }
+        }
+        assert_eq!(found, [(119 * 512, true, true), (119 * 512, true, false)], "late");
+        tap.start();
+        turns.start(2);
+        turns.tell(100, true);
+        turns.publish(0, 0);
+        for number in 0..120_u64 {
+            block(&mut tap, &controls, 1.0, 512);
+            let mut room = vec![0.0; 512];
+            assert!(intake.samples.pop_entire_slice(&mut room).is_ok(), "the block came");
+            events(&mut intake);
+            let due = tap.due().map(|due| (number * 512 + position(due.offset), due.late));
+            assert_eq!(due, (number == 117).then_some((60_100, false)), "block {number}");
+        }
+    }
+
+    #[test]
     fn a_reset_ends_the_stream_before_the_next_begins() {
         let (mut tap, mut intake) = Tap::new(FORMAT, watched());
         let controls = Controls::default();
@@ -419,10 +505,14 @@ mod tests {
         block(&mut tap, &controls, 1.0, 64);
         let order: Vec<Mark> = events(&mut intake)
             .into_iter()
-            .filter(|mark| matches!(mark.event, Event::Start | Event::End { .. }))
+            .filter(|mark| matches!(mark.event, Event::Start { .. } | Event::End { .. }))
             .collect();
-        let expected = [(0, Event::Start), (64, Event::End { bounce: false }), (64, Event::Start)]
-            .map(|(after, event)| Mark { after, event });
+        let expected = [
+            (0, Event::Start { stream: 1 }),
+            (64, Event::End { bounce: false }),
+            (64, Event::Start { stream: 2 }),
+        ]
+        .map(|(after, event)| Mark { after, event });
         assert_eq!(order, expected, "start, end, start");
     }
 }

@@ -3,15 +3,26 @@
 vst3_hosts.py HOST render PLUGIN SOUND RATE   renders SOUND (32-bit floats, mono, played on both channels) offline three
                                               times, with different block lengths where the host allows
 vst3_hosts.py HOST pass PLUGIN                checks pass-through, automation and states
+vst3_hosts.py dawdreamer lane PLUGIN SOUND RATE TEMPO FOLDER ON-OFF...
+                                              renders SOUND twice at a TEMPO with Check on from sample ON to OFF and so
+                                              on; leaves FOLDER/1 and FOLDER/2 with a report and results.json
 
 Exits with an error as soon as something is not as it must be. Readings are logged by the plugin itself.
 """
 
+import json
+import os
 import sys
 
 import numpy as np
 
+import vst3_state
+
 BLOCKS = (512, 480, 4096)
+
+# No window is opened here. Without a name the hosts' toolkit would look for a display of its own accord, and end the process
+# with whatever goes wrong there.
+os.environ["DISPLAY"] = "none"
 
 
 def noise(rate, seconds):
@@ -30,10 +41,11 @@ class Dawdreamer:
         for block in BLOCKS:
             same(self.play(plugin, sound, rate, block)[0], sound, f"{rate} Hz, blocks of {block}")
 
-    def play(self, plugin, sound, rate, block, prepare=lambda processor: None):
+    def play(self, plugin, sound, rate, block, prepare=lambda processor: None, tempo=120.0):
         import dawdreamer
 
         engine = dawdreamer.RenderEngine(rate, block)
+        engine.set_bpm(tempo)
         playback = engine.make_playback_processor("sound", sound)
         processor = engine.make_plugin_processor("plumbtone", plugin)
         prepare(processor)
@@ -71,6 +83,42 @@ class Dawdreamer:
             found = fresh.get_parameter(index)
             if abs(found - value) > 1e-6:
                 sys.exit(f"parameter {index} was {value} and is {found} after loading")
+
+
+    def lane(self, plugin, sound, rate, tempo, folder, stretches):
+        block = BLOCKS[0]
+        if any(at % block for stretch in stretches for at in stretch):
+            sys.exit(f"this host automates block by block: a stretch has to begin and end at a multiple of {block}")
+        lane = np.zeros(sound.shape[1], dtype=np.float32)
+        for on, off in stretches:
+            lane[on:off] = 1.0
+        for number in ("1", "2"):
+            place = os.path.join(folder, number)
+            os.makedirs(place)
+            kept = os.path.join(place, "host.state")
+
+            def prepare(processor, place=place, kept=kept):
+                processor.save_state(kept)
+                state = vst3_state.read(kept)
+                checks = json.loads(state["fields"]["checks"])
+                checks["reports"] = {"automatic": True, "folder": place, "name": "Lane"}
+                state["fields"]["checks"] = json.dumps(checks)
+                vst3_state.replace(kept, state)
+                processor.load_state(kept)
+                names = {p["name"]: p["index"] for p in processor.get_parameters_description()}
+                processor.set_automation(names["Check"], lane)
+                # Nothing hears it here, but the results and the sound must be the same with it.
+                processor.set_parameter(names["MIDI output"], 1.0)
+
+            out, processor, engine = self.play(plugin, sound, rate, block, prepare, tempo)
+            same(out, sound, f"render {number} of the lane")
+            processor.save_state(kept)
+            results = json.loads(vst3_state.read(kept)["fields"]["checks"])["results"]
+            with open(os.path.join(place, "results.json"), "w", encoding="utf-8") as file:
+                json.dump(results, file)
+            os.remove(kept)
+            # The report follows when the instance goes.
+            del processor, engine
 
 
 class Pedalboard:
@@ -112,6 +160,11 @@ def main():
         plugin, path, rate = sys.argv[3:6]
         mono = np.fromfile(path, dtype=np.float32)
         host.render(plugin, np.stack([mono, mono]), float(rate))
+    elif sys.argv[2] == "lane":
+        plugin, path, rate, tempo, folder = sys.argv[3:8]
+        mono = np.fromfile(path, dtype=np.float32)
+        stretches = [tuple(map(int, stretch.split("-"))) for stretch in sys.argv[8:]]
+        host.lane(plugin, np.stack([mono, mono]), float(rate), float(tempo), folder, stretches)
     else:
         import tempfile
 

@@ -17,6 +17,8 @@ use clack_host::prelude::*;
 const PLUGIN: &CStr = c"org.plumbtone.plumbtone";
 /// Channels of the sidechain.
 const SIDECHAIN: usize = 2;
+/// Events that a block may bring out before the host takes more memory.
+const EVENTS_OUT: usize = 4096;
 
 /// Why the plugin could not be driven.
 pub type Failure = Box<dyn Error>;
@@ -226,6 +228,7 @@ pub struct Running {
     input: Vec<Vec<f32>>,
     sidechain: Vec<Vec<f32>>,
     output: Vec<Vec<f32>>,
+    events_out: EventBuffer,
 }
 
 impl std::fmt::Debug for Running {
@@ -245,6 +248,7 @@ impl Running {
             input: buffers(format.channels),
             sidechain: buffers(SIDECHAIN),
             output: buffers(format.channels),
+            events_out: EventBuffer::with_capacity(EVENTS_OUT),
         }
     }
 
@@ -281,10 +285,16 @@ impl Running {
                 self.output.iter_mut().map(|channel| &mut channel[..length]),
             ),
         }]);
-        let mut ignored = EventBuffer::new();
-        let mut out = OutputEvents::from_buffer(&mut ignored);
+        self.events_out.clear();
+        let mut out = OutputEvents::from_buffer(&mut self.events_out);
         self.processor.process(&inputs, &mut outputs, events, &mut out, None, transport)?;
         Ok(self.output.iter().map(|channel| &channel[..length]).collect())
+    }
+
+    /// The events that came out of the last block.
+    #[must_use]
+    pub fn events_out(&self) -> &EventBuffer {
+        &self.events_out
     }
 
     /// Plays a sound through the plugin in blocks of these lengths, over and over. Returns whether all that came out is

@@ -130,6 +130,7 @@ impl Spans {
                 && open.counts(self.tolerance, self.min_span, self.averaged)
             {
                 open.established = Some(heard.position);
+                sink.established(heard.position);
             }
         } else if let Some(open) = &mut self.open {
             open.doubtful.push(heard);
@@ -159,6 +160,9 @@ impl Spans {
     fn close(&mut self, at: u64, sink: &mut impl CheckSink) {
         let Some(open) = self.open.take() else { return };
         let open = Open { end: open.end.min(at).max(open.start), ..open };
+        if open.established.is_some() {
+            sink.over(open.end);
+        }
         if !open.counts(self.tolerance, self.min_span, self.averaged) {
             return;
         }

@@ -2,17 +2,19 @@
 
 use super::record::{DriftRecord, ReferenceWords, SpanRecord, VerdictWord};
 use super::table;
-use super::trace::Trace;
 use crate::measure::{FileFacts, Timebase};
 use crate::output::csv::{Column, Sheet};
 use crate::output::records::GapRecord;
 use crate::output::{Ending, Report, Spool};
 use crate::picture::drift::{self as picture, DriftPicture};
 use anyhow::Result;
-use plumbtone_analysis::check::{Check, CheckSettings, CheckSink, Heard, Reference, Span};
+use plumbtone_analysis::check::{Check, CheckSettings, CheckSink, Heard, Reference, Span, Trace};
 use plumbtone_analysis::{Gap, Reading};
 use std::io::Write as _;
 use std::path::{Path, PathBuf};
+
+/// Columns of the trace that a picture is drawn from, at most: more than it is wide.
+const COLUMNS_MAX: usize = 4096;
 
 /// Gaps listed at most.
 const GAPS_MAX: usize = 1024;
@@ -90,7 +92,7 @@ impl DriftReport {
             timebase,
             tolerance_cents: settings.tolerance_cents,
             sheets: sheets.transpose()?,
-            trace: picture.is_some().then(Trace::default),
+            trace: picture.is_some().then(|| Trace::new(COLUMNS_MAX)),
             spans: 0,
             failed: Ok(()),
         };

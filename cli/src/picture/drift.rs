@@ -8,10 +8,10 @@ use super::theme::{
     STRAY, WIDTH,
 };
 use crate::drift::record::{DriftRecord, SpanRecord, VerdictWord};
-use crate::drift::trace::Trace;
 use crate::measure::{FileFacts, Timebase};
 use crate::output::words::{UNMEASURED, plain, signed, with_deviation, with_unit};
 use anyhow::Result;
+use plumbtone_analysis::check::{Column, Trace};
 use std::path::Path;
 
 const PLOT_LEFT: f64 = 64.0;
@@ -115,12 +115,9 @@ impl DriftPicture<'_> {
 
     /// The readings, pale, and the heard pitch over them.
     fn curves(&self, canvas: &Canvas<'_>, times: &Axis, cents: &Axis) -> Result<()> {
-        let columns = &self.trace.columns;
-        let starts = (0..columns.len()).filter(|&i| i == 0 || columns[i].interrupted);
-        let ends = starts.clone().skip(1).chain([columns.len()]);
-        for (from, to) in starts.zip(ends) {
+        for piece in self.trace.pieces() {
             let (mut raw, mut heard) = (Vec::new(), Vec::new());
-            for column in &columns[from..to] {
+            for column in piece {
                 let first = times.within(self.timebase.seconds(column.positions.0));
                 let last = times.within(self.timebase.seconds(column.positions.1));
                 raw.push((first, cents.within(column.raw.0)));
@@ -138,15 +135,15 @@ impl DriftPicture<'_> {
 
     /// What was listened to, from where to where in seconds.
     fn times(&self) -> (f64, f64) {
-        let columns = &self.trace.columns;
+        let columns = self.trace.columns();
         let end_s = columns.last().map_or(0.0, |c| self.timebase.seconds(c.positions.1));
         let start_s = self.timebase.seconds(0);
         (start_s, end_s.max(start_s + 0.1))
     }
 
     fn range(&self) -> (f64, f64) {
-        let heard =
-            self.trace.columns.iter().flat_map(|c| [c.extremes.0.abs(), c.extremes.1.abs()]);
+        let extremes = |c: &Column| [c.extremes.0.abs(), c.extremes.1.abs()];
+        let heard = self.trace.columns().iter().flat_map(extremes);
         let needed = heard.fold(0.0, f64::max) * BEYOND_HEARD;
         let needed = needed.max(BEYOND_TOLERANCE * self.record.tolerance_cents);
         let raw = [self.record.raw_lowest_cents, self.record.raw_highest_cents];
@@ -176,7 +173,7 @@ impl DriftPicture<'_> {
                 "readings",
                 format!(
                     "{} to {}",
-                    signed(record.raw_lowest_cents, 1),
+                    signed(record.raw_lowest_cents, 2),
                     cents(record.raw_highest_cents)
                 ),
             ),
@@ -223,10 +220,12 @@ impl DriftPicture<'_> {
                 canvas.text(x, y, &cell, Type::mono(10.0, INK).at(Side::Right))?;
             }
         }
+        if self.record.spans.is_empty() {
+            return canvas.text(left + 12.0, top + 36.0, "nowhere", SMALL);
+        }
         let unlisted =
             self.record.spans.len().saturating_sub(SPANS_SHOWN) as u64 + self.record.spans_left_out;
         let more = match unlisted {
-            0 if self.record.spans.is_empty() => "nowhere".to_owned(),
             0 => return Ok(()),
             count => format!("and {count} shorter"),
         };
@@ -310,7 +309,7 @@ mod tests {
         let timebase = fixtures::TIMEBASE;
         let settings = CheckSettings::new(timebase.sample_rate_hz, timebase.hop);
         let record = DriftRecord::new(outcome, &settings, words, facts, timebase);
-        let mut trace = Trace::default();
+        let mut trace = Trace::new(400);
         for index in 0..heard {
             let cents = 1700.0 * (index as f64 / 40.0).sin();
             let position = 480 * (index + 100 * (index / 300));

@@ -176,9 +176,7 @@ fn headers_that_cannot_be_right_are_refused() {
 fn what_is_no_readable_file_is_refused() {
     let folder = TempDir::new().unwrap();
     std::fs::create_dir(folder.path().join("takes")).unwrap();
-    for (name, said) in
-        [("takes", "is a directory: name the files in it"), ("absent.wav", "does not exist")]
-    {
+    for (name, said) in [("takes", "there is no sound file"), ("absent.wav", "does not exist")] {
         let run = measure(folder.path(), &[name]);
         assert_eq!((run.status, run.stdout.as_str()), (Some(2), ""), "{name}");
         assert_eq!(run.stderr, format!("plumbtone: {name}: {said}\n"), "{name}");

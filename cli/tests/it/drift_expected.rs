@@ -58,6 +58,33 @@ fn a_melody_is_checked_against_midi_and_csv_alike() {
 }
 
 #[test]
+fn a_bent_note_is_expected_where_the_bend_takes_it() {
+    // A3, a semitone up from half a second on.
+    let bent = a3(|t| if t < 0.5 { 0.0 } else { 100.0 }, 1.5);
+    // 96 ticks a beat of half a second; without and with a bend by half of two semitones after a beat.
+    let notes = |bend: &[u8]| {
+        let track = [
+            &[0, 0x90, 57, 100][..],
+            bend,
+            &[if bend.is_empty() { 0x82 } else { 0x81 }, if bend.is_empty() { 0x20 } else { 0x40 }],
+            &[0x80, 57, 0, 0, 0xff, 0x2f, 0],
+        ]
+        .concat();
+        let size = u32::try_from(track.len()).unwrap().to_be_bytes();
+        [&b"MThd\x00\x00\x00\x06\x00\x00\x00\x01\x00\x60MTrk"[..], &size, &track].concat()
+    };
+    let folder = folder_with([
+        ("bent.wav", wav(&[bent], Coding::S16)),
+        ("straight.mid", notes(&[])),
+        ("bent.mid", notes(&[96, 0xe0, 0, 0x60])),
+    ]);
+    for (expected, status) in [("bent.mid", 0), ("straight.mid", 1)] {
+        let run = drift(folder.path(), &["--json", "--expect", expected, "bent.wav"]);
+        assert_eq!(run.status, Some(status), "{expected}: {} {}", run.stdout, run.stderr);
+    }
+}
+
+#[test]
 fn expected_times_are_those_of_the_file_wherever_the_check_starts() {
     let folder =
         folder_with([("melody.wav", wav(&[melody()], Coding::S16)), ("notes.mid", midi(64))]);

@@ -1,6 +1,8 @@
 //! Results for tests.
 
+use super::curve::{COLUMNS_MAX, Curve};
 use super::result::{CheckResult, Extent, OutsideSpan, VerdictWord};
+use plumbtone_analysis::check::{Heard, Trace};
 
 /// A result that is outside over the middle of a stretch of the session, in seconds.
 pub(crate) fn result(start_s: f64, end_s: f64) -> CheckResult {
@@ -51,6 +53,30 @@ pub(crate) fn result(start_s: f64, end_s: f64) -> CheckResult {
         temperament: "equal".to_owned(),
         engine_version: "0.1.0".to_owned(),
         comment: String::new(),
+        curve: curve(start_s, end_s),
         in_trail: None,
     }
+}
+
+/// The pitch of such a result: outside over the middle, with a pause before the end. Bars last two seconds.
+fn curve(start_s: f64, end_s: f64) -> Option<Curve> {
+    let mut trace = Trace::new(COLUMNS_MAX);
+    let count = crate::convert::nearest(100.0 * (end_s - start_s));
+    for index in 0..count {
+        let share = index as f64 / count as f64;
+        let wave = (25.0 * share).sin();
+        let cents = if (0.33..0.67).contains(&share) { 6.4 + 0.7 * wave } else { 1.5 * wave };
+        if !(0.8..0.9).contains(&share) {
+            trace.push(&Heard {
+                position: 480 * index,
+                reference_hz: 220.0,
+                cents,
+                sd_cents: 0.3 + 0.2 * share,
+                raw_cents: cents,
+            });
+        }
+    }
+    let bars = (2..100).map(|bar| (bar, 2.0 * (bar - 1) as f64));
+    let within = bars.filter(|(_, at)| *at > start_s && *at < end_s).take(16);
+    Curve::of(&trace, within.collect(), |at| start_s + at as f64 / 48_000.0)
 }

@@ -2,6 +2,7 @@
 
 use std::collections::VecDeque;
 
+use super::curve::BARS_MAX;
 use super::result::Extent;
 use crate::convert::signed_distance;
 use crate::session::{Anchor, BarBeat, SessionPosition};
@@ -12,6 +13,8 @@ const ANCHORS_MAX: usize = 4096;
 /// What lies this much below the middle between two thousandths of a beat is rounded up with it: the middle itself is a
 /// common place, and hosts tell it a little more or less.
 const MIDDLE: f64 = 1e-4;
+/// Beats before a bar that are the bar.
+const ALMOST: f64 = 1e-6;
 
 /// Where the transport was over one check: it never jumped, but its tempo may have changed.
 #[derive(Debug)]
@@ -65,13 +68,51 @@ impl Places {
         }
     }
 
-    /// Bar and beat, rounded to a thousandth: hosts' own rounding differs from block to block.
-    fn bar_beat(&self, at: u64) -> Option<BarBeat> {
+    /// Bars that begin within a stretch, as many as are told of one: number, and seconds as in its extent.
+    pub(super) fn bars(&self, start: u64, end: u64) -> Vec<(i64, f64)> {
+        let (Some(first), Some(last)) = (self.bar(start), self.bar(end)) else { return Vec::new() };
+        let most = BARS_MAX as u64;
+        let stride = last.saturating_sub(first).unsigned_abs().div_ceil(most).next_power_of_two();
+        let stride = i64::try_from(stride).unwrap_or(i64::MAX);
+        (first.saturating_add(1)..=last)
+            .filter(|bar| (bar - 1).rem_euclid(stride) == 0)
+            .take(BARS_MAX)
+            .map(|bar| (bar, self.start_s(bar, start, end)))
+            .collect()
+    }
+
+    /// When a bar begins within a stretch, to the millisecond: hosts tell it a little earlier or later.
+    fn start_s(&self, bar: i64, mut start: u64, mut end: u64) -> f64 {
+        while start < end {
+            let middle = start + (end - start) / 2;
+            if self.bar(middle).is_some_and(|found| found >= bar) {
+                end = middle;
+            } else {
+                start = middle + 1;
+            }
+        }
+        (1000.0 * self.extent(start, start).start_s).round() / 1000.0
+    }
+
+    /// The bar at a position; what is almost the next one is.
+    fn bar(&self, at: u64) -> Option<i64> {
+        let (beats, _) = self.anchor(at)?.transport.signature?;
+        let BarBeat { bar, beat } = self.known(at)?;
+        Some(if beat + ALMOST >= f64::from(beats) + 1.0 { bar + 1 } else { bar })
+    }
+
+    /// Bar and beat, where they are not forgotten.
+    fn known(&self, at: u64) -> Option<BarBeat> {
         let oldest = self.anchors.get(1).map_or(u64::MAX, |anchor| anchor.at);
         if self.forgotten && at < oldest {
             return None;
         }
-        let BarBeat { bar, beat } = self.of(at).bar_beat.filter(|found| found.beat.is_finite())?;
+        self.of(at).bar_beat.filter(|found| found.beat.is_finite())
+    }
+
+    /// Bar and beat, rounded to a thousandth: hosts' own rounding differs from block to block.
+    fn bar_beat(&self, at: u64) -> Option<BarBeat> {
+        let BarBeat { bar, beat } = self.known(at)?;
         let beat = (1000.0 * beat + 0.5 + MIDDLE).floor() / 1000.0;
         let (beats, _) = self.anchor(at)?.transport.signature?;
         let next = beat >= f64::from(beats) + 1.0;
@@ -120,6 +161,18 @@ mod tests {
         assert_eq!((extent.start_sample, extent.end_sample), (96_000, 240_000), "{extent:?}");
         assert_eq!((extent.start_bar, extent.end_bar), (Some(2), Some(5)), "{extent:?}");
         assert_eq!((extent.start_beat, extent.end_beat), (Some(1.0), Some(1.0)), "{extent:?}");
+    }
+
+    #[test]
+    fn bars_are_found_where_they_begin_and_thinned_out() {
+        let mut places = Places::new(Some(anchor(1_000, 0, 120.0, 0.0)), RATE_HZ);
+        places.add(anchor(193_000, 192_000, 480.0, 8.0));
+        let bars = places.bars(1_000, 241_000);
+        assert_eq!(bars, [(2, 2.0), (3, 4.0), (4, 4.5), (5, 5.0)], "two tempos");
+        let bars = places.bars(1_000, 193_000 + 97 * 24_000);
+        assert!(bars.len() <= BARS_MAX && bars.len() > BARS_MAX / 2, "{bars:?}");
+        assert!(bars.iter().all(|(bar, _)| (bar - 1) % 8 == 0), "a round number each: {bars:?}");
+        assert_eq!(bars[1], (17, 11.0), "{bars:?}");
     }
 
     #[test]

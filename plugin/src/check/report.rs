@@ -120,8 +120,15 @@ mod tests {
         assert_eq!(csv.lines().count(), 5, "{csv}");
         assert!(csv.contains("\"flat, \"\"again\"\" <here> & there\""), "{csv}");
         let page = page::text(&job);
-        for word in ["&lt;here&gt; &amp; there", "outside", "+7.1", "1|2.33", CAUTION] {
+        let words =
+            ["&lt;here&gt; &amp; there", "outside, +7.1 ct", "no pitch", "1|2.33", "2|1", CAUTION];
+        for word in words {
             assert!(page.contains(word), "{word} in {page}");
         }
+        let curves = |job: &Job| page::text(job).matches("stroke-linejoin").count();
+        assert_eq!(curves(&job), 4, "each check's curve, with the pause in it");
+        let mut without = job.clone();
+        without.results.iter_mut().for_each(|result| result.curve = None);
+        assert_eq!(curves(&without), 0, "results that have lost theirs");
     }
 }

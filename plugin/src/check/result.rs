@@ -3,6 +3,7 @@
 use plumbtone_analysis::check::{Outcome, Verdict};
 use serde::{Deserialize, Serialize};
 
+use super::curve::Curve;
 use crate::convert::nearest;
 
 /// Most spans that one result keeps.
@@ -133,6 +134,9 @@ pub struct CheckResult {
     pub engine_version: String,
     /// What the user wrote to it.
     pub comment: String,
+    /// The heard pitch over time; only the newest results keep theirs.
+    #[serde(default)]
+    pub curve: Option<Curve>,
     /// Where it lies in the trail, while that still holds it.
     #[serde(skip)]
     pub in_trail: Option<InTrail>,
@@ -258,6 +262,7 @@ impl CheckResult {
             && self.sample_rate_hz > 0.0
             && [self.worst_cents, self.mean_cents, self.drift_cents_per_s].into_iter().all(finite)
             && self.comment.chars().count() <= COMMENT_MAX
+            && self.curve.as_ref().is_none_or(Curve::is_sound)
     }
 }
 

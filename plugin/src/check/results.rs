@@ -8,6 +8,7 @@ use std::sync::{Arc, Mutex, MutexGuard, PoisonError, TryLockError};
 use nice_plug::params::persist::PersistentField;
 use serde::{Deserialize, Serialize};
 
+use super::curve::{COLUMNS_IN_ALL_MAX, Curve};
 use super::report::{self, Job};
 use super::result::{COMMENT_MAX, CheckResult, VerdictWord};
 use crate::report_files::{Place, Told, Writers};
@@ -248,6 +249,13 @@ impl Stored {
         }
         self.results.drain(..surplus);
         self.left_out += surplus as u64;
+        let mut columns = 0;
+        for result in self.results.iter_mut().rev() {
+            columns += result.curve.as_ref().map_or(0, Curve::columns);
+            if columns > COLUMNS_IN_ALL_MAX {
+                result.curve = None;
+            }
+        }
     }
 }
 

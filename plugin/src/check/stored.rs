@@ -104,6 +104,35 @@ mod tests {
     }
 
     #[test]
+    fn results_of_older_sessions_have_no_curve_and_load() {
+        let mut old = serde_json::to_value(stored(3)).unwrap();
+        for result in old["results"].as_array_mut().unwrap() {
+            result.as_object_mut().unwrap().remove("curve").unwrap();
+        }
+        let mut findings = Vec::new();
+        let found = read(Some(&old.to_string()), &mut findings);
+        assert_eq!(findings, Vec::<String>::new(), "nothing is missing");
+        assert_eq!(found.results.len(), 3, "results");
+        assert!(found.results.iter().all(|result| result.curve.is_none()), "{found:?}");
+    }
+
+    #[test]
+    fn the_newest_results_keep_their_curves_and_sessions_stay_small() {
+        let results = (0..200).map(|k| CheckResult {
+            number: k + 1,
+            ..result(10.0 * k as f64, 10.0 * k as f64 + 9.0)
+        });
+        let text =
+            serde_json::to_string(&Stored { results: results.collect(), ..Stored::default() });
+        let found = read(Some(&text.unwrap()), &mut Vec::new());
+        let kept: Vec<bool> = found.results.iter().map(|result| result.curve.is_some()).collect();
+        let first = kept.iter().position(|kept| *kept).unwrap();
+        assert!(first > 100 && kept[first..].iter().all(|kept| *kept), "{kept:?}");
+        let size = serde_json::to_string(&found).unwrap().len();
+        assert!(size < 600_000, "{size} bytes");
+    }
+
+    #[test]
     fn what_is_damaged_goes_and_the_rest_stays() {
         let text = serde_json::to_string(&stored(3)).unwrap();
         for (sound, damaged, left) in [

@@ -1,12 +1,13 @@
 //! The side panel's drift checks: results, what is done with them, and their reports.
 
+mod midi;
 pub(super) mod reports;
 mod rows;
 
 use egui::{Color32, Pos2, Rect, RichText, Shape, Stroke, Ui, pos2};
 
+use super::field::Bench;
 use super::parts::{self, act, say, tick};
-use super::screen::Shown;
 use super::steady::signed;
 use super::theme::{FIGURE, Palette};
 use crate::check::{CheckResult, Results, Snapshot, VerdictWord};
@@ -53,19 +54,15 @@ impl Checks {
 }
 
 /// Draws it.
-pub(crate) fn show(
-    ui: &mut Ui,
-    rect: Rect,
-    checks: &mut Checks,
-    shown: &Shown<'_>,
-    palette: &Palette,
-) {
+pub(crate) fn show(ui: &mut Ui, rect: Rect, checks: &mut Checks, bench: &mut Bench<'_>) {
+    let palette = bench.palette;
     parts::list(ui, rect, "checks", palette, |ui| {
-        let results = &shown.parameters.results;
+        let results = &bench.parameters.results;
         head(ui, checks, palette);
         rows::show(ui, checks, results, palette);
         passes(ui, checks, results, palette);
         reports::show(ui, checks, results, palette);
+        midi::show(ui, bench);
     });
     if checks.snapshot.writing {
         // What comes of the report is told without further news.

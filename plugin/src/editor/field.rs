@@ -94,7 +94,7 @@ pub(crate) fn field(ui: &mut Ui, rect: Rect, field: &Field, bench: &mut Bench<'_
         Some(count) => choose(&response, field, count, bench),
         None => drag(ui, &response, field.knob, bench),
     }
-    step(ui, &response, field.knob, choices, bench);
+    step(ui, &response, field, choices, bench);
     if response.secondary_clicked() || focused_key(ui, &response, Key::Delete) {
         bench.gestures.extend(Gesture::jump(field.knob, handle.default()));
     }
@@ -218,8 +218,17 @@ fn drag(ui: &Ui, response: &Response, knob: Knob, bench: &mut Bench<'_>) {
 }
 
 /// The wheel over a field, and the arrow keys in it.
-fn step(ui: &Ui, response: &Response, knob: Knob, choices: Option<usize>, bench: &mut Bench<'_>) {
-    let scrolled = if response.hovered() { wheel_notches(ui) } else { 0.0 };
+fn step(
+    ui: &Ui,
+    response: &Response,
+    field: &Field,
+    choices: Option<usize>,
+    bench: &mut Bench<'_>,
+) {
+    let knob = field.knob;
+    // A list scrolls: over it, the wheel turns what was chosen before and nothing that it happens to come over.
+    let listens = field.place != Place::Edge || response.has_focus();
+    let scrolled = if listens && response.hovered() { wheel_notches(ui) } else { 0.0 };
     let arrows = [(Key::ArrowUp, 1.0), (Key::ArrowDown, -1.0)];
     let pressed: f32 =
         arrows.iter().filter(|(key, _)| focused_key(ui, response, *key)).map(|(_, by)| by).sum();

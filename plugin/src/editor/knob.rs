@@ -32,6 +32,12 @@ pub enum Knob {
     Reference,
     /// Pitch of a fixed reference.
     ReferencePitch,
+    /// What is sent while a check is outside.
+    MidiOutput,
+    /// Number of that note or controller.
+    MidiNumber,
+    /// Its channel.
+    MidiChannel,
 }
 
 /// One step of a change that a host can undo and record. `Set` carries a normalised value, 0 to 1.
@@ -100,7 +106,7 @@ impl<P: Param> Handle for P {
 impl Knob {
     /// The parameter.
     pub(crate) fn of(self, parameters: &Parameters) -> &dyn Handle {
-        let Parameters { tuning, analysis, check, .. } = parameters;
+        let Parameters { tuning, analysis, check, midi, .. } = parameters;
         match self {
             Self::ConcertPitch => &tuning.concert_pitch,
             Self::Temperament => &tuning.temperament,
@@ -114,6 +120,9 @@ impl Knob {
             Self::Tolerance => &check.tolerance,
             Self::Reference => &check.reference,
             Self::ReferencePitch => &check.reference_pitch,
+            Self::MidiOutput => &midi.output,
+            Self::MidiNumber => &midi.number,
+            Self::MidiChannel => &midi.channel,
         }
     }
 }

@@ -35,6 +35,12 @@ pub(crate) fn notices(shown: &Shown<'_>) -> Vec<String> {
     if shown.lost_notes > 0 {
         out.push(format!("{} note events lost since this instance was loaded.", shown.lost_notes));
     }
+    if shown.late_messages > 0 {
+        out.push(format!(
+            "{} MIDI messages of checks were sent late, for lack of computing time.",
+            shown.late_messages
+        ));
+    }
     out.extend(shown.unsound.iter().map(|finding| format!("Loaded session: {finding}.")));
     out
 }

@@ -93,7 +93,7 @@ pub(crate) fn show(
         Tab::Sound => sound::show(ui, body, shown, figures, palette),
         Tab::Captures => captures::show(ui, body, captures, shown, palette),
         Tab::Keys => keys::show(ui, body, keys, shown, palette),
-        Tab::Checks => checks::show(ui, body, checks, shown, palette),
+        Tab::Checks => checks::show(ui, body, checks, bench),
         Tab::Settings => settings::show(ui, body, look, bench),
     }
     let all = if *tab == Tab::Keys { &COPIES_OF_KEYS } else { &COPIES };

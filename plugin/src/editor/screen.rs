@@ -45,6 +45,8 @@ pub struct Shown<'a> {
     pub lost_samples: u64,
     /// Notes lost since then.
     pub lost_notes: u64,
+    /// MIDI messages of checks that were sent late since then.
+    pub late_messages: u64,
     /// What was unsound in the last loaded state.
     pub unsound: &'a [String],
     /// A clock in seconds, for what changes calmly.

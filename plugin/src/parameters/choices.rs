@@ -41,6 +41,20 @@ pub enum Reference {
     Pitch,
 }
 
+/// What is sent to the note output while a check is outside.
+#[derive(Enum, Debug, Clone, Copy, PartialEq, Eq)]
+pub enum MidiOutput {
+    /// Nothing.
+    #[id = "off"]
+    Off,
+    /// A note that is held as long.
+    #[id = "note"]
+    Note,
+    /// A controller at 127, and at 0 afterwards.
+    #[id = "controller"]
+    Controller,
+}
+
 /// A temperament as a parameter.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
 pub struct TemperamentChoice(pub Temperament);

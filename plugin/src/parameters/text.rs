@@ -36,6 +36,13 @@ pub(super) fn milliseconds(entry: &str) -> Option<f32> {
     }
 }
 
+/// A MIDI number from `60`, or from the name of a note: `C4`.
+pub(super) fn midi_number(entry: &str) -> Option<i32> {
+    let entry = entry.trim();
+    let named = || entry.parse().ok().map(|note: NoteName| i32::from(note.midi()));
+    entry.parse().ok().or_else(named).filter(|number| (0..=127).contains(number))
+}
+
 fn hertz(entry: &str) -> Option<f32> {
     let (number, unit) = split(entry)?;
     let hz = match unit.to_ascii_lowercase().as_str() {
@@ -81,6 +88,17 @@ fn is_cents(unit: &str) -> bool {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn midi_numbers_read_as_numbers_or_notes() {
+        let entries = [("60", 60), (" 0 ", 0), ("127", 127), ("C4", 60), ("a4", 69), ("Bb3", 58)];
+        for (entry, expected) in entries {
+            assert_eq!(midi_number(entry), Some(expected), "{entry}");
+        }
+        for entry in ["", "128", "-1", "H4", "C20", "1.5"] {
+            assert_eq!(midi_number(entry), None, "{entry}");
+        }
+    }
 
     #[test]
     fn frequencies_read_as_hertz_or_notes() {

@@ -1,10 +1,10 @@
 //! The results of drift checks: what is shown of them and what is done with them.
 
-use egui::{Event, Key};
+use egui::{Event, Key, vec2};
 use egui_kittest::Harness;
 use egui_kittest::kittest::Queryable as _;
 use plumbtone_plugin::check::{CheckResult, Reports, Snapshot};
-use plumbtone_plugin::editor::Theme;
+use plumbtone_plugin::editor::{Gesture, Knob, Theme};
 
 use crate::open;
 use crate::scenes::Scene;
@@ -72,6 +72,33 @@ fn a_comment_is_kept() {
     editor.key_press(Key::Enter);
     editor.run_steps(2);
     assert_eq!(results(&editor)[1].comment, "second verse");
+}
+
+#[test]
+fn what_is_sent_while_outside_is_chosen_from_a_list() {
+    let mut editor = Scene::checked(Theme::Dark).open(vec2(1120.0, 1200.0), 1.0);
+    editor.run_steps(2);
+    editor.get_by_label("Checks").click();
+    editor.run_steps(3);
+    assert!(editor.query_by_label_contains("channel:").is_none(), "off: nothing else to be set");
+    let at = editor.get_by_label("MIDI when outside: Off").rect().center();
+    editor.hover_at(at);
+    editor.step();
+    editor.event(Event::MouseWheel {
+        unit: egui::MouseWheelUnit::Line,
+        delta: vec2(0.0, -1.0),
+        phase: egui::TouchPhase::Move,
+        modifiers: egui::Modifiers::NONE,
+        source: egui::MouseWheelSource::Unknown,
+    });
+    editor.run_steps(2);
+    assert_eq!(editor.state().gestures, [], "the wheel scrolls the panel");
+    editor.get_by_label("MIDI when outside: Off").click();
+    editor.run_steps(2);
+    editor.get_by_label("Controller").click();
+    editor.run_steps(2);
+    let chosen = Gesture::Set(Knob::MidiOutput, 1.0);
+    assert!(editor.state().gestures.contains(&chosen), "{:?}", editor.state().gestures);
 }
 
 #[test]

@@ -221,6 +221,7 @@ impl Scene {
             position: self.readout.reading.centre + 4_800,
             lost_samples: self.lost_samples,
             lost_notes: 0,
+            late_messages: 0,
             unsound: &self.unsound,
             time_s: self.time_s,
         }

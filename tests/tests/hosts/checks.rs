@@ -7,7 +7,7 @@ use std::process::Command;
 
 use clack_host::events::event_types::NoteOnEvent;
 use clack_host::prelude::*;
-use plumbtone_analysis::check::{Check, CheckSettings, Outcome, Reference};
+use plumbtone_analysis::check::{Check, CheckSettings, CheckSink, Outcome, Reference};
 use plumbtone_analysis::signals::{
     Motion, MovingTone, Point, Random, Timbre, Tone, Vibrato, narrow, sample_count,
 };
@@ -27,10 +27,11 @@ use crate::the_program::write_stereo;
 const RATE: f64 = 48_000.0;
 const LENGTH_S: f64 = 9.0;
 /// Where the lane switches Check on and off, in samples: within the tolerance, outside it, under a vibrato.
-const LANE: [(usize, usize); 3] = [(24_123, 120_000), (131_001, 262_144), (288_000, 416_000)];
+pub(crate) const LANE: [(usize, usize); 3] =
+    [(24_123, 120_000), (131_001, 262_144), (288_000, 416_000)];
 
 /// A3 that is in tune, then 15 cents sharp from 3.5 s to 5 s, then has a vibrato.
-fn sound() -> Vec<f32> {
+pub(crate) fn sound() -> Vec<f32> {
     let mut random = Random::new(77);
     let timbre = Timbre { partials: 12, tilt_db_per_octave: -6.0, ..Timbre::default() };
     let tone = Tone::random(&mut random, RATE, 220.0, 1e-4, &timbre);
@@ -113,7 +114,16 @@ fn rendered(block: usize) -> Vec<CheckResult> {
 }
 
 /// The check alone, over the samples of one stretch.
-fn alone(sound: &[f32], (on, off): (usize, usize)) -> Outcome {
+pub(crate) fn alone(sound: &[f32], lane: (usize, usize)) -> Outcome {
+    alone_into(sound, lane, &mut ())
+}
+
+/// The same, with what it tells on the way.
+pub(crate) fn alone_into(
+    sound: &[f32],
+    (on, off): (usize, usize),
+    sink: &mut impl CheckSink,
+) -> Outcome {
     let settings = Settings::new(RATE);
     let mut analyzer = Analyzer::new(&settings).expect("an engine");
     let mut take = Take::default();
@@ -124,8 +134,8 @@ fn alone(sound: &[f32], (on, off): (usize, usize)) -> Outcome {
         CheckSettings { tolerance_cents: 5.0, ..CheckSettings::new(RATE, analyzer.hop()) };
     let reference = Reference::Nearest(Tuning::default());
     let mut check = Check::new(&settings, reference).expect("a check");
-    take.readings.iter().for_each(|reading| check.reading(reading, &mut ()));
-    check.finish(&mut ());
+    take.readings.iter().for_each(|reading| check.reading(reading, sink));
+    check.finish(sink);
     check.outcome()
 }
 
@@ -301,7 +311,7 @@ fn a_bounce_writes_one_report_and_the_same_again() {
 }
 
 /// All files by their ending, without their time stamps.
-fn texts(folder: &Path) -> Vec<String> {
+pub(crate) fn texts(folder: &Path) -> Vec<String> {
     let mut files: Vec<_> = fs::read_dir(folder)
         .expect("a folder")
         .map(|entry| entry.expect("an entry").path())

@@ -5,6 +5,7 @@
 mod allocations;
 mod automation;
 mod bundles;
+mod bundles_checks;
 mod captures;
 mod checks;
 mod editor;
@@ -12,6 +13,7 @@ mod keys;
 mod lifecycle;
 mod live;
 mod many;
+mod midi_out;
 mod pass_through;
 mod rig;
 mod session;

@@ -21,6 +21,9 @@ fn parameters_are_named_and_grouped() {
         ("Tolerance", "Check"),
         ("Reference", "Check"),
         ("Reference pitch", "Check"),
+        ("MIDI output", "MIDI"),
+        ("MIDI number", "MIDI"),
+        ("MIDI channel", "MIDI"),
     ];
     assert_eq!(named, expected, "all ids: {found:?}");
 }

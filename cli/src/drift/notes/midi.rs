@@ -1,10 +1,14 @@
-//! The notes of a Standard MIDI File (MIDI Manufacturers Association, RP-001), in seconds by its tempo changes.
+//! The notes of a Standard MIDI File (MIDI Manufacturers Association, RP-001), in seconds by its tempo changes. Where the
+//! pitch is bent, a note is several, one after the other.
+
+mod player;
 
 use anyhow::{Result, anyhow, bail};
 use midly::{Format, MetaMessage, MidiMessage, Smf, Timing, TrackEventKind};
+use player::{BEND_FULL, Piece, Player};
 use plumbtone_analysis::check::Expected;
-use plumbtone_analysis::tuning::{NoteName, Tuning};
-use std::collections::BTreeMap;
+use plumbtone_analysis::tuning::Tuning;
+use std::collections::{BTreeMap, BTreeSet};
 
 /// Tempo until one is told: 120 quarter notes a minute.
 const TEMPO_US: u32 = 500_000;
@@ -21,42 +25,75 @@ pub(super) fn notes(bytes: &[u8], tuning: &Tuning) -> Result<Vec<Expected>> {
         bail!("holds independent sequences (format 2), which no single recording follows");
     }
     let clock = Clock::new(&file);
+    let mut players: BTreeMap<Channel, Player> = BTreeMap::new();
     let mut notes = Vec::new();
-    for track in &file.tracks {
-        let mut sounding: BTreeMap<(u8, u8), u64> = BTreeMap::new();
-        let mut tick = 0;
-        let mut end = |channel: u8, key: u8, from: u64, to: u64| {
-            if channel != DRUMS {
-                let name = NoteName::from_midi(i16::from(key));
-                notes.push(Expected {
-                    start_s: clock.seconds(from),
-                    end_s: clock.seconds(to),
-                    f0_hz: tuning.frequency_hz(name),
-                });
-            }
-        };
-        for event in track {
-            tick += u64::from(event.delta.as_int());
-            let TrackEventKind::Midi { channel, message } = event.kind else { continue };
-            let (key, on) = match message {
-                MidiMessage::NoteOn { key, vel } => (key, vel > 0),
-                MidiMessage::NoteOff { key, .. } => (key, false),
-                _ => continue,
-            };
-            let at = (channel.as_int(), key.as_int());
-            // A key struck again ends its last note.
-            if let Some(from) = sounding.remove(&at) {
-                end(at.0, at.1, from, tick);
-            }
-            if on {
-                sounding.insert(at, tick);
-            }
+    for Played { tick, track, channel, message } in played(&file) {
+        if channel.number == DRUMS {
+            continue;
         }
-        for ((channel, key), from) in sounding {
-            end(channel, key, from, tick);
+        let player = players.entry(channel).or_default();
+        let time_s = clock.seconds(tick);
+        let mut ends = |piece: Piece| notes.push(piece.until(time_s, tuning));
+        match message {
+            Some(MidiMessage::NoteOn { key, vel }) if vel > 0 => {
+                // A key struck again ends its last note.
+                player.end((track, key.as_int())).into_iter().for_each(&mut ends);
+                player.strike((track, key.as_int()), time_s);
+            }
+            Some(MidiMessage::NoteOn { key, .. } | MidiMessage::NoteOff { key, .. }) => {
+                player.end((track, key.as_int())).into_iter().for_each(ends);
+            }
+            Some(MidiMessage::PitchBend { bend }) => {
+                player.bend(f64::from(bend.as_int()) / BEND_FULL, time_s, ends);
+            }
+            Some(MidiMessage::Controller { controller, value }) => {
+                player.control(controller.as_int(), value.as_int(), time_s, ends);
+            }
+            Some(_) => {}
+            None => player.end_track(track).into_iter().for_each(ends),
         }
     }
     Ok(notes)
+}
+
+/// A message at its tick; none where the track ends.
+struct Played {
+    tick: u64,
+    track: usize,
+    channel: Channel,
+    message: Option<MidiMessage>,
+}
+
+/// A channel of a port: what bends one note of it bends all, whichever track they are in.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
+struct Channel {
+    port: u8,
+    number: u8,
+}
+
+/// The messages of all tracks, in order; each channel that a track plays on hears its end.
+fn played(file: &Smf<'_>) -> Vec<Played> {
+    let mut all = Vec::new();
+    for (track, events) in file.tracks.iter().enumerate() {
+        let (mut tick, mut port) = (0, 0);
+        let mut channels = BTreeSet::new();
+        for event in events {
+            tick += u64::from(event.delta.as_int());
+            match event.kind {
+                TrackEventKind::Midi { channel, message } => {
+                    let channel = Channel { port, number: channel.as_int() };
+                    channels.insert(channel);
+                    all.push(Played { tick, track, channel, message: Some(message) });
+                }
+                TrackEventKind::Meta(MetaMessage::MidiPort(number)) => port = number.as_int(),
+                _ => {}
+            }
+        }
+        let end = |channel| Played { tick, track, channel, message: None };
+        all.extend(channels.into_iter().map(end));
+    }
+    all.sort_by_key(|played| played.tick);
+    all
 }
 
 /// Turns ticks into seconds.
@@ -160,6 +197,77 @@ mod tests {
     fn keys_struck_again_and_notes_never_ended_end_all_the_same() {
         let track: &[u8] = &[0, 0x90, 69, 100, 96, 69, 100, 96, 0xff, 0x2f, 0];
         check(&file(0, [0, 96], &[track]), &[(0.0, 0.5, 440.0), (0.5, 1.0, 440.0)]);
+    }
+
+    #[test]
+    fn a_bend_moves_what_sounds_and_what_is_struck_after_it() {
+        let cents = plumbtone_analysis::tuning::ratio;
+        // A beat lasts half a second; from tick 144 on a quarter of one. Up by a semitone at tick 48, back at tick 144, and a
+        // whole tone down before the next note.
+        let tempo: &[u8] = &[0x81, 0x10, 0xff, 0x51, 3, 0x03, 0xd0, 0x90, 0, 0xff, 0x2f, 0];
+        let melody: &[u8] = &[
+            0, 0x90, 69, 100, 48, 0xe0, 0, 0x60, 96, 0xe0, 0, 0x40, 96, 0x80, 69, 0, 0, 0xe0, 0, 0,
+            0, 0x90, 57, 100, 96, 0x80, 57, 0, 0, 0xff, 0x2f, 0,
+        ];
+        check(
+            &file(1, [0, 96], &[tempo, melody]),
+            &[
+                (0.0, 0.25, 440.0),
+                (0.25, 0.75, 440.0 * cents(100.0)),
+                (0.75, 1.0, 440.0),
+                (1.0, 1.25, 220.0 * cents(-200.0)),
+            ],
+        );
+    }
+
+    #[test]
+    fn the_range_of_the_bend_is_told_by_its_registered_parameter() {
+        let cents = plumbtone_analysis::tuning::ratio;
+        let full_up = 8191.0 / 8192.0;
+        // Controllers before, the bend, and the note; the last is data for no registered parameter any more.
+        for (controllers, range_cents) in [
+            (&[(101, 0), (100, 0), (6, 12)][..], 1200.0),
+            (&[(101, 0), (100, 0), (6, 12), (38, 50)], 1250.0),
+            (&[(101, 0), (100, 1), (6, 12)], 200.0),
+            (&[(101, 0), (100, 0), (101, 127), (100, 127), (6, 12)], 200.0),
+            (&[(101, 0), (100, 0), (99, 0), (98, 0), (6, 12)], 200.0),
+            (&[(6, 12)], 200.0),
+        ] {
+            let mut track = Vec::new();
+            for &(number, value) in controllers {
+                track.extend([0, 0xb0, number, value]);
+            }
+            track
+                .extend([0, 0xe0, 0x7f, 0x7f, 0, 0x90, 69, 100, 96, 0x80, 69, 0, 0, 0xff, 0x2f, 0]);
+            let hz = 440.0 * cents(full_up * range_cents);
+            check(&file(0, [0, 96], &[&track]), &[(0.0, 0.5, hz)]);
+        }
+        // Changed while the note sounds; then all controllers are reset.
+        let track: &[u8] = &[
+            0, 0xb0, 101, 0, 0, 0xb0, 100, 0, 0, 0xe0, 0, 0, 0, 0x90, 69, 100, 96, 0xb0, 6, 7, 96,
+            0xb0, 121, 0, 96, 0x80, 69, 0, 0, 0xff, 0x2f, 0,
+        ];
+        let pieces = [
+            (0.0, 0.5, 440.0 * cents(-200.0)),
+            (0.5, 1.0, 440.0 * cents(-700.0)),
+            (1.0, 1.5, 440.0),
+        ];
+        check(&file(0, [0, 96], &[track]), &pieces);
+    }
+
+    #[test]
+    fn a_bend_rules_its_channel_in_all_tracks_and_no_other() {
+        let cents = plumbtone_analysis::tuning::ratio;
+        let bends: &[u8] = &[48, 0xe1, 0, 0x60, 0, 0xff, 0x2f, 0];
+        let melody: &[u8] = &[
+            0, 0x91, 69, 100, 0, 0x92, 57, 100, 96, 0x91, 69, 0, 0, 0x92, 57, 0, 0, 0xff, 0x2f, 0,
+        ];
+        let mut other_port = vec![0, 0xff, 0x21, 1, 1];
+        other_port.extend(bends);
+        let bent = [(0.0, 0.25, 440.0), (0.0, 0.5, 220.0), (0.25, 0.5, 440.0 * cents(100.0))];
+        check(&file(1, [0, 96], &[bends, melody]), &bent);
+        let straight = [(0.0, 0.5, 440.0), (0.0, 0.5, 220.0)];
+        check(&file(1, [0, 96], &[&other_port, melody]), &straight);
     }
 
     #[test]

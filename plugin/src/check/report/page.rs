@@ -1,78 +1,55 @@
-//! The report as one page: all checks over time, and a line for each.
+//! The report as one page: all checks over time, and for each its figures and the heard pitch against the reference.
 
-use std::fmt::Write as _;
+mod plot;
+mod svg;
 
 use super::super::result::{CheckResult, VerdictWord, clock};
 use super::{CAUTION, Job};
+use svg::{Anchor, Colours, Style, Svg};
 
-/// Size of the page, and the margin, in points.
+/// Width of the page, its margin and that within a card, in points.
 const WIDTH: f64 = 842.0;
 const MARGIN: f64 = 36.0;
-/// Place and height of the lane of time, and where the lines begin.
-const LANE: (f64, f64) = (92.0, 26.0);
-const LINES: f64 = 160.0;
-const LINE: f64 = 20.0;
-/// Most checks that have a line, and most spans told in one.
-const LINES_MAX: usize = 40;
-const SPANS_MAX: usize = 3;
-/// Most characters of a comment that a line shows.
-const COMMENT: usize = 60;
-
-const INK: &str = "#181f28";
-const DIM: &str = "#556171";
-const EDGE: &str = "#c0c9d4";
-const WITHIN: &str = "#067558";
-const OUTSIDE: &str = "#ac4406";
+const PAD: f64 = 14.0;
+const SIDES: (f64, f64) = (MARGIN, WIDTH - MARGIN);
+/// Place and height of the lane of time, and where the cards begin.
+const LANE: (f64, f64) = (96.0, 22.0);
+const CARDS: f64 = 150.0;
+/// Height of a card's lines of text, and space between two cards.
+const LINE: f64 = 16.0;
+const GAP: f64 = 12.0;
+/// Most checks that have a card, and most spans told in one.
+const CARDS_MAX: usize = 40;
+const SPANS_MAX: usize = 6;
+/// Most characters of a line of text.
+const LINE_MAX: usize = 118;
 
 /// All of it.
 pub(super) fn text(job: &Job) -> String {
-    let lines = job.results.len().min(LINES_MAX);
-    let notes = job.results.iter().take(LINES_MAX).filter(|r| has_note(r)).count();
-    let height = LINES + LINE * (lines + notes) as f64 + 64.0;
-    let mut page = Page(format!(
-        "<svg xmlns=\"http://www.w3.org/2000/svg\" width=\"{WIDTH}\" height=\"{height}\" viewBox=\"0 0 {WIDTH} {height}\" font-family=\"sans-serif\">\n<rect width=\"{WIDTH}\" height=\"{height}\" fill=\"#ffffff\"/>\n"
-    ));
-    head(&mut page, job);
-    lane(&mut page, &job.results);
-    let mut y = columns(&mut page);
-    for result in job.results.iter().take(LINES_MAX) {
-        y = line(&mut page, y, result);
+    let colours = Colours::new();
+    let mut svg = Svg::default();
+    head(&mut svg, job, &colours);
+    lane(&mut svg, &job.results, &colours);
+    let mut y = CARDS;
+    for result in job.results.iter().take(CARDS_MAX) {
+        y = card(&mut svg, y, result, &colours) + GAP;
     }
-    if job.results.len() > lines {
-        let more = format!("and {} more, in the CSV and JSON files", job.results.len() - lines);
-        page.text((MARGIN, y + 14.0), 11.0, DIM, &more);
+    if job.results.len() > CARDS_MAX {
+        let more = job.results.len() - CARDS_MAX;
+        let text = format!("and {more} more, in the CSV and JSON files");
+        svg.text((MARGIN, y + 10.0), &text, Style::new(11.0, colours.dim));
+        y += 24.0;
     }
-    page.text((MARGIN, height - 18.0), 10.0, DIM, CAUTION);
-    page.0.push_str("</svg>\n");
-    page.0
+    svg.text((MARGIN, y + 14.0), CAUTION, Style::new(10.0, colours.dim));
+    let mut page = Svg::default();
+    let height = y + 36.0;
+    page.area((0.0, WIDTH), (0.0, height), egui::Color32::WHITE, 1.0);
+    page.append(&svg);
+    page.finish((WIDTH, height))
 }
 
-struct Page(String);
-
-impl Page {
-    fn write(&mut self, text: core::fmt::Arguments<'_>) {
-        // Writing to a string cannot fail.
-        let _ = self.0.write_fmt(text);
-        self.0.push('\n');
-    }
-
-    fn text(&mut self, (x, y): (f64, f64), size: f64, colour: &str, text: &str) {
-        let text = escaped(text);
-        self.write(format_args!(
-            "<text x=\"{x:.1}\" y=\"{y:.1}\" font-size=\"{size}\" fill=\"{colour}\">{text}</text>"
-        ));
-    }
-
-    fn bar(&mut self, (from, to): (f64, f64), (y, height): (f64, f64), colour: &str) {
-        let width = (to - from).max(1.0);
-        self.write(format_args!(
-            "<rect x=\"{from:.2}\" y=\"{y:.1}\" width=\"{width:.2}\" height=\"{height:.1}\" fill=\"{colour}\"/>"
-        ));
-    }
-}
-
-fn head(page: &mut Page, job: &Job) {
-    page.text((MARGIN, 50.0), 20.0, INK, job.place.title());
+fn head(svg: &mut Svg, job: &Job, colours: &Colours) {
+    svg.text((MARGIN, 50.0), job.place.title(), Style::new(20.0, colours.ink).bold());
     let count = |word| job.results.iter().filter(|r| r.verdict == word).count();
     let summary = format!(
         "Pitch-drift checks: {} within, {} outside, {} unmeasured. Written {}.",
@@ -81,80 +58,117 @@ fn head(page: &mut Page, job: &Job) {
         count(VerdictWord::Unmeasured),
         job.place.stamp()
     );
-    page.text((MARGIN, 72.0), 12.0, DIM, &summary);
+    svg.text((MARGIN, 72.0), &summary, Style::new(12.0, colours.dim));
 }
 
-/// The checks over time: a frame each, filled where it is outside, a thin line where there is no verdict.
-fn lane(page: &mut Page, results: &[CheckResult]) {
+/// The checks over time: a bar each in the colour and with the shape of its verdict, raised where it is outside.
+fn lane(svg: &mut Svg, results: &[CheckResult], colours: &Colours) {
     let from = results.iter().map(|r| r.extent.start_s).fold(f64::INFINITY, f64::min);
     let to = results.iter().map(|r| r.extent.end_s).fold(f64::NEG_INFINITY, f64::max);
-    let width = WIDTH - 2.0 * MARGIN;
-    let x = |seconds: f64| MARGIN + width * (seconds - from) / (to - from).max(1e-3);
+    let x = |seconds: f64| SIDES.0 + (SIDES.1 - SIDES.0) * (seconds - from) / (to - from).max(1e-3);
     let (top, height) = LANE;
-    page.bar((MARGIN, WIDTH - MARGIN), (top + height, 1.0), EDGE);
+    let foot = top + height;
+    svg.line((SIDES.0, foot + 0.5), (SIDES.1, foot + 0.5), 1.0, colours.edge);
     for result in results {
-        let ends = (x(result.extent.start_s), x(result.extent.end_s));
+        let (start, end) = (x(result.extent.start_s), x(result.extent.end_s));
+        let ends = (start, end.max(start + 1.5) - 0.5);
         match result.verdict {
-            VerdictWord::Unmeasured => page.bar(ends, (top + height / 2.0 - 1.0, 2.0), EDGE),
+            VerdictWord::Unmeasured => svg.area(ends, (foot - 2.0, foot), colours.edge, 1.0),
             VerdictWord::Within | VerdictWord::Outside => {
-                page.bar(ends, (top + height - 6.0, 6.0), WITHIN);
+                svg.area(ends, (foot - 6.0, foot), colours.within, 1.0);
             }
         }
         for span in &result.spans {
-            let ends = (x(span.extent.start_s), x(span.extent.end_s));
-            page.bar(ends, (top, height), OUTSIDE);
+            let (start, end) = (x(span.extent.start_s), x(span.extent.end_s));
+            svg.area((start, end.max(start + 1.0)), (top, foot), colours.outside, 1.0);
         }
     }
-    page.text((MARGIN, top + height + 15.0), 10.0, DIM, &clock(from));
-    let end = clock(to);
-    page.text((WIDTH - MARGIN - 6.0 * end.len() as f64, top + height + 15.0), 10.0, DIM, &end);
+    let style = Style::new(10.0, colours.dim);
+    svg.text((SIDES.0, foot + 14.0), &clock(from), style);
+    svg.text((SIDES.1, foot + 14.0), &clock(to), style.anchored(Anchor::End));
 }
 
-/// Left edges of what a line says.
-const AT: [f64; 7] = [MARGIN, 122.0, 262.0, 320.0, 378.0, 446.0, 606.0];
-
-fn columns(page: &mut Page) -> f64 {
-    let names = ["verdict", "from, to", "worst ct", "mean ct", "drift ct/s", "against", "outside"];
-    for (x, name) in AT.into_iter().zip(names) {
-        page.text((x, LINES), 10.0, DIM, name);
+/// One check from `top` on; gives where it ends.
+fn card(svg: &mut Svg, top: f64, result: &CheckResult, colours: &Colours) -> f64 {
+    let lines = lines(result);
+    let text = PAD + LINE * (1 + lines.len()) as f64 + 2.0;
+    let plot = result.curve.as_ref().map_or(0.0, |curve| plot::height(curve) + 8.0);
+    let bottom = top + text + plot + 8.0;
+    svg.card(SIDES, (top, bottom), colours);
+    let x = (SIDES.0 + PAD, SIDES.1 - PAD);
+    let mut y = top + PAD + 9.0;
+    title(svg, (x, y), result, colours);
+    for (line, colour) in lines {
+        y += LINE;
+        let colour = if colour { colours.ink } else { colours.dim };
+        svg.text((x.0, y), &cut(&line), Style::new(10.0, colour));
     }
-    page.bar((MARGIN, WIDTH - MARGIN), (LINES + 6.0, 1.0), EDGE);
-    LINES + 6.0
+    if let Some(curve) = &result.curve {
+        plot::draw(svg, result, curve, x, top + text + 8.0);
+    }
+    bottom
 }
 
-fn line(page: &mut Page, top: f64, result: &CheckResult) -> f64 {
-    let y = top + LINE - 5.0;
-    let (shape, colour) = match result.verdict {
-        VerdictWord::Within => ("\u{25cf}", WITHIN),
-        VerdictWord::Outside => ("\u{25b2}", OUTSIDE),
-        VerdictWord::Unmeasured => ("\u{25cb}", DIM),
+/// The verdict with its shape, the place, and what it was compared with.
+fn title(svg: &mut Svg, (x, y): ((f64, f64), f64), result: &CheckResult, colours: &Colours) {
+    let at = (x.0 + 5.0, y - 4.0);
+    let colour = match result.verdict {
+        VerdictWord::Within => colours.within,
+        VerdictWord::Outside => colours.outside,
+        VerdictWord::Unmeasured => colours.dim,
     };
+    match result.verdict {
+        VerdictWord::Within => svg.disc(at, 4.5, colour, true),
+        VerdictWord::Outside => {
+            let corners =
+                [(-5.5, 4.5), (0.0, -5.5), (5.5, 4.5)].map(|(dx, dy)| (at.0 + dx, at.1 + dy));
+            svg.shape(&corners, colour, 1.0);
+        }
+        VerdictWord::Unmeasured => svg.disc(at, 4.0, colour, false),
+    }
+    svg.text((x.0 + 16.0, y), result.verdict.name(), Style::new(12.0, colour).bold());
     let (start, end) = result.extent.ends();
-    let against = format!("{} \u{b1} {} ct", result.reference, result.tolerance_cents);
-    let cells = [
-        (format!("{shape} {}", result.verdict.name()), colour),
-        (format!("{start} \u{2013} {end}"), INK),
-        (cents(result.worst_cents, 1), INK),
-        (cents(result.mean_cents, 1), INK),
-        (cents(result.drift_cents_per_s, 2), INK),
-        (against, DIM),
-        (spans(result), INK),
-    ];
-    for (x, (text, colour)) in AT.into_iter().zip(&cells) {
-        page.text((x, y), 10.0, colour, text);
-    }
-    if !has_note(result) {
-        return top + LINE;
-    }
-    let reason = result.reason.as_deref().unwrap_or_default();
-    let gap = if reason.is_empty() || result.comment.is_empty() { "" } else { "; " };
-    let note: String = format!("{reason}{gap}{}", result.comment).chars().take(COMMENT).collect();
-    page.text((AT[1], y + LINE - 4.0), 10.0, DIM, &note);
-    top + 2.0 * LINE
+    let told = format!("{start} \u{2013} {end}");
+    svg.text((x.0 + 120.0, y), &told, Style::new(12.0, colours.ink));
+    let against = format!(
+        "check {}, against {} \u{b1} {} ct",
+        result.number, result.reference, result.tolerance_cents
+    );
+    svg.text((x.1, y), &against, Style::new(10.0, colours.dim).anchored(Anchor::End));
 }
 
-fn has_note(result: &CheckResult) -> bool {
-    result.reason.is_some() || !result.comment.is_empty()
+/// What there is to say of a check; true where it is the first thing to read.
+fn lines(result: &CheckResult) -> Vec<(String, bool)> {
+    let mut lines = Vec::new();
+    if let Some(reason) = &result.reason {
+        lines.push((reason.clone(), true));
+    }
+    let mut figures = Vec::new();
+    for (name, value) in [("worst", result.worst_cents), ("mean", result.mean_cents)] {
+        figures.extend(value.map(|cents| format!("{name} {} ct", signed(cents, 1))));
+    }
+    if let (Some(drift), Some(sd)) = (result.drift_cents_per_s, result.drift_sd) {
+        figures.push(format!("drift {} \u{b1} {sd:.2} ct/s", signed(drift, 2)));
+    }
+    if let (Some(rate), Some(extent)) = (result.vibrato_hz, result.vibrato_extent_cents) {
+        figures.push(format!("vibrato {rate:.1} Hz \u{b1} {extent:.0} ct"));
+    }
+    if let Some(share) = result.measured_share {
+        figures.push(format!("{:.0} % of what sounds measured", 100.0 * share));
+    }
+    if result.lost_samples > 0 {
+        figures.push(format!("{} samples lost", result.lost_samples));
+    }
+    if !figures.is_empty() {
+        lines.push((figures.join(" \u{b7} "), true));
+    }
+    if !result.spans.is_empty() {
+        lines.push((spans(result), false));
+    }
+    if !result.comment.is_empty() {
+        lines.push((format!("\u{201c}{}\u{201d}", result.comment), false));
+    }
+    lines
 }
 
 /// The first spans outside, and how many more there are.
@@ -163,28 +177,27 @@ fn spans(result: &CheckResult) -> String {
         .spans
         .iter()
         .take(SPANS_MAX)
-        .map(|span| format!("{} ({})", span.extent.ends().0, cents(Some(span.worst_cents), 1)))
+        .map(|span| {
+            let (start, end) = span.extent.ends();
+            format!("{start} \u{2013} {end} ({})", signed(span.worst_cents, 1))
+        })
         .collect();
     let more = result.spans.len() as u64 + result.spans_left_out - told.len() as u64;
-    let rest = if more > 0 { format!(" +{more}") } else { String::new() };
-    format!("{}{rest}", told.join(", "))
+    let rest = if more > 0 { format!(" and {more} more") } else { String::new() };
+    format!("outside {}{rest}", told.join(", "))
 }
 
-fn cents(value: Option<f64>, decimals: usize) -> String {
-    value.map_or_else(|| "\u{2013}".to_owned(), |value| format!("{value:+.decimals$}"))
-}
-
-fn escaped(text: &str) -> String {
-    let mut out = String::with_capacity(text.len());
-    for c in text.chars() {
-        match c {
-            '<' => out.push_str("&lt;"),
-            '>' => out.push_str("&gt;"),
-            '&' => out.push_str("&amp;"),
-            // XML has no place for these.
-            c if c.is_control() => out.push(' '),
-            c => out.push(c),
-        }
+/// A line as far as it fits.
+fn cut(line: &str) -> String {
+    if line.chars().count() <= LINE_MAX {
+        return line.to_owned();
     }
-    out
+    line.chars().take(LINE_MAX - 1).chain(['\u{2026}']).collect()
+}
+
+/// A number with its sign, a true minus; zero has none.
+fn signed(value: f64, decimals: usize) -> String {
+    let text = format!("{value:+.decimals$}");
+    let zero = text.chars().all(|c| matches!(c, '+' | '-' | '0' | '.'));
+    if zero { text[1..].to_owned() } else { text.replace('-', "\u{2212}") }
 }
