@@ -26,6 +26,7 @@ pub mod report_files;
 pub mod session;
 mod state;
 mod status;
+mod stored;
 mod tap;
 pub mod trail;
 mod turns;

@@ -13,6 +13,7 @@ use serde_json::Value;
 use crate::editor::Theme;
 use crate::keys;
 use crate::parameters::Parameters;
+use crate::stored;
 use crate::{captures, check};
 
 /// Version of the part that is no parameter. A newer one is read as far as it is understood.
@@ -167,20 +168,12 @@ pub(crate) fn filter(state: &mut PluginState) {
 }
 
 /// Reads what is sound of the kept part.
-fn kept_from(stored: Option<&str>, findings: &mut Vec<String>) -> KeptFields {
+fn kept_from(text: Option<&str>, findings: &mut Vec<String>) -> KeptFields {
     let mut kept = KeptFields::default();
-    let Some(stored) = stored else { return kept };
-    let Ok(Value::Object(fields)) = serde_json::from_str(stored) else {
-        findings.push("what is kept beside the parameters could not be read".to_owned());
-        return kept;
-    };
-    match fields.get("format").and_then(Value::as_u64) {
-        Some(1..=FORMAT) => {}
-        Some(newer) => findings.push(format!(
-            "the session was stored by a newer version (format {newer}); what this one does not know was left out"
-        )),
-        None => findings.push("the stored format has no number".to_owned()),
-    }
+    let Some(text) = text else { return kept };
+    let what = "what is kept beside the parameters";
+    let fields = stored::open(text, what, ("format", FORMAT), findings);
+    let Some(fields) = fields else { return kept };
     match fields.get("zoom").map(Value::as_f64) {
         Some(Some(zoom)) if zoom >= ZOOM.0 && zoom <= ZOOM.1 => kept.zoom = zoom,
         None => {}

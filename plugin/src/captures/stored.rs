@@ -4,26 +4,15 @@
 use serde_json::Value;
 
 use super::{CAPTURES_MAX, Capture, FORMAT, Kept};
+use crate::stored;
 
 /// Reads a stored form, piece by piece; says what could not be used.
 pub(crate) fn read(text: Option<&str>, findings: &mut Vec<String>) -> Kept {
     let mut kept = Kept::default();
     let Some(text) = text else { return kept };
-    let Ok(Value::Object(fields)) = serde_json::from_str(text) else {
-        findings.push("the captures could not be read".to_owned());
-        return kept;
-    };
-    match fields.get("plumbtone_captures").and_then(Value::as_u64) {
-        Some(1..=FORMAT) => {}
-        Some(newer) => findings.push(format!(
-            "the captures were stored by a newer version (format {newer}); what this one does not know was left out"
-        )),
-        None => findings.push("the format of the captures has no number".to_owned()),
-    }
-    match fields.get("captures") {
-        Some(Value::Array(captures)) => take(captures, &mut kept.captures, findings),
-        None => {}
-        Some(_) => findings.push("the stored captures cannot be used".to_owned()),
+    let format = ("plumbtone_captures", FORMAT);
+    if let Some(fields) = stored::open(text, "the captures", format, findings) {
+        take(stored::list(&fields, "captures", findings), &mut kept.captures, findings);
     }
     kept
 }

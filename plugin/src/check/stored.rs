@@ -4,39 +4,30 @@ use serde_json::{Map, Value};
 
 use super::result::CheckResult;
 use super::results::{FORMAT, Reports, Stored, TEXT_MAX};
+use crate::stored;
+
+/// What the settings are of.
+const CHECKS: &str = "checks";
 
 /// Reads a stored form, piece by piece; says what could not be used.
 pub(crate) fn read(text: Option<&str>, findings: &mut Vec<String>) -> Stored {
-    let mut stored = Stored::default();
-    let Some(text) = text else { return stored };
-    let Ok(Value::Object(fields)) = serde_json::from_str(text) else {
-        findings.push("the results of the checks could not be read".to_owned());
-        return stored;
-    };
-    match fields.get("format").and_then(Value::as_u64) {
-        Some(1..=FORMAT) => {}
-        Some(newer) => findings.push(format!(
-            "the results of the checks were stored by a newer version (format {newer}); what this one does not know was left out"
-        )),
-        None => findings.push("the format of the checks' results has no number".to_owned()),
-    }
-    if let Some(every_pass) = boolean(&fields, "every_pass", findings) {
-        stored.every_pass = every_pass;
+    let mut kept = Stored::default();
+    let Some(text) = text else { return kept };
+    let what = "the results of the checks";
+    let Some(fields) = stored::open(text, what, ("format", FORMAT), findings) else { return kept };
+    if let Some(every_pass) = stored::boolean(&fields, ("every_pass", CHECKS), findings) {
+        kept.every_pass = every_pass;
     }
     if let Some(left_out) = fields.get("left_out").and_then(Value::as_u64) {
-        stored.left_out = left_out;
+        kept.left_out = left_out;
     }
     match fields.get("reports") {
-        Some(Value::Object(reports)) => stored.reports = reports_from(reports, findings),
+        Some(Value::Object(reports)) => kept.reports = reports_from(reports, findings),
         None => {}
         Some(_) => findings.push("the stored settings of reports cannot be used".to_owned()),
     }
-    match fields.get("results") {
-        Some(Value::Array(results)) => take(results, &mut stored, findings),
-        None => {}
-        Some(_) => findings.push("the stored results of checks cannot be used".to_owned()),
-    }
-    stored
+    take(stored::list(&fields, "results", findings), &mut kept, findings);
+    kept
 }
 
 fn take(results: &[Value], stored: &mut Stored, findings: &mut Vec<String>) {
@@ -56,7 +47,7 @@ fn take(results: &[Value], stored: &mut Stored, findings: &mut Vec<String>) {
 
 fn reports_from(fields: &Map<String, Value>, findings: &mut Vec<String>) -> Reports {
     let mut reports = Reports::default();
-    if let Some(automatic) = boolean(fields, "automatic", findings) {
+    if let Some(automatic) = stored::boolean(fields, ("automatic", CHECKS), findings) {
         reports.automatic = automatic;
     }
     for (name, to) in [("folder", &mut reports.folder), ("name", &mut reports.name)] {
@@ -67,17 +58,6 @@ fn reports_from(fields: &Map<String, Value>, findings: &mut Vec<String>) -> Repo
         }
     }
     reports
-}
-
-fn boolean(fields: &Map<String, Value>, name: &str, findings: &mut Vec<String>) -> Option<bool> {
-    match fields.get(name) {
-        Some(Value::Bool(value)) => Some(*value),
-        None => None,
-        Some(_) => {
-            findings.push(format!("the stored setting {name} of checks cannot be used"));
-            None
-        }
-    }
 }
 
 #[cfg(test)]

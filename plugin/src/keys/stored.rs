@@ -4,33 +4,19 @@ use serde_json::Value;
 
 use super::row::Row;
 use super::sheet::{FORMAT, Stored};
+use crate::stored;
 
 /// Reads a stored form, piece by piece; says what could not be used.
 pub(crate) fn read(text: Option<&str>, findings: &mut Vec<String>) -> Stored {
-    let mut stored = Stored::default();
-    let Some(text) = text else { return stored };
-    let Ok(Value::Object(fields)) = serde_json::from_str(text) else {
-        findings.push("the key sheet could not be read".to_owned());
-        return stored;
-    };
-    match fields.get("format").and_then(Value::as_u64) {
-        Some(1..=FORMAT) => {}
-        Some(newer) => findings.push(format!(
-            "the key sheet was stored by a newer version (format {newer}); what this one does not know was left out"
-        )),
-        None => findings.push("the format of the key sheet has no number".to_owned()),
+    let mut sheet = Stored::default();
+    let Some(text) = text else { return sheet };
+    let fields = stored::open(text, "the key sheet", ("format", FORMAT), findings);
+    let Some(fields) = fields else { return sheet };
+    if let Some(unplayed) = stored::boolean(&fields, ("unplayed", "keys"), findings) {
+        sheet.unplayed = unplayed;
     }
-    match fields.get("unplayed") {
-        Some(Value::Bool(unplayed)) => stored.unplayed = *unplayed,
-        None => {}
-        Some(_) => findings.push("the stored setting unplayed of keys cannot be used".to_owned()),
-    }
-    match fields.get("rows") {
-        Some(Value::Array(rows)) => take(rows, &mut stored, findings),
-        None => {}
-        Some(_) => findings.push("the stored rows of keys cannot be used".to_owned()),
-    }
-    stored
+    take(stored::list(&fields, "rows", findings), &mut sheet, findings);
+    sheet
 }
 
 fn take(rows: &[Value], stored: &mut Stored, findings: &mut Vec<String>) {
