@@ -76,9 +76,14 @@ impl MidiOut {
         context: &mut impl ProcessContext<P>,
         status: &Status,
     ) {
+        let mut next = due();
+        // Mostly there is nothing to do.
+        if next.is_none() && self.input.is_empty() && !self.outside && self.on.is_none() {
+            return;
+        }
         // What is set may be new with this block.
         self.follow(parameters, 0, context);
-        while let Some(Due { offset, late, outside }) = due() {
+        while let Some(Due { offset, late, outside }) = next {
             let earlier =
                 self.input.iter().take_while(|event| index(event.timing().into()) < offset);
             self.pass(earlier.count(), context, status);
@@ -86,6 +91,7 @@ impl MidiOut {
             if self.follow(parameters, offset, context) && late {
                 status.send_late();
             }
+            next = due();
         }
         self.pass(self.input.len(), context, status);
     }

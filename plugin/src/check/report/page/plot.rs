@@ -28,6 +28,8 @@ const TIMES: f64 = 9.0;
 const BAR_APART: f64 = 46.0;
 const WORD: f64 = 64.0;
 const SMALL: f64 = 9.0;
+/// Distance of an axis's caption from the frame: half of a time's width and more.
+const CAPTION: f64 = 24.0;
 
 /// From seconds and cents to points.
 struct Frame {
@@ -178,7 +180,7 @@ fn times(svg: &mut Svg, frame: &Frame, curve: &Curve, in_session: bool, colours:
     svg.line((frame.x.0, bottom), (frame.x.1, bottom), 0.8, colours.edge);
     let middle = Style::new(SMALL, colours.dim).anchored(Anchor::Middle);
     let end = Style::new(SMALL, colours.dim).anchored(Anchor::End);
-    svg.text((frame.x.0 - 6.0, bottom + 13.0), if in_session { "time" } else { "stream" }, end);
+    svg.text((frame.x.0 - CAPTION, bottom + 13.0), if in_session { "time" } else { "stream" }, end);
     let length_s = frame.end_s - frame.start_s;
     let step = *SECONDS.iter().find(|step| length_s / **step <= TIMES).unwrap_or(&SECONDS[14]);
     let mut k = (frame.start_s / step).ceil();
@@ -193,7 +195,7 @@ fn times(svg: &mut Svg, frame: &Frame, curve: &Curve, in_session: bool, colours:
     if curve.bars.is_empty() {
         return;
     }
-    svg.text((frame.x.0 - 6.0, bottom + 26.0), "bar", end);
+    svg.text((frame.x.0 - CAPTION, bottom + 26.0), "bar", end);
     let mut last = f64::NEG_INFINITY;
     for (bar, at_s) in &curve.bars {
         let x = frame.x(*at_s);
