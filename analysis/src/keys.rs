@@ -48,15 +48,15 @@ pub struct KeyRow {
     /// Mean level of the partials together, in dBFS.
     pub level_dbfs: f64,
     /// The alias that stands out most.
-    pub alias: Option<WorstAlias>,
+    pub alias: Option<AliasHeard>,
     /// Time from the onset until the pitch stays within 3 cents (or 3 of its deviations) of the note's, in seconds; `None` when
     /// it never does. Less than 30 ms beyond that, and the last tenth of a second, do not count.
     pub settling_s: Option<f64>,
 }
 
-/// The alias that stands out most among the partials.
+/// An alias, and how much it stands out among the partials.
 #[derive(Debug, Clone, Copy, PartialEq)]
-pub struct WorstAlias {
+pub struct AliasHeard {
     /// Frequency in Hz.
     pub frequency_hz: f64,
     /// Number of the partial that folded.
@@ -71,13 +71,13 @@ pub struct WorstAlias {
 
 /// The alias of a note that lies highest over what hides it, if there is any.
 #[must_use]
-pub fn worst_alias(note: &Note) -> Option<WorstAlias> {
+pub fn worst_alias(note: &Note) -> Option<AliasHeard> {
     worst(&note.partials.iter().map(|p| (p.frequency_hz, p.level_mean_dbfs)), &note.strays)
 }
 
 /// The same of a reading.
 #[must_use]
-pub fn worst_alias_now(reading: &Reading) -> Option<WorstAlias> {
+pub fn worst_alias_now(reading: &Reading) -> Option<AliasHeard> {
     worst(&reading.partials.iter().map(|p| (p.frequency_hz, p.level_dbfs)), &reading.strays)
 }
 
@@ -85,20 +85,31 @@ pub fn worst_alias_now(reading: &Reading) -> Option<WorstAlias> {
 fn worst(
     partials: &(impl Iterator<Item = (f64, f64)> + Clone),
     strays: &[Stray],
-) -> Option<WorstAlias> {
-    let strongest = partials.clone().map(|p| p.1).fold(f64::NEG_INFINITY, f64::max);
-    let aliases = strays.iter().filter_map(|stray| match stray.kind {
-        StrayKind::Alias { partial, folds } => Some(WorstAlias {
-            frequency_hz: stray.frequency_hz,
-            partial,
-            folds,
-            relative_db: stray.level_dbfs - strongest,
-            over_mask_db: stray.level_dbfs
-                - masking::unheard_below_dbfs(stray.frequency_hz, partials.clone()),
-        }),
-        StrayKind::Mains { .. } | StrayKind::Unexplained => None,
-    });
+) -> Option<AliasHeard> {
+    let aliases = strays.iter().filter_map(|stray| heard(partials, stray));
     aliases.max_by(|a, b| a.over_mask_db.total_cmp(&b.over_mask_db))
+}
+
+/// How much one of a reading's strays stands out, if it is an alias.
+#[must_use]
+pub fn alias_now(reading: &Reading, stray: &Stray) -> Option<AliasHeard> {
+    heard(&reading.partials.iter().map(|p| (p.frequency_hz, p.level_dbfs)), stray)
+}
+
+fn heard(
+    partials: &(impl Iterator<Item = (f64, f64)> + Clone),
+    stray: &Stray,
+) -> Option<AliasHeard> {
+    let StrayKind::Alias { partial, folds } = stray.kind else { return None };
+    let strongest = partials.clone().map(|p| p.1).fold(f64::NEG_INFINITY, f64::max);
+    let unheard = masking::unheard_below_dbfs(stray.frequency_hz, partials.clone());
+    Some(AliasHeard {
+        frequency_hz: stray.frequency_hz,
+        partial,
+        folds,
+        relative_db: stray.level_dbfs - strongest,
+        over_mask_db: stray.level_dbfs - unheard,
+    })
 }
 
 /// What an inharmonicity and its deviation come to.

@@ -47,13 +47,12 @@ impl MidiOut {
         self.outside = false;
     }
 
-    /// Takes in what comes with a block.
+    /// Takes in what comes with a block; what came before was passed on by [`send`](Self::send).
     pub(crate) fn take<P: Plugin<SysExMessage = ()>>(
         &mut self,
         context: &mut impl ProcessContext<P>,
         status: &Status,
     ) {
-        self.input.clear();
         while let Some(event) = context.next_event() {
             if self.input.len() == self.input.capacity() {
                 // More than is remembered: these are passed on before the block is looked at.

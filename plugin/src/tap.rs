@@ -196,7 +196,7 @@ impl Tap {
 
     /// Whether anybody uses what would be measured.
     fn listens(&self, controls: &Controls) -> bool {
-        controls.check || controls.capture || self.status.watched()
+        self.status.watched() || controls.check || controls.capture
     }
 
     fn pass_by(&mut self, length: u64) {

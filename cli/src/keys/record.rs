@@ -2,7 +2,7 @@
 
 use crate::measure::Timebase;
 use crate::output::csv::{Column, figure};
-use plumbtone_analysis::keys::{KeyRow, WorstAlias};
+use plumbtone_analysis::keys::{AliasHeard, KeyRow};
 use plumbtone_analysis::tuning::NoteName;
 use serde::Serialize;
 
@@ -63,7 +63,7 @@ impl KeyRecord {
     /// A row; the file's name is known later.
     pub(super) fn new(row: &KeyRow, timebase: Timebase) -> Self {
         let finite = |x: f64| x.is_finite().then_some(x);
-        let alias = |a: WorstAlias| AliasRecord {
+        let alias = |a: AliasHeard| AliasRecord {
             frequency_hz: a.frequency_hz,
             partial: a.partial,
             folds: a.folds,

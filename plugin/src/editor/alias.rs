@@ -2,7 +2,7 @@
 
 use egui::{Align2, Rect, Ui, pos2};
 use plumbtone_analysis::Reading;
-use plumbtone_analysis::keys::{WorstAlias, worst_alias_now};
+use plumbtone_analysis::keys::{AliasHeard, worst_alias_now};
 
 use super::ink;
 use super::steady::{Steady, signed};
@@ -17,7 +17,7 @@ const SHOWN_SD: f64 = 0.5;
 /// The alias on display.
 #[derive(Debug, Clone)]
 pub(crate) struct Alias {
-    worst: WorstAlias,
+    worst: AliasHeard,
     relative_db: Steady,
     /// Centre of the last reading that had one, and of the last one at all.
     found: u64,
@@ -66,21 +66,31 @@ impl Alias {
     }
 
     fn help(&self) -> String {
-        let WorstAlias { frequency_hz, partial, folds, over_mask_db, .. } = self.worst;
-        let times = match folds {
-            1 => "once".to_owned(),
-            2 => "twice".to_owned(),
-            folds => format!("{folds} times"),
-        };
-        let heard = if over_mask_db > 0.0 {
-            format!("{over_mask_db:.0} dB over what the partials mask there: it may be heard")
-        } else {
-            format!("{:.0} dB under what the partials mask there: hardly heard", -over_mask_db)
-        };
-        format!(
-            "The alias that stands out most: partial {partial}, folded {times}, at {} Hz, {} dB to the strongest partial, {heard}.",
-            hertz(frequency_hz, 1),
-            signed(self.worst.relative_db, 1)
-        )
+        format!("The alias that stands out most. {}", sentence(&self.worst))
     }
+}
+
+/// All there is to say of an alias.
+pub(crate) fn sentence(alias: &AliasHeard) -> String {
+    let AliasHeard { frequency_hz, partial, folds, relative_db, over_mask_db } = *alias;
+    let times = match folds {
+        1 => "once".to_owned(),
+        2 => "twice".to_owned(),
+        folds => format!("{folds} times"),
+    };
+    let heard = if over_mask_db > 0.0 {
+        format!(
+            "{over_mask_db:.0} dB over what the partials and the quiet hide there: it may be heard"
+        )
+    } else {
+        format!(
+            "{:.0} dB under what the partials and the quiet hide there: hardly heard",
+            -over_mask_db
+        )
+    };
+    format!(
+        "Partial {partial}, folded {times}, at {} Hz, {} dB to the strongest partial, {heard}.",
+        hertz(frequency_hz, 1),
+        signed(relative_db, 1)
+    )
 }

@@ -4,14 +4,15 @@ mod figures;
 
 use egui::{Align2, Rect, Sense, Stroke, Ui, pos2, vec2};
 use plumbtone_analysis::Stray;
+use plumbtone_analysis::keys::alias_now;
 use plumbtone_analysis::tuning::ratio;
 
 pub(crate) use self::figures::{Figures, power_of_ten, stretch};
-use super::ink;
 use super::screen::Shown;
 use super::steady::signed;
 use super::theme::{FIGURE, PAD, Palette, SMALL, mono, sans};
 use super::words;
+use super::{alias, ink};
 use crate::offset::{Explanation, explain};
 use crate::voices::Summary;
 
@@ -99,12 +100,20 @@ fn strays(ui: &mut Ui, area: Rect, strays: &[Stray], shown: &Shown<'_>, palette:
         ink::text(ui, at, &hz, mono(FIGURE), palette.ink);
         let what = format!("{}, {} dB", words::stray_short(stray), signed(stray.level_dbfs, 0));
         let at = (pos2(area.right(), middle), Align2::RIGHT_CENTER);
-        ink::text(ui, at, &what, sans(12.0), palette.dim).on_hover_text(format!(
-            "{}: {} dBFS, {} dB to the strongest partial.",
-            words::stray(stray),
-            signed(stray.level_dbfs, 1),
-            signed(stray.level_dbfs - strongest, 1)
-        ));
+        let reading = &shown.readout.reading;
+        ink::text(ui, at, &what, sans(12.0), palette.dim).on_hover_ui(|ui| {
+            ui.label(alias_now(reading, stray).map_or_else(
+                || {
+                    format!(
+                        "{}: {} dBFS, {} dB to the strongest partial.",
+                        words::stray(stray),
+                        signed(stray.level_dbfs, 1),
+                        signed(stray.level_dbfs - strongest, 1)
+                    )
+                },
+                |alias| alias::sentence(&alias),
+            ));
+        });
         y += STRAY_LINE;
     }
     y

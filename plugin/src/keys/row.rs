@@ -1,6 +1,6 @@
 //! A row of the key sheet: plain data as it is kept, shown and exported, under the names of the command line's JSON.
 
-use plumbtone_analysis::keys::{KeyRow, WorstAlias};
+use plumbtone_analysis::keys::{AliasHeard, KeyRow};
 use plumbtone_analysis::tuning::{NoteName, Tuning, cents};
 use serde::{Deserialize, Serialize};
 
@@ -105,7 +105,7 @@ impl Row {
 }
 
 impl KeyAlias {
-    fn new(alias: WorstAlias) -> Option<Self> {
+    fn new(alias: AliasHeard) -> Option<Self> {
         let made = Self {
             frequency_hz: alias.frequency_hz,
             partial: alias.partial,
