@@ -25,7 +25,7 @@ mod theme;
 mod words;
 
 use std::sync::{Arc, Mutex};
-use std::time::Instant;
+use std::time::{Duration, Instant};
 
 use nice_plug::context::gui::GuiContext;
 use nice_plug::editor::dpi::LogicalSize;
@@ -53,8 +53,8 @@ use crate::trail::Trail;
 /// Size of the window when it is first opened, and its smallest one, in points.
 const SIZE: LogicalSize<f32> = LogicalSize::new(1120.0, 760.0);
 const SMALLEST: LogicalSize<f32> = LogicalSize::new(480.0, 320.0);
-/// Frames in which a window takes its first size.
-const OPENING_FRAMES: u64 = 10;
+/// Time in which a window takes its first size.
+const OPENING: Duration = Duration::from_millis(500);
 
 /// The editor of one instance; lives as long as that and is shown now and then.
 #[derive(Debug)]
@@ -74,8 +74,6 @@ struct Open {
     since: Instant,
     /// The kept size of the window, until it was asked for.
     size: Option<egui::Vec2>,
-    /// Frames drawn.
-    frames: u64,
 }
 
 impl core::fmt::Debug for Open {
@@ -123,7 +121,6 @@ impl NiceEguiApp for Window {
             context: nice_gui_ctx,
             since: Instant::now(),
             size: size.map(|(width, height)| egui::vec2(single(width), single(height))),
-            frames: 0,
         });
         self.status.watch(true);
         self.bell.ring();
@@ -131,8 +128,7 @@ impl NiceEguiApp for Window {
     }
 
     fn ui(&mut self, ui: &mut egui::Ui, _frame: &mut Frame) {
-        let Some(Open { screen, context, since, size, frames }) = &mut self.open else { return };
-        *frames += 1;
+        let Some(Open { screen, context, since, size }) = &mut self.open else { return };
         if let Some(size) = size.take()
             && (ui.ctx().content_rect().size() - size).abs().max_elem() > 1.0
         {
@@ -173,7 +169,7 @@ impl NiceEguiApp for Window {
 
     fn resized(&mut self, new_size: WindowSize) {
         // The sizes that a window goes through while it opens are nobody's choice.
-        if self.open.as_ref().is_some_and(|open| open.frames > OPENING_FRAMES) {
+        if self.open.as_ref().is_some_and(|open| open.since.elapsed() > OPENING) {
             self.parameters.kept.set_size(new_size.logical.width, new_size.logical.height);
         }
     }
